@@ -1,0 +1,247 @@
+"""What a model is: its name, its columns with their units, and how it fits a batch of windows."""
+
+from __future__ import annotations
+
+import operator
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Literal
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from driftbook.estimators.batches import Kernel, in_pieces
+from driftbook.estimators.result import Fit
+from driftbook.estimators.status import Status
+from driftbook.estimators.windows import Array
+
+EQUAL_STEPS = 1e-9  # steps count as equal when they differ by no more than this share
+
+
+@dataclass(frozen=True)
+class Parameter:
+    """A parameter of a model.
+
+    Attributes
+    ----------
+    name : str
+    unit : str
+        In x, the unit of the series, and t, the unit of its clock (a year or a second); empty for a pure number.
+    meaning : str
+        One sentence.
+    """
+
+    name: str
+    unit: str
+    meaning: str
+
+
+@dataclass(frozen=True)
+class Column:
+    """A column of a model's fits.
+
+    Attributes
+    ----------
+    name : str
+    unit : str
+        As in `Parameter`.
+    meaning : str
+        One sentence, fit for a comment on the column.
+    sql : str or None
+        For a column that is a formula of stored ones: that formula, in SQL over stored columns of this model. None
+        for a column that is stored.
+    kind : "double" or "boolean"
+        A boolean is 1.0, 0.0 or NaN in a `Fit`.
+    """
+
+    name: str
+    unit: str
+    meaning: str
+    sql: str | None = None
+    kind: Literal["double", "boolean"] = "double"
+
+
+def parameter_columns(parameter: Parameter) -> tuple[Column, ...]:
+    """The four columns of a parameter: estimate, standard error, and the ends of its 95 % interval."""
+    name, unit = parameter.name, parameter.unit
+    return (
+        Column(name, unit, parameter.meaning),
+        Column(f"{name}_se", unit, f"Standard error of {name}."),
+        Column(f"{name}_lower", unit, f"Lower end of the 95 % interval of {name}; empty: no end on this side."),
+        Column(f"{name}_upper", unit, f"Upper end of the 95 % interval of {name}; empty: no end on this side."),
+    )
+
+
+@dataclass(frozen=True)
+class Model:
+    """A model of a series, and how to fit it to many windows at once.
+
+    Attributes
+    ----------
+    name : str
+    revision : int
+        Rises whenever the same data give other numbers.
+    equation : str
+        The model's equation in plain text.
+    range : "real" or "positive"
+        Which values it can take.
+    steps : "equal" or "any"
+        Which steps between observations it can fit.
+    shortest : int
+        Fewest steps in a window; shorter ones are `Status.TOO_SHORT`.
+    parameters : tuple of Parameter
+    columns : tuple of Column
+        All columns of a fit, in order.
+    kernel : callable
+        Fits one piece of a batch; see `driftbook.estimators.batches`.
+    """
+
+    name: str
+    revision: int
+    equation: str
+    range: Literal["real", "positive"]
+    steps: Literal["equal", "any"]
+    shortest: int
+    parameters: tuple[Parameter, ...]
+    columns: tuple[Column, ...]
+    kernel: Kernel
+
+    @property
+    def stored(self) -> tuple[Column, ...]:
+        """Columns that are kept as numbers."""
+        return tuple(column for column in self.columns if column.sql is None)
+
+    @property
+    def derived(self) -> tuple[Column, ...]:
+        """Columns that are formulas of stored ones."""
+        return tuple(column for column in self.columns if column.sql is not None)
+
+    def fit(self, x: ArrayLike, dt: ArrayLike, *, intervals: bool = True, threads: int = 1) -> Fit:
+        """Fit each window of a batch.
+
+        Parameters
+        ----------
+        x : array_like, shape (..., n + 1)
+            Windows of n steps, time last.
+        dt : array_like, shape (), (...) or (..., n)
+            The step, in the clock's unit of time: one for all, one a window, or one a step.
+        intervals : bool
+            Whether to compute the columns that intervals need; without them those are NaN.
+        threads : int
+            Threads to spread the work over. The bits do not depend on it.
+
+        Returns
+        -------
+        Fit
+            Arrays of shape (...).
+
+        Raises
+        ------
+        ValueError, TypeError
+            As `rolling`.
+        """
+        x = _series(x)
+        lookback = x.shape[-1] - 1
+        if lookback < 1:
+            _threads(threads)
+            _steps(dt, x)
+            return self._too_short(max(lookback, 0), x.shape[:-1])
+        fit = self.rolling(x, dt, lookback, intervals=intervals, threads=threads)
+        columns = {name: values[..., 0] for name, values in fit.columns.items()}
+        return Fit(self.name, fit.n[..., 0], columns, fit.status[..., 0])
+
+    def rolling(self, x: ArrayLike, dt: ArrayLike, lookback: int, *, intervals: bool = True, threads: int = 1) -> Fit:
+        """Fit every window of series, in rolling position.
+
+        Parameters
+        ----------
+        x : array_like, shape (..., n_obs)
+            Series, time last. Integers and narrow floats are computed in float64.
+        dt : array_like, shape (), (...) or (..., n_obs - 1)
+            The step, in the clock's unit of time: one for all, one a series, or one a step.
+        lookback : int
+            Steps in a window.
+        intervals : bool
+            Whether to compute the columns that intervals need; without them those are NaN.
+        threads : int
+            Threads to spread the work over. The bits do not depend on it.
+
+        Returns
+        -------
+        Fit
+            Arrays of shape (..., windows) with windows = max(n_obs - lookback, 0); window k holds the observations
+            k … k + lookback. Data never raise: what can't be fitted has a status and NaN.
+
+        Raises
+        ------
+        ValueError
+            If `x` has no time axis, `lookback` or `threads` is below 1, or `dt` is not positive, not finite, of
+            another shape, or unequal for a model that fits equal steps only.
+        TypeError
+            If `x` or `dt` are no real numbers, or `lookback` or `threads` no integer.
+        """
+        x, lookback, threads = _series(x), _lookback(lookback), _threads(threads)
+        steps = _steps(dt, x)
+        batch, n_windows = x.shape[:-1], max(x.shape[-1] - lookback, 0)
+        shape = (*batch, n_windows)
+        if lookback < self.shortest or 0 in shape:
+            return self._too_short(lookback, shape)
+        rows = x.reshape(-1, x.shape[-1])
+        steps = np.broadcast_to(steps, (*batch, x.shape[-1] - 1)).reshape(len(rows), -1)
+        found, status = in_pieces(self.kernel, rows, steps, lookback, intervals=intervals, threads=threads)
+        columns = {c.name: found[c.name].reshape(shape) if c.name in found else _nothing(shape) for c in self.columns}
+        return Fit(self.name, np.full(shape, lookback), columns, status.reshape(shape))
+
+    def _too_short(self, n: int, shape: Sequence[int]) -> Fit:
+        columns = {column.name: _nothing(shape) for column in self.columns}
+        return Fit(self.name, np.full(shape, n), columns, np.full(shape, Status.TOO_SHORT, dtype=np.int8))
+
+
+def _nothing(shape: Sequence[int]) -> Array:
+    """NaN everywhere, in no memory; read-only."""
+    return np.broadcast_to(np.float64(np.nan), tuple(shape))
+
+
+def _numbers(values: ArrayLike, name: str) -> Array:
+    array = np.asarray(values)
+    if array.dtype.kind not in "fiu" and array.size:
+        raise TypeError(f"{name} must hold real numbers, got {array.dtype}")
+    return array.astype(np.float64, copy=False)
+
+
+def _series(x: ArrayLike) -> Array:
+    array = _numbers(x, "x")
+    if array.ndim < 1:
+        raise ValueError("x must have a time axis, got a single number")
+    return array
+
+
+def _lookback(lookback: int) -> int:
+    if operator.index(lookback) < 1:
+        raise ValueError(f"lookback must be 1 or more, got {lookback}")
+    return operator.index(lookback)
+
+
+def _threads(threads: int) -> int:
+    if operator.index(threads) < 1:
+        raise ValueError(f"threads must be 1 or more, got {threads}")
+    return operator.index(threads)
+
+
+def _steps(dt: ArrayLike, x: Array) -> Array:
+    """Steps in a shape that broadcasts to that of the increments of x, checked."""
+    steps = _numbers(dt, "dt")
+    batch, n = x.shape[:-1], max(x.shape[-1] - 1, 0)
+    if not (np.isfinite(steps) & (steps > 0)).all():
+        raise ValueError("dt must be positive and finite")
+    if steps.shape == (*batch, n):
+        return _equal(steps)
+    if steps.shape in ((), batch):
+        return steps[..., None]
+    raise ValueError(f"dt must have shape (), {batch} or {(*batch, n)}, got {steps.shape}")
+
+
+def _equal(steps: Array) -> Array:
+    if steps.size and (np.ptp(steps, axis=-1) > EQUAL_STEPS * steps[..., 0]).any():
+        raise ValueError("dt has unequal steps, which are not fitted by this model yet")
+    return steps

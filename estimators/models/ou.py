@@ -1,0 +1,242 @@
+"""The Ornstein–Uhlenbeck process dX = kappa (theta − X) dt + sigma dW, at equal steps.
+
+The transition law is x_{i+1} | x_i ~ N(theta + (x_i − theta) b, sigma² (1 − b²)/(2 kappa)) with b = e^{−kappa Δ}, so
+that the maximum of the likelihood given x_0 is the AR(1) regression with intercept. With beta = b − 1 its slope on
+the level, s² the residual variance over n and s2 the one over n − 2, A the spread of the levels:
+
+    kappa = −ln(1 + beta)/Δ                             theta = mean level − mean increment/beta
+    sigma² = (s²/Δ)·2 ln(1 + beta)/(beta (2 + beta))    loglik = −(n/2)(ln(2 π s²) + 1)
+
+These hold on either side of kappa = 0, and lose nothing near it. Standard errors are those of least squares, by the
+delta method: of kappa √(s2/A)/(b Δ), of theta √(s2 (1/n + (theta − mean level)²/A))/|beta|, and of ln sigma
+√(1/(2n) + ¼ g² (s2/A)/b²) with g = 1/h − 2/(e^{2h} − 1), h = kappa Δ.
+
+Intervals do not come from the standard errors: kappa's is the inversion of the slope's exact law, widened for uneven
+variance; theta's is of Fieller's type with critical values of its own; sigma's allows for fat tails; see
+`driftbook.estimators.intervals`.
+
+References
+----------
+Uhlenbeck, G. E. & Ornstein, L. S. (1930), On the theory of the Brownian motion, Physical Review 36, 823–841.
+Vasicek, O. (1977), An equilibrium characterization of the term structure, J. Financial Economics 5, 177–188.
+White, H. (1980), A heteroskedasticity-consistent covariance matrix estimator, Econometrica 48, 817–838.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from driftbook.estimators.batches import Answer, Piece
+from driftbook.estimators.intervals import sigma_interval, theta_set, widened_pull
+from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
+from driftbook.estimators.regression import Regression, from_sums, from_windows
+from driftbook.estimators.slope_law import slope_law
+from driftbook.estimators.status import Status
+from driftbook.estimators.windows import Array
+
+SHORTEST = 5
+LN2 = float(np.log(2.0))
+
+PARAMETERS = (
+    Parameter("kappa", "1/t", "Speed of the pull to theta; the likelihood's estimate, some 4/T too high on average."),
+    Parameter("theta", "x", "Level that the series is pulled to."),
+    Parameter("sigma", "x/√t", "Volatility of the driving noise."),
+)
+
+COLUMNS = (
+    *(column for parameter in PARAMETERS for column in parameter_columns(parameter)),
+    Column("kappa_median_unbiased", "1/t", "Estimate of kappa that is too high as often as too low."),
+    Column("no_reversion_p", "", "One-sided p-value of no pull; below 0.05 speaks for a pull."),
+    Column(
+        "half_life",
+        "t",
+        "Time in which a distance to theta halves, by kappa_median_unbiased; empty without evidence of a pull.",
+        "CASE WHEN kappa > 0 THEN ln(2) / nullif(kappa_median_unbiased, 0) END",
+    ),
+    Column(
+        "half_life_lower",
+        "t",
+        "Lower end of the 95 % interval of half_life; empty: no end on this side.",
+        "CASE WHEN kappa_upper > 0 THEN ln(2) / kappa_upper END",
+    ),
+    Column(
+        "half_life_upper",
+        "t",
+        "Upper end of the 95 % interval of half_life; empty: no end on this side.",
+        "CASE WHEN kappa_lower > 0 THEN ln(2) / kappa_lower END",
+    ),
+    Column(
+        "half_life_mle",
+        "t",
+        "Half-life by kappa itself: too short on average.",
+        "CASE WHEN kappa > 0 THEN ln(2) / kappa END",
+    ),
+    Column(
+        "half_life_unbounded",
+        "",
+        "Whether the data leave the half-life without an upper end.",
+        "kappa_lower = 0",
+        "boolean",
+    ),
+    Column(
+        "stationary_sd",
+        "x",
+        "Standard deviation of the stationary law; empty where there is none.",
+        "CASE WHEN kappa > 0 THEN sigma / sqrt(2 * kappa) END",
+    ),
+    Column("kurtosis", "", "Fourth moment of the residuals over the squared second: 3 for a Gaussian."),
+    Column("loglik", "", "Log-likelihood of the observations after the first, given the first."),
+)
+
+_IN_UNITS_OF_X = tuple(column.name for column in COLUMNS if column.unit.startswith("x"))
+_NEED_A_PULL = ("half_life", "half_life_mle", "stationary_sd")
+_CANCELS = 1e-3  # below this pull per step a difference loses digits and its series does not
+_GATHERED = 1 << 17  # observations in the windows that are repaired at one time: 1 MB
+
+
+def fit_piece(piece: Piece) -> Answer:
+    """Fit every window of a piece; see `driftbook.estimators.batches`."""
+    whole, sound = from_sums(piece.x, piece.lookback, piece.offsets, fourth=piece.intervals)
+    dt = np.repeat(piece.dt, piece.offsets)
+    columns, status = _estimates(whole.flat(), dt)
+    doubtful = np.flatnonzero(~sound)
+    if doubtful.size:
+        _repair(piece, doubtful, dt, columns, status)
+    return Answer(columns, status)
+
+
+def _estimates(regression: Regression, dt: Array) -> tuple[dict[str, Array], NDArray[np.int8]]:
+    """All columns and the status of sound regressions; all arrays have the shape (m,)."""
+    columns = _point_estimates(regression, dt)
+    if regression.robust is not None and regression.fourth is not None:
+        columns |= _interval_estimates(regression, regression.robust, regression.fourth, dt)
+    status = np.zeros(regression.slope.shape, dtype=np.int8)
+    no_pull = np.flatnonzero(regression.slope >= 0)
+    status[no_pull] = Status.NO_REVERSION
+    for name in _NEED_A_PULL:
+        if name in columns:
+            columns[name][no_pull] = np.nan
+    alternating = np.flatnonzero(regression.slope <= -1)
+    if alternating.size:
+        status[alternating] = Status.ALTERNATING
+        _blank(columns, alternating)
+    return columns, status
+
+
+def _point_estimates(regression: Regression, dt: Array) -> dict[str, Array]:
+    """What the regression gives in closed form; the limits of the formulas at kappa = 0."""
+    n, beta, A, rss = regression.n, regression.slope, regression.spread, regression.rss
+    at_zero = np.flatnonzero(beta == 0)
+    b = 1 + beta
+    h = 0.0 - np.log1p(beta)
+    kappa = h / dt
+    slope_se = np.sqrt(rss / (A * (n - 2.0)))
+    h_se = slope_se / b
+    away = regression.drift / beta
+    theta = regression.level - away
+    theta_se = slope_se * np.sqrt(A / n + away * away) / np.abs(beta)
+    theta[at_zero] = theta_se[at_zero] = np.nan
+    half_loss = beta * (-1 - 0.5 * beta)  # (1 − b²)/2
+    per_step = h / half_loss
+    per_step[at_zero] = 1.0
+    sigma = np.sqrt(rss * per_step / (n * dt))
+    gradient = 1 / h - b * b / half_loss  # of ln(2h/(1 − e^{−2h})) in h
+    small = np.flatnonzero(np.abs(h) < _CANCELS)
+    gradient[small] = 1 - h[small] / 3 + h[small] ** 3 / 45
+    return {
+        "kappa": kappa,
+        "kappa_se": h_se / dt,
+        "theta": theta,
+        "theta_se": theta_se,
+        "sigma": sigma,
+        "sigma_se": sigma * np.sqrt(np.square(gradient * h_se) * 0.25 + 1 / (2 * n)),
+        "half_life_mle": LN2 / kappa,
+        "stationary_sd": sigma / np.sqrt(2 * kappa),
+        "loglik": (-0.5 * n) * (np.log(rss) + (np.log(2 * np.pi / n) + 1)),
+    }
+
+
+def _interval_estimates(regression: Regression, robust: Array, fourth: Array, dt: Array) -> dict[str, Array]:
+    """Kurtosis, and the columns that need the slope's exact law (NaN where it is not tabulated)."""
+    n, A, rss = regression.n, regression.spread, regression.rss
+    kurtosis = n * fourth / np.square(rss)
+    law = slope_law(n)
+    if law is None:
+        return {"kurtosis": kurtosis}
+    b, s2, duration = 1 + regression.slope, rss / (n - 2), n * dt
+    pull = widened_pull(law, b, np.sqrt(n * robust / (A * rss)))
+    theta = theta_set(law, b, mean_from=0.0, mean_to=regression.drift, A=A, s2=s2)
+    sigma = sigma_interval(n, b, median_pull=pull.median, A=A, s2=s2, kurtosis=kurtosis, step=dt)
+    lower, median, upper = (_finite(c / duration) for c in (pull.lower, pull.median, pull.upper))
+    return {
+        "kappa_lower": lower,
+        "kappa_upper": upper,
+        "theta_lower": regression.level + theta.lower,
+        "theta_upper": regression.level + theta.upper,
+        "sigma_lower": sigma.lower,
+        "sigma_upper": sigma.upper,
+        "kappa_median_unbiased": median,
+        "no_reversion_p": law.p_no_pull(b),
+        "half_life": _finite(LN2 / median),
+        "half_life_lower": _finite(LN2 / upper),
+        "half_life_upper": _finite(LN2 / lower),
+        "half_life_unbounded": np.where(np.isnan(lower), np.nan, lower == 0),
+        "kurtosis": kurtosis,
+    }
+
+
+def _finite(values: Array) -> Array:
+    """NaN in place of infinity, which is how a missing end is told."""
+    values[np.isinf(values)] = np.nan
+    return values
+
+
+def _blank(columns: dict[str, Array], where: NDArray[np.intp]) -> None:
+    for values in columns.values():
+        values[where] = np.nan
+
+
+def _repair(
+    piece: Piece, doubtful: NDArray[np.intp], dt: Array, columns: dict[str, Array], status: NDArray[np.int8]
+) -> None:
+    """Fit again, from the windows themselves, what the sums can't vouch for."""
+    windows = piece.windows
+    at_once = max(1, _GATHERED // (piece.lookback + 1))
+    for start in range(0, doubtful.size, at_once):
+        where = doubtful[start : start + at_once]
+        part = windows[np.unravel_index(where, windows.shape[:-1])]
+        found, status[where] = _from_windows(part, dt[where], intervals=piece.intervals)
+        for name, values in columns.items():
+            values[where] = found[name]
+
+
+def _from_windows(windows: Array, dt: Array, *, intervals: bool) -> tuple[dict[str, Array], NDArray[np.int8]]:
+    """All columns and the status of windows of any values, shape (m, n + 1)."""
+    finite = np.isfinite(np.abs(windows).max(axis=1))
+    regression, unit, flat = from_windows(np.where(finite[:, None], windows, 0.0))
+    if not intervals:
+        regression = regression.without_fourth()
+    columns, status = _estimates(regression, dt)
+    for name in _IN_UNITS_OF_X:
+        if name in columns:
+            columns[name] *= unit
+    columns["loglik"] -= regression.n * np.log(unit)
+    flat &= status != Status.ALTERNATING
+    _blank(columns, np.flatnonzero(flat | ~finite))
+    status[flat] = Status.FLAT
+    status[~finite] = Status.OUT_OF_RANGE
+    return columns, status
+
+
+MODEL = Model(
+    name="ou",
+    revision=1,
+    equation="dX = kappa (theta - X) dt + sigma dW",
+    range="real",
+    steps="equal",
+    shortest=SHORTEST,
+    parameters=PARAMETERS,
+    columns=COLUMNS,
+    kernel=fit_piece,
+)

@@ -1,0 +1,34 @@
+"""The models, by name."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from types import MappingProxyType
+
+from numpy.typing import ArrayLike
+
+from driftbook.estimators.model import Model
+from driftbook.estimators.models.ou import MODEL as OU
+from driftbook.estimators.result import Fit
+
+MODELS: Mapping[str, Model] = MappingProxyType({model.name: model for model in (OU,)})
+
+
+def rolling(name: str, x: ArrayLike, dt: ArrayLike, lookback: int, *, intervals: bool = True, threads: int = 1) -> Fit:
+    """Fit the model of that name to every window of series: `Model.rolling`, which describes the rest.
+
+    Raises
+    ------
+    ValueError
+        If there is no model of that name.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> fit = rolling("ou", np.array([1.0, 3.0, 2.0, 2.5, 1.5, 2.0, 1.0]), 0.1, 5)
+    >>> fit.kappa.shape
+    (2,)
+    """
+    if name not in MODELS:
+        raise ValueError(f"no model is called {name!r}; there are {', '.join(MODELS)}")
+    return MODELS[name].rolling(x, dt, lookback, intervals=intervals, threads=threads)

@@ -1,0 +1,231 @@
+"""Least squares of a window's increments on its levels: what an Ornstein–Uhlenbeck fit with equal steps needs.
+
+With d_i = x_{i+1} − x_i and an intercept, the slope of d on x is b − 1, where b is the slope of the AR(1) regression
+of x_{i+1} on x_i. Estimating b − 1 itself loses no digits where b is near 1, which is the usual case.
+
+Two ways lead to the same numbers. `from_sums` takes a few sums over every window in rolling position, and says where
+they lost digits; `from_windows` goes through each window twice and loses none. The first is fast, the second repairs
+it where needed.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from driftbook.estimators.windows import Array, PairedTerms, segments
+
+Mask = NDArray[np.bool_]
+
+LOSS = 1e-10  # largest loss that is left standing: estimated relative rounding error of a sum of squares
+LARGEST, SMALLEST = 1e130, 1e-110  # sums of squares outside this have fourth powers that overflow or vanish
+ROUNDING = 2 * np.finfo(np.float64).eps  # residuals this small against the values are rounding, not movement
+
+
+@dataclass(frozen=True)
+class Regression:
+    """Increments on levels, one regression a window; all arrays have one shape.
+
+    Attributes
+    ----------
+    n : int
+        Steps in a window.
+    level : array
+        Mean of x_0 … x_{n-1}.
+    drift : array
+        Mean increment.
+    slope : array
+        Slope of the increments on the levels: b − 1.
+    spread : array
+        Sum of squares of the levels about their mean.
+    rss : array
+        Residual sum of squares.
+    robust : array or None
+        Σ (x_i − level)² e_i² over the residuals e, the middle of White's (1980) covariance, HC0.
+    fourth : array or None
+        Σ e_i⁴.
+    """
+
+    n: int
+    level: Array
+    drift: Array
+    slope: Array
+    spread: Array
+    rss: Array
+    robust: Array | None = None
+    fourth: Array | None = None
+
+    def without_fourth(self) -> Regression:
+        """The same without the sums of degree four."""
+        return replace(self, robust=None, fourth=None)
+
+    def flat(self) -> Regression:
+        """The same with arrays of one dimension."""
+        return Regression(
+            self.n,
+            self.level.reshape(-1),
+            self.drift.reshape(-1),
+            self.slope.reshape(-1),
+            self.spread.reshape(-1),
+            self.rss.reshape(-1),
+            None if self.robust is None else self.robust.reshape(-1),
+            None if self.fourth is None else self.fourth.reshape(-1),
+        )
+
+
+def from_sums(x: Array, lookback: int, offsets: int, *, fourth: bool) -> tuple[Regression, Mask]:
+    """Regress in every window, from sums over windows.
+
+    Parameters
+    ----------
+    x : array, shape (rows, blocks * lookback + offsets)
+        Observations of whole blocks; see `driftbook.estimators.windows`.
+    lookback : int
+        Steps in a window, 3 or more.
+    offsets : int
+        Windows in a block.
+    fourth : bool
+        Whether to compute the sums of degree four, `robust` and `fourth`.
+
+    Returns
+    -------
+    regression : Regression
+        Arrays of shape (rows, blocks, offsets).
+    sound : array of bool, shape (rows, blocks, offsets)
+        False where a sum of squares may have lost more than `LOSS` of its size, left the range in which its square
+        is a number, is no larger than rounding, or met a value that is not finite: what is said there means nothing.
+    """
+    n = float(lookback)
+    pivot = slice(lookback - 1, lookback)
+    steps = segments(x[:, 1:] - x[:, :-1], lookback, lookback + offsets - 1)
+    levels = segments(x[:, :-1], lookback, lookback + offsets - 1)
+    origin, usual = levels[..., pivot], steps[..., pivot]
+    u, e = levels - origin, steps - usual
+    drift = ((x[:, lookback:] - x[:, :-lookback]) / n).reshape(len(x), -1, offsets)
+    e_mean = drift - usual
+    (Su, Suu, Sue, See), squares = _sums_to_degree_2(u, e, lookback)
+    u_mean = Su / n
+    spread = Suu - n * (u_mean * u_mean)
+    slope = (Sue - n * (u_mean * e_mean)) / spread
+    rss = See - n * (e_mean * e_mean) - slope * slope * spread
+    regression = Regression(lookback, u_mean + origin, drift, slope, spread, rss)
+    sound = _is_sound(regression, origin, Suu, See)
+    if fourth:
+        higher = _sums_of_degrees_3_and_4(u, e, squares, lookback)
+        regression, kept = _with_fourth(regression, (u_mean, e_mean), [Suu, Sue, See, *higher])
+        sound &= kept
+    return regression, sound
+
+
+def _sums_to_degree_2(u: Array, e: Array, lookback: int) -> tuple[list[Array], list[Array]]:
+    """Window sums of u, u², u e and e², and the last three terms."""
+    terms = PairedTerms(u.shape, 4)
+    first, uu, ue, ee = terms.parts
+    first[...] = u
+    np.multiply(u, u, out=uu)
+    np.multiply(u, e, out=ue)
+    np.multiply(e, e, out=ee)
+    return terms.sums(lookback), [uu, ue, ee]
+
+
+def _sums_of_degrees_3_and_4(u: Array, e: Array, squares: list[Array], lookback: int) -> list[Array]:
+    """Window sums of u³, u² e, u e², e³, u⁴, u³ e, u² e², u e³ and e⁴."""
+    uu, ue, ee = squares
+    factors = ((uu, u), (uu, e), (ue, e), (ee, e), (uu, uu), (uu, ue), (ue, ue), (ue, ee), (ee, ee))
+    terms = PairedTerms(u.shape, len(factors))
+    for part, (a, b) in zip(terms.parts, factors, strict=True):
+        np.multiply(a, b, out=part)
+    return terms.sums(lookback)
+
+
+def _is_sound(regression: Regression, origin: Array, Suu: Array, See: Array) -> Mask:
+    """Whether spread, slope and rss kept their digits; NaN compares as false.
+
+    A running sum of n squares is off by about eps·√n of its size, four times that at worst in practice: spread and
+    rss are compared with what they were taken from. The mean step is off by eps of itself, which the slope feels n
+    mean levels strong: that is compared with the slope's standard error.
+    """
+    n, slope, spread, rss = regression.n, regression.slope, regression.spread, regression.rss
+    eps = float(np.finfo(np.float64).eps)
+    loss = 4 * eps * n**0.5 / LOSS
+    raw = See + slope * slope * Suu
+    sound: Mask = 2 * loss * raw < rss
+    sound &= loss * Suu < spread
+    sound &= (n * eps / LOSS) ** 2 * Suu * (regression.drift * regression.drift) < rss * spread
+    sound &= 2 * ROUNDING**2 * (n * origin * origin + Suu) < rss
+    sound &= (raw < LARGEST) & (Suu < LARGEST)
+    sound &= (rss > SMALLEST) & (spread > SMALLEST)
+    return sound
+
+
+def _with_fourth(regression: Regression, means: tuple[Array, Array], sums: list[Array]) -> tuple[Regression, Mask]:
+    """Add the two sums of degree four, and say where they kept their digits.
+
+    With g = e − slope·u and α the mean of g, residuals are g − α; the sums of u^j g^k follow from those of u^j e^k by
+    the binomial theorem.
+    """
+    u_mean, e_mean = means
+    Suu, Sue, See, Suuu, Suue, Suee, Seee, Suuuu, Suuue, Suuee, Sueee, Seeee = sums
+    n, m = regression.n, regression.slope
+    alpha = e_mean - m * u_mean
+    Sug, Suug = Sue - m * Suu, Suue - m * Suuu
+    Sgg = See - m * (Sue + Sug)
+    Sugg = Suee - m * (Suue + Suug)
+    Suugg = Suuee + m * (m * Suuuu - 2 * Suuue)
+    Sggg = Seee + m * (m * (3 * Suue - m * Suuu) - 3 * Suee)
+    Sgggg = Seeee + m * (m * (6 * Suuee + m * (m * Suuuu - 4 * Suuue)) - 4 * Sueee)
+    fourth = Sgggg + alpha * (alpha * (6 * Sgg - 3 * n * alpha * alpha) - 4 * Sggg)
+    urr = Sugg + alpha * (alpha * n * u_mean - 2 * Sug)
+    uurr = Suugg + alpha * (alpha * Suu - 2 * Suug)
+    robust = uurr + u_mean * (u_mean * regression.rss - 2 * urr)
+    loss = 4 * np.finfo(np.float64).eps * np.sqrt(n) / LOSS
+    mm = m * m
+    sound: Mask = 8 * loss * (Seeee + mm * mm * Suuuu) < fourth
+    sound &= 8 * loss * (Suuee + mm * Suuuu) < robust
+    return replace(regression, robust=robust, fourth=fourth), sound
+
+
+def from_windows(windows: Array) -> tuple[Regression, Array, Mask]:
+    """Regress in windows given one by one, with means taken off before anything is squared.
+
+    Parameters
+    ----------
+    windows : array, shape (m, n + 1)
+        Finite observations.
+
+    Returns
+    -------
+    regression : Regression
+        Arrays of shape (m,), of observations divided by `unit`.
+    unit : array, shape (m,)
+        A power of two a window, near its largest value: dividing by it is exact, and keeps squares in range.
+    flat : array of bool, shape (m,)
+        True where values do not vary, or residuals are no larger than the rounding of the values.
+    """
+    n = windows.shape[1] - 1
+    exponent = np.frexp(np.abs(windows).max(axis=1))[1] - 1
+    scaled = np.ldexp(windows, -exponent[:, None])
+    x, step = scaled[:, :-1], np.diff(scaled, axis=1)
+    level, u = _centre(x)
+    drift, e = _centre(step)
+    spread = (u * u).sum(axis=1)
+    slope = (u * e).sum(axis=1) / spread
+    residual = e - slope[:, None] * u
+    squares = residual * residual
+    rss = squares.sum(axis=1)
+    flat = ~((spread > 0) & (rss > ROUNDING**2 * (x * x).sum(axis=1)))
+    fourth, robust = (squares * squares).sum(axis=1), (u * u * squares).sum(axis=1)
+    return Regression(n, level, drift, slope, spread, rss, robust, fourth), np.ldexp(1.0, exponent), flat
+
+
+def _centre(values: Array) -> tuple[Array, Array]:
+    """Row means and what remains; the second pass takes off what the first mean lost by rounding."""
+    origin = values[:, :1]
+    rest = values - origin
+    mean = rest.mean(axis=1, keepdims=True)
+    rest -= mean
+    lost = rest.mean(axis=1, keepdims=True)
+    rest -= lost
+    return (origin + (mean + lost))[:, 0], rest

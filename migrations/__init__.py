@@ -1,0 +1,1 @@
+"""Migrations of the book: plain SQL, numbered, applied in order."""

@@ -1,0 +1,91 @@
+"""Commands for when somebody asks."""
+
+from __future__ import annotations
+
+import sys
+from dataclasses import asdict
+from enum import StrEnum
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated
+
+import typer
+
+from driftbook.store.cli import options as opt
+from driftbook.store.cli.output import say, say_json
+from driftbook.store.errors import DifferenceFound
+
+if TYPE_CHECKING:
+    from driftbook.store.verify import Verified
+
+
+class Format(StrEnum):
+    """How the rows of a query are written."""
+
+    TABLE = "table"
+    CSV = "csv"
+    JSON = "json"
+    PARQUET = "parquet"
+
+
+def add_to(app: typer.Typer) -> None:
+    """Adds these commands to the program."""
+    app.command(rich_help_panel=opt.WHEN_ASKED)(sql)
+    app.command(rich_help_panel=opt.WHEN_ASKED)(verify)
+
+
+def sql(
+    book: opt.Book,
+    statement: Annotated[
+        str, typer.Argument(metavar="SQL", help='One SELECT; "-" reads standard input.', show_default=False)
+    ],
+    how: Annotated[Format, typer.Option("--format", help="How rows are written.")] = Format.TABLE,
+    output: Annotated[Path | None, typer.Option("--output", help="A file instead of standard output.")] = None,
+    quiet: opt.Quiet = False,
+    as_json: opt.Json = False,
+) -> None:
+    """Query the book, read-only, with all functions registered.
+
+    Example: driftbook sql desk.duckdb "from ou where series = 'pellets_fob' order by window_end desc limit 3"
+    """
+    from driftbook.store.ask import ask
+    from driftbook.store.cli.rows import write_rows
+
+    text = sys.stdin.read() if statement == "-" else statement
+    with ask(book, text) as rows:
+        if as_json:
+            table = rows.to_arrow_table()
+            say_json({"columns": table.column_names, "rows": [list(row.values()) for row in table.to_pylist()]})
+        else:
+            write_rows(rows, how.value, output)
+    if output is not None:
+        say(f"written to {output}", quiet=quiet or as_json)
+
+
+def verify(book: opt.Book, quiet: opt.Quiet = False, as_json: opt.Json = False) -> int:
+    """Prove the book whole: schema, counts, versions, and the digest of every run.
+
+    Example: driftbook verify desk.duckdb
+    """
+    from driftbook.store.verify import verify as verify_book
+
+    seen = verify_book(book)
+    if as_json:
+        say_json(asdict(seen))
+    else:
+        say(_report(seen), quiet=quiet and not seen.findings)
+    return DifferenceFound.exit_code if seen.findings else 0
+
+
+def _report(seen: Verified) -> str:
+    look = f"{seen.look.looked_at}, {seen.look.found}" if seen.look.looked_at else "not recorded"
+    count = len(seen.findings)
+    found = [f"  {finding.sentence}" for finding in seen.findings]
+    verdict = f"The book is not as it was written: {count} difference{'s' if count > 1 else ''}."
+    return "\n".join(
+        [
+            f"{seen.runs} runs, {seen.leaves} digests over {seen.rows} rows computed again.",
+            f"last digest   {seen.last_digest}",
+            f"last look     {look}",
+            *([verdict, *found] if found else ["The book is whole."]),
+        ]
+    )

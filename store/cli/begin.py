@@ -1,0 +1,140 @@
+"""Commands to begin with."""
+
+from __future__ import annotations
+
+import difflib
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated
+
+import typer
+
+from driftbook.store.cli import options as opt
+from driftbook.store.cli.output import say, say_json
+from driftbook.store.errors import UsageError
+
+if TYPE_CHECKING:
+    from driftbook.store.intake import Outcome
+
+_ROLES = ("series", "time", "value", "open", "high", "low", "volume")
+
+
+def add_to(app: typer.Typer) -> None:
+    """Adds these commands to the program."""
+    app.command(rich_help_panel=opt.TO_BEGIN)(demo)
+    app.command(rich_help_panel=opt.TO_BEGIN)(new)
+    app.command(rich_help_panel=opt.TO_BEGIN)(ingest)
+
+
+def demo(
+    folder: Annotated[Path, typer.Argument(metavar="[FOLDER]", help="Where to put it.")] = Path("island"),
+    quiet: opt.Quiet = False,
+    as_json: opt.Json = False,
+) -> None:
+    """Make a book of an invented island utility, with deliveries and a plan, and run it end to end.
+
+    Example: driftbook demo
+    """
+    from driftbook.store.demo import run_demo
+
+    lines: list[str] = []
+    run_demo(folder, lines.append if as_json else lambda text: say(text, quiet=quiet))
+    if as_json:
+        say_json({"folder": str(folder), "said": lines})
+
+
+def new(book: opt.Book, quiet: opt.Quiet = False, as_json: opt.Json = False) -> None:
+    """Make an empty book.
+
+    Example: driftbook new desk.duckdb
+    """
+    from driftbook.store.swap import create
+
+    create(book)
+    if as_json:
+        say_json({"book": str(book)})
+    else:
+        say(f"Made {book}. Next: driftbook ingest {book} FILE --add-series", quiet=quiet)
+
+
+def ingest(
+    book: opt.Book,
+    files: Annotated[list[Path], typer.Argument(metavar="FILE…", help="CSV or Parquet.", show_default=False)],
+    series: Annotated[str | None, typer.Option("--series", help="All rows are this series.")] = None,
+    add_series: Annotated[bool, typer.Option("--add-series", help="Add series that the book lacks.")] = False,
+    columns: Annotated[
+        str | None, typer.Option("--columns", metavar="time=…,value=…", help="Which column is what.")
+    ] = None,
+    dates: Annotated[
+        str | None, typer.Option("--dates", metavar="day-first|month-first|FORMAT", help="How dates are written.")
+    ] = None,
+    zone: Annotated[str | None, typer.Option("--zone", help="Zone of times that have none.")] = None,
+    dry_run: opt.DryRun = False,
+    at: opt.At = None,
+    strict: opt.Strict = False,
+    yes: opt.Yes = False,
+    wait: opt.Wait = 0,
+    quiet: opt.Quiet = False,
+    as_json: opt.Json = False,
+) -> int:
+    """Take in files without estimating.
+
+    Example: driftbook ingest desk.duckdb prices.csv --add-series
+    """
+    from driftbook.store.intake import Options
+    from driftbook.store.writing import writing
+
+    chosen = Options(series, _roles(columns), dates, zone, add_series=add_series, yes=yes)
+    with writing(book, wait=wait, at=at) as work:
+        outcomes = [work.ingest(file, chosen) for file in files]
+        if dry_run:
+            work.discard()
+    refused = sum(outcome.rows_refused for outcome in outcomes)
+    if as_json:
+        run_id = work.finished.run_id if work.finished else None
+        say_json({"run": run_id, "dry_run": dry_run, "intakes": [_as_dict(outcome) for outcome in outcomes]})
+    else:
+        for outcome in outcomes:
+            say(_summary(outcome, dry_run), quiet=quiet)
+    return 3 if strict and refused else 0
+
+
+def _roles(text: str | None) -> dict[str, str]:
+    """`time=Date,value=Close` as a mapping."""
+    roles = {}
+    for part in text.split(",") if text else []:
+        role, equals, column = part.partition("=")
+        if not equals or role not in _ROLES:
+            near = difflib.get_close_matches(role, _ROLES, n=1)
+            hint = f"did you mean {near[0]}=…?" if near else f"there are {', '.join(_ROLES)}"
+            raise UsageError(f"--columns: {part!r} is no role=column; {hint}")
+        roles[role] = column
+    return roles
+
+
+def _summary(outcome: Outcome, dry_run: bool) -> str:
+    if outcome.known_already:
+        return f"{outcome.source}: these bytes are known already; nothing was done."
+    counts = (
+        f"{outcome.source}: {outcome.rows_read} rows read, {outcome.rows_new} new, {outcome.rows_revised} revised, "
+        f"{outcome.rows_same} same, {outcome.rows_refused} refused."
+    )
+    added = f"\n  series added: {', '.join(outcome.series_added)}" if outcome.series_added else ""
+    refused = "".join(f"\n  line {row.line}: {row.reason}: {row.text}" for row in outcome.refused)
+    more = outcome.rows_refused - len(outcome.refused)
+    rest = f"\n  and {more} more, in the view refused_row" if more > 0 else ""
+    return counts + added + refused + rest + ("\n  (dry run: nothing was changed)" if dry_run else "")
+
+
+def _as_dict(outcome: Outcome) -> dict[str, object]:
+    return {
+        "source": outcome.source,
+        "intake": outcome.intake_id,
+        "known_already": outcome.known_already,
+        "rows_read": outcome.rows_read,
+        "rows_new": outcome.rows_new,
+        "rows_revised": outcome.rows_revised,
+        "rows_same": outcome.rows_same,
+        "rows_refused": outcome.rows_refused,
+        "series_added": list(outcome.series_added),
+        "refused": [{"line": row.line, "reason": row.reason, "text": row.text} for row in outcome.refused],
+    }

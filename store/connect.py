@@ -1,0 +1,102 @@
+"""Reading a book: a private in-memory DuckDB with the book attached read-only and all functions registered."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+
+import duckdb
+
+from driftbook.store import functions, migrate
+from driftbook.store.errors import BookError, BookLocked
+from driftbook.store.sql import query
+from driftbook.store.swap import require_book
+
+_BOOK = "book"
+
+
+def connect(book: str | os.PathLike[str]) -> duckdb.DuckDBPyConnection:
+    """A read-only connection to a book, with its views, macros and the estimators' functions.
+
+    The connection keeps the version of the book that it opened, whatever writers do; connect again for a newer one.
+    It may be used for any number of queries, cursors and threads.
+
+    Raises
+    ------
+    BookError
+        There is no book at that path, it is of another schema than this driftbook's, or it cannot be opened.
+    """
+    con = _opened(Path(book))
+    try:
+        _mirror(con)
+        functions.register(con, functions.InlineExecutor())
+    except BaseException:
+        con.close()
+        raise
+    return con
+
+
+@contextmanager
+def attached(book: Path) -> Iterator[duckdb.DuckDBPyConnection]:
+    """The bare book, read-only, as the default catalog: for what looks at the base tables themselves."""
+    with _opened(book) as con:
+        con.execute(f"use {_BOOK}")
+        yield con
+
+
+def _opened(path: Path) -> duckdb.DuckDBPyConnection:
+    require_book(path)
+    con = duckdb.connect(":memory:")
+    try:
+        con.execute("set TimeZone = 'UTC'")
+        _attach(con, path)
+        _check_schema(con, path)
+    except BaseException:
+        con.close()
+        raise
+    return con
+
+
+def _attach(con: duckdb.DuckDBPyConnection, path: Path) -> None:
+    quoted = str(path).replace("'", "''")
+    try:
+        con.execute(f"attach '{quoted}' as {_BOOK} (read_only)")
+    except duckdb.Error as error:
+        message = str(error).splitlines()[0]
+        if "lock" in message:
+            raise BookLocked(
+                f"{path} is open for writing outside driftbook; close it there, then try again."
+            ) from error
+        raise BookError(f"{path} cannot be opened as a book: {message}") from error
+
+
+def _check_schema(con: duckdb.DuckDBPyConnection, path: Path) -> None:
+    done = migrate.applied(con, _BOOK)
+    migrate.check_known(done, str(path))
+    if done[-1][0] < migrate.newest():
+        raise BookError(
+            f"{path} has schema {done[-1][0]} and this driftbook reads {migrate.newest()}; "
+            f"the next writer upgrades it: run `driftbook refresh {path}`."
+        )
+
+
+def _mirror(con: duckdb.DuckDBPyConnection) -> None:
+    """Makes the book's tables, views and macros again here, under the names that they have in the book.
+
+    The names then resolve for every cursor, which a `USE` would not do.
+    """
+    for schema in ("base", "versions"):
+        con.execute(f"create schema {schema}")
+    for (table,) in con.execute(query("tables_of"), [_BOOK]).fetchall():
+        con.execute(f"create view base.{table} as from {_BOOK}.base.{table}")
+    for migration in migrate.all_migrations():
+        for statement in con.extract_statements(migration.text):
+            if _is_for_readers(statement.query):
+                con.execute(statement)
+
+
+def _is_for_readers(sql: str) -> bool:
+    text = "\n".join(line for line in sql.splitlines() if not line.startswith("--")).strip().lower()
+    return text.startswith(("create view", "create macro", "comment on view", "comment on macro"))

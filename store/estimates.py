@@ -1,0 +1,84 @@
+"""Estimates as versions: a new version only where the numbers changed; the old one is closed, never overwritten.
+
+Two estimates are the same when their status, steps and window agree, their log-likelihoods agree within 1e-6, and
+every other number within 1e-9 of its size or 1e-6 of its parameter's standard error, whichever is larger.
+"""
+
+from __future__ import annotations
+
+import duckdb
+import pyarrow as pa
+
+from driftbook.estimators import Model
+from driftbook.store.model_schema import stored_columns
+from driftbook.store.sql import only_row, query
+
+_KEY = "series_id, lookback, window_end"
+
+
+class EstimateTable:
+    """The SQL that keeps one model's table, made from what the model says of itself."""
+
+    def __init__(self, model: Model) -> None:
+        self.model = model
+        self.stored = [name for name, _ in stored_columns(model)]
+
+    def in_force(self, con: duckdb.DuckDBPyConnection) -> dict[tuple[int, int], int]:
+        """How many rows are in force for each (series, lookback)."""
+        rows = con.execute(
+            f"select series_id, lookback, count(*) from base.{self.model.name} where run_to is null group by all"
+        ).fetchall()
+        return {(series_id, lookback): count for series_id, lookback, count in rows}
+
+    def estimate(self, con: duckdb.DuckDBPyConnection, series: list[int], slices: pa.Table) -> tuple[int, int]:
+        """Computes the due slices into the temporary table `fresh`; gives the windows due and those with numbers."""
+        con.register("due_slice", slices)
+        columns = ", ".join(f"f.{name}" for name in self.stored)
+        con.execute(
+            query("estimate_due").format(rolling=f"rolling_{self.model.name}", columns=columns),
+            {"series": series},
+        )
+        con.unregister("due_slice")
+        due, fitted = only_row(con, "select count(*), count(loglik) from fresh")
+        return due, fitted
+
+    def write(self, con: duckdb.DuckDBPyConnection, spans: pa.Table, run_id: int) -> None:
+        """Puts what changed in `fresh` in force and closes what it replaces or what is no longer there."""
+        name = self.model.name
+        con.register("due_span", spans)
+        con.execute(query("find_changed").format(table=name, same=self._same()))
+        con.execute(query("close_replaced").format(table=name), {"run": run_id})
+        con.execute(query("close_vanished").format(table=name), {"run": run_id})
+        columns = ", ".join(["series_id", "lookback", "window_start", "window_end", "n", *self.stored, "status"])
+        con.execute(
+            f"insert into base.{name} ({columns}, revision, run_from) "
+            f"select {columns}, {self.model.revision}, {run_id} from changed order by {_KEY}"
+        )
+        con.execute("drop table changed")
+        con.execute("drop table fresh")
+        con.unregister("due_span")
+
+    def close_entries(self, con: duckdb.DuckDBPyConnection, entries: list[tuple[int, int]], run_id: int) -> None:
+        """Closes all rows in force of some (series, lookback)."""
+        for series_id, lookback in entries:
+            con.execute(query("close_entry").format(table=self.model.name), [run_id, series_id, lookback])
+
+    def _same(self) -> str:
+        exact = ["f.n = b.n", "f.window_start = b.window_start", "f.status = b.status"]
+        return " and ".join([*exact, *(self._close(name) for name in self.stored)])
+
+    def _close(self, name: str) -> str:
+        error = self._standard_error(name)
+        tolerance = f"1e-9 * abs(b.{name})"
+        if error:
+            tolerance = f"greatest({tolerance}, 1e-6 * coalesce(b.{error}, 0))"
+        if name == "loglik":
+            tolerance = "1e-6"
+        apart = f"abs(f.{name} - b.{name}) <= {tolerance}"
+        return f"(f.{name} is not distinct from b.{name} or coalesce({apart}, false))"
+
+    def _standard_error(self, name: str) -> str | None:
+        for parameter in self.model.parameters:
+            if name == parameter.name or name.startswith(parameter.name + "_"):
+                return f"{parameter.name}_se"
+        return None

@@ -1,0 +1,84 @@
+"""What a person says about a source; all but the two last change what its bytes mean."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from datetime import datetime
+from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
+
+from driftbook.store.errors import IntakeError
+
+DAY_FIRST = "day-first"
+MONTH_FIRST = "month-first"
+ROLES = ("series", "time", "value", "open", "high", "low", "volume")
+
+
+@dataclass(frozen=True)
+class Options:
+    """How to read a source.
+
+    `series`: all rows are this series. `columns`: role to column name. `dates`: day-first, month-first or a
+    strptime form. `zone`: the zone of times without one, instead of the series' own. `add_series`: unknown names
+    become series. `yes`: more than a tenth of a series may be withdrawn at once.
+    """
+
+    series: str | None = None
+    columns: Mapping[str, str] = field(default_factory=dict)
+    dates: str | None = None
+    zone: str | None = None
+    add_series: bool = False
+    yes: bool = False
+
+    def identity(self) -> str:
+        """The options that change the meaning of bytes, as JSON; with the bytes they say whether an intake is known."""
+        meaning = {
+            "series": self.series,
+            "columns": dict(self.columns),
+            "dates": self.dates,
+            "zone": self.zone,
+        }
+        return json.dumps(meaning, sort_keys=True, ensure_ascii=False)
+
+    @property
+    def has_date_form(self) -> bool:
+        """Whether `dates` is a strptime form, which then is the only accepted one."""
+        return self.dates is not None and self.dates not in (DAY_FIRST, MONTH_FIRST)
+
+
+def from_identity(text: str) -> Options:
+    """The options of an earlier intake."""
+    return Options(**json.loads(text))
+
+
+def check(options: Options) -> None:
+    """Refuses options that no row could be read with."""
+    for role in options.columns:
+        if role not in ROLES:
+            raise IntakeError(f"--columns knows no {role!r}; say one of {', '.join(ROLES)}.")
+    if options.zone is not None:
+        _check_zone(options.zone)
+    if options.dates is not None and options.has_date_form:
+        _check_date_form(options.dates)
+
+
+def _check_zone(zone: str) -> None:
+    try:
+        ZoneInfo(zone)
+    except (ZoneInfoNotFoundError, ValueError, OSError):
+        raise IntakeError(f"--zone {zone!r} is no time zone; say a name like Europe/Berlin or UTC.") from None
+
+
+def _check_date_form(form: str) -> None:
+    """A form must give back the year at least; strptime would silently put 1900 in its place."""
+    sample = datetime(2023, 11, 1)
+    try:
+        is_dated = datetime.strptime(sample.strftime(form), form).year == sample.year
+    except ValueError:
+        is_dated = False
+    if not is_dated:
+        raise IntakeError(
+            f"--dates {form!r} is neither day-first nor month-first nor a strptime form that holds a year, "
+            "such as %d.%m.%Y or %y%m%d."
+        )

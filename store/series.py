@@ -1,0 +1,81 @@
+"""The series of a book and their settings."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from datetime import datetime
+
+import duckdb
+
+from driftbook.store.sql import only_row, query
+
+
+@dataclass(frozen=True)
+class Setting:
+    """How one series is to be read and estimated; the defaults are those of a series added by `--add-series`."""
+
+    sign: str = "any"
+    unit: str | None = None
+    clock: str = "trading"
+    periods_per_year: float | None = 252.0
+    time_zone: str = "UTC"
+    same_time: str = "refuse"
+    stale_after_days: float = 5.0
+    planned: bool = False
+
+
+@dataclass(frozen=True)
+class Series:
+    """One named series of the book with the setting in force."""
+
+    series_id: int
+    name: str
+    setting: Setting
+
+
+@dataclass(frozen=True)
+class Stamp:
+    """The run that a change belongs to, and the time that its new rows carry as 'received' or 'added'."""
+
+    run_id: int
+    time: datetime
+
+
+def known_series(con: duckdb.DuckDBPyConnection) -> dict[str, Series]:
+    """All series of the book by name."""
+    rows = con.execute(query("known_series")).fetchall()
+    return {name: Series(series_id, name, Setting(*setting)) for series_id, name, *setting in rows}
+
+
+def add_series(con: duckdb.DuckDBPyConnection, names: dict[str, Setting], stamp: Stamp) -> None:
+    """Adds series that the book does not have yet, in the order given."""
+    (first_free,) = only_row(con, "select coalesce(max(series_id), 0) + 1 from base.series")
+    for series_id, (name, setting) in enumerate(names.items(), start=first_free):
+        con.execute("insert into base.series values (?, ?, ?, ?)", [series_id, name, stamp.time, stamp.run_id])
+        _insert_setting(con, series_id, setting, stamp)
+
+
+def change_setting(con: duckdb.DuckDBPyConnection, series: Series, setting: Setting, stamp: Stamp) -> None:
+    """Puts a new version of a series' setting in force."""
+    con.execute(
+        "update base.setting set run_to = ? where series_id = ? and run_to is null", [stamp.run_id, series.series_id]
+    )
+    _insert_setting(con, series.series_id, setting, stamp)
+
+
+def _insert_setting(con: duckdb.DuckDBPyConnection, series_id: int, setting: Setting, stamp: Stamp) -> None:
+    con.execute(
+        query("insert_setting"),
+        [
+            series_id,
+            setting.sign,
+            setting.unit,
+            setting.clock,
+            setting.periods_per_year,
+            setting.time_zone,
+            setting.same_time,
+            setting.stale_after_days,
+            setting.planned,
+            stamp.run_id,
+        ],
+    )

@@ -1,0 +1,23 @@
+-- name: insert_leaves
+-- The digests of what a run did, one for each table and series.
+insert into base.leaf (run_id, table_name, series_id, migration, rows_in, rows_closed, sha256)
+select f.run_id, f.table_name, f.series_id, f.migration, f.rows_in, f.rows_closed, f.sha256
+from found_leaves f
+
+-- name: insert_run
+-- The row of a run; its digest is filled in once the row can be read back.
+insert into base.run
+  (run_id, kind, moment, told, started_at, finished_at, plan_sha256, package_version, migration,
+   windows_due, windows_fitted, windows_failed, rows_written, digest)
+values (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, '')
+
+-- name: leaves_of_run
+-- The leaves of one run in the order in which its digest takes them.
+select l.run_id, l.table_name, l.series_id, l.migration, l.rows_in, l.rows_closed, l.sha256
+from base.leaf l
+where l.run_id = ?
+order by l.table_name, l.series_id nulls first
+
+-- name: tables_of
+-- The base tables of an attached book.
+select t.table_name from duckdb_tables() t where t.database_name = ? and t.schema_name = 'base'

@@ -1,0 +1,13 @@
+-- name: known_series
+-- Every series with the setting in force, in the order in which they were added.
+select s.series_id, s.series, t.sign, t.unit, t.clock, t.periods_per_year, t.time_zone, t.same_time,
+  t.stale_after_days, t.planned
+from base.series s
+join base.setting t on t.series_id = s.series_id and t.run_to is null
+order by s.series_id
+
+-- name: insert_setting
+-- One new version of one series' setting.
+insert into base.setting
+  (series_id, sign, unit, clock, periods_per_year, time_zone, same_time, stale_after_days, planned, run_from)
+values (?, ?, ?, ?, ?, ?, ?, ?, ?, ?)

@@ -1,0 +1,54 @@
+-- name: catalog_of_book
+-- Everything that the book's catalog defines, with its comment.
+select 'table' as kind, t.schema_name || '.' || t.table_name as name, t.sql, t.comment
+from duckdb_tables() t
+where t.database_name = current_database() and not t.internal and not t.temporary
+union all
+select 'view', v.schema_name || '.' || v.view_name, v.sql, v.comment
+from duckdb_views() v
+where v.database_name = current_database() and not v.internal and not v.temporary
+union all
+select 'macro', f.schema_name || '.' || f.function_name, f.parameters::varchar || f.macro_definition, f.comment
+from duckdb_functions() f
+where f.database_name = current_database() and not f.internal
+union all
+select 'column', c.schema_name || '.' || c.table_name || '.' || c.column_name, c.data_type, c.comment
+from duckdb_columns() c
+where c.database_name = current_database() and not c.internal
+
+-- name: all_leaves
+-- Every digest that was stored.
+select l.run_id, l.table_name, l.series_id, l.migration, l.rows_in, l.rows_closed, l.sha256 from base.leaf l
+
+-- name: runs_out_of_order
+-- Runs whose number is not one more, or whose moment is not later, than that of the run before.
+select q.run_id
+from (
+  select r.run_id, r.moment, lag(r.run_id, 1, 0) over w as run_before, lag(r.moment) over w as moment_before
+  from base.run r
+  window w as (order by r.run_id)
+) q
+where q.run_id <> q.run_before + 1 or q.moment <= q.moment_before
+order by q.run_id
+
+-- name: intakes_that_do_not_add_up
+-- Every row of an intake is counted once.
+select i.intake_id, i.run_from
+from base.intake i
+where i.rows_read <> i.rows_new + i.rows_revised + i.rows_same + i.rows_refused
+order by i.intake_id
+
+-- name: overlapping_versions
+-- Rows that begin before the version before them has ended; a row replaced within its own run has no time in force.
+select q.series_id, q.run_from, count(*)
+from (
+  select {series} as series_id, v.run_from,
+    coalesce(max(coalesce(v.run_to, 2147483647)) over (
+      partition by {subject} order by v.run_from, v.run_to nulls last
+      rows between unbounded preceding and 1 preceding), 0) as ends_before
+  from base.{table} v
+  where v.run_to is null or v.run_to > v.run_from
+) q
+where q.run_from < q.ends_before
+group by all
+order by all

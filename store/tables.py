@@ -1,0 +1,66 @@
+"""The tables that runs are proven over: what identifies a row's version, and whether rows are closed."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cache
+
+import duckdb
+
+from driftbook.estimators import MODELS
+from driftbook.store import migrate
+
+
+@dataclass(frozen=True)
+class Tracked:
+    """A base table with run_from and, if its rows are closed, run_to.
+
+    `subject` is what may be in force only once at a time; with run_from and `also` it identifies one version.
+    """
+
+    name: str
+    subject: tuple[str, ...]
+    by_series: bool = True
+    closes: bool = True
+    also: tuple[str, ...] = ()
+
+    @property
+    def key(self) -> tuple[str, ...]:
+        """The columns that identify one version of a row, in digest order."""
+        return (*self.subject, "run_from", *self.also)
+
+
+BOOK_TABLES = (
+    Tracked("series", ("series_id",), closes=False),
+    Tracked("setting", ("series_id",)),
+    Tracked("intake", ("intake_id",), by_series=False, closes=False),
+    Tracked("observation", ("series_id", "observed_at"), also=("take",)),
+    Tracked("refused_row", ("intake_id", "line", "cell"), by_series=False, also=("reason",)),
+    Tracked("plan", (), by_series=False, also=("plan_sha256",)),
+    Tracked("model_revision", ("model",), by_series=False),
+)
+
+
+def tracked_tables() -> tuple[Tracked, ...]:
+    """All tracked tables: those of the book and one for each registered model."""
+    models = (Tracked(name, ("series_id", "lookback", "window_end")) for name in MODELS)
+    return (*BOOK_TABLES, *models)
+
+
+@cache
+def columns_at(migration: int) -> dict[str, list[str]]:
+    """The columns of every base table at a migration, without run_to, in their order."""
+    with duckdb.connect(":memory:") as con:
+        for step in migrate.all_migrations():
+            if step.number <= migration:
+                migrate.apply(con, step)
+        rows = con.execute(
+            "select table_name, column_name from duckdb_columns() where schema_name = 'base' and not internal "
+            "order by table_name, column_index"
+        ).fetchall()
+    found: dict[str, list[str]] = {}
+    for table_name, column_name in rows:
+        found.setdefault(table_name, [])
+        if column_name != "run_to":
+            found[table_name].append(column_name)
+    return found

@@ -1,0 +1,176 @@
+"""Proof that a book is whole: its schema, its counts, its versions, and the chain of digests over every run."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Iterator
+from dataclasses import dataclass
+from itertools import groupby
+from pathlib import Path
+from tempfile import TemporaryDirectory
+
+import duckdb
+
+from driftbook.store import digest, lock, migrate
+from driftbook.store.connect import attached
+from driftbook.store.runs import NO_DIGEST, chain
+from driftbook.store.sql import only_row, query
+from driftbook.store.swap import create
+from driftbook.store.tables import Tracked, columns_at, tracked_tables
+
+
+@dataclass(frozen=True)
+class Finding:
+    """One thing that is not as it was written: where, and a sentence."""
+
+    sentence: str
+    table_name: str | None = None
+    series: str | None = None
+    run_id: int | None = None
+
+
+@dataclass(frozen=True)
+class Verified:
+    """What `verify` saw."""
+
+    runs: int
+    leaves: int
+    rows: int
+    last_digest: str
+    look: lock.LastLook
+    findings: list[Finding]
+
+
+def verify(book: str | os.PathLike[str]) -> Verified:
+    """Checks a book against its digests; changes nothing.
+
+    Every row that was changed, added, removed, closed or reopened outside driftbook is found, by table, series and run.
+    """
+    path = Path(book)
+    with attached(path) as con:
+        schema = list(_schema_findings(con))
+        findings = schema or [
+            *_leaf_findings(con),
+            *_chain_findings(con),
+            *_run_findings(con),
+            *_intake_findings(con),
+            *(finding for table in tracked_tables() if table.closes for finding in _version_findings(con, table)),
+        ]
+        runs, last = only_row(con, "select count(*), coalesce(max_by(digest, run_id), '') from base.run")
+        leaves, rows = only_row(con, "select count(*), coalesce(sum(rows_in), 0) from base.leaf")
+    return Verified(runs, leaves, int(rows), last or NO_DIGEST, lock.last_look(path), findings)
+
+
+def _schema_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
+    """The catalog against that of a fresh book."""
+    expected = _fresh_catalog()
+    found = _catalog(con)
+    for name in sorted(expected.keys() | found.keys()):
+        if name not in found:
+            yield Finding(f"{name} is missing from the book.")
+        elif name not in expected:
+            yield Finding(f"{name} is in the book and driftbook did not make it.")
+        elif expected[name] != found[name]:
+            yield Finding(f"{name} is defined differently from what the migrations say.")
+
+
+def _fresh_catalog() -> dict[str, tuple[str, str | None]]:
+    # read back from a file, since definitions come back from one in another wording than they were given in
+    with TemporaryDirectory() as folder:
+        create(Path(folder) / "fresh.duckdb")
+        with attached(Path(folder) / "fresh.duckdb") as fresh:
+            return _catalog(fresh)
+
+
+def _catalog(con: duckdb.DuckDBPyConnection) -> dict[str, tuple[str, str | None]]:
+    rows = con.execute(query("catalog_of_book")).fetchall()
+    return {f"{kind} {name}": (sql, comment) for kind, name, sql, comment in rows}
+
+
+def _leaf_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
+    """Every leaf computed again from the rows that are there."""
+    stored = {
+        (leaf.table_name, leaf.series_id, leaf.run_id): leaf
+        for leaf in (digest.Leaf(*row) for row in con.execute(query("all_leaves")).fetchall())
+    }
+    names = dict(con.execute("select series_id, series from base.series").fetchall())
+    seen = set()
+    for leaf in _leaves_again(con):
+        where = (leaf.table_name, leaf.series_id, leaf.run_id)
+        seen.add(where)
+        if where not in stored:
+            yield _finding(leaf, names, f"holds {leaf.rows_in} rows and {leaf.rows_closed} closed that no run wrote")
+        elif stored[where] != leaf:
+            yield _finding(leaf, names, _difference(stored[where], leaf))
+    for where in sorted(stored.keys() - seen, key=str):
+        gone = stored[where]
+        yield _finding(gone, names, f"has lost the {gone.rows_in} rows and {gone.rows_closed} closed of this run")
+
+
+def _leaves_again(con: duckdb.DuckDBPyConnection) -> Iterator[digest.Leaf]:
+    bounds = con.execute("select run_id, migration from base.run order by run_id").fetchall()
+    last = max((run_id for run_id, _ in bounds), default=0)
+    for table in tracked_tables():
+        for migration, group in groupby(bounds, key=lambda run: run[1]):
+            runs = [run_id for run_id, _ in group]
+            if table.name in columns_at(migration):
+                columns = columns_at(migration)[table.name]
+                yield from digest.leaves(con, table, columns, (runs[0], runs[-1]), migration)
+        if _beyond(con, table, last):
+            columns = columns_at(migrate.newest())[table.name]
+            yield from digest.leaves(con, table, columns, (last + 1, 2**31 - 1), migrate.newest())
+
+
+def _beyond(con: duckdb.DuckDBPyConnection, table: Tracked, last: int) -> bool:
+    """Whether a table holds rows of runs that the book does not know."""
+    closed = "or run_to > $last" if table.closes else ""
+    sql = f"select count(*) from base.{table.name} where run_from > $last {closed}"
+    return bool(only_row(con, sql, {"last": last})[0])
+
+
+def _difference(stored: digest.Leaf, found: digest.Leaf) -> str:
+    if (stored.rows_in, stored.rows_closed) != (found.rows_in, found.rows_closed):
+        return (
+            f"holds {found.rows_in} rows and {found.rows_closed} closed "
+            f"where the run wrote {stored.rows_in} and closed {stored.rows_closed}"
+        )
+    return f"has the right count of rows ({found.rows_in} and {found.rows_closed} closed) but other contents"
+
+
+def _finding(leaf: digest.Leaf, names: dict[int, str], what: str) -> Finding:
+    series = None if leaf.series_id is None else names.get(leaf.series_id, f"number {leaf.series_id}")
+    of_series = "" if series is None else f", series {series!r}"
+    return Finding(f"{leaf.table_name}{of_series}, run {leaf.run_id}: {what}.", leaf.table_name, series, leaf.run_id)
+
+
+def _chain_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
+    for run_id, stored in con.execute("select run_id, digest from base.run order by run_id").fetchall():
+        if chain(con, run_id) != stored:
+            yield Finding(
+                f"run {run_id}: its row, its leaves or the digest before it are not those that it was written with.",
+                "run",
+                run_id=run_id,
+            )
+
+
+def _run_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
+    for (run_id,) in con.execute(query("runs_out_of_order")).fetchall():
+        sentence = f"run {run_id}: its number or its moment does not follow the run before it."
+        yield Finding(sentence, "run", run_id=run_id)
+
+
+def _intake_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
+    for intake_id, run_id in con.execute(query("intakes_that_do_not_add_up")).fetchall():
+        sentence = f"intake {intake_id}, run {run_id}: rows read are not new + revised + same + refused."
+        yield Finding(sentence, "intake", run_id=run_id)
+
+
+def _version_findings(con: duckdb.DuckDBPyConnection, table: Tracked) -> Iterator[Finding]:
+    """Rows of which two versions are in force at once."""
+    subject = ", ".join(table.subject) or "1"
+    series = "series_id" if table.by_series else "null"
+    names = dict(con.execute("select series_id, series from base.series").fetchall())
+    sql = query("overlapping_versions").format(table=table.name, subject=subject, series=series)
+    for series_id, run_id, count in con.execute(sql).fetchall():
+        leaf = digest.Leaf(run_id, table.name, series_id, 0, 0, 0, "")
+        yield _finding(leaf, names, f"{count} rows have another version in force at the same time")

@@ -1,0 +1,130 @@
+"""The Python way to write: one block, one run, one swap."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Callable, Iterator
+from concurrent.futures import Executor, ProcessPoolExecutor
+from contextlib import ExitStack, contextmanager
+from datetime import datetime
+from multiprocessing import get_context
+from pathlib import Path
+
+import polars as pl
+
+from driftbook.store import functions, intake, runs
+from driftbook.store.errors import UsageError
+from driftbook.store.plan import PlanText, read_plan
+from driftbook.store.refresh import Progress, Refreshed, refresh
+from driftbook.store.swap import Draft, rewriting
+
+
+class Writing:
+    """A book under change. What is done becomes one run when the block ends, or nothing does."""
+
+    def __init__(self, draft: Draft, run: runs.Run, stack: ExitStack) -> None:
+        self._draft = draft
+        self._run = run
+        self._stack = stack
+        self._refreshed = False
+        self._dry = False
+        self.finished: runs.Finished | None = None
+
+    def ingest(
+        self,
+        source: str | os.PathLike[str] | pl.DataFrame,
+        options: intake.Options | None = None,
+        *,
+        name: str | None = None,
+    ) -> intake.Outcome:
+        """Takes in a file or a frame; raises IntakeError for what cannot be read at all."""
+        if self._refreshed:
+            raise UsageError("take in first and refresh last: estimates are made of what was taken in before.")
+        chosen = options or intake.Options()
+        read_from = source if isinstance(source, pl.DataFrame) else Path(source)
+        return intake.take_in(self._run.con, read_from, chosen, self._run.stamp, name=name)
+
+    def refresh(
+        self,
+        plan: str | os.PathLike[str] | PlanText | None = None,
+        *,
+        everything: bool = False,
+        yes: bool = False,
+        workers: int = 1,
+        report: Callable[[Progress], None] | None = None,
+    ) -> Refreshed:
+        """Estimates what is due under a plan file, or under the book's plan, with `workers` processes."""
+        return self._refresh(plan, everything=everything, yes=yes, workers=workers, dry_run=False, report=report)
+
+    def due(self, plan: str | os.PathLike[str] | PlanText | None = None, *, everything: bool = False) -> Refreshed:
+        """Counts what a refresh would compute and close; the block then changes nothing."""
+        self._dry = True
+        return self._refresh(plan, everything=everything, yes=True, workers=1, dry_run=True)
+
+    def discard(self) -> None:
+        """Leaves the book as it is, whatever was done in this block."""
+        self._dry = True
+
+    def _refresh(
+        self,
+        plan: str | os.PathLike[str] | PlanText | None,
+        *,
+        everything: bool,
+        yes: bool,
+        workers: int,
+        dry_run: bool,
+        report: Callable[[Progress], None] | None = None,
+    ) -> Refreshed:
+        if self._refreshed:
+            raise UsageError("one refresh a run: open another block for the next.")
+        self._refreshed = True
+        text = plan if plan is None or isinstance(plan, PlanText) else read_plan(Path(plan))
+        functions.register(self._run.con, self._stack.enter_context(_executor(workers)))
+        return refresh(self._run, text, everything=everything, yes=yes, dry_run=dry_run, report=report)
+
+    def finish(self) -> None:
+        """Ends the run: writes its row and digests, and lets the draft take the book's place if anything changed."""
+        if self._dry:
+            return
+        self.finished = runs.finish(self._run, migrated=self._draft.migrated)
+        self._draft.kept = self.finished is not None
+        self._draft.outcome = f"run {self.finished.run_id}" if self.finished else "nothing new"
+
+
+@contextmanager
+def writing(book: str | os.PathLike[str], *, wait: float = 0.0, at: str | datetime | None = None) -> Iterator[Writing]:
+    """Opens a book for one run: copy, work, swap.
+
+    Parameters
+    ----------
+    book : path
+        The book's file.
+    wait : float
+        Seconds to wait for another writer.
+    at : text or datetime
+        The run's moment, told instead of taken from the clock.
+
+    Raises
+    ------
+    BookLocked
+        Another writer holds the book.
+    BookError
+        The book cannot be read or written; it is unchanged.
+    """
+    path = Path(book)
+    with rewriting(path, wait) as draft, ExitStack() as stack:
+        work = Writing(draft, runs.begin(draft.con, at), stack)
+        yield work
+        work.finish()
+
+
+@contextmanager
+def _executor(workers: int) -> Iterator[Executor]:
+    if workers < 1:
+        raise UsageError(f"--workers must be 1 or more, got {workers}.")
+    if workers == 1:
+        yield functions.InlineExecutor()
+        return
+    # spawned, never forked: a fork would copy DuckDB's threads and locks in mid-air
+    with ProcessPoolExecutor(workers, mp_context=get_context("spawn")) as pool:
+        yield pool

@@ -1,0 +1,105 @@
+"""The names that users, dashboards and cron jobs rely on."""
+
+import subprocess
+import sys
+from importlib import import_module
+
+import duckdb
+import pytest
+
+from driftbook import estimators, store
+from driftbook.store import migrate
+
+VIEWS = {
+    "series": "series, sign, unit, clock, periods_per_year, time_zone, stale_after_days, planned, added_at",
+    "observation": "series, observed_at, value, open, high, low, volume, intake_id",
+    "intake": "intake_id, run_id, source, sha256, received_at, rows_read, rows_new, rows_revised, rows_same, "
+    "rows_refused",
+    "refused_row": "intake_id, line, text, reason",
+    "run": "run_id, kind, moment, told, started_at, finished_at, plan_sha256, package_version, windows_due, "
+    "windows_fitted, windows_failed, rows_written, digest",
+    "plan": "plan_sha256, name, text, run_id",
+    "ou": "series, lookback, window_start, window_end, n, kappa, kappa_se, kappa_lower, kappa_upper, theta, theta_se, "
+    "theta_lower, theta_upper, sigma, sigma_se, sigma_lower, sigma_upper, kappa_median_unbiased, no_reversion_p, "
+    "half_life, half_life_lower, half_life_upper, half_life_mle, half_life_unbounded, stationary_sd, kurtosis, "
+    "loglik, status, revision, run_id",
+}
+VERSIONED = ("series", "observation", "refused_row", "plan", "ou")
+COMMANDS = {
+    "refresh": "--plan --workers --all --dry-run --at --strict --yes --wait --quiet --json",
+    "sql": "--format --output --quiet --json",
+    "verify": "--quiet --json",
+    "demo": "--quiet --json",
+    "new": "--quiet --json",
+    "ingest": "--series --add-series --columns --dates --zone --dry-run --at --strict --yes --wait --quiet --json",
+}
+
+
+@pytest.fixture(scope="module")
+def empty():
+    with duckdb.connect() as con:
+        migrate.apply_pending(con)
+        yield con
+
+
+@pytest.mark.parametrize("view", VIEWS)
+def test_a_view_has_the_columns_that_were_promised_in_their_order(empty, view):
+    promised = VIEWS[view].split(", ")
+    there = [name for name in empty.sql(f"from main.{view}").columns if name in promised]
+    assert there == promised
+
+
+@pytest.mark.parametrize("view", VERSIONED)
+def test_a_versioned_view_can_be_asked_as_of_a_moment_at_a_run_and_in_all_versions(empty, view):
+    columns = empty.sql(f"from main.{view}").columns
+    assert empty.sql(f"from {view}_as_of('2026-01-31')").columns == columns
+    assert empty.sql(f"from {view}_as_of(moment := date '2026-01-31')").columns == columns
+    assert empty.sql(f"from {view}_at_run(3)").columns == columns
+    extra = ["run_from", "run_to", "in_force_from", "in_force_to"]
+    assert empty.sql(f"from versions.{view}").columns == [name for name in columns if name != "run_id"] + extra
+
+
+def test_every_view_macro_and_column_that_readers_see_carries_a_comment(empty):
+    public = "schema_name in ('main', 'versions') and not internal"
+    silent = empty.execute(
+        f"select view_name from duckdb_views() where {public} and comment is null union all "
+        f"select table_name || '.' || column_name from duckdb_columns() where {public} and comment is null union all "
+        f"select function_name from duckdb_functions() where {public} and comment is null"
+    ).fetchall()
+    assert silent == []
+
+
+@pytest.mark.parametrize("command", COMMANDS)
+def test_a_command_has_the_options_that_were_promised_and_an_example(command):
+    shown = subprocess.run(
+        [sys.executable, "-c", "from driftbook.store.cli import main; main()", command, "--help"],
+        capture_output=True,
+        text=True,
+        env={"COLUMNS": "200", "PATH": ""},
+    )
+    assert shown.returncode == 0
+    missing = [option for option in COMMANDS[command].split() if option not in shown.stdout]
+    assert missing == []
+    assert f"Example: driftbook {command}" in shown.stdout
+
+
+@pytest.mark.parametrize("module", [store, estimators], ids=lambda module: module.__name__)
+def test_all_public_names_exist_and_say_what_they_are(module):
+    public = [getattr(module, name) for name in module.__all__]
+    assert [thing for thing in public if callable(thing) and not thing.__doc__] == []
+
+
+def test_help_and_sql_load_neither_polars_nor_scipy_nor_the_plan():
+    script = (
+        "import sys; from driftbook.store.cli.app import run; from driftbook.store import create; "
+        "from pathlib import Path; import tempfile; book = Path(tempfile.mkdtemp()) / 'desk.duckdb'; create(book); "
+        "assert run(['--help']) == 0; assert run(['sql', str(book), 'select 1']) == 0; "
+        "print([name for name in ('polars', 'scipy', 'driftbook.store.plan') if name in sys.modules])"
+    )
+    shown = subprocess.run([sys.executable, "-c", script], capture_output=True, text=True, check=True)
+    assert shown.stdout.splitlines()[-1] == "[]"
+
+
+def test_every_module_imports_on_its_own():
+    for name in ("driftbook.store.writing", "driftbook.store.verify", "driftbook.store.cli", "driftbook.estimators"):
+        import_module(name)
