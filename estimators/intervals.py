@@ -6,10 +6,10 @@ arguments are arrays of one shape, or scalars, and NaN means "no such end".
 """
 
 from dataclasses import dataclass
+from statistics import NormalDist
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.special import ndtri
 
 from driftbook.estimators.slope_law import SlopeLaw
 
@@ -18,7 +18,7 @@ Floats = NDArray[np.float64]
 COARSEST = 0.8
 """Pull per step, kappa·Δ, beyond which the volatility has no interval that keeps its promise."""
 
-_TWO_SIDED = float(ndtri(0.975))
+_TWO_SIDED = NormalDist().inv_cdf(0.975)
 _SERIES_BELOW = 0.02  # where the series is exact to rounding and the closed form loses two digits
 
 

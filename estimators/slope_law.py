@@ -8,7 +8,8 @@ for the pull that hold where those of normal theory fail, near c = 0, a median-u
 
 The table holds quantiles computed without simulation by `driftbook.estimators.data.make_slope_law`, as differences
 from a Cornish–Fisher reference, over a grid of n, c and probabilities. Between the grid's points it is interpolated:
-by cubic polynomials in 1/n and a cubic spline in asinh c.
+by cubic polynomials in 1/n and a cubic spline in asinh c. SciPy is loaded when the first law is made, not before: who
+only asks which models there are does not wait for it.
 
 References
 ----------
@@ -23,8 +24,6 @@ from importlib import resources
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.interpolate import CubicSpline
-from scipy.special import ndtr, ndtri
 
 Floats = NDArray[np.float64]
 
@@ -60,6 +59,8 @@ def reference_quantile(c: ArrayLike, n: ArrayLike, p: ArrayLike) -> Floats:
 
     centre + scale·(z − slope (z² − 1)/(n·scale)) with z = Φ⁻¹(p): the skewness term of the normal expansion.
     """
+    from scipy.special import ndtri
+
     centre, scale, slope = reference(c, n)
     z = ndtri(np.asarray(p, dtype=np.float64))
     return np.asarray(centre + scale * z - slope * (z**2 - 1) / np.asarray(n, dtype=np.float64))
@@ -147,6 +148,8 @@ class SlopeLaw:
 
         Within 4e-4 of the exact law (3e-5 from n = 15 on); below 1e-6 it is extrapolated.
         """
+        from scipy.special import ndtr
+
         return np.asarray(ndtr(np.interp(np.asarray(slope, dtype=np.float64), self.null_slopes, self.null_scores)))
 
     def quantile(self, c: ArrayLike, p: float) -> Floats:
@@ -210,6 +213,8 @@ def _across(transitions: Floats, values: Floats, n: int) -> Floats:
 
 def _quantiles(table: dict[str, Floats], n: int, pulls: Floats) -> Floats:
     """Quantiles at each pull, shape (probabilities, pulls), made to fall in c."""
+    from scipy.interpolate import CubicSpline
+
     nodes = table["pulls"]
     spline = CubicSpline(np.arcsinh(nodes), _across(table["transitions"], table["corrections"], n))
     correction = spline(np.arcsinh(np.minimum(pulls, nodes[-1]))).T
@@ -221,6 +226,9 @@ def _quantiles(table: dict[str, Floats], n: int, pulls: Floats) -> Floats:
 
 def _null_law(table: dict[str, Floats], n: int) -> tuple[Floats, Floats]:
     """Slopes and normal scores of their probabilities at c = 0, on a fine grid with straight tails."""
+    from scipy.interpolate import CubicSpline
+    from scipy.special import ndtri
+
     p = table["null_probabilities"]
     correction = _across(table["transitions"], table["null_corrections"], n)
     slopes = reference_quantile(0.0, n, p) + reference(0.0, n)[1] * correction

@@ -12,7 +12,9 @@ create
 
 from __future__ import annotations
 
+import sys
 from importlib import import_module
+from types import ModuleType
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
@@ -62,3 +64,14 @@ def __getattr__(name: str) -> Any:
     if name not in __all__:
         raise AttributeError(f"driftbook.store has no {name!r}")
     return getattr(import_module(f"driftbook.store.{_HOME.get(name, 'errors')}"), name)
+
+
+class _Contents(ModuleType):
+    """The package, whose names stay what `__all__` says when a submodule of the same name is imported."""
+
+    def __setattr__(self, name: str, value: Any) -> None:
+        """Binds the function instead of the submodule that the import machinery wants to bind."""
+        super().__setattr__(name, getattr(value, name) if name in _HOME and isinstance(value, ModuleType) else value)
+
+
+sys.modules[__name__].__class__ = _Contents

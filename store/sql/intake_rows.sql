@@ -29,15 +29,15 @@ with cast_row as (
   from (fields)
 ), checked_row as (
   select line, series, value, open, high, low, volume,
-    length(time) <= 10 as is_date,
-    right(time, 1) = 'Z' or contains(right(time, 6), '+') or contains(right(time, 6), '-') as has_offset,
+    strlen(time) <= 10 or ends_with(time, 'Z') or contains(time[12:], '+') or contains(time[12:], '-') as is_instant,
     case
       when not has_plain_time or series = '' or series is null or not intake_is_plain_number(value_text, value)
         or not intake_is_plain_or_empty(open_text, open) or not intake_is_plain_or_empty(high_text, high)
         or not intake_is_plain_or_empty(low_text, low) or not intake_is_plain_or_empty(volume_text, volume) then null
-      when length(time) = 8 then try_cast(time[1:4] || '-' || time[5:6] || '-' || time[7:8] as timestamp)
-      when length(time) = 10 or right(time, 1) = 'Z' then try_cast(time as timestamp)
-      when has_offset then make_timestamp(epoch_us(try_cast(time as timestamptz)))
+      when strlen(time) = 8 then try_cast(time[1:4] || '-' || time[5:6] || '-' || time[7:8] as timestamp)
+      when strlen(time) = 10 or ends_with(time, 'Z') then try_cast(time as timestamp)
+      when contains(time[12:], '+') or contains(time[12:], '-') then
+        make_timestamp(epoch_us(try_cast(time as timestamptz)))
       else try_cast(time as timestamp)
     end as wall
   from cast_row
@@ -47,7 +47,7 @@ select r.line, k.series_id,
   case
     when k.series_id is null and r.series != trim(r.series, $whitespace) then null
     when r.wall not between timestamp '0001-01-01' and timestamp '9999-12-31 23:59:59.999999' then null
-    when r.is_date or r.has_offset or coalesce($zone, k.time_zone, 'UTC') = 'UTC' then r.wall
+    when r.is_instant or coalesce($zone, k.time_zone, 'UTC') = 'UTC' then r.wall
     else r.wall - d.utc_offset
   end as observed_at,
   r.value, r.open, r.high, r.low, r.volume
