@@ -139,7 +139,7 @@ def window_sums(terms: NDArray[Number], lookback: int) -> NDArray[Number]:
     Parameters
     ----------
     terms : array, shape (..., lookback + offsets - 1)
-        One term a step.
+        One term a step, with 1 ≤ offsets ≤ lookback.
     lookback : int
         Terms in a window.
 

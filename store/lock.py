@@ -29,7 +29,8 @@ class LastLook:
 
 
 def lock_path(book: Path) -> Path:
-    """The lock file of a book."""
+    """The lock file of a book; a link to a book has the book's."""
+    book = book.resolve()
     return book.with_name(book.name + ".lock")
 
 

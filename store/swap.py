@@ -45,7 +45,7 @@ class Draft:
 
 def create(book: Path) -> None:
     """Makes an empty book with all migrations applied and no run."""
-    if book.stem in _RESERVED_STEMS or book.name in _RESERVED_STEMS:
+    if {book.stem.casefold(), book.name.casefold()} & _RESERVED_STEMS:
         raise UsageError(f"a book cannot be called {book.stem}: it has a schema of that name; choose another name.")
     if book.exists():
         raise UsageError(f"{book} exists already; choose another name or remove it yourself.")
@@ -75,6 +75,7 @@ def rewriting(book: Path, wait: float) -> Iterator[Draft]:
     cannot be copied.
     """
     require_book(book)
+    book = book.resolve()  # a link to a book stays a link
     with lock.writers_lock(book, wait), _no_foreign_writer(book):
         _clear_leftovers(book)
         _require_room(book)
@@ -152,16 +153,17 @@ def _writing_process(descriptor: int) -> str:
 
 
 def _draft_path(book: Path) -> Path:
-    # the name begins with ours, so that the catalog's name cannot be that of a schema whatever the book is called
-    return book.with_name(f".driftbook-draft-{os.getpid()}-{book.name}")
+    # in a folder of its own, so that what DuckDB writes beside the draft is nobody else's to read
+    folder = book.with_name(f".driftbook-draft-{os.getpid()}-{book.name}")
+    folder.mkdir(mode=0o700, exist_ok=True)
+    return folder / "draft.duckdb"
 
 
 def _leftovers(book: Path) -> list[Path]:
-    suffixes = (book.name, book.name + ".wal", book.name + ".tmp")
     return [
         path
         for path in book.parent.glob(".driftbook-draft-*")
-        if path.name.removeprefix(".driftbook-draft-").partition("-")[2] in suffixes
+        if path.name.removeprefix(".driftbook-draft-").partition("-")[2] == book.name
     ]
 
 
@@ -179,8 +181,7 @@ def _clear_leftovers(book: Path) -> None:
 
 
 def _remove_draft(draft: Path) -> None:
-    for path in (draft, _wal(draft), draft.with_name(draft.name + ".tmp")):
-        _remove(path)
+    _remove(draft.parent)
 
 
 def _remove(path: Path) -> None:

@@ -32,7 +32,7 @@ class Tracked:
 
 BOOK_TABLES = (
     Tracked("series", ("series_id",), closes=False),
-    Tracked("setting", ("series_id",)),
+    Tracked("setting", ("series_id",), also=("planned",)),
     Tracked("intake", ("intake_id",), by_series=False, closes=False),
     Tracked("observation", ("series_id", "observed_at"), also=("take",)),
     Tracked("refused_row", ("intake_id", "line", "cell"), by_series=False, also=("reason",)),

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import re
 from collections.abc import Iterator
 from dataclasses import dataclass
 from itertools import groupby
@@ -17,6 +18,9 @@ from driftbook.store.runs import NO_DIGEST, chain
 from driftbook.store.sql import only_row, query
 from driftbook.store.swap import create
 from driftbook.store.tables import Tracked, columns_at, tracked_tables
+
+# DuckDB keeps the names behind EXCLUDE as a set and writes them in any order.
+_EXCLUDED = re.compile(r"EXCLUDE \(([^)]*)\)")
 
 
 @dataclass(frozen=True)
@@ -84,7 +88,11 @@ def _fresh_catalog() -> dict[str, tuple[str, str | None]]:
 
 def _catalog(con: duckdb.DuckDBPyConnection) -> dict[str, tuple[str, str | None]]:
     rows = con.execute(query("catalog_of_book")).fetchall()
-    return {f"{kind} {name}": (sql, comment) for kind, name, sql, comment in rows}
+    return {f"{kind} {name}": (_EXCLUDED.sub(_in_order, sql), comment) for kind, name, sql, comment in rows}
+
+
+def _in_order(excluded: re.Match[str]) -> str:
+    return f"EXCLUDE ({', '.join(sorted(excluded[1].split(', ')))})"
 
 
 def _leaf_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:

@@ -3,13 +3,17 @@
 from __future__ import annotations
 
 import json
+import os
+import signal
 import sys
 from importlib.metadata import version
+from threading import current_thread, main_thread
 from typing import Annotated
 
 import typer
 
 from driftbook.store.cli import asked, begin, morning
+from driftbook.store.cli.output import say_error
 from driftbook.store.errors import BookError
 
 CAUTION = (
@@ -17,6 +21,8 @@ CAUTION = (
     "and capital rules are those of your regulator and of your firm's own licensed or validated practice."
 )
 _INTERRUPTED = 130
+_SAY_INTERRUPTED = "interrupted; the book is unchanged."
+_SHOW_TRACEBACK = "DRIFTBOOK_TRACEBACK"
 
 
 app = typer.Typer(
@@ -50,31 +56,59 @@ def main() -> None:
 
 def run(arguments: list[str]) -> int:
     """Runs one command; gives its exit code: 0, 1, 2, 3, 4, 75 or 130."""
+    interrupts = _Interrupts()
     try:
-        code = app(arguments, prog_name="driftbook", standalone_mode=False)
+        with interrupts:
+            code = app(arguments, prog_name="driftbook", standalone_mode=False)
     except BookError as error:
         _complain(str(error), arguments)
         return error.exit_code
-    except KeyboardInterrupt:
-        _complain("interrupted; the book is unchanged.", arguments)
-        return _INTERRUPTED
-    except Exception as error:
-        return _usage(error, arguments)
+    except (Exception, KeyboardInterrupt) as error:
+        return _other(error, arguments, interrupted=interrupts.seen or isinstance(error, KeyboardInterrupt))
+    if code == _INTERRUPTED:  # typer took the interrupt itself
+        _complain(_SAY_INTERRUPTED, arguments)
     return code if isinstance(code, int) else 0
 
 
-def _usage(error: Exception, arguments: list[str]) -> int:
-    """A wrong option or argument is told in a sentence; what we did not foresee keeps its traceback."""
+class _Interrupts:
+    """Notes Ctrl-C: DuckDB turns the interrupt of a running query into an error of another name."""
+
+    def __init__(self) -> None:
+        self.seen = False
+
+    def __enter__(self) -> None:
+        if current_thread() is main_thread():
+            signal.signal(signal.SIGINT, self._note)
+
+    def __exit__(self, *error: object) -> None:
+        if current_thread() is main_thread():
+            signal.signal(signal.SIGINT, signal.default_int_handler)
+
+    def _note(self, *_: object) -> None:
+        self.seen = True
+        raise KeyboardInterrupt
+
+
+def _other(error: BaseException, arguments: list[str], *, interrupted: bool) -> int:
+    """A wrong option is told in a sentence, and so is what we did not foresee; a traceback only on request."""
+    if interrupted or type(error).__name__ == "Abort":
+        _complain(_SAY_INTERRUPTED, arguments)
+        return _INTERRUPTED
     if hasattr(error, "format_message") and hasattr(error, "exit_code"):
         _complain(error.format_message(), arguments)
         return int(error.exit_code)
-    if type(error).__name__ == "Abort":
-        _complain("interrupted; the book is unchanged.", arguments)
-        return _INTERRUPTED
-    raise error
+    if os.environ.get(_SHOW_TRACEBACK):
+        raise error
+    first_line = (str(error).splitlines() or [""])[0]
+    _complain(
+        f"this should not have happened, {type(error).__name__}: {first_line} The book is unchanged; "
+        f"set {_SHOW_TRACEBACK}=1 and run it again to see where.",
+        arguments,
+    )
+    return 1
 
 
 def _complain(sentence: str, arguments: list[str]) -> None:
     if "--json" in arguments:
         typer.echo(json.dumps({"error": sentence}))
-    typer.echo(f"driftbook: {sentence}", err=True)
+    say_error(f"driftbook: {sentence}")

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 
 from driftbook.store.cli import options as opt
-from driftbook.store.cli.output import say, say_json
+from driftbook.store.cli.output import count_of, say, say_json
 
 if TYPE_CHECKING:
     from driftbook.store.refresh import Progress
@@ -64,14 +64,14 @@ def refresh(
 
 def _summary(answer: dict[str, Any], dry_run: bool) -> str:
     if dry_run:
-        closing = f", {answer['rows_to_close']} rows would be closed" if answer["rows_to_close"] else ""
-        return f"{answer['windows_due']} windows are due{closing}; nothing was changed."
+        closing = f", {count_of(answer['rows_to_close'], 'row')} to close" if answer["rows_to_close"] else ""
+        return f"Due: {count_of(answer['windows_due'], 'window')}{closing}; nothing was changed."
     if answer["run"] is None:
         return "Nothing new; nothing was written."
     failed = f", {answer['windows_failed']} without numbers" if answer["windows_failed"] else ""
     closed = f"; {answer['rows_to_close']} rows of entries taken out were closed" if answer["rows_to_close"] else ""
     return (
-        f"Run {answer['run']}: {answer['windows_due']} windows computed{failed}, "
+        f"Run {answer['run']}: {count_of(answer['windows_due'], 'window')} computed{failed}, "
         f"{answer['rows_written']} rows written{closed}."
     )
 

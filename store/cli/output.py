@@ -17,6 +17,16 @@ def say(text: str, *, quiet: bool = False) -> None:
         typer.echo("\n".join(harmless(line) for line in text.split("\n")))
 
 
+def say_error(text: str) -> None:
+    """A line on standard error, as harmless as `say`."""
+    typer.echo("\n".join(harmless(line) for line in text.split("\n")), err=True)
+
+
+def count_of(number: int, noun: str) -> str:
+    """`1 window`, `2 windows`."""
+    return f"{number} {noun}" if number == 1 else f"{number} {noun}s"
+
+
 def say_json(answer: dict[str, Any]) -> None:
     """One JSON object on standard output."""
     typer.echo(json.dumps(answer, default=json_value))

@@ -9,6 +9,7 @@ import duckdb
 from driftbook.store.errors import IntakeError
 from driftbook.store.intake import naming
 from driftbook.store.intake.reading import name_known, over
+from driftbook.store.intake.scratch import keep_ordered
 from driftbook.store.intake.settling import Counts, settle
 from driftbook.store.intake.source import WHITESPACE, Rows
 from driftbook.store.series import Stamp, known_series
@@ -22,7 +23,7 @@ def bring_in(
     name_known(con, known_series(con))
     naming.mark_unknown(con, naming.unknown_names(con))
     con.execute(query("intake_refuse_unread"))
-    con.execute(query("intake_put_in_order"))
+    keep_ordered(con, query("intake_to_settle"), has_bars=rows.has_bars)
     con.execute("drop table intake_row")
     counts = replace(settle(con, intake_id, stamp, yes=yes), refused=_keep_refused(con, rows, intake_id, stamp))
     if rows_read != counts.new + counts.revised + counts.same + counts.refused:

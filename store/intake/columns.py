@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 
 from driftbook.store.errors import IntakeError
-from driftbook.store.intake.options import ROLES, Options
+from driftbook.store.intake.options import BAR_ROLES, ROLES, Options
 
 USUAL_NAMES: Mapping[str, frozenset[str]] = {
     "series": frozenset({"series", "name", "symbol", "ticker", "id", "instrument", "code"}),
@@ -29,6 +29,11 @@ def places(found: Sequence[str], options: Options, source: str) -> dict[str, int
     for role in roles:
         result[role] = told[role] if role in told else _usual_place(plain, role, taken, found, source)
     return result
+
+
+def has_bars(place: Mapping[str, int | None]) -> bool:
+    """Whether a source has any column for open, high, low or volume."""
+    return any(place[role] is not None for role in BAR_ROLES)
 
 
 def _plain(column: str) -> str:

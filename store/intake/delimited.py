@@ -11,7 +11,7 @@ from typing import BinaryIO
 import duckdb
 
 from driftbook.store.errors import IntakeError
-from driftbook.store.intake.columns import places
+from driftbook.store.intake.columns import has_bars, places
 from driftbook.store.intake.lines import line_batches
 from driftbook.store.intake.options import Options
 from driftbook.store.intake.reasons import Reason
@@ -33,6 +33,7 @@ class DelimitedText:
     header_line: int
     place: dict[str, int | None]
     before: os.stat_result
+    has_bars: bool
 
     def relation(self, con: duckdb.DuckDBPyConnection) -> tuple[str, dict[str, object]]:
         """One reading of the file; fields are split in bulk where the line has no quote and the right width."""
@@ -77,14 +78,16 @@ def open_delimited(path: Path, options: Options) -> DelimitedText:
         columns = split_line(header, delimiter)
         if isinstance(columns, Reason):
             raise IntakeError(f"{path.name}, line {header_line}: the header has a quote that does not end.")
+        place = places(columns, options, path.name)
         return DelimitedText(
             file=file,
             options=options,
             delimiter=delimiter,
             width=len(columns),
             header_line=header_line,
-            place=places(columns, options, path.name),
+            place=place,
             before=os.fstat(file.fileno()),
+            has_bars=has_bars(place),
         )
     except BaseException:
         file.close()

@@ -12,7 +12,8 @@ from driftbook.store.errors import IntakeError
 
 DAY_FIRST = "day-first"
 MONTH_FIRST = "month-first"
-ROLES = ("series", "time", "value", "open", "high", "low", "volume")
+BAR_ROLES = ("open", "high", "low", "volume")
+ROLES = ("series", "time", "value", *BAR_ROLES)
 
 
 @dataclass(frozen=True)

@@ -11,7 +11,7 @@ import pyarrow as pa
 from driftbook.store.intake.numerals import read_number
 from driftbook.store.intake.options import ROLES, Options
 from driftbook.store.intake.reasons import Reason
-from driftbook.store.intake.scratch import as_written
+from driftbook.store.intake.scratch import keep_rows
 from driftbook.store.intake.source import WHITESPACE, Fields, Rows
 from driftbook.store.intake.times import read_time
 from driftbook.store.intake.zones import plain_days
@@ -37,16 +37,8 @@ def read_rows(con: duckdb.DuckDBPyConnection, rows: Rows, options: Options, know
     """Fills intake_row with what is plain and intake_odd with the rest; gives the number of rows."""
     _prepare(con, options, known)
     sql, values = rows.relation(con)
-    with as_written(con):
-        con.execute(
-            over("intake_read_plain", sql),
-            {
-                **values,
-                "reads_plain_times": not options.has_date_form,
-                "zone": options.zone,
-                "whitespace": WHITESPACE,
-            },
-        )
+    meaning = {"reads_plain_times": not options.has_date_form, "zone": options.zone, "whitespace": WHITESPACE}
+    keep_rows(con, over("intake_read_plain", sql), {**values, **meaning}, has_bars=rows.has_bars)
     plain, odd = con.execute("select count(observed_at), count(*) - count(observed_at) from intake_row").fetchall()[0]
     if odd == 0:
         return int(plain)

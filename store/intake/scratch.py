@@ -7,7 +7,12 @@ from contextlib import contextmanager
 
 import duckdb
 
+from driftbook.store.intake.options import BAR_ROLES
+
 _OURS = "select table_name from duckdb_tables() where temporary and starts_with(table_name, 'intake_')"
+
+_BARS = ", ".join(BAR_ROLES)
+_NO_BARS = ", ".join(f"null::double as {role}" for role in BAR_ROLES)
 
 
 @contextmanager
@@ -21,8 +26,29 @@ def scratch(con: duckdb.DuckDBPyConnection) -> Iterator[None]:
 
 def clear(con: duckdb.DuckDBPyConnection) -> None:
     """Drops the temporary tables of an intake."""
+    con.execute("drop view if exists intake_ordered")
     for (table,) in con.execute(_OURS).fetchall():
         con.execute(f"drop table {table}")
+
+
+def keep_rows(con: duckdb.DuckDBPyConnection, sql: str, values: dict[str, object], *, has_bars: bool) -> None:
+    """Keeps the plain rows, without bars where there are none: four columns of NULL would double the memory."""
+    bars = f", {_BARS}" if has_bars else ""
+    with as_written(con):
+        con.execute(
+            f"create temp table intake_row as select line, series_id, name, observed_at, value{bars} from ({sql})",
+            values,
+        )
+
+
+def keep_ordered(con: duckdb.DuckDBPyConnection, sql: str, *, has_bars: bool) -> None:
+    """Keeps the rows to settle clustered as the observations are; the line keeps the order of arrival."""
+    bars = f", {_BARS}" if has_bars else ""
+    con.execute(
+        f"create temp table intake_sorted as select line, series_id, observed_at, value{bars} from ({sql}) "
+        "order by series_id, observed_at, line"
+    )
+    con.execute(f"create temp view intake_ordered as select *{'' if has_bars else ', ' + _NO_BARS} from intake_sorted")
 
 
 @contextmanager

@@ -21,6 +21,8 @@ class Rows(Protocol):
     A new format is one file with a class like this and one line in `opening`.
     """
 
+    has_bars: bool  # whether there is a column for open, high, low or volume
+
     def relation(self, con: duckdb.DuckDBPyConnection) -> tuple[str, dict[str, object]]:
         """A query for (line, text, is_plain, fault, series, time, value, open, high, low, volume), and bound values.
 

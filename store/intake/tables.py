@@ -10,7 +10,7 @@ import duckdb
 import polars as pl
 
 from driftbook.store.errors import IntakeError
-from driftbook.store.intake.columns import places
+from driftbook.store.intake.columns import has_bars, places
 from driftbook.store.intake.options import ROLES, Options
 from driftbook.store.intake.reasons import Reason
 from driftbook.store.intake.source import Fields
@@ -24,6 +24,7 @@ class TypedTable:
     sql: str
     values: Mapping[str, object]
     prepare: Callable[[duckdb.DuckDBPyConnection], object]
+    has_bars: bool
 
     def relation(self, con: duckdb.DuckDBPyConnection) -> tuple[str, dict[str, object]]:
         """One reading of the table."""
@@ -79,6 +80,7 @@ def _typed_table(
         ),
         values={**values, "series": options.series},
         prepare=prepare,
+        has_bars=has_bars(place),
     )
 
 

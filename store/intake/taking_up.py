@@ -23,6 +23,7 @@ class LateRows:
 
     intake_id: int
     names: list[str]
+    has_bars: bool = True
 
     def relation(self, con: duckdb.DuckDBPyConnection) -> tuple[str, dict[str, object]]:
         """One reading of the waiting rows."""

@@ -15,12 +15,15 @@ from (select line, text, is_utf8, string_split(text, $delimiter) as part from in
 -- Reads what is plain in bulk: rows whose observed_at stays NULL need a careful look. Numbers are cast first and
 -- checked after, because the cast also takes 1_000, +-1, inf and 1e400; outer space does not disturb it. A time that has an offset goes through
 -- TIMESTAMPTZ, since the cast to TIMESTAMP drops the offset; a local time is moved by its day's offset.
-create temp table intake_row as
 with cast_row as (
   select line, is_plain, series, time,
-    is_plain and $reads_plain_times and regexp_full_match(time,
-      '\d{8}|\d{4}-\d\d-\d\d([T ]([01]\d|2[0-3]):[0-5]\d(:[0-5]\d(\.\d+)?)?(Z|[+-](0\d|1[0-5])(:?[0-5]\d)?)?)?'
-    ) as has_plain_time,
+    case
+      when not is_plain or not $reads_plain_times then null
+      when regexp_full_match(time,
+        '\d{8}|\d{4}-\d\d-\d\d([T ]([01]\d|2[0-3]):[0-5]\d(:[0-5]\d(\.\d+)?)?Z?)?') then 'no offset'
+      when regexp_full_match(time,
+        '\d{4}-\d\d-\d\d[T ]([01]\d|2[0-3]):[0-5]\d(:[0-5]\d(\.\d+)?)?[+-](0\d|1[0-5])(:?[0-5]\d)?') then 'offset'
+    end as form,
     value as value_text, try_cast(value as double) as value,
     open as open_text, try_cast(open as double) as open,
     high as high_text, try_cast(high as double) as high,
@@ -29,15 +32,13 @@ with cast_row as (
   from (fields)
 ), checked_row as (
   select line, series, value, open, high, low, volume,
-    strlen(time) <= 10 or ends_with(time, 'Z') or contains(time[12:], '+') or contains(time[12:], '-') as is_instant,
+    strlen(time) <= 10 or ends_with(time, 'Z') or form = 'offset' as is_instant,
     case
-      when not has_plain_time or series = '' or series is null or not intake_is_plain_number(value_text, value)
+      when form is null or series = '' or series is null or not intake_is_plain_number(value_text, value)
         or not intake_is_plain_or_empty(open_text, open) or not intake_is_plain_or_empty(high_text, high)
         or not intake_is_plain_or_empty(low_text, low) or not intake_is_plain_or_empty(volume_text, volume) then null
+      when form = 'offset' then make_timestamp(epoch_us(try_cast(time as timestamptz)))
       when strlen(time) = 8 then try_cast(time[1:4] || '-' || time[5:6] || '-' || time[7:8] as timestamp)
-      when strlen(time) = 10 or ends_with(time, 'Z') then try_cast(time as timestamp)
-      when contains(time[12:], '+') or contains(time[12:], '-') then
-        make_timestamp(epoch_us(try_cast(time as timestamptz)))
       else try_cast(time as timestamp)
     end as wall
   from cast_row
@@ -123,23 +124,21 @@ from intake_odd o
 left join intake_unknown u on u.name = o.name
 where coalesce(u.reason, o.reason) is not null
 
--- name: intake_put_in_order
--- The rows to settle, clustered as the observations are; the line keeps the order of arrival.
-create temp table intake_ordered as
+-- name: intake_to_settle
+-- The rows to settle, those of names that became known since they were read among them.
 select r.line, coalesce(r.series_id, k.series_id) as series_id, r.observed_at,
   r.value, r.open, r.high, r.low, r.volume
 from (
-  select line, series_id, name, observed_at, value, open, high, low, volume
+  select *
   from intake_row
   where observed_at is not null
-  union all
+  union all by name
   select line, series_id, name, observed_at, value, open, high, low, volume
   from intake_odd
   where reason is null
 ) r
 left join intake_known k on k.name = r.name
 where coalesce(r.series_id, k.series_id) is not null
-order by 2, 3, 1
 
 -- name: intake_keep_refused
 -- Keeps the refused rows; those of an unknown series with what they said, so that they can be taken up later.

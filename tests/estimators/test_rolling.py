@@ -4,8 +4,9 @@ import pickle
 
 import numpy as np
 import pytest
-from driftbook.estimators import MODELS, Fit, Status, aligned_start, rolling
 from scipy.signal import lfilter
+
+from driftbook.estimators import MODELS, Fit, Status, aligned_start, rolling
 
 DT = 1 / 252
 
@@ -64,7 +65,9 @@ def test_slice_from_an_aligned_start_has_the_same_bits(lookback):
     whole = rolling("ou", x, DT, lookback)
     for first in {0, 1, lookback - 1, lookback, lookback + 1, 3 * lookback // 2, len(x) - lookback - 1}:
         start = aligned_start(first, lookback)
-        assert_same_bits(part(rolling("ou", x[start:], DT, lookback), slice(first - start, None)), part(whole, slice(first, None)))
+        assert_same_bits(
+            part(rolling("ou", x[start:], DT, lookback), slice(first - start, None)), part(whole, slice(first, None))
+        )
 
 
 def test_later_observations_do_not_change_earlier_windows():
@@ -101,10 +104,10 @@ def test_missing_value_spoils_only_windows_that_hold_it():
     clean = rolling("ou", x, DT, 80)
     x[250] = np.nan
     fit = rolling("ou", x, DT, 80)
-    holds = np.zeros(521, dtype=bool)
+    holds = np.zeros(520, dtype=bool)
     holds[170:251] = True
     assert np.array_equal(fit.status == Status.OUT_OF_RANGE, holds)
-    other_segments = np.r_[0:160, 320:521]
+    other_segments = np.r_[0:160, 320:520]
     assert_same_bits(part(fit, other_segments), part(clean, other_segments))
 
 

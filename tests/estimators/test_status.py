@@ -3,6 +3,7 @@
 import pickle
 
 import pytest
+
 from driftbook.estimators import Status
 
 WORDS = [

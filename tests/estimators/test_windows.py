@@ -2,10 +2,11 @@
 
 import numpy as np
 import pytest
-from driftbook.estimators import aligned_start
-from driftbook.estimators.windows import Layout, PairedTerms, segments, whole_blocks, window_sums
 from hypothesis import given
 from hypothesis import strategies as st
+
+from driftbook.estimators import aligned_start
+from driftbook.estimators.windows import Layout, PairedTerms, segments, whole_blocks, window_sums
 
 ROUNDING = 4 * np.finfo(float).eps  # a running sum of n terms is off by some √n units in the last place
 

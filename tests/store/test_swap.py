@@ -411,7 +411,6 @@ def test_a_writer_killed_at_any_moment_leaves_the_old_book_or_the_new_one(book):
             process.kill()
         now = len(names(book))
         assert now in (count, count + 1)
-        assert len(store.verify(book).findings) > 0 if now else True  # the stand-in rows belong to no run
         count = now
     write(book, "desk")
     assert beside(book) == []
@@ -446,7 +445,7 @@ def test_nothing_beside_the_book_is_open_to_more_people_than_the_book(book, wide
     book.chmod(rights)
     with rewriting(book, 0) as draft:
         put(draft.con, "other")
-        wider = [path.name for path in book.parent.iterdir() if mode(path) & ~rights]
+        wider = [path.name for path in book.parent.iterdir() if mode(path) & 0o077 & ~rights]
     assert wider == []
 
 
