@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from driftbook.estimators.batches import Kernel, in_pieces
 from driftbook.estimators.result import Fit
@@ -126,7 +126,8 @@ class Model:
         dt : array_like, shape (), (...) or (..., n)
             The step, in the clock's unit of time: one for all, one a window, or one a step.
         intervals : bool
-            Whether to compute the columns that intervals need; without them those are NaN.
+            Without them only parameters, their standard errors and the log-likelihood are computed, in a fraction of
+            the time; the other columns are NaN.
         threads : int
             Threads to spread the work over. The bits do not depend on it.
 
@@ -162,7 +163,8 @@ class Model:
         lookback : int
             Steps in a window.
         intervals : bool
-            Whether to compute the columns that intervals need; without them those are NaN.
+            Without them only parameters, their standard errors and the log-likelihood are computed, in a fraction of
+            the time; the other columns are NaN.
         threads : int
             Threads to spread the work over. The bits do not depend on it.
 
@@ -190,16 +192,21 @@ class Model:
         steps = np.broadcast_to(steps, (*batch, x.shape[-1] - 1)).reshape(len(rows), -1)
         found, status = in_pieces(self.kernel, rows, steps, lookback, intervals=intervals, threads=threads)
         columns = {c.name: found[c.name].reshape(shape) if c.name in found else _nothing(shape) for c in self.columns}
-        return Fit(self.name, np.full(shape, lookback), columns, status.reshape(shape))
+        return Fit(self.name, _count(lookback, shape), columns, status.reshape(shape))
 
     def _too_short(self, n: int, shape: Sequence[int]) -> Fit:
         columns = {column.name: _nothing(shape) for column in self.columns}
-        return Fit(self.name, np.full(shape, n), columns, np.full(shape, Status.TOO_SHORT, dtype=np.int8))
+        return Fit(self.name, _count(n, shape), columns, np.full(shape, Status.TOO_SHORT, dtype=np.int8))
 
 
 def _nothing(shape: Sequence[int]) -> Array:
     """NaN everywhere, in no memory; read-only."""
     return np.broadcast_to(np.float64(np.nan), tuple(shape))
+
+
+def _count(n: int, shape: Sequence[int]) -> NDArray[np.int64]:
+    """The same number everywhere, in no memory; read-only."""
+    return np.broadcast_to(np.int64(n), tuple(shape))
 
 
 def _numbers(values: ArrayLike, name: str) -> Array:

@@ -19,9 +19,10 @@ from driftbook.estimators.windows import Array, PairedTerms, segments
 
 Mask = NDArray[np.bool_]
 
+EPS = float(np.finfo(np.float64).eps)
 LOSS = 1e-10  # largest loss that is left standing: estimated relative rounding error of a sum of squares
 LARGEST, SMALLEST = 1e130, 1e-110  # sums of squares outside this have fourth powers that overflow or vanish
-ROUNDING = 2 * np.finfo(np.float64).eps  # residuals this small against the values are rounding, not movement
+ROUNDING = 2 * EPS  # residuals this small against the values are rounding, not movement
 
 
 @dataclass(frozen=True)
@@ -97,93 +98,86 @@ def from_sums(x: Array, lookback: int, offsets: int, *, fourth: bool) -> tuple[R
         False where a sum of squares may have lost more than `LOSS` of its size, left the range in which its square
         is a number, is no larger than rounding, or met a value that is not finite: what is said there means nothing.
     """
-    n = float(lookback)
-    pivot = slice(lookback - 1, lookback)
-    steps = segments(x[:, 1:] - x[:, :-1], lookback, lookback + offsets - 1)
-    levels = segments(x[:, :-1], lookback, lookback + offsets - 1)
-    origin, usual = levels[..., pivot], steps[..., pivot]
-    u, e = levels - origin, steps - usual
+    n, width = float(lookback), lookback + offsets - 1
+    steps = segments(x[:, 1:] - x[:, :-1], lookback, width)
+    levels = segments(x[:, :-1], lookback, width)
+    origin = levels[..., lookback - 1 : lookback]
     drift = ((x[:, lookback:] - x[:, :-lookback]) / n).reshape(len(x), -1, offsets)
-    e_mean = drift - usual
-    (Su, Suu, Sue, See), squares = _sums_to_degree_2(u, e, lookback)
+    terms = _terms(levels - origin, steps)
+    Su, Suu, Sud, Sdd = terms.sums(lookback)
     u_mean = Su / n
-    spread = Suu - n * (u_mean * u_mean)
-    slope = (Sue - n * (u_mean * e_mean)) / spread
-    rss = See - n * (e_mean * e_mean) - slope * slope * spread
+    spread = Suu - Su * u_mean
+    slope = (Sud - Su * drift) / spread
+    rss = Sdd - n * (drift * drift) - slope * slope * spread
     regression = Regression(lookback, u_mean + origin, drift, slope, spread, rss)
-    sound = _is_sound(regression, origin, Suu, See)
+    sound = _is_sound(regression, origin, Suu, Sdd)
     if fourth:
-        higher = _sums_of_degrees_3_and_4(u, e, squares, lookback)
-        regression, kept = _with_fourth(regression, (u_mean, e_mean), [Suu, Sue, See, *higher])
+        higher = _higher_terms(steps, terms).sums(lookback)
+        regression, kept = _with_fourth(regression, u_mean, [Suu, Sud, Sdd, *higher])
         sound &= kept
     return regression, sound
 
 
-def _sums_to_degree_2(u: Array, e: Array, lookback: int) -> tuple[list[Array], list[Array]]:
-    """Window sums of u, u², u e and e², and the last three terms."""
+def _terms(u: Array, d: Array) -> PairedTerms:
+    """The terms u, u², u d and d²."""
     terms = PairedTerms(u.shape, 4)
-    first, uu, ue, ee = terms.parts
-    first[...] = u
-    np.multiply(u, u, out=uu)
-    np.multiply(u, e, out=ue)
-    np.multiply(e, e, out=ee)
-    return terms.sums(lookback), [uu, ue, ee]
+    terms.parts[0][...] = u
+    for part, (a, b) in zip(terms.parts[1:], ((u, u), (u, d), (d, d)), strict=True):
+        np.multiply(a, b, out=part)
+    return terms
 
 
-def _sums_of_degrees_3_and_4(u: Array, e: Array, squares: list[Array], lookback: int) -> list[Array]:
-    """Window sums of u³, u² e, u e², e³, u⁴, u³ e, u² e², u e³ and e⁴."""
-    uu, ue, ee = squares
-    factors = ((uu, u), (uu, e), (ue, e), (ee, e), (uu, uu), (uu, ue), (ue, ue), (ue, ee), (ee, ee))
+def _higher_terms(d: Array, lower: PairedTerms) -> PairedTerms:
+    """The terms u³, u² d, u d², d³, u⁴, u³ d, u² d², u d³ and d⁴, from those of `_terms`."""
+    u, uu, ud, dd = lower.parts
+    factors = ((uu, u), (uu, d), (ud, d), (dd, d), (uu, uu), (uu, ud), (ud, ud), (ud, dd), (dd, dd))
     terms = PairedTerms(u.shape, len(factors))
     for part, (a, b) in zip(terms.parts, factors, strict=True):
         np.multiply(a, b, out=part)
-    return terms.sums(lookback)
+    return terms
 
 
-def _is_sound(regression: Regression, origin: Array, Suu: Array, See: Array) -> Mask:
+def _is_sound(regression: Regression, origin: Array, Suu: Array, Sdd: Array) -> Mask:
     """Whether spread, slope and rss kept their digits; NaN compares as false.
 
     A running sum of n squares is off by about eps·√n of its size, four times that at worst in practice: spread and
-    rss are compared with what they were taken from. The mean step is off by eps of itself, which the slope feels n
-    mean levels strong: that is compared with the slope's standard error.
+    rss are compared with what they were taken from. Increments are not measured from a pivot of their own: where they
+    are large against what they differ by, as on a ramp, this finds it.
     """
     n, slope, spread, rss = regression.n, regression.slope, regression.spread, regression.rss
-    eps = float(np.finfo(np.float64).eps)
-    loss = 4 * eps * n**0.5 / LOSS
-    raw = See + slope * slope * Suu
-    sound: Mask = 2 * loss * raw < rss
+    loss = 4 * EPS * n**0.5 / LOSS
+    rounding = 2 * ROUNDING**2
+    least = (slope * slope * (2 * loss) + rounding) * Suu + 2 * loss * Sdd + (rounding * n) * origin * origin
+    sound: Mask = least < rss
     sound &= loss * Suu < spread
-    sound &= (n * eps / LOSS) ** 2 * Suu * (regression.drift * regression.drift) < rss * spread
-    sound &= 2 * ROUNDING**2 * (n * origin * origin + Suu) < rss
-    sound &= (raw < LARGEST) & (Suu < LARGEST)
-    sound &= (rss > SMALLEST) & (spread > SMALLEST)
+    sound &= Suu + Sdd < LARGEST
+    sound &= np.minimum(rss, spread) > SMALLEST
     return sound
 
 
-def _with_fourth(regression: Regression, means: tuple[Array, Array], sums: list[Array]) -> tuple[Regression, Mask]:
+def _with_fourth(regression: Regression, u_mean: Array, sums: list[Array]) -> tuple[Regression, Mask]:
     """Add the two sums of degree four, and say where they kept their digits.
 
-    With g = e − slope·u and α the mean of g, residuals are g − α; the sums of u^j g^k follow from those of u^j e^k by
+    With g = d − slope·u and α the mean of g, residuals are g − α; the sums of u^j g^k follow from those of u^j d^k by
     the binomial theorem.
     """
-    u_mean, e_mean = means
-    Suu, Sue, See, Suuu, Suue, Suee, Seee, Suuuu, Suuue, Suuee, Sueee, Seeee = sums
+    Suu, Sud, Sdd, Suuu, Suud, Sudd, Sddd, Suuuu, Suuud, Suudd, Suddd, Sdddd = sums
     n, m = regression.n, regression.slope
-    alpha = e_mean - m * u_mean
-    Sug, Suug = Sue - m * Suu, Suue - m * Suuu
-    Sgg = See - m * (Sue + Sug)
-    Sugg = Suee - m * (Suue + Suug)
-    Suugg = Suuee + m * (m * Suuuu - 2 * Suuue)
-    Sggg = Seee + m * (m * (3 * Suue - m * Suuu) - 3 * Suee)
-    Sgggg = Seeee + m * (m * (6 * Suuee + m * (m * Suuuu - 4 * Suuue)) - 4 * Sueee)
+    alpha = regression.drift - m * u_mean
+    Sug, Suug = Sud - m * Suu, Suud - m * Suuu
+    Sgg = Sdd - m * (Sud + Sug)
+    Sugg = Sudd - m * (Suud + Suug)
+    Suugg = Suudd + m * (m * Suuuu - 2 * Suuud)
+    Sggg = Sddd + m * (m * (3 * Suud - m * Suuu) - 3 * Sudd)
+    Sgggg = Sdddd + m * (m * (6 * Suudd + m * (m * Suuuu - 4 * Suuud)) - 4 * Suddd)
     fourth = Sgggg + alpha * (alpha * (6 * Sgg - 3 * n * alpha * alpha) - 4 * Sggg)
     urr = Sugg + alpha * (alpha * n * u_mean - 2 * Sug)
     uurr = Suugg + alpha * (alpha * Suu - 2 * Suug)
     robust = uurr + u_mean * (u_mean * regression.rss - 2 * urr)
-    loss = 4 * np.finfo(np.float64).eps * np.sqrt(n) / LOSS
+    loss = 4 * EPS * n**0.5 / LOSS
     mm = m * m
-    sound: Mask = 8 * loss * (Seeee + mm * mm * Suuuu) < fourth
-    sound &= 8 * loss * (Suuee + mm * Suuuu) < robust
+    sound: Mask = 8 * loss * (Sdddd + mm * mm * Suuuu) < fourth
+    sound &= 8 * loss * (Suudd + mm * Suuuu) < robust
     return replace(regression, robust=robust, fourth=fourth), sound
 
 

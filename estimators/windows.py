@@ -128,9 +128,11 @@ def segments(values: Array, lookback: int, width: int) -> Array:
     Returns
     -------
     array, shape (rows, blocks, width)
-        A read-only view, in which neighbouring segments share values.
+        A read-only view of every segment that fits, in which neighbouring segments share values.
     """
-    return np.lib.stride_tricks.sliding_window_view(values, width, axis=1)[:, ::lookback]
+    blocks = (values.shape[1] - width) // lookback + 1
+    strides = values.strides[0], lookback * values.strides[1], values.strides[1]
+    return np.lib.stride_tricks.as_strided(values, (len(values), blocks, width), strides, writeable=False)
 
 
 def window_sums(terms: NDArray[Number], lookback: int) -> NDArray[Number]:

@@ -108,7 +108,7 @@ def _insert_leaves(con: duckdb.DuckDBPyConnection, found: list[digest.Leaf]) -> 
 
 
 def _run_columns(con: duckdb.DuckDBPyConnection, run_id: int) -> pa.Table:
-    (migration,) = only_row(con, "select migration from base.run where run_id = ?", [run_id])
+    (migration,) = only_row(con, "select max(migration) from base.run where run_id = ?", [run_id])
     columns = ", ".join(name for name in columns_at(migration)["run"] if name != "digest")
     return con.sql(f"select {columns} from base.run where run_id = {int(run_id)}").to_arrow_table()
 

@@ -6,6 +6,7 @@ import os
 import re
 from collections.abc import Iterator
 from dataclasses import dataclass
+from functools import cache
 from itertools import groupby
 from pathlib import Path
 from tempfile import TemporaryDirectory
@@ -14,6 +15,7 @@ import duckdb
 
 from driftbook.store import digest, lock, migrate
 from driftbook.store.connect import attached
+from driftbook.store.errors import BookError
 from driftbook.store.runs import NO_DIGEST, chain
 from driftbook.store.sql import only_row, query
 from driftbook.store.swap import create
@@ -52,17 +54,26 @@ def verify(book: str | os.PathLike[str]) -> Verified:
     """
     path = Path(book)
     with attached(path) as con:
-        schema = list(_schema_findings(con))
-        findings = schema or [
-            *_leaf_findings(con),
-            *_chain_findings(con),
-            *_run_findings(con),
-            *_intake_findings(con),
-            *(finding for table in tracked_tables() if table.closes for finding in _version_findings(con, table)),
-        ]
-        runs, last = only_row(con, "select count(*), coalesce(max_by(digest, run_id), '') from base.run")
-        leaves, rows = only_row(con, "select count(*), coalesce(sum(rows_in), 0) from base.leaf")
-    return Verified(runs, leaves, int(rows), last or NO_DIGEST, lock.last_look(path), findings)
+        try:
+            return _verified(con, lock.last_look(path))
+        except duckdb.Error as error:
+            raise BookError(f"{path} cannot be read to its end: {str(error).splitlines()[0]}") from error
+
+
+def _verified(con: duckdb.DuckDBPyConnection, look: lock.LastLook) -> Verified:
+    schema = [*_schema_findings(con), *_migration_findings(con)]
+    if schema:
+        return Verified(0, 0, 0, NO_DIGEST, look, schema)
+    findings = [
+        *_leaf_findings(con),
+        *_chain_findings(con),
+        *_run_findings(con, look),
+        *_intake_findings(con),
+        *(finding for table in tracked_tables() if table.closes for finding in _version_findings(con, table)),
+    ]
+    runs, last = only_row(con, "select count(*), coalesce(max_by(digest, run_id), '') from base.run")
+    leaves, rows = only_row(con, "select count(*), coalesce(sum(rows_in), 0) from base.leaf")
+    return Verified(runs, leaves, int(rows), last or NO_DIGEST, look, findings)
 
 
 def _schema_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
@@ -78,6 +89,13 @@ def _schema_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
             yield Finding(f"{name} is defined differently from what the migrations say.")
 
 
+def _migration_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
+    stored = con.execute("select number, name, sha256 from base.migration order by number").fetchall()
+    if stored != [(one.number, one.name, one.sha256) for one in migrate.all_migrations()]:
+        yield Finding("base.migration does not list the migrations of this driftbook, each once.")
+
+
+@cache
 def _fresh_catalog() -> dict[str, tuple[str, str | None]]:
     # read back from a file, since definitions come back from one in another wording than they were given in
     with TemporaryDirectory() as folder:
@@ -152,8 +170,9 @@ def _finding(leaf: digest.Leaf, names: dict[int, str], what: str) -> Finding:
 
 
 def _chain_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
-    for run_id, stored in con.execute("select run_id, digest from base.run order by run_id").fetchall():
-        if chain(con, run_id) != stored:
+    runs = con.execute("select run_id, migration, digest from base.run order by run_id").fetchall()
+    for run_id, migration, stored in runs:
+        if not 1 <= migration <= migrate.newest() or chain(con, run_id) != stored:
             yield Finding(
                 f"run {run_id}: its row, its leaves or the digest before it are not those that it was written with.",
                 "run",
@@ -161,10 +180,17 @@ def _chain_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
             )
 
 
-def _run_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
+def _run_findings(con: duckdb.DuckDBPyConnection, look: lock.LastLook) -> Iterator[Finding]:
     for (run_id,) in con.execute(query("runs_out_of_order")).fetchall():
         sentence = f"run {run_id}: its number or its moment does not follow the run before it."
         yield Finding(sentence, "run", run_id=run_id)
+    (last,) = only_row(con, "select coalesce(max(run_id), 0) from base.run")
+    noted = re.fullmatch(r"run (\d+)", look.found or "")
+    if noted and int(noted[1]) > last:
+        sentence = (
+            f"run {noted[1]}: the lock file notes it, but the book ends with run {last}: an older one stands here."
+        )
+        yield Finding(sentence, "run", run_id=int(noted[1]))
 
 
 def _intake_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:

@@ -109,14 +109,14 @@ def fit_piece(piece: Piece) -> Answer:
 def _estimates(regression: Regression, dt: Array) -> tuple[dict[str, Array], NDArray[np.int8]]:
     """All columns and the status of sound regressions; all arrays have the shape (m,)."""
     columns = _point_estimates(regression, dt)
+    no_pull = np.flatnonzero(regression.slope >= 0)
     if regression.robust is not None and regression.fourth is not None:
         columns |= _interval_estimates(regression, regression.robust, regression.fourth, dt)
-    status = np.zeros(regression.slope.shape, dtype=np.int8)
-    no_pull = np.flatnonzero(regression.slope >= 0)
-    status[no_pull] = Status.NO_REVERSION
-    for name in _NEED_A_PULL:
-        if name in columns:
+        columns |= _formulas(columns)
+        for name in _NEED_A_PULL:
             columns[name][no_pull] = np.nan
+    status = np.zeros(regression.slope.shape, dtype=np.int8)
+    status[no_pull] = Status.NO_REVERSION
     alternating = np.flatnonzero(regression.slope <= -1)
     if alternating.size:
         status[alternating] = Status.ALTERNATING
@@ -143,7 +143,8 @@ def _point_estimates(regression: Regression, dt: Array) -> dict[str, Array]:
     sigma = np.sqrt(rss * per_step / (n * dt))
     gradient = 1 / h - b * b / half_loss  # of ln(2h/(1 − e^{−2h})) in h
     small = np.flatnonzero(np.abs(h) < _CANCELS)
-    gradient[small] = 1 - h[small] / 3 + h[small] ** 3 / 45
+    if small.size:
+        gradient[small] = 1 - h[small] / 3 + h[small] ** 3 / 45
     return {
         "kappa": kappa,
         "kappa_se": h_se / dt,
@@ -151,8 +152,6 @@ def _point_estimates(regression: Regression, dt: Array) -> dict[str, Array]:
         "theta_se": theta_se,
         "sigma": sigma,
         "sigma_se": sigma * np.sqrt(np.square(gradient * h_se) * 0.25 + 1 / (2 * n)),
-        "half_life_mle": LN2 / kappa,
-        "stationary_sd": sigma / np.sqrt(2 * kappa),
         "loglik": (-0.5 * n) * (np.log(rss) + (np.log(2 * np.pi / n) + 1)),
     }
 
@@ -163,26 +162,35 @@ def _interval_estimates(regression: Regression, robust: Array, fourth: Array, dt
     kurtosis = n * fourth / np.square(rss)
     law = slope_law(n)
     if law is None:
-        return {"kurtosis": kurtosis}
+        nothing = np.full(rss.shape, np.nan)
+        return {"kurtosis": kurtosis, "kappa_median_unbiased": nothing, "kappa_lower": nothing, "kappa_upper": nothing}
     b, s2, duration = 1 + regression.slope, rss / (n - 2), n * dt
     pull = widened_pull(law, b, np.sqrt(n * robust / (A * rss)))
     theta = theta_set(law, b, mean_from=0.0, mean_to=regression.drift, A=A, s2=s2)
     sigma = sigma_interval(n, b, median_pull=pull.median, A=A, s2=s2, kurtosis=kurtosis, step=dt)
-    lower, median, upper = (_finite(c / duration) for c in (pull.lower, pull.median, pull.upper))
     return {
-        "kappa_lower": lower,
-        "kappa_upper": upper,
+        "kappa_lower": _finite(pull.lower / duration),
+        "kappa_upper": _finite(pull.upper / duration),
         "theta_lower": regression.level + theta.lower,
         "theta_upper": regression.level + theta.upper,
         "sigma_lower": sigma.lower,
         "sigma_upper": sigma.upper,
-        "kappa_median_unbiased": median,
+        "kappa_median_unbiased": _finite(pull.median / duration),
         "no_reversion_p": law.p_no_pull(b),
-        "half_life": _finite(LN2 / median),
-        "half_life_lower": _finite(LN2 / upper),
-        "half_life_upper": _finite(LN2 / lower),
-        "half_life_unbounded": np.where(np.isnan(lower), np.nan, lower == 0),
         "kurtosis": kurtosis,
+    }
+
+
+def _formulas(columns: dict[str, Array]) -> dict[str, Array]:
+    """The columns that are formulas of others, as their SQL has them but for the need of a pull."""
+    kappa, lower = columns["kappa"], columns["kappa_lower"]
+    return {
+        "half_life": _finite(LN2 / columns["kappa_median_unbiased"]),
+        "half_life_lower": _finite(LN2 / columns["kappa_upper"]),
+        "half_life_upper": _finite(LN2 / lower),
+        "half_life_mle": LN2 / kappa,
+        "half_life_unbounded": np.where(np.isnan(lower), np.nan, lower == 0),
+        "stationary_sd": columns["sigma"] / np.sqrt(2 * kappa),
     }
 
 

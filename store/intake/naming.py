@@ -9,9 +9,10 @@ from collections.abc import Collection
 import duckdb
 import pyarrow as pa
 
-from driftbook.store.errors import IntakeError
+from driftbook.store.errors import IntakeError, UsageError
 from driftbook.store.intake.options import Options
 from driftbook.store.intake.reasons import Reason
+from driftbook.store.intake.source import WHITESPACE
 from driftbook.store.series import Setting, Stamp, add_series, known_series
 from driftbook.store.sql import query
 
@@ -56,8 +57,10 @@ def check_named_series(con: duckdb.DuckDBPyConnection, options: Options) -> None
     if name is None:
         return
     reason = why_no_name(name)
-    if reason is not None:
-        raise IntakeError(f"--series {name!r}: {reason.sentence}")
+    if reason is not None or name != name.strip(WHITESPACE):
+        raise UsageError(
+            f"--series {name!r} can't be a name: {reason.sentence if reason else 'it has space around it.'}"
+        )
     known = known_series(con)
     if name in known or options.add_series:
         return

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from pathlib import Path
+from typing import BinaryIO, cast
 
 import duckdb
 import polars as pl
@@ -27,15 +28,12 @@ class _Digest:
         self.sha256.update(data)
         return len(data)
 
-    def flush(self) -> None:
-        """Nothing is held back."""
-
 
 def digest_of(source: Path | pl.DataFrame) -> str:
     """SHA-256 over a file's bytes, or over a frame's columns in Arrow's form."""
     if isinstance(source, pl.DataFrame):
         written = _Digest()
-        source.rechunk().write_ipc_stream(written)  # type: ignore[arg-type]  # it has the methods that are used
+        source.rechunk().write_ipc_stream(cast(BinaryIO, written))
         return written.sha256.hexdigest()
     try:
         with source.open("rb") as file:

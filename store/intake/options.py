@@ -8,7 +8,7 @@ from dataclasses import dataclass, field
 from datetime import datetime
 from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 
-from driftbook.store.errors import IntakeError
+from driftbook.store.errors import UsageError
 
 DAY_FIRST = "day-first"
 MONTH_FIRST = "month-first"
@@ -57,7 +57,7 @@ def check(options: Options) -> None:
     """Refuses options that no row could be read with."""
     for role in options.columns:
         if role not in ROLES:
-            raise IntakeError(f"--columns knows no {role!r}; say one of {', '.join(ROLES)}.")
+            raise UsageError(f"--columns knows no {role!r}; say one of {', '.join(ROLES)}.")
     if options.zone is not None:
         _check_zone(options.zone)
     if options.dates is not None and options.has_date_form:
@@ -68,7 +68,7 @@ def _check_zone(zone: str) -> None:
     try:
         ZoneInfo(zone)
     except (ZoneInfoNotFoundError, ValueError, OSError):
-        raise IntakeError(f"--zone {zone!r} is no time zone; say a name like Europe/Berlin or UTC.") from None
+        raise UsageError(f"--zone {zone!r} is no time zone; say a name like Europe/Berlin or UTC.") from None
 
 
 def _check_date_form(form: str) -> None:
@@ -79,7 +79,7 @@ def _check_date_form(form: str) -> None:
     except ValueError:
         is_dated = False
     if not is_dated:
-        raise IntakeError(
+        raise UsageError(
             f"--dates {form!r} is neither day-first nor month-first nor a strptime form that holds a year, "
             "such as %d.%m.%Y or %y%m%d."
         )

@@ -45,15 +45,11 @@ def settle(con: duckdb.DuckDBPyConnection, intake_id: int, stamp: Stamp, *, yes:
 
 
 def _number(con: duckdb.DuckDBPyConnection, name: str, values: dict[str, object]) -> int:
-    row = con.execute(query(name), values).fetchone()
-    assert row is not None  # noqa: S101 - an insert and a count always give a row
-    return int(row[0])
+    return int(con.execute(query(name), values).fetchall()[0][0])
 
 
 def _check_withdrawals(con: duckdb.DuckDBPyConnection) -> None:
-    worst = con.execute(query("intake_withdrawn_share")).fetchone()
-    if worst is not None:
-        series, withdrawn, in_force = worst
+    for series, withdrawn, in_force in con.execute(query("intake_withdrawn_share")).fetchall():
         raise IntakeError(
             f"The source withdraws {withdrawn} of the {in_force} observations of {series!r}, more than a tenth; "
             "say --yes if that is meant."

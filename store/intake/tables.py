@@ -87,6 +87,6 @@ def _typed_table(
 def _as_text(column: str, kind: str) -> str:
     """A column as text: a time with a zone as its instant in UTC, everything else as DuckDB shows it."""
     quoted = '"' + column.replace('"', '""') + '"'
-    if kind.startswith("TIMESTAMP WITH TIME ZONE"):
-        return f"make_timestamp(epoch_us({quoted}))::varchar || 'Z'"
+    if kind in ("TIMESTAMP WITH TIME ZONE", "TIMESTAMPTZ_NS"):
+        return f"make_timestamp(epoch_us({quoted}::timestamptz))::varchar || 'Z'"
     return f"{quoted}::varchar"

@@ -47,9 +47,9 @@ def take_in(
     origin = source if isinstance(source, pl.DataFrame) else Path(source)
     called = name or ("frame" if isinstance(origin, pl.DataFrame) else origin.name)
     arrival = _Arrival(called, digest_of(origin), options, stamp)
-    newest = con.execute(query("intake_newest"), [called]).fetchone()
-    if newest is not None and newest[1:] == (arrival.sha256, options.identity()):
-        return _known_already(con, newest[0], arrival)
+    for intake_id, *identity in con.execute(query("intake_newest"), [called]).fetchall():
+        if identity == [arrival.sha256, options.identity()]:
+            return _known_already(con, intake_id, arrival)
     rows = open_rows(con, origin, options, called)
     try:
         with scratch(con):

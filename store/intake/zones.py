@@ -17,29 +17,24 @@ import pyarrow as pa
 _FIRST, _LAST = date(1970, 1, 1), date(2050, 1, 1)
 
 
+_SCHEMA = pa.schema([("zone", pa.string()), ("day", pa.date32()), ("utc_offset", pa.duration("us"))])
+
+
 @cache
-def _plain_days(zone: str) -> tuple[list[date], list[timedelta]]:
+def _plain_days(zone: str) -> pa.Table:
     place = ZoneInfo(zone)
     midnight = datetime.combine(_FIRST, datetime.min.time(), UTC)
     offsets = [
-        (midnight + timedelta(days=day)).astimezone(place).utcoffset() or timedelta(0)
-        for day in range(-1, (_LAST - _FIRST).days + 3)
+        (midnight + timedelta(days=day)).astimezone(place).utcoffset() for day in range(-1, (_LAST - _FIRST).days + 3)
     ]
     days, plain = [], []
     for number in range((_LAST - _FIRST).days):
         if len(set(offsets[number : number + 4])) == 1:
             days.append(_FIRST + timedelta(days=number))
             plain.append(offsets[number])
-    return days, plain
+    return pa.table([[zone] * len(days), days, plain], schema=_SCHEMA)
 
 
 def plain_days(zones: Iterable[str]) -> pa.Table:
     """The plain days of the zones, with what to take away from the local time to get UTC."""
-    columns: dict[str, list[object]] = {"zone": [], "day": [], "utc_offset": []}
-    for zone in sorted(set(zones) - {"UTC"}):
-        days, offsets = _plain_days(zone)
-        columns["zone"] += [zone] * len(days)
-        columns["day"] += days
-        columns["utc_offset"] += offsets
-    schema = pa.schema([("zone", pa.string()), ("day", pa.date32()), ("utc_offset", pa.duration("us"))])
-    return pa.table(columns, schema=schema)
+    return pa.concat_tables([_SCHEMA.empty_table(), *map(_plain_days, sorted(set(zones) - {"UTC"}))])

@@ -13,8 +13,9 @@ from (select line, text, is_utf8, string_split(text, $delimiter) as part from in
 
 -- name: intake_read_plain
 -- Reads what is plain in bulk: rows whose observed_at stays NULL need a careful look. Numbers are cast first and
--- checked after, because the cast also takes 1_000, +-1, inf and 1e400; outer space does not disturb it. A time that has an offset goes through
--- TIMESTAMPTZ, since the cast to TIMESTAMP drops the offset; a local time is moved by its day's offset.
+-- checked after, because the cast also takes 1_000, +-1, inf and 1e400; outer space does not disturb it. A time that
+-- has an offset goes through TIMESTAMPTZ, since the cast to TIMESTAMP drops the offset; a local time is moved by its
+-- day's offset.
 with cast_row as (
   select line, is_plain, series, time,
     case

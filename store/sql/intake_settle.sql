@@ -153,23 +153,25 @@ where outcome in ('new', 'revised')
 order by series_id, observed_at, take
 
 -- name: intake_withdrawn_share
--- The series of which more than a tenth is withdrawn at once, the worst first.
-select s.series, w.withdrawn, f.in_force
-from (
+-- The series of which more than a tenth is withdrawn at once; the worst of them.
+with gone as (
   select series_id, count(*) as withdrawn
   from intake_step
   where stood and outcome = 'withdrawn' and is_last
   group by series_id
-) w
-join (
+), standing as (
   select series_id, count(*) as in_force
   from base.observation
-  where run_to is null
+  where run_to is null and series_id in (select series_id from gone)
   group by series_id
-) f on f.series_id = w.series_id
-join base.series s on s.series_id = w.series_id
-where w.withdrawn > 0.1 * f.in_force
-order by w.withdrawn / f.in_force desc, s.series
+)
+select s.series, g.withdrawn, t.in_force
+from gone g
+join standing t on t.series_id = g.series_id
+join base.series s on s.series_id = g.series_id
+where g.withdrawn > 0.1 * t.in_force
+order by g.withdrawn / t.in_force desc, s.series
+limit 1
 
 -- name: intake_step_counts
 -- How the undecided rows came out.
@@ -190,7 +192,8 @@ where outcome in ('several_values', 'no_value')
 -- name: intake_insert_intake
 -- The intake itself.
 insert into base.intake
-  (intake_id, source, sha256, options, received_at, rows_read, rows_new, rows_revised, rows_same, rows_refused, run_from)
+  (intake_id, source, sha256, options, received_at, rows_read, rows_new, rows_revised, rows_same, rows_refused,
+    run_from)
 values
   ($intake_id, $source, $sha256, $options, $received_at, $read, $new, $revised, $same, $refused, $run_id)
 

@@ -59,7 +59,7 @@ def _history(tmp_path_factory: pytest.TempPathFactory) -> Path:
         work.ingest(pl.concat([days("pellets_fob", wave(30)), days("power_da", wave(24, 60.0))]), adding, name="first")
         work.refresh(plan_text({"pellets_fob": [8, 12], "power_da": [8]}))
     with store.writing(path, at="2026-01-06") as work:
-        work.ingest(pl.concat([days("pellets_fob", wave(2, first=30), 30), days("peg", wave(3, 1.0))]), name="second")
+        work.ingest(pl.concat([days("pellets_fob", wave(2, first=30), 30), days("peg", wave(3, 1.0)), days("spark", wave(2))]), name="second")
     with store.writing(path, at="2026-01-07T08:00") as work:
         corrected = [*days("pellets_fob", [97.5, 99.25], 20).rows(), *days("power_da", [None], 15).rows()]
         frame = pl.DataFrame(corrected, schema=days("peg", []).schema, orient="row")
