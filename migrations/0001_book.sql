@@ -47,7 +47,17 @@ create table base.setting (
   time_zone varchar not null,
   same_time varchar not null,
   stale_after_days double not null,
+  in_force varchar not null,
+  shift double not null,
   planned boolean not null,
+  run_from integer not null,
+  run_to integer
+);
+
+-- Names in files that mean a series: that is how a rename is done.
+create table base.alias (
+  series_id integer not null,
+  name varchar not null,
   run_from integer not null,
   run_to integer
 );

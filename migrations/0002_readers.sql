@@ -14,8 +14,8 @@ create macro base.run_at(us) as (
 );
 
 create view base.series_rows as
-select s.series, t.sign, t.unit, t.clock, t.periods_per_year, t.time_zone, t.same_time, t.stale_after_days, t.planned,
-  s.added_at, t.run_from, t.run_to
+select s.series, t.sign, t.unit, t.clock, t.periods_per_year, t.time_zone, t.same_time, t.stale_after_days, t.in_force,
+  t.shift, t.planned, s.added_at, t.run_from, t.run_to
 from base.setting t
 join base.series s on s.series_id = t.series_id;
 
@@ -122,11 +122,13 @@ comment on view main.series is 'the series of the book with their settings in fo
 comment on column main.series.series is 'name of the series';
 comment on column main.series.sign is 'positive: prices that models for X > 0 may be fitted to; any: others';
 comment on column main.series.unit is 'unit of the values';
-comment on column main.series.clock is 'how time between observations is counted: trading';
+comment on column main.series.clock is 'how time between observations is counted: trading, act365 or seconds';
 comment on column main.series.periods_per_year is 'steps in a year under the clock trading';
 comment on column main.series.time_zone is 'zone of times that come without one';
 comment on column main.series.same_time is 'what is done with several values at one time in one intake';
 comment on column main.series.stale_after_days is 'days without an observation after which the series is stale';
+comment on column main.series.in_force is 'best, or the model that is always in force';
+comment on column main.series.shift is 'what models for X > 0 add to the values, in the unit of the series';
 comment on column main.series.planned is 'whether the plan names the series';
 comment on column main.series.added_at is 'when the series was added';
 comment on column main.series.run_id is 'run that wrote the row';
@@ -134,11 +136,13 @@ comment on view versions.series is 'every version of series';
 comment on column versions.series.series is 'name of the series';
 comment on column versions.series.sign is 'positive: prices that models for X > 0 may be fitted to; any: others';
 comment on column versions.series.unit is 'unit of the values';
-comment on column versions.series.clock is 'how time between observations is counted: trading';
+comment on column versions.series.clock is 'how time between observations is counted: trading, act365 or seconds';
 comment on column versions.series.periods_per_year is 'steps in a year under the clock trading';
 comment on column versions.series.time_zone is 'zone of times that come without one';
 comment on column versions.series.same_time is 'what is done with several values at one time in one intake';
 comment on column versions.series.stale_after_days is 'days without an observation after which the series is stale';
+comment on column versions.series.in_force is 'best, or the model that is always in force';
+comment on column versions.series.shift is 'what models for X > 0 add to the values, in the unit of the series';
 comment on column versions.series.planned is 'whether the plan names the series';
 comment on column versions.series.added_at is 'when the series was added';
 comment on column versions.series.run_from is 'run from which the row is in force';

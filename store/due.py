@@ -1,4 +1,8 @@
-"""Which windows are due: those that hold, or held, an observation that changed since the last refresh."""
+"""Which windows are due: those that hold, or held, an observation that changed since the last refresh.
+
+A window is named here by the index of its last observation, its end. With `every` other than observation only the
+last observation of each day, week or month ends a window.
+"""
 
 from __future__ import annotations
 
@@ -13,34 +17,47 @@ from driftbook.estimators import aligned_start
 _EARLIEST = np.iinfo(np.int64).min
 _LATEST = np.iinfo(np.int64).max
 
+OBSERVATION = "observation"
+_THURSDAY_TO_MONDAY = 3  # 1 January 1970 was a Thursday
+# The fewest steps that a window over all observations is asked for; a shorter series is too short.
+_FEWEST = 5
+
 Microseconds = NDArray[np.int64]
+Days = NDArray[np.int64]
+Indexes = NDArray[np.int64]
 
 
 @dataclass(frozen=True)
 class Asked:
-    """One series and lookback of a model; `step` is the constant time between observations, in years."""
+    """One series and lookback of a model; lookback 0 has one window, from the first to the latest observation."""
 
     series_id: int
     lookback: int
-    step: float
+    every: str
     whole: bool
 
 
 @dataclass(frozen=True)
 class Slice:
-    """Windows to compute, by index in the series: the observations start … stop, the windows from `first` on."""
+    """Windows to compute, by index in the series: observations start … stop, windows of `steps` steps.
+
+    Windows that begin before `first` are left out, and so are those that do not end in `ends`, unless it is None.
+    """
 
     series_id: int
     lookback: int
-    step: float
+    steps: int
     start: int
     first: int
     stop: int
+    ends: Indexes | None = None
 
     @property
     def windows(self) -> int:
         """How many windows are due; a series shorter than its lookback has the one that says so."""
-        return max(self.stop - self.lookback - self.first, 0) + 1
+        if self.ends is not None:
+            return self.ends.size
+        return max(self.stop - self.steps - self.first, 0) + 1
 
 
 @dataclass(frozen=True)
@@ -53,36 +70,42 @@ class Span:
     closes: int
 
 
-def due(asked: Asked, times: Microseconds, changed: Microseconds) -> tuple[list[Slice], list[Span]]:
+def due(asked: Asked, times: Microseconds, changed: Microseconds, days: Days) -> tuple[list[Slice], list[Span]]:
     """The slices to compute and the spans to close for one series and lookback.
 
-    times: the observations in force, ascending. changed: the times added, corrected or withdrawn, ascending.
+    times: the observations in force, ascending. changed: the times added, corrected or withdrawn, ascending. days: the
+    local day of each observation, counted from 1970; used unless every observation ends a window.
     """
     if not asked.whole and changed.size == 0:
         return [], []
-    if asked.whole or times.size <= asked.lookback:
-        return _slices(asked, [(0, times.size - 1)], times.size), [_span(asked, _EARLIEST, _LATEST)]
+    if asked.whole or times.size <= asked.lookback or asked.lookback == 0:
+        return _everything(asked, times, days), [_span(asked, _EARLIEST, _LATEST)]
     at = np.searchsorted(times, changed)
     still_there = times[np.minimum(at, times.size - 1)] == changed
     # the last window end that holds a changed observation, or bridges the gap that a withdrawn one left
     last = at + asked.lookback - np.where(still_there, 0, 1)
-    ends = _merged(np.maximum(at, asked.lookback), np.minimum(last, times.size - 1))
+    # the observation before a change is the only other one that may begin or cease to be the last of its period
+    first = at if asked.every == OBSERVATION else np.maximum(at - 1, 0)
+    opens = changed if asked.every == OBSERVATION else np.minimum(changed, times[np.minimum(first, times.size - 1)])
     until = np.where(last < times.size, times[np.minimum(last, times.size - 1)], _LATEST)
-    spans = [_span(asked, int(opens), int(closes)) for opens, closes in zip(changed, until, strict=True)]
+    ends = _merged(np.maximum(first, asked.lookback), np.minimum(last, times.size - 1))
+    spans = [_span(asked, int(one), int(other)) for one, other in zip(opens, until, strict=True)]
     spans.append(_span(asked, _EARLIEST, int(times[asked.lookback]) - 1))
-    return _slices(asked, ends, times.size), spans
+    return _slices(asked, ends, times.size, days), spans
 
 
-def slice_table(slices: list[Slice]) -> pa.Table:
-    """The slices as a table for SQL."""
+def slice_table(slices: list[Slice], shifts: dict[int, float]) -> pa.Table:
+    """The slices as a table for SQL; shifts: what is added to the values of a series, 0 where it is not named."""
     return pa.table(
         {
             "series_id": pa.array([one.series_id for one in slices], pa.int32()),
             "lookback": pa.array([one.lookback for one in slices], pa.int32()),
-            "step": pa.array([one.step for one in slices], pa.float64()),
+            "steps": pa.array([one.steps for one in slices], pa.int32()),
             "start": pa.array([one.start for one in slices], pa.int64()),
             "first": pa.array([one.first for one in slices], pa.int64()),
             "stop": pa.array([one.stop for one in slices], pa.int64()),
+            "shift": pa.array([shifts.get(one.series_id, 0.0) for one in slices], pa.float64()),
+            "ends": pa.array([one.ends for one in slices], pa.list_(pa.int64())),
         }
     )
 
@@ -112,15 +135,37 @@ def _merged(firsts: NDArray[np.int64], lasts: NDArray[np.int64]) -> list[tuple[i
     return merged
 
 
-def _slices(asked: Asked, ends: list[tuple[int, int]], size: int) -> list[Slice]:
-    if size == 0:
-        return []
+def _everything(asked: Asked, times: Microseconds, days: Days) -> list[Slice]:
+    last = times.size - 1
+    if times.size <= asked.lookback or asked.lookback == 0:
+        steps = asked.lookback or max(last, _FEWEST)
+        return [Slice(asked.series_id, asked.lookback, steps, 0, 0, last)] if times.size else []
+    return _slices(asked, [(asked.lookback, last)], times.size, days)
+
+
+def _slices(asked: Asked, ranges: list[tuple[int, int]], size: int, days: Days) -> list[Slice]:
+    lasting = None if asked.every == OBSERVATION else _last_of_period(asked.every, days, size)
     found = []
-    for first_end, last_end in ends:
-        first = max(first_end - asked.lookback, 0)
+    for first_end, last_end in ranges:
+        ends = None if lasting is None else lasting[(lasting >= first_end) & (lasting <= last_end)]
+        if ends is not None and ends.size == 0:
+            continue
+        first = (first_end if ends is None else int(ends[0])) - asked.lookback
+        stop = last_end if ends is None else int(ends[-1])
         start = aligned_start(first, asked.lookback)
-        found.append(Slice(asked.series_id, asked.lookback, asked.step, start, first, last_end))
+        found.append(Slice(asked.series_id, asked.lookback, asked.lookback, start, first, stop, ends))
     return found
+
+
+def _last_of_period(every: str, days: Days, size: int) -> Indexes:
+    """The indexes of the last observation of each day, week (from Monday) or month; the latest is always one."""
+    if every == "day":
+        period = days
+    elif every == "week":
+        period = (days + _THURSDAY_TO_MONDAY) // 7
+    else:
+        period = days.astype("datetime64[D]").astype("datetime64[M]").astype(np.int64)
+    return np.append(np.flatnonzero(np.diff(period)), size - 1)
 
 
 def _span(asked: Asked, opens: int, closes: int) -> Span:

@@ -30,14 +30,14 @@ class EstimateTable:
         ).fetchall()
         return {(series_id, lookback): count for series_id, lookback, count in rows}
 
-    def estimate(self, con: duckdb.DuckDBPyConnection, series: list[int], slices: pa.Table) -> tuple[int, int]:
-        """Computes the due slices into the temporary table `fresh`; gives the windows due and those with numbers."""
+    def estimate(self, con: duckdb.DuckDBPyConnection, slices: pa.Table) -> tuple[int, int]:
+        """Computes the due slices of what is listed into the temporary table `fresh`.
+
+        Gives the windows due and those with numbers.
+        """
         con.register("due_slice", slices)
         columns = ", ".join(f"f.{name}" for name in self.stored)
-        con.execute(
-            query("estimate_due").format(rolling=f"rolling_{self.model.name}", columns=columns),
-            {"series": series},
-        )
+        con.execute(query("estimate_due").format(rolling=f"rolling_{self.model.name}_from", columns=columns))
         con.unregister("due_slice")
         due, fitted = only_row(con, "select count(*), count(loglik) from fresh")
         return due, fitted

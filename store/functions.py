@@ -1,7 +1,14 @@
 """The estimators as SQL functions: a function turns its chunk into blocks, hands them to an executor, holds no formula.
 
-`rolling_<model>(x DOUBLE[], dt DOUBLE, lookback INTEGER)` gives one STRUCT a window. A series that is too short for
-its lookback, or a NULL where a value must be, gives one STRUCT whose status says so.
+For each model there are, with x a list of values in time order and steps in years (or seconds):
+
+    fit_<model>(x, dt), fit_<model>_at(t, x)                       one STRUCT: the fit of the whole list
+    rolling_<model>(x, dt, lookback), rolling_<model>_at(t, x, lookback)    STRUCT[]: one a window
+    rolling_<model>_from(x, steps, lookback, first)                the same, from window `first` on; a refresh calls it
+    loglik_<model>(x, dt, <parameters>)                            the log-likelihood at given parameters
+
+The forms with _at take times and count Act/365. A list that is too short for its lookback, or a NULL where a value
+must be, gives one STRUCT whose status says so; a query is never killed by its data.
 """
 
 from __future__ import annotations
@@ -19,11 +26,16 @@ from duckdb.func import FunctionNullHandling, PythonUDFType
 from numpy.typing import NDArray
 
 from driftbook.estimators import MODELS, Fit, Model, Status, rolling
+from driftbook.store.clocks import MICROSECONDS_PER_YEAR
 
 _BLOCK_VALUES = 1 << 18
 _PADDING = 1.25
 _SQL_TYPES = {"double": "DOUBLE", "boolean": "BOOLEAN"}
 _WORDS = pa.array([status.word for status in Status], pa.string())
+# What a list without a single step is asked for, so that it is told to be too short.
+_SOME_STEPS = 5
+
+Values = NDArray[np.float64]
 
 
 class InlineExecutor(Executor):
@@ -39,14 +51,17 @@ class InlineExecutor(Executor):
 def register(con: duckdb.DuckDBPyConnection, executor: Executor) -> None:
     """Registers the functions of every model on a connection; their blocks go to the executor."""
     for model in MODELS.values():
-        con.create_function(
-            f"rolling_{model.name}",
-            partial(_rolling, model, executor),
-            ["DOUBLE[]", "DOUBLE", "INTEGER"],
-            f"{struct_type(model)}[]",
-            type=PythonUDFType.ARROW,
-            null_handling=FunctionNullHandling.SPECIAL,
-        )
+        fits = partial(_fits, model, executor)
+        one, many = struct_type(model), f"{struct_type(model)}[]"
+        name = model.name
+        _add(con, f"fit_{name}", partial(_fit, fits), ["DOUBLE[]", "DOUBLE"], one)
+        _add(con, f"fit_{name}_at", partial(_fit_at, fits), ["TIMESTAMP[]", "DOUBLE[]"], one)
+        _add(con, f"rolling_{name}", partial(_rolling, fits), ["DOUBLE[]", "DOUBLE", "INTEGER"], many)
+        _add(con, f"rolling_{name}_at", partial(_rolling_at, fits), ["TIMESTAMP[]", "DOUBLE[]", "INTEGER"], many)
+        types = ["DOUBLE[]", "DOUBLE[]", "INTEGER", "BIGINT"]
+        _add(con, f"rolling_{name}_from", partial(_rolling_from, fits), types, many)
+        numbers = ["DOUBLE"] * (1 + len(model.parameters))
+        _add(con, f"loglik_{name}", partial(_loglik, model), ["DOUBLE[]", *numbers], "DOUBLE")
 
 
 def struct_type(model: Model) -> str:
@@ -55,50 +70,110 @@ def struct_type(model: Model) -> str:
     return f"STRUCT(n INTEGER, {columns}, status VARCHAR)"
 
 
+def roll_block(name: str, x: Values, steps: Values, lookback: int, first: int) -> Fit:
+    """What a worker does with one block of series: arrays in, arrays out."""
+    return rolling(name, x, steps, lookback, first=first)
+
+
+def _add(
+    con: duckdb.DuckDBPyConnection, name: str, function: Callable[..., Any], takes: list[str], gives: str
+) -> None:
+    con.create_function(
+        name, function, takes, gives, type=PythonUDFType.ARROW, null_handling=FunctionNullHandling.SPECIAL
+    )
+
+
 @dataclass(frozen=True)
 class _Asked:
-    """One row of a chunk: a series and how to roll over it; None where an argument is NULL or unusable."""
+    """One row of a chunk: a series, its steps (one number, or one a step), and the windows that are wanted."""
 
-    x: NDArray[np.float64]
-    dt: float
+    x: Values
+    steps: Values
     lookback: int
+    first: int = 0
 
     @property
-    def fits(self) -> bool:
-        """Whether there is at least one whole window."""
-        return self.lookback >= 1 and self.dt > 0 and self.x.size > self.lookback
+    def is_readable(self) -> bool:
+        """Whether lookback and steps can be used at all."""
+        usable = self.steps.size == 1 or self.steps.size == self.x.size - 1
+        return self.lookback >= 1 and usable and bool((np.isfinite(self.steps) & (self.steps > 0)).all())
+
+    @property
+    def windows(self) -> int:
+        """How many windows are wanted."""
+        return max(self.x.size - self.lookback - self.first, 0)
+
+    @property
+    def shape(self) -> tuple[object, ...]:
+        """What series must share to be worked on in one block."""
+        step = float(self.steps[0]) if self.steps.size == 1 else None
+        return (self.steps.size == 1, step or 0.0, self.lookback, self.first)
 
 
-def _rolling(model: Model, executor: Executor, x: pa.ChunkedArray, dt: Any, lookback: Any) -> pa.Array:
-    asked = [
-        _Asked(series, step, steps)
-        for series, step, steps in zip(_lists(x), _numbers(dt), _integers(lookback), strict=True)
-    ]
-    usable = [row for row, one in enumerate(asked) if one.fits]
-    found: list[_Rows] = [_unusable(model, one) for one in asked]
+def _fits(model: Model, executor: Executor, asked: list[_Asked]) -> list[_Rows]:
+    """The wanted windows of each row; blocks of similar rows are worked on together."""
+    usable = [row for row, one in enumerate(asked) if one.is_readable and one.windows]
+    found = [_without_numbers(model, one) for one in asked]
     futures = [(rows, executor.submit(roll_block, model.name, *block)) for rows, block in _blocks(asked, usable)]
     for rows, future in futures:
         fit = future.result()
         for position, row in enumerate(rows):
-            found[row] = _Rows(fit, position, asked[row].x.size - asked[row].lookback)
-    return _list_of_structs(model, found)
+            found[row] = _Rows(fit, position, asked[row].windows)
+    return found
 
 
-def roll_block(name: str, x: NDArray[np.float64], dt: float, lookback: int) -> Fit:
-    """What a worker does with one block of series: arrays in, arrays out."""
-    return rolling(name, x, dt, lookback)
+def _fit(fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, dt: Any) -> pa.Array:
+    asked = [_whole(series, np.array([step])) for series, step in zip(_lists(x), _numbers(dt), strict=True)]
+    return _structs(fits(asked))
 
 
-def _blocks(
-    asked: list[_Asked], usable: list[int]
-) -> Iterator[tuple[list[int], tuple[NDArray[np.float64], float, int]]]:
-    """Series of one step and lookback and of about the same length, filled up with NaN at their ends.
+def _fit_at(fits: Callable[[list[_Asked]], list[_Rows]], t: pa.ChunkedArray, x: pa.ChunkedArray) -> pa.Array:
+    asked = [_whole(series, _years(times)) for times, series in zip(_lists(t), _lists(x), strict=True)]
+    return _structs(fits(asked))
+
+
+def _rolling(fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, dt: Any, lookback: Any) -> pa.Array:
+    rows = zip(_lists(x), _numbers(dt), _integers(lookback), strict=True)
+    return _lists_of_structs(fits([_Asked(series, np.array([step]), steps) for series, step, steps in rows]))
+
+
+def _rolling_at(
+    fits: Callable[[list[_Asked]], list[_Rows]], t: pa.ChunkedArray, x: pa.ChunkedArray, lookback: Any
+) -> pa.Array:
+    rows = zip(_lists(t), _lists(x), _integers(lookback), strict=True)
+    return _lists_of_structs(fits([_Asked(series, _years(times), steps) for times, series, steps in rows]))
+
+
+def _rolling_from(
+    fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, steps: pa.ChunkedArray, lookback: Any, first: Any
+) -> pa.Array:
+    rows = zip(_lists(x), _lists(steps), _integers(lookback), _integers(first), strict=True)
+    return _lists_of_structs(fits([_Asked(*row) for row in rows]))
+
+
+def _loglik(model: Model, x: pa.ChunkedArray, dt: Any, *parameters: Any) -> pa.Array:
+    columns = [_numbers(parameter) for parameter in parameters]
+    rows = zip(_lists(x), _numbers(dt), *columns, strict=True)
+    values = [model.loglik(series, step, *numbers) for series, step, *numbers in rows]
+    return pa.array(np.array(values, np.float64), from_pandas=True)
+
+
+def _whole(x: Values, steps: Values) -> _Asked:
+    return _Asked(x, steps, max(x.size - 1, 0) or _SOME_STEPS)
+
+
+def _years(times: Values) -> Values:
+    """Steps between times in years of 365 days."""
+    return np.diff(times.astype("datetime64[us]").astype(np.int64)) / MICROSECONDS_PER_YEAR
+
+
+def _blocks(asked: list[_Asked], usable: list[int]) -> Iterator[tuple[list[int], tuple[Values, Values, int, int]]]:
+    """Rows of one shape and of about the same length, filled up with NaN at their ends.
 
     What stands behind a series does not touch its windows, so padding moves no bit of them.
     """
-    ordered = sorted(usable, key=lambda row: (asked[row].dt, asked[row].lookback, asked[row].x.size))
     block: list[int] = []
-    for row in ordered:
+    for row in sorted(usable, key=lambda row: (*asked[row].shape, asked[row].x.size)):
         if block and not _belongs(asked[block[0]], asked[row], len(block)):
             yield block, _padded([asked[one] for one in block])
             block = []
@@ -108,15 +183,20 @@ def _blocks(
 
 
 def _belongs(first: _Asked, other: _Asked, size: int) -> bool:
-    alike = (first.dt, first.lookback) == (other.dt, other.lookback)
-    return alike and other.x.size <= _PADDING * first.x.size and (size + 1) * other.x.size <= _BLOCK_VALUES
+    alike = first.shape == other.shape and other.x.size <= _PADDING * first.x.size
+    return alike and (size + 1) * other.x.size <= _BLOCK_VALUES
 
 
-def _padded(series: list[_Asked]) -> tuple[NDArray[np.float64], float, int]:
-    x = np.full((len(series), max(one.x.size for one in series)), np.nan)
+def _padded(series: list[_Asked]) -> tuple[Values, Values, int, int]:
+    first = series[0]
+    longest = max(one.x.size for one in series)
+    x = np.full((len(series), longest), np.nan)
+    steps = np.ones((len(series), longest - 1)) if first.steps.size > 1 else np.asarray(first.steps[0])
     for row, one in enumerate(series):
         x[row, : one.x.size] = one.x
-    return x, series[0].dt, series[0].lookback
+        if first.steps.size > 1:
+            steps[row, : one.steps.size] = one.steps
+    return x, steps, first.lookback, first.first
 
 
 @dataclass(frozen=True)
@@ -133,23 +213,27 @@ class _Rows:
         return part
 
 
-def _unusable(model: Model, asked: _Asked) -> _Rows:
+def _without_numbers(model: Model, asked: _Asked) -> _Rows:
     """One fit without numbers, for a series that has no whole window or that cannot be read."""
     nothing = np.full((1, 1), np.nan)
-    steps = max(asked.x.size - 1, 0)
-    readable = asked.lookback >= 1 and asked.dt > 0
-    status = Status.TOO_SHORT if readable else Status.OUT_OF_RANGE
+    status = Status.TOO_SHORT if asked.is_readable or asked.x.size < 2 else Status.OUT_OF_RANGE
     fit = Fit(
         model=model.name,
-        n=np.full((1, 1), steps),
+        n=np.full((1, 1), max(asked.x.size - 1, 0)),
         columns={column.name: nothing for column in model.columns},
         status=np.full((1, 1), status, np.int8),
     )
     return _Rows(fit, 0, 1)
 
 
-def _list_of_structs(model: Model, found: list[_Rows]) -> pa.Array:
+def _lists_of_structs(found: list[_Rows]) -> pa.Array:
     offsets = np.concatenate([[0], np.cumsum([rows.windows for rows in found])]).astype(np.int32)
+    return pa.ListArray.from_arrays(pa.array(offsets), _structs(found))
+
+
+def _structs(found: list[_Rows]) -> pa.Array:
+    """The fits of all rows, one after the other."""
+    model = MODELS[found[0].fit.model]
     fields = [pa.array(_joined([rows.cut(rows.fit.n) for rows in found]), pa.int32())]
     names = ["n"]
     for column in model.columns:
@@ -158,29 +242,29 @@ def _list_of_structs(model: Model, found: list[_Rows]) -> pa.Array:
         names.append(column.name)
     codes = _joined([rows.cut(rows.fit.status) for rows in found])
     fields.append(_WORDS.take(pa.array(codes.astype(np.int64))))
-    return pa.ListArray.from_arrays(pa.array(offsets), pa.StructArray.from_arrays(fields, [*names, "status"]))
+    return pa.StructArray.from_arrays(fields, [*names, "status"])
 
 
 def _joined(parts: list[NDArray[Any]]) -> NDArray[Any]:
-    return np.concatenate(parts) if parts else np.empty(0)
+    return np.concatenate(parts)
 
 
-def _nullable(values: NDArray[np.float64], kind: str) -> pa.Array:
+def _nullable(values: Values, kind: str) -> pa.Array:
     if kind == "boolean":
         return pa.array(values == 1.0, mask=np.isnan(values))
     return pa.array(values, from_pandas=True)
 
 
-def _lists(column: Any) -> Iterator[NDArray[np.float64]]:
+def _lists(column: pa.ChunkedArray) -> Iterator[NDArray[Any]]:
     """The lists of a chunk as arrays; a NULL list is empty and a NULL inside is NaN."""
-    chunk = column.combine_chunks() if isinstance(column, pa.ChunkedArray) else column
+    chunk = column.combine_chunks()
     if isinstance(chunk, pa.ChunkedArray):
         chunk = chunk.chunk(0)
     values = chunk.values.to_numpy(zero_copy_only=False)
     offsets = chunk.offsets.to_numpy()
     valid = chunk.is_valid().to_numpy(zero_copy_only=False)
     for row in range(len(chunk)):
-        yield values[offsets[row] : offsets[row + 1]] if valid[row] else np.empty(0)
+        yield values[offsets[row] : offsets[row + 1]] if valid[row] else values[:0]
 
 
 def _numbers(column: Any) -> list[float]:

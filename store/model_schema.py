@@ -9,7 +9,7 @@ import sys
 
 from driftbook.estimators import MODELS, Model
 
-_IDENTITY = (
+IDENTITY = (
     ("series", "name of the series"),
     ("lookback", "steps in the window; 0: all"),
     ("window_start", "time of the window's first observation, UTC"),
@@ -20,7 +20,7 @@ _CLOSING = (
     ("status", "what became of the fit, in a word"),
     ("revision", "revision of the model that computed the row"),
 )
-_VERSIONED = (
+VERSIONED = (
     ("run_from", "run from which the row is in force"),
     ("run_to", "run from which it is no longer in force; NULL: still in force"),
     ("in_force_from", "moment of run_from"),
@@ -102,20 +102,21 @@ def _readers(model: Model) -> list[str]:
 
 def _comments(model: Model) -> list[str]:
     numbers = [(column.name, f"{column.meaning} [{column.unit or '1'}]") for column in model.columns]
-    described = [*_IDENTITY, *numbers, *_CLOSING]
+    described = [*IDENTITY, *numbers, *_CLOSING]
     name = model.name
     return [
         f"comment on view main.{name} is '{_quoted(model.equation)}: estimates in force, one row per fit';",
-        *_column_comments(f"main.{name}", [*described, ("run_id", "run that wrote the row")]),
+        *column_comments(f"main.{name}", [*described, ("run_id", "run that wrote the row")]),
         f"comment on view versions.{name} is '{_quoted(model.equation)}: every version of every estimate';",
-        *_column_comments(f"versions.{name}", [*described, *_VERSIONED]),
+        *column_comments(f"versions.{name}", [*described, *VERSIONED]),
         f"comment on macro table main.{name}_at_run is 'the view {name} as it was after a run: {name}_at_run(41)';",
         f"comment on macro table main.{name}_as_of is "
         f"'the view {name} as it was known at a moment: {name}_as_of(''2026-01-31'')';",
     ]
 
 
-def _column_comments(view: str, described: list[tuple[str, str]]) -> list[str]:
+def column_comments(view: str, described: list[tuple[str, str]]) -> list[str]:
+    """The statements that put the meaning of a view's columns beside them."""
     return [f"comment on column {view}.{column} is '{_quoted(meaning)}';" for column, meaning in described]
 
 

@@ -6,35 +6,56 @@ import difflib
 import hashlib
 import tomllib
 from collections import Counter
+from collections.abc import Iterator
 from dataclasses import dataclass
 from fnmatch import fnmatchcase
 from pathlib import Path
 from typing import Annotated, Any, Literal, Self
 from zoneinfo import available_timezones
 
-from pydantic import AfterValidator, BaseModel, ConfigDict, Field, ValidationError, model_validator
+from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, ValidationError, model_validator
 
 from driftbook.estimators import MODELS
 from driftbook.store.errors import PlanError
 from driftbook.store.series import Setting
 
 # Keys of later plan files: named, so that a plan that uses them hears that this driftbook cannot do it yet.
-_NOT_YET = {"also_called", "in_force", "shift", "breaks", "formula", "group", "intake", "also", "horizons"}
+_NOT_YET = {"breaks", "formula", "group", "also", "horizons", "decimal", "blank"}
+ALL = 0
+BEST = "best"
 
 
 def _known_zone(zone: str) -> str:
     if zone not in available_timezones():
-        near = difflib.get_close_matches(zone, available_timezones(), n=1)
-        raise ValueError(f"no time zone is called {zone!r}" + (f"; did you mean {near[0]!r}?" if near else ""))
+        raise ValueError(f"no time zone is called {zone!r}{_near(zone, list(available_timezones()))}")
     return zone
 
 
 def _known_model(model: str) -> str:
     if model not in MODELS:
-        near = difflib.get_close_matches(model, MODELS, n=1)
-        hint = f"did you mean {near[0]!r}?" if near else f"there are {', '.join(MODELS)}"
-        raise ValueError(f"no model is called {model!r}; {hint}")
+        hint = _near(model, list(MODELS)) or f"; there are {', '.join(MODELS)}"
+        raise ValueError(f"no model is called {model!r}{hint}")
     return model
+
+
+def _best_or_known_model(model: str) -> str:
+    return model if model == BEST else _known_model(model)
+
+
+def _lookback(value: object) -> object:
+    return ALL if value == "all" else value if value != ALL else -1
+
+
+def _in_the_folder(pattern: str) -> str:
+    if "/" in pattern or "\\" in pattern or pattern.startswith("."):
+        raise ValueError(f"{pattern!r} leaves the inbox; name files in it, such as power_*.csv")
+    return pattern
+
+
+Name = Annotated[str, Field(min_length=1, max_length=200)]
+ModelName = Annotated[str, AfterValidator(_known_model)]
+Lookback = Annotated[int, BeforeValidator(_lookback), Field(ge=0, le=10_000_000)]
+Positive = Annotated[float, Field(gt=0, allow_inf_nan=False, strict=False)]
 
 
 class _Strict(BaseModel):
@@ -44,50 +65,91 @@ class _Strict(BaseModel):
 class PlannedSeries(_Strict):
     """One `[[series]]` of a plan."""
 
-    name: Annotated[str, Field(min_length=1, max_length=200)]
+    name: Name
     sign: Literal["any", "positive"] = "any"
     unit: str | None = None
-    clock: Literal["trading"] = "trading"
-    periods_per_year: Annotated[float, Field(gt=0, allow_inf_nan=False, strict=False)] = 252.0
+    clock: Literal["trading", "act365", "seconds"] = "trading"
+    periods_per_year: Positive = 252.0
     time_zone: Annotated[str, AfterValidator(_known_zone)] = "UTC"
     same_time: Literal["refuse", "last", "median"] = "refuse"
-    stale_after_days: Annotated[float, Field(gt=0, allow_inf_nan=False, strict=False)] = 5.0
+    stale_after_days: Positive = 5.0
+    also_called: list[Name] = []
+    in_force: Annotated[str, AfterValidator(_best_or_known_model)] = BEST
+    shift: Annotated[float, Field(allow_inf_nan=False, strict=False)] = 0.0
+
+    @model_validator(mode="after")
+    def _fits_together(self) -> Self:
+        if self.in_force != BEST and not self.admits(self.in_force):
+            raise ValueError(f"in_force: {self.in_force} is for series with sign = \"positive\"")
+        if self.shift and self.sign != "positive":
+            raise ValueError('shift: only models of series with sign = "positive" use it')
+        return self
+
+    def admits(self, model: str) -> bool:
+        """Whether a model applies to a series of this sign."""
+        return self.sign == "positive" or MODELS[model].range == "real"
 
     @property
     def setting(self) -> Setting:
         """The setting that the book keeps for this series."""
-        return Setting(**self.model_dump(exclude={"name"}), planned=True)
+        periods = self.periods_per_year if self.clock == "trading" else None
+        told = self.model_dump(exclude={"name", "also_called", "periods_per_year"})
+        return Setting(**told, periods_per_year=periods, planned=True)
 
 
 class PlannedEstimate(_Strict):
     """One `[[estimate]]` of a plan."""
 
-    series: Annotated[list[str], Field(min_length=1)]
-    models: Annotated[list[Annotated[str, AfterValidator(_known_model)]], Field(min_length=1)]
-    lookbacks: Annotated[list[Annotated[int, Field(ge=1, le=10_000_000)]], Field(min_length=1)]
-    every: Literal["observation"] = "observation"
+    series: Annotated[list[Name], Field(min_length=1)]
+    models: Annotated[list[ModelName], Field(min_length=1)]
+    lookbacks: Annotated[list[Lookback], Field(min_length=1)]
+    every: Literal["observation", "day", "week", "month"] = "observation"
+
+
+class PlannedIntake(_Strict):
+    """One `[[intake]]` of a plan: how to read files of the inbox."""
+
+    files: Annotated[str, Field(min_length=1), AfterValidator(_in_the_folder)]
+    layout: Literal["long", "wide"] = "long"
+    series: str | None = None
+    columns: dict[str, str] = {}
+    dates: str | None = None
+    zone: Annotated[str, AfterValidator(_known_zone)] | None = None
 
 
 @dataclass(frozen=True)
 class Entry:
-    """One thing to keep estimated: a model on the windows of one lookback of one series."""
+    """One thing to keep estimated: a model on the windows of one lookback of one series; lookback 0 is "all"."""
 
     series: str
     model: str
     lookback: int
+    every: str
+
+    @property
+    def target(self) -> tuple[str, str, int]:
+        """What only one entry may name."""
+        return self.series, self.model, self.lookback
 
 
 class Plan(_Strict):
     """A whole plan, checked."""
 
     name: Annotated[str, Field(min_length=1)]
-    headline_lookback: Annotated[int, Field(ge=1)] | None = None
+    headline_lookback: Lookback | None = None
     series: Annotated[list[PlannedSeries], Field(min_length=1)]
+    intake: list[PlannedIntake] = []
     estimate: Annotated[list[PlannedEstimate], Field(min_length=1)]
 
     @model_validator(mode="after")
-    def _one_entry_once(self) -> Self:
-        mistakes = [*self._repeated_names(), *self._unmatched_patterns(), *self._repeated_entries()]
+    def _fits_together(self) -> Self:
+        mistakes = [
+            *self._repeated_names(),
+            *self._unmatched_patterns(),
+            *self._models_that_do_not_apply(),
+            *self._repeated_entries(),
+            *self._unknown_headline(),
+        ]
         if mistakes:
             raise ValueError("\n".join(mistakes))
         return self
@@ -96,36 +158,56 @@ class Plan(_Strict):
     def entries(self) -> list[Entry]:
         """Every series, model and lookback to keep estimated, in the plan's order."""
         return [
-            Entry(series, model, lookback)
+            Entry(series.name, model, lookback, estimate.every)
             for estimate in self.estimate
             for series in self._matching(estimate.series)
             for model in estimate.models
+            if series.admits(model)
             for lookback in estimate.lookbacks
         ]
 
-    def _matching(self, patterns: list[str]) -> list[str]:
-        names = [series.name for series in self.series]
-        return [name for name in names if any(fnmatchcase(name, pattern) for pattern in patterns)]
+    def headline_of(self, series: str) -> int | None:
+        """The lookback that `latest` speaks of: the plan's if the series has it, else its first."""
+        lookbacks = [entry.lookback for entry in self.entries if entry.series == series]
+        if self.headline_lookback in lookbacks:
+            return self.headline_lookback
+        return lookbacks[0] if lookbacks else None
 
-    def _repeated_names(self) -> list[str]:
-        counts = Counter(series.name for series in self.series)
-        return [f"series {name!r} stands there twice" for name, count in counts.items() if count > 1]
+    def _matching(self, patterns: list[str]) -> list[PlannedSeries]:
+        return [one for one in self.series if any(fnmatchcase(one.name, pattern) for pattern in patterns)]
 
-    def _unmatched_patterns(self) -> list[str]:
-        names = [series.name for series in self.series]
-        patterns = [pattern for estimate in self.estimate for pattern in estimate.series]
-        return [
-            f"estimate: no [[series]] is called {pattern!r}{_near(pattern, names)}"
-            for pattern in patterns
-            if not self._matching([pattern])
-        ]
+    def _repeated_names(self) -> Iterator[str]:
+        names = Counter(name for one in self.series for name in (one.name, *one.also_called))
+        yield from (f"series: {name!r} stands there twice" for name, count in names.items() if count > 1)
 
-    def _repeated_entries(self) -> list[str]:
-        return [
-            f"estimate: {entry.model} on {entry.series!r} with lookback {entry.lookback} stands there twice"
-            for entry, count in Counter(self.entries).items()
-            if count > 1
-        ]
+    def _unmatched_patterns(self) -> Iterator[str]:
+        names = [one.name for one in self.series]
+        for position, estimate in enumerate(self.estimate, start=1):
+            for pattern in estimate.series:
+                if not self._matching([pattern]):
+                    yield f"estimate[{position}].series: no [[series]] is called {pattern!r}{_near(pattern, names)}"
+
+    def _models_that_do_not_apply(self) -> Iterator[str]:
+        """A glob passes over series that a model is not for; a series named in full is meant."""
+        for position, estimate in enumerate(self.estimate, start=1):
+            named = [one for one in self.series if one.name in estimate.series]
+            for one in named:
+                for model in estimate.models:
+                    if not one.admits(model):
+                        yield (
+                            f"estimate[{position}].models: {model} is for series that stay above zero, and "
+                            f'{one.name!r} has sign = "any"; give it sign = "positive" or leave the model out'
+                        )
+
+    def _repeated_entries(self) -> Iterator[str]:
+        for (series, model, lookback), count in Counter(entry.target for entry in self.entries).items():
+            if count > 1:
+                yield f"estimate: {model} on {series!r} with lookback {lookback or 'all'} stands there twice"
+
+    def _unknown_headline(self) -> Iterator[str]:
+        known = {lookback for estimate in self.estimate for lookback in estimate.lookbacks}
+        if self.headline_lookback is not None and self.headline_lookback not in known:
+            yield f"headline_lookback: no [[estimate]] has lookback {self.headline_lookback or 'all'}"
 
 
 @dataclass(frozen=True)
@@ -179,7 +261,7 @@ def _in_words(mistake: Any) -> list[str]:
     message: str = mistake["msg"].removeprefix("Value error, ")
     if not where:
         return message.split("\n")
-    given = "" if mistake["type"] == "missing" else f" (there is {mistake['input']!r})"
+    given = "" if mistake["type"] in ("missing", "value_error") else f" (there is {mistake['input']!r})"
     return [f"{where}: {message[0].lower()}{message[1:]}{given}"]
 
 
@@ -194,6 +276,10 @@ def _unknown_key(location: tuple[int | str, ...]) -> str:
     key = str(location[-1])
     if key in _NOT_YET:
         return "this driftbook does not have this key yet; take it out"
-    tables: dict[str, type[BaseModel]] = {"series": PlannedSeries, "estimate": PlannedEstimate}
+    tables: dict[str, type[BaseModel]] = {
+        "series": PlannedSeries,
+        "estimate": PlannedEstimate,
+        "intake": PlannedIntake,
+    }
     fields = tables.get(str(location[0]), Plan).model_fields if len(location) > 1 else Plan.model_fields
     return "no such key" + (_near(key, list(fields)) or f"; there are {', '.join(fields)}")

@@ -2,23 +2,21 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
-from dataclasses import dataclass, field, replace
+from collections.abc import Callable
+from dataclasses import dataclass, replace
 
 import duckdb
-import numpy as np
 
 from driftbook.estimators import MODELS
 from driftbook.store import intake
-from driftbook.store.due import Asked, Microseconds, Slice, Span, due, slice_table, span_table
+from driftbook.store.due import slice_table, span_table
 from driftbook.store.errors import PlanError, UsageError
-from driftbook.store.estimates import EstimateTable
+from driftbook.store.latest import write_latest
 from driftbook.store.plan import Plan, PlanText, parse_plan
 from driftbook.store.runs import Run
-from driftbook.store.series import Series, add_series, change_setting, known_series
+from driftbook.store.series import Series, add_series, change_setting, known_series, put_aliases_in_force
 from driftbook.store.sql import first_row, only_row, query
-
-_WINDOWS_AT_ONCE = 400_000
+from driftbook.store.work import Work, find_work
 
 
 @dataclass(frozen=True)
@@ -35,7 +33,6 @@ class Refreshed:
 
     windows_due: int
     windows_fitted: int
-    entries_closed: int
     rows_to_close: int
     taken_up: int
     plan_changed: bool
@@ -46,55 +43,68 @@ class Refreshed:
         return self.windows_due - self.windows_fitted
 
 
-@dataclass
-class _Work:
-    """What is due for one model."""
+def put_plan_in_force(run: Run, given: PlanText | None, *, yes: bool) -> tuple[Plan, bool, int]:
+    """Replaces the book's plan if another text was given, and puts its series, settings and other names in force.
 
-    table: EstimateTable
-    slices: list[Slice] = field(default_factory=list)
-    spans: list[Span] = field(default_factory=list)
-    in_force: int = 0
-    leaving: dict[tuple[int, int], int] = field(default_factory=dict)
+    Gives the plan to follow, whether it changed, and how many rows that waited for a name were taken up. Raises
+    PlanError for a plan that does not fit the book, UsageError where there is none.
+    """
+    plan, changed = _replace_plan(run, given, yes)
+    return plan, changed, _put_settings_in_force(run, plan)
 
 
 def refresh(
     run: Run,
-    plan: PlanText | None,
+    plan: Plan,
     *,
     everything: bool = False,
     yes: bool = False,
     dry_run: bool = False,
+    plan_changed: bool = False,
+    taken_up: int = 0,
     report: Callable[[Progress], None] | None = None,
 ) -> Refreshed:
-    """Estimates what is due in the draft of a run; `plan` None means the plan in force.
-
-    Raises PlanError for a plan that does not fit the book, UsageError where a person has to say yes.
-    """
-    con = run.con
-    chosen, changed = _plan_in_force(run, plan, yes)
-    taken_up = _put_settings_in_force(run, chosen)
-    works = _find_work(run, chosen, everything)
-    leaving = sum(sum(work.leaving.values()) for work in works)
-    _ask_before_closing(works, leaving, yes)
-    due_count = sum(one.windows for work in works for one in work.slices)
-    closed = sum(len(work.leaving) for work in works)
+    """Estimates what is due in the draft of a run; raises UsageError where a person has to say yes."""
+    last = last_refresh(run.con)
+    revised = {name for name in MODELS if _put_revision_in_force(run, name)}
+    work = find_work(run.con, plan, last, revised, everything=everything)
+    _ask_before_closing(work, yes)
     if dry_run:
-        return Refreshed(due_count, due_count, closed, leaving, taken_up, changed)
+        return Refreshed(work.windows, work.windows, work.rows_leaving, taken_up, plan_changed)
     run.kind = "refresh"
-    fitted = 0
-    for work in works:
-        work.table.close_entries(con, list(work.leaving), run.stamp.run_id)
-        for windows_due, windows_fitted in _estimate(run, work):
-            run.windows.due += windows_due
-            run.windows.fitted += windows_fitted
-            fitted += windows_fitted
-            if report is not None:
-                report(Progress(run.windows.due, due_count))
-    return Refreshed(run.windows.due, fitted, closed, leaving, taken_up, changed)
+    for model in work.models:
+        model.table.close_entries(run.con, list(model.leaving), run.stamp.run_id)
+    for portion in work.portions():
+        _estimate(run, work, portion)
+        if report is not None:
+            report(Progress(run.windows.due, work.windows))
+    write_latest(run, plan, work, last)
+    return Refreshed(run.windows.due, run.windows.fitted, work.rows_leaving, taken_up, plan_changed)
 
 
-def _plan_in_force(run: Run, given: PlanText | None, yes: bool) -> tuple[Plan, bool]:
-    """Replaces the book's plan if another text was given; the plan to follow and whether it changed."""
+def last_refresh(con: duckdb.DuckDBPyConnection) -> int:
+    """The number of the last run that estimated; 0 before the first."""
+    return int(only_row(con, "select coalesce(max(run_id), 0) from base.run where kind = 'refresh'")[0])
+
+
+def _estimate(run: Run, work: Work, portion: list[int]) -> None:
+    """Computes and writes what is due for some series."""
+    con, chosen = run.con, set(portion)
+    con.register("needed", work.needed(portion))
+    con.execute(query("list_observations"))
+    con.unregister("needed")
+    for model in work.models:
+        spans = [one for one in model.spans if one.series_id in chosen]
+        if spans:
+            slices = [one for one in model.slices if one.series_id in chosen]
+            due, fitted = model.table.estimate(con, slice_table(slices, work.shifts(model.name)))
+            model.table.write(con, span_table(spans), run.stamp.run_id)
+            run.windows.due += due
+            run.windows.fitted += fitted
+    con.execute("drop table listed")
+
+
+def _replace_plan(run: Run, given: PlanText | None, yes: bool) -> tuple[Plan, bool]:
     stored = first_row(run.con, "select plan_sha256, name, text from base.plan where run_to is null")
     if given is None:
         if stored is None:
@@ -128,7 +138,20 @@ def _put_settings_in_force(run: Run, plan: Plan) -> int:
             change_setting(run.con, series, replace(series.setting, planned=False), run.stamp)
     new = {name: setting for name, setting in planned.items() if name not in known}
     add_series(run.con, new, run.stamp)
-    return intake.take_up(run.con, list(new), run.stamp) if new else 0
+    awaited = [*new, *_put_aliases_in_force(run, plan)]
+    return intake.take_up(run.con, awaited, run.stamp) if awaited else 0
+
+
+def _put_aliases_in_force(run: Run, plan: Plan) -> list[str]:
+    known = known_series(run.con)
+    own = set(known)
+    wanted = {}
+    for series in plan.series:
+        for name in series.also_called:
+            if name in own:
+                raise PlanError(f"series {series.name!r}: also_called names {name!r}, which is a series of the book.")
+            wanted[name] = known[series.name].series_id
+    return put_aliases_in_force(run.con, wanted, run.stamp)
 
 
 def _check_time_zone(con: duckdb.DuckDBPyConnection, series: Series, zone: str) -> None:
@@ -141,85 +164,10 @@ def _check_time_zone(con: duckdb.DuckDBPyConnection, series: Series, zone: str) 
         )
 
 
-def _find_work(run: Run, plan: Plan, everything: bool) -> list[_Work]:
-    """What is due for each model, and the entries in force that the plan no longer has."""
-    con = run.con
-    series = known_series(con)
-    last = _last_refresh(con)
-    reset = {series_id for (series_id,) in con.execute(query("settings_since"), [last]).fetchall()}
-    works = []
-    wanted: dict[str, list[Asked]] = {name: [] for name in MODELS}
-    tables = {name: EstimateTable(model) for name, model in MODELS.items()}
-    in_force = {name: table.in_force(con) for name, table in tables.items()}
-    revised = {name for name in MODELS if _put_revision_in_force(run, name)}
-    for entry in plan.entries:
-        one = series[entry.series]
-        whole = (
-            everything
-            or one.series_id in reset
-            or entry.model in revised
-            or (one.series_id, entry.lookback) not in in_force[entry.model]
-        )
-        wanted[entry.model].append(Asked(one.series_id, entry.lookback, _step(one), whole))
-    for name, asked in wanted.items():
-        kept = {(one.series_id, one.lookback) for one in asked}
-        leaving = {key: count for key, count in in_force[name].items() if key not in kept}
-        works.append(_Work(tables[name], in_force=sum(in_force[name].values()), leaving=leaving))
-    _find_due(con, last, list(wanted.values()), works)
-    return works
-
-
-def _find_due(con: duckdb.DuckDBPyConnection, last: int, wanted: list[list[Asked]], works: list[_Work]) -> None:
-    changed = _times_of(con.sql(query("changed_since"), params={"last": last}))
-    concerned = {one.series_id for asked in wanted for one in asked if one.whole or one.series_id in changed}
-    times = _times_of(con.sql(query("times_in_force"), params={"series": sorted(concerned)}))
-    none = np.empty(0, np.int64)
-    for asked, work in zip(wanted, works, strict=True):
-        for one in asked:
-            slices, spans = due(one, times.get(one.series_id, none), changed.get(one.series_id, none))
-            work.slices += slices
-            work.spans += spans
-
-
-def _times_of(relation: duckdb.DuckDBPyRelation) -> dict[int, Microseconds]:
-    """Ascending times by series, from rows (series_id, microseconds) in that order."""
-    columns = relation.fetchnumpy()
-    series, times = np.asarray(columns["series_id"]), np.asarray(columns["us"], np.int64)
-    bounds = np.flatnonzero(np.diff(series)) + 1
-    parts = np.split(times, bounds)
-    return {int(series[start]): part for start, part in zip([0, *bounds], parts, strict=True) if part.size}
-
-
-def _estimate(run: Run, work: _Work) -> Iterator[tuple[int, int]]:
-    """Computes and writes what is due for one model, some series at a time so that memory stays bounded."""
-    for series in _portions(work):
-        slices = [one for one in work.slices if one.series_id in series]
-        spans = [one for one in work.spans if one.series_id in series]
-        yield work.table.estimate(run.con, sorted(series), slice_table(slices))
-        work.table.write(run.con, span_table(spans), run.stamp.run_id)
-
-
-def _portions(work: _Work) -> Iterator[set[int]]:
-    weights: dict[int, int] = {one.series_id: 0 for one in work.spans}
-    for one in work.slices:
-        weights[one.series_id] += one.windows
-    portion: set[int] = set()
-    weight = 0
-    for series_id, windows in sorted(weights.items()):
-        if portion and weight + windows > _WINDOWS_AT_ONCE:
-            yield portion
-            portion, weight = set(), 0
-        portion.add(series_id)
-        weight += windows
-    if portion:
-        yield portion
-
-
-def _ask_before_closing(works: list[_Work], leaving: int, yes: bool) -> None:
-    in_force = sum(work.in_force for work in works)
-    if not yes and 2 * leaving > in_force:
+def _ask_before_closing(work: Work, yes: bool) -> None:
+    if not yes and 2 * work.rows_leaving > work.rows_in_force:
         raise UsageError(
-            f"the plan would close {leaving} of {in_force} estimates in force, more than half; "
+            f"the plan would close {work.rows_leaving} of {work.rows_in_force} estimates in force, more than half; "
             "if it shall, say so with --yes."
         )
 
@@ -240,11 +188,3 @@ def _put_revision_in_force(run: Run, name: str) -> bool:
     return True
 
 
-def _last_refresh(con: duckdb.DuckDBPyConnection) -> int:
-    return int(only_row(con, "select coalesce(max(run_id), 0) from base.run where kind = 'refresh'")[0])
-
-
-def _step(series: Series) -> float:
-    periods = series.setting.periods_per_year
-    assert periods is not None  # noqa: S101 - the clock `trading`, the only one so far, has periods
-    return 1.0 / periods

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import astuple, dataclass
 from datetime import datetime
 
 import duckdb
@@ -21,6 +21,8 @@ class Setting:
     time_zone: str = "UTC"
     same_time: str = "refuse"
     stale_after_days: float = 5.0
+    in_force: str = "best"
+    shift: float = 0.0
     planned: bool = False
 
 
@@ -47,6 +49,28 @@ def known_series(con: duckdb.DuckDBPyConnection) -> dict[str, Series]:
     return {name: Series(series_id, name, Setting(*setting)) for series_id, name, *setting in rows}
 
 
+def series_by_name(con: duckdb.DuckDBPyConnection) -> dict[str, Series]:
+    """All series by every name that means them in files: their own, and those of the plan's `also_called`."""
+    known = known_series(con)
+    by_id = {series.series_id: series for series in known.values()}
+    aliases = {name: by_id[series_id] for name, series_id in con.execute(query("aliases")).fetchall()}
+    return aliases | known
+
+
+def put_aliases_in_force(con: duckdb.DuckDBPyConnection, wanted: dict[str, int], stamp: Stamp) -> list[str]:
+    """Makes `wanted` (name: series_id) the other names in force; gives those that are new."""
+    current = dict(con.execute(query("aliases")).fetchall())
+    gone = [name for name in current if wanted.get(name) != current[name]]
+    new = [name for name in wanted if current.get(name) != wanted[name]]
+    for name in gone:
+        con.execute("update base.alias set run_to = ? where name = ? and run_to is null", [stamp.run_id, name])
+    for name in new:
+        con.execute(
+            "insert into base.alias (series_id, name, run_from) values (?, ?, ?)", [wanted[name], name, stamp.run_id]
+        )
+    return new
+
+
 def add_series(con: duckdb.DuckDBPyConnection, names: dict[str, Setting], stamp: Stamp) -> None:
     """Adds series that the book does not have yet, in the order given."""
     (first_free,) = only_row(con, "select coalesce(max(series_id), 0) + 1 from base.series")
@@ -64,18 +88,4 @@ def change_setting(con: duckdb.DuckDBPyConnection, series: Series, setting: Sett
 
 
 def _insert_setting(con: duckdb.DuckDBPyConnection, series_id: int, setting: Setting, stamp: Stamp) -> None:
-    con.execute(
-        query("insert_setting"),
-        [
-            series_id,
-            setting.sign,
-            setting.unit,
-            setting.clock,
-            setting.periods_per_year,
-            setting.time_zone,
-            setting.same_time,
-            setting.stale_after_days,
-            setting.planned,
-            stamp.run_id,
-        ],
-    )
+    con.execute(query("insert_setting"), [series_id, *astuple(setting), stamp.run_id])

@@ -33,6 +33,8 @@ class Tracked:
 BOOK_TABLES = (
     Tracked("series", ("series_id",), closes=False),
     Tracked("setting", ("series_id",), also=("planned",)),
+    Tracked("latest", ("series_id",)),
+    Tracked("alias", ("name",), also=("series_id",)),
     Tracked("intake", ("intake_id",), by_series=False, closes=False),
     Tracked("observation", ("series_id", "observed_at"), also=("take",)),
     Tracked("refused_row", ("intake_id", "line", "cell"), by_series=False, also=("reason",)),

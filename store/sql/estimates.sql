@@ -1,28 +1,47 @@
+-- name: list_observations
+-- The observations in force of some series as ordered lists, from the first that a due slice needs. steps is one
+-- number under the clock `trading`, else the elapsed time between neighbours.
+create or replace temp table listed as
+with lists as (
+  select n.series_id, any_value(n.skipped) as skipped, any_value(n.step) as step, any_value(n.unit) as unit,
+    list(o.observed_at order by o.observed_at) as times, list(o.value order by o.observed_at) as x
+  from needed n
+  join base.observation o
+    on o.series_id = n.series_id and o.run_to is null and o.observed_at >= make_timestamp(n.opens)
+  group by n.series_id
+)
+select series_id, skipped, times, x,
+  case when unit is null then [step]
+    else [(epoch_us(times[i + 1]) - epoch_us(times[i])) / unit for i in range(1, len(times))] end as steps
+from lists
+
 -- name: estimate_due
--- Computes the due slices of some series through the registered function. A slice begins where its blocks begin, so
--- windows before the first due one are computed along and left out. A series shorter than its lookback has one window.
+-- Computes the due slices through the registered function. A slice begins where its blocks begin, and windows before
+-- the first due one are passed over. A series shorter than its lookback has one window, which says so.
 create or replace temp table fresh as
-with listed as (
-  select o.series_id, list(o.observed_at order by o.observed_at) as times, list(o.value order by o.observed_at) as x
-  from base.observation o
-  where o.run_to is null and o.series_id in (select unnest($series::integer[]))
-  group by o.series_id
-), sliced as (
-  select d.series_id, d.lookback, d.start, d.first, l.times[d.start + 1:d.stop + 1] as times,
-    {rolling}(l.x[d.start + 1:d.stop + 1], d.step, d.lookback) as fits
+with sliced as (
+  select d.series_id, d.lookback, d.steps, d.first, d.ends is not null as thinned,
+    l.times[d.first - l.skipped + 1:d.stop - l.skipped + 1] as times,
+    {rolling}(
+      case when d.shift = 0 then l.x[d.start - l.skipped + 1:d.stop - l.skipped + 1]
+        else [v + d.shift for v in l.x[d.start - l.skipped + 1:d.stop - l.skipped + 1]] end,
+      case when len(l.steps) = 1 then l.steps else l.steps[d.start - l.skipped + 1:d.stop - l.skipped] end,
+      d.steps, d.first - d.start) as fits
   from due_slice d
   join listed l using (series_id)
 ), opened as (
-  select s.series_id, s.lookback, s.first,
-    s.start + unnest(range(len(s.fits))) as k,
+  select s.series_id, s.lookback, s.steps, s.thinned,
+    s.first + unnest(range(len(s.fits))) as k,
     unnest(s.times[:len(s.fits)]) as window_start,
     unnest(s.times[len(s.times) - len(s.fits) + 1:]) as window_end,
     unnest(s.fits) as f
   from sliced s
+), due_end as (
+  select d.series_id, d.lookback, unnest(d.ends) as window_end_index from due_slice d
 )
 select series_id, lookback, window_start, window_end, f.n, {columns}, f.status
-from opened
-where k >= first
+from opened o
+where not o.thinned or (o.series_id, o.lookback, o.k + o.steps) in (from due_end)
 
 -- name: find_changed
 -- What was computed and differs from what is in force, or is not in force at all.

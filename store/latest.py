@@ -1,0 +1,285 @@
+"""What the book says of each series now: one row a series, written by the run that estimated it."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import astuple, dataclass, fields
+from datetime import datetime
+from itertools import groupby
+from typing import Any
+
+import duckdb
+import numpy as np
+import pyarrow as pa
+
+from driftbook.estimators import MODELS, Model
+from driftbook.estimators.compare import bic, weights
+from driftbook.store.in_force import Candidate, Choice, choose
+from driftbook.store.plan import Plan
+from driftbook.store.runs import Run
+from driftbook.store.series import Series
+from driftbook.store.sql import query
+from driftbook.store.work import Work
+
+_DAYS_PER_YEAR = 365.0
+_SECONDS_PER_DAY = 86_400.0
+_PULL = ("half_life", "half_life_lower", "half_life_upper", "half_life_unbounded")
+_NO_NUMBERS = {
+    "flat": "no variation",
+    "out_of_range": "a value outside the model's range",
+    "alternating": "swings from step to step",
+    "not_converged": "no fit found",
+}
+
+
+@dataclass(frozen=True)
+class Row:
+    """One row of base.latest, without its run; None is NULL."""
+
+    series_id: int
+    observed_at: datetime
+    value: float
+    lookback: int
+    window_end: datetime
+    model: str | None
+    model_weight: float | None
+    volatility: float | None
+    volatility_lower: float | None
+    volatility_upper: float | None
+    volatility_unit: str
+    drift: float | None
+    half_life_days: float | None
+    half_life_days_lower: float | None
+    half_life_days_upper: float | None
+    half_life_unbounded: bool | None
+    can_reach_zero: bool | None
+    challenger: str | None
+    note: str
+
+
+@dataclass(frozen=True)
+class _Fit:
+    """One model's fit of a series' latest window, with what it says of volatility, drift and half-life there."""
+
+    series_id: int
+    observed_at: datetime
+    value: float
+    lookback: int
+    window_start: datetime
+    model: str
+    k: int
+    n: int
+    loglik: float | None
+    status: str
+    no_reversion_p: float | None
+    volatility: float | None
+    volatility_lower: float | None
+    volatility_upper: float | None
+    drift: float | None
+    half_life: float | None
+    half_life_lower: float | None
+    half_life_upper: float | None
+    half_life_unbounded: bool | None
+
+    @property
+    def criterion(self) -> float:
+        """bic, NaN without numbers."""
+        return float("nan") if self.loglik is None else float(bic(self.loglik, self.k, self.n))
+
+
+def write_latest(run: Run, plan: Plan, work: Work, last: int) -> None:
+    """Writes the rows of the series that this run estimated, and closes those of series that left the plan."""
+    con = run.con
+    marks = _Marks(con, last)
+    before = {row.series_id: row for row in (Row(*values) for values in con.execute(query("latest_rows")).fetchall())}
+    rows = [
+        _row(list(group), work.series[series_id], before.get(series_id), marks)
+        for series_id, group in groupby(_fits(con, plan, work), key=lambda fit: fit.series_id)
+    ]
+    changed = [row for row in rows if row != before.get(row.series_id)]
+    planned = {work_series.series_id for work_series in work.series.values() if work_series.setting.planned}
+    gone = [series_id for series_id in before if series_id not in planned]
+    _put_in_force(con, changed, gone, run.stamp.run_id)
+
+
+class _Marks:
+    """What happened within windows that people should look at: corrections, values that are not positive."""
+
+    def __init__(self, con: duckdb.DuckDBPyConnection, last: int) -> None:
+        self._corrected = _times(con.execute(query("corrected_since"), {"last": last}).fetchall())
+        self._not_positive = _times(con.execute(query("not_positive")).fetchall())
+
+    def corrections(self, fit: _Fit) -> int:
+        """How many observations of the window were corrected or withdrawn since the last refresh."""
+        return _within(self._corrected, fit)
+
+    def not_positive(self, fit: _Fit) -> int:
+        """How many values of the window are not positive though the series should be."""
+        return _within(self._not_positive, fit)
+
+
+def _times(rows: list[tuple[int, datetime]]) -> dict[int, list[datetime]]:
+    found: dict[int, list[datetime]] = {}
+    for series_id, observed_at in rows:
+        found.setdefault(series_id, []).append(observed_at)
+    return found
+
+
+def _within(times: dict[int, list[datetime]], fit: _Fit) -> int:
+    return sum(fit.window_start <= time <= fit.observed_at for time in times.get(fit.series_id, []))
+
+
+def _fits(con: duckdb.DuckDBPyConnection, plan: Plan, work: Work) -> Iterable[_Fit]:
+    touched = {one.series_id for model in work.models for one in model.spans}
+    headline = _headlines(plan, work.series)
+    chosen = sorted(touched & headline.keys())
+    con.register(
+        "asked_headline",
+        pa.table(
+            {
+                "series_id": pa.array(chosen, pa.int32()),
+                "lookback": pa.array([headline[one] for one in chosen], pa.int32()),
+            }
+        ),
+    )
+    con.execute(query("find_headlines"))
+    con.unregister("asked_headline")
+    union = " union all ".join(_local_sql(model) for model in MODELS.values())
+    found = con.execute(f"{union} order by series_id").fetchall()
+    con.execute("drop table headline")
+    return [_Fit(*values) for values in found]
+
+
+def _headlines(plan: Plan, series: dict[int, Series]) -> dict[int, int]:
+    """The lookback that `latest` speaks of, by series."""
+    lookbacks: dict[str, list[int]] = {}
+    for entry in plan.entries:
+        lookbacks.setdefault(entry.series, []).append(entry.lookback)
+    chosen = {
+        name: plan.headline_lookback if plan.headline_lookback in there else there[0]
+        for name, there in lookbacks.items()
+    }
+    return {one.series_id: chosen[one.name] for one in series.values() if one.name in chosen}
+
+
+def _local_sql(model: Model) -> str:
+    """The latest fits of one model: volatility and drift at the last value, relative for positive series."""
+    there = {column.name: column.sql or column.name for column in model.columns}
+    pull = ", ".join(f"({there[name]})" if name in there else "null" for name in _PULL)
+    per_level = "1" if model.is_relative else "case when h.sign = 'positive' then x else 1 end"
+    volatility = ", ".join(f"({sql}) / {per_level}" for sql in model.local_volatility)
+    p_value = "no_reversion_p" if "no_reversion_p" in there else "null"
+    return (
+        "select h.series_id, h.observed_at, h.x, h.lookback, m.window_start, "
+        f"'{model.name}', {len(model.parameters)}, n, loglik, status, {p_value}, {volatility}, "
+        f"({model.local_drift}) / {per_level}, {pull} "
+        f"from headline h join base.{model.name} m on m.series_id = h.series_id and m.lookback = h.lookback "
+        "and m.window_end = h.observed_at and m.run_to is null"
+    )
+
+
+def _row(fits: list[_Fit], series: Series, before: Row | None, marks: _Marks) -> Row:
+    setting = series.setting
+    chosen = choose([_candidate(fit) for fit in fits], setting.in_force, _choice(before))
+    weight = dict(zip([fit.model for fit in fits], _weights(fits), strict=True))
+    by_name = {fit.model: fit for fit in fits}
+    first, fit = fits[0], by_name.get(chosen.model or "")
+    pulled = _pulled(fit, fits, weight)
+    days = 1 / _SECONDS_PER_DAY if setting.clock == "seconds" else _DAYS_PER_YEAR
+    return Row(
+        series_id=series.series_id,
+        observed_at=first.observed_at,
+        value=first.value,
+        lookback=first.lookback,
+        window_end=first.observed_at,
+        model=chosen.model,
+        model_weight=weight.get(chosen.model or ""),
+        volatility=fit.volatility if fit else None,
+        volatility_lower=fit.volatility_lower if fit else None,
+        volatility_upper=fit.volatility_upper if fit else None,
+        volatility_unit=_volatility_unit(series),
+        drift=fit.drift if fit else None,
+        half_life_days=_scaled(pulled.half_life, days) if pulled else None,
+        half_life_days_lower=_scaled(pulled.half_life_lower, days) if pulled else None,
+        half_life_days_upper=_scaled(pulled.half_life_upper, days) if pulled else None,
+        half_life_unbounded=pulled.half_life_unbounded if pulled else None,
+        can_reach_zero=_can_reach_zero(chosen.model, setting.sign),
+        challenger=chosen.challenger,
+        note="; ".join([*_what_happened(first, marks), *_what_changed(chosen, before), *_what_is_missing(fit or first)]),
+    )
+
+
+def _candidate(fit: _Fit) -> Candidate:
+    criterion = None if fit.loglik is None else fit.criterion
+    return Candidate(fit.model, fit.status, criterion, _has_pull(fit.model), fit.no_reversion_p)
+
+
+def _choice(before: Row | None) -> Choice | None:
+    return None if before is None else Choice(before.model, before.challenger)
+
+
+def _has_pull(model: str) -> bool:
+    return any(column.name == "half_life" for column in MODELS[model].columns)
+
+
+def _weights(fits: list[_Fit]) -> list[float | None]:
+    usable = [fit.criterion if _candidate(fit).is_usable else float("nan") for fit in fits]
+    if np.isnan(usable).all():
+        return [None] * len(fits)
+    return [None if np.isnan(weight) else float(weight) for weight in weights(usable)]
+
+
+def _pulled(fit: _Fit | None, fits: list[_Fit], weight: dict[str, float | None]) -> _Fit | None:
+    """The fit that the half-life is told from: the model in force, or the heaviest that has a pull."""
+    if fit is not None and _has_pull(fit.model):
+        return fit
+    heaviest = sorted((one for one in fits if _has_pull(one.model)), key=lambda one: -(weight[one.model] or 0.0))
+    return heaviest[0] if heaviest else None
+
+
+def _volatility_unit(series: Series) -> str:
+    time = "√second" if series.setting.clock == "seconds" else "√year"
+    return f"1/{time}" if series.setting.sign == "positive" else f"{series.setting.unit or 'unit'}/{time}"
+
+
+def _can_reach_zero(model: str | None, sign: str) -> bool | None:
+    return None if model is None or sign != "positive" else MODELS[model].reaches_zero
+
+
+def _what_happened(fit: _Fit, marks: _Marks) -> list[str]:
+    count = marks.corrections(fit)
+    words = [] if not count else ["correction" if count == 1 else f"{count} corrections"]
+    return [*words, "not positive"] if marks.not_positive(fit) else words
+
+
+def _what_changed(chosen: Choice, before: Row | None) -> list[str]:
+    changed = before is not None and before.model is not None and before.model != chosen.model
+    return [f"model changed from {before.model}"] if changed and before is not None else []
+
+
+def _what_is_missing(fit: _Fit) -> list[str]:
+    if fit.status == "too_short":
+        return [f"too short: {fit.n} steps"]
+    return [_NO_NUMBERS[fit.status]] if fit.status in _NO_NUMBERS else []
+
+
+def _scaled(value: float | None, factor: float) -> float | None:
+    return None if value is None else value * factor
+
+
+def _put_in_force(con: duckdb.DuckDBPyConnection, rows: list[Row], gone: list[int], run_id: int) -> None:
+    leaving = [*gone, *(row.series_id for row in rows)]
+    con.execute(query("close_latest"), {"run": run_id, "series": leaving})
+    if rows:
+        names = [field.name for field in fields(Row)]
+        columns = list(zip(*(astuple(row) for row in rows), strict=True))
+        con.register("latest_row", _table(names, columns))
+        con.execute(
+            f"insert into base.latest ({', '.join(names)}, run_from) "
+            f"select {', '.join(names)}, {run_id} from latest_row order by series_id"
+        )
+        con.unregister("latest_row")
+
+
+def _table(names: list[str], columns: list[tuple[Any, ...]]) -> pa.Table:
+    return pa.table({name: pa.array(list(values)) for name, values in zip(names, columns, strict=True)})

@@ -1,0 +1,31 @@
+-- name: latest_rows
+-- What is said of each series now.
+select l.* exclude (run_from, run_to) from base.latest l where l.run_to is null
+
+-- name: find_headlines
+-- The last observation of each asked series.
+create or replace temp table headline as
+select a.series_id, any_value(a.lookback) as lookback, any_value(t.sign) as sign, max(o.observed_at) as observed_at,
+  arg_max(o.value, o.observed_at) as x
+from asked_headline a
+join base.observation o on o.series_id = a.series_id and o.run_to is null
+join base.setting t on t.series_id = a.series_id and t.run_to is null
+group by a.series_id
+
+-- name: corrected_since
+-- When observations were corrected or withdrawn that were in force at a run.
+select distinct o.series_id, o.observed_at
+from base.observation o
+where o.run_to > $last and o.run_from <= $last
+
+-- name: not_positive
+-- Values that a series of prices should not have.
+select o.series_id, o.observed_at
+from base.observation o
+join base.setting t on t.series_id = o.series_id and t.run_to is null
+where o.run_to is null and t.sign = 'positive' and o.value <= -t.shift
+
+-- name: close_latest
+-- What was said of some series ends with this run.
+update base.latest l set run_to = $run
+where l.run_to is null and l.series_id in (select unnest($series::integer[]))
