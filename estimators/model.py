@@ -126,8 +126,8 @@ class Model:
         dt : array_like, shape (), (...) or (..., n)
             The step, in the clock's unit of time: one for all, one a window, or one a step.
         intervals : bool
-            Without them only parameters, their standard errors and the log-likelihood are computed, in a fraction of
-            the time; the other columns are NaN.
+            Without them only parameters and the log-likelihood are computed, in a fraction of the time; every other
+            column, standard errors too, is NaN.
         threads : int
             Threads to spread the work over. The bits do not depend on it.
 
@@ -163,8 +163,8 @@ class Model:
         lookback : int
             Steps in a window.
         intervals : bool
-            Without them only parameters, their standard errors and the log-likelihood are computed, in a fraction of
-            the time; the other columns are NaN.
+            Without them only parameters and the log-likelihood are computed, in a fraction of the time; every other
+            column, standard errors too, is NaN.
         threads : int
             Threads to spread the work over. The bits do not depend on it.
 

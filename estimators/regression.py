@@ -102,35 +102,39 @@ def from_sums(x: Array, lookback: int, offsets: int, *, fourth: bool) -> tuple[R
     steps = segments(x[:, 1:] - x[:, :-1], lookback, width)
     levels = segments(x[:, :-1], lookback, width)
     origin = levels[..., lookback - 1 : lookback]
-    drift = ((x[:, lookback:] - x[:, :-lookback]) / n).reshape(len(x), -1, offsets)
-    terms = _terms(levels - origin, steps)
+    drift = ((x[:, lookback:] - x[:, :-lookback]) * (1 / n)).reshape(len(x), -1, offsets)
+    terms = _terms(levels, origin, steps)
     Su, Suu, Sud, Sdd = terms.sums(lookback)
-    u_mean = Su / n
+    u_mean = Su * (1 / n)
     spread = Suu - Su * u_mean
     slope = (Sud - Su * drift) / spread
     rss = Sdd - n * (drift * drift) - slope * slope * spread
     regression = Regression(lookback, u_mean + origin, drift, slope, spread, rss)
     sound = _is_sound(regression, origin, Suu, Sdd)
     if fourth:
-        higher = _higher_terms(steps, terms).sums(lookback)
-        regression, kept = _with_fourth(regression, u_mean, [Suu, Sud, Sdd, *higher])
+        usual = steps[..., lookback - 1 : lookback]
+        higher = _higher_terms(steps - usual, terms).sums(lookback)
+        regression, kept = _with_fourth(regression, u_mean, drift - usual, [Suu, *higher])
         sound &= kept
     return regression, sound
 
 
-def _terms(u: Array, d: Array) -> PairedTerms:
-    """The terms u, u², u d and d²."""
-    terms = PairedTerms(u.shape, 4)
-    terms.parts[0][...] = u
-    for part, (a, b) in zip(terms.parts[1:], ((u, u), (u, d), (d, d)), strict=True):
-        np.multiply(a, b, out=part)
+def _terms(levels: Array, origin: Array, d: Array) -> PairedTerms:
+    """The terms u = level − origin, u², u d and d²."""
+    terms = PairedTerms(levels.shape, 4)
+    u, uu, ud, dd = terms.parts
+    np.subtract(levels, origin, out=u)
+    np.multiply(u, u, out=uu)
+    np.multiply(u, d, out=ud)
+    np.multiply(d, d, out=dd)
     return terms
 
 
-def _higher_terms(d: Array, lower: PairedTerms) -> PairedTerms:
-    """The terms u³, u² d, u d², d³, u⁴, u³ d, u² d², u d³ and d⁴, from those of `_terms`."""
-    u, uu, ud, dd = lower.parts
-    factors = ((uu, u), (uu, d), (ud, d), (dd, d), (uu, uu), (uu, ud), (ud, ud), (ud, dd), (dd, dd))
+def _higher_terms(e: Array, lower: PairedTerms) -> PairedTerms:
+    """The terms u e, e², u³, u² e, u e², e³, u⁴, u³ e, u² e², u e³ and e⁴; e is measured from a pivot of its own."""
+    u, uu, *_ = lower.parts
+    ue, ee = u * e, e * e
+    factors = ((u, e), (e, e), (uu, u), (uu, e), (ue, e), (ee, e), (uu, uu), (uu, ue), (ue, ue), (ue, ee), (ee, ee))
     terms = PairedTerms(u.shape, len(factors))
     for part, (a, b) in zip(terms.parts, factors, strict=True):
         np.multiply(a, b, out=part)
@@ -141,43 +145,45 @@ def _is_sound(regression: Regression, origin: Array, Suu: Array, Sdd: Array) -> 
     """Whether spread, slope and rss kept their digits; NaN compares as false.
 
     A running sum of n squares is off by about eps·√n of its size, four times that at worst in practice: spread and
-    rss are compared with what they were taken from. Increments are not measured from a pivot of their own: where they
-    are large against what they differ by, as on a ramp, this finds it.
+    rss are compared with what they were taken from. Here increments are not measured from a pivot of their own: where
+    they are large against what they differ by, as on a ramp, this finds it.
     """
     n, slope, spread, rss = regression.n, regression.slope, regression.spread, regression.rss
     loss = 4 * EPS * n**0.5 / LOSS
     rounding = 2 * ROUNDING**2
+    largest_share = n + 1  # of Suu by spread, as the pivot is one of the levels
     least = (slope * slope * (2 * loss) + rounding) * Suu + 2 * loss * Sdd + (rounding * n) * origin * origin
     sound: Mask = least < rss
-    sound &= loss * Suu < spread
+    if loss * largest_share > 0.5:
+        sound &= loss * Suu < spread
     sound &= Suu + Sdd < LARGEST
     sound &= np.minimum(rss, spread) > SMALLEST
     return sound
 
 
-def _with_fourth(regression: Regression, u_mean: Array, sums: list[Array]) -> tuple[Regression, Mask]:
+def _with_fourth(regression: Regression, u_mean: Array, e_mean: Array, sums: list[Array]) -> tuple[Regression, Mask]:
     """Add the two sums of degree four, and say where they kept their digits.
 
-    With g = d − slope·u and α the mean of g, residuals are g − α; the sums of u^j g^k follow from those of u^j d^k by
+    With g = e − slope·u and α the mean of g, residuals are g − α; the sums of u^j g^k follow from those of u^j e^k by
     the binomial theorem.
     """
-    Suu, Sud, Sdd, Suuu, Suud, Sudd, Sddd, Suuuu, Suuud, Suudd, Suddd, Sdddd = sums
+    Suu, Sue, See, Suuu, Suue, Suee, Seee, Suuuu, Suuue, Suuee, Sueee, Seeee = sums
     n, m = regression.n, regression.slope
-    alpha = regression.drift - m * u_mean
-    Sug, Suug = Sud - m * Suu, Suud - m * Suuu
-    Sgg = Sdd - m * (Sud + Sug)
-    Sugg = Sudd - m * (Suud + Suug)
-    Suugg = Suudd + m * (m * Suuuu - 2 * Suuud)
-    Sggg = Sddd + m * (m * (3 * Suud - m * Suuu) - 3 * Sudd)
-    Sgggg = Sdddd + m * (m * (6 * Suudd + m * (m * Suuuu - 4 * Suuud)) - 4 * Suddd)
+    alpha = e_mean - m * u_mean
+    Sug, Suug = Sue - m * Suu, Suue - m * Suuu
+    Sgg = See - m * (Sue + Sug)
+    Sugg = Suee - m * (Suue + Suug)
+    Suugg = Suuee + m * (m * Suuuu - 2 * Suuue)
+    Sggg = Seee + m * (m * (3 * Suue - m * Suuu) - 3 * Suee)
+    Sgggg = Seeee + m * (m * (6 * Suuee + m * (m * Suuuu - 4 * Suuue)) - 4 * Sueee)
     fourth = Sgggg + alpha * (alpha * (6 * Sgg - 3 * n * alpha * alpha) - 4 * Sggg)
     urr = Sugg + alpha * (alpha * n * u_mean - 2 * Sug)
     uurr = Suugg + alpha * (alpha * Suu - 2 * Suug)
     robust = uurr + u_mean * (u_mean * regression.rss - 2 * urr)
     loss = 4 * EPS * n**0.5 / LOSS
     mm = m * m
-    sound: Mask = 8 * loss * (Sdddd + mm * mm * Suuuu) < fourth
-    sound &= 8 * loss * (Suudd + mm * Suuuu) < robust
+    sound: Mask = 8 * loss * (Seeee + mm * mm * Suuuu) < fourth
+    sound &= 8 * loss * (Suuee + mm * Suuuu) < robust
     return replace(regression, robust=robust, fourth=fourth), sound
 
 

@@ -98,19 +98,21 @@ _GATHERED = 1 << 17  # observations in the windows that are repaired at one time
 def fit_piece(piece: Piece) -> Answer:
     """Fit every window of a piece; see `driftbook.estimators.batches`."""
     whole, sound = from_sums(piece.x, piece.lookback, piece.offsets, fourth=piece.intervals)
-    dt = np.repeat(piece.dt, piece.offsets)
+    one_step = (piece.dt == piece.dt[0, 0]).all()
+    dt = piece.dt[:1, 0] if one_step else np.repeat(piece.dt, piece.offsets)
     columns, status = _estimates(whole.flat(), dt)
     doubtful = np.flatnonzero(~sound)
     if doubtful.size:
-        _repair(piece, doubtful, dt, columns, status)
+        _repair(piece, doubtful, np.broadcast_to(dt, status.shape), columns, status)
     return Answer(columns, status)
 
 
 def _estimates(regression: Regression, dt: Array) -> tuple[dict[str, Array], NDArray[np.int8]]:
-    """All columns and the status of sound regressions; all arrays have the shape (m,)."""
-    columns = _point_estimates(regression, dt)
+    """Columns and status of sound regressions of shape (m,), for one step or m; all columns if it has degree four."""
     no_pull = np.flatnonzero(regression.slope >= 0)
+    columns = _point_estimates(regression, dt, no_pull[regression.slope[no_pull] == 0])
     if regression.robust is not None and regression.fourth is not None:
+        columns |= _standard_errors(regression, columns["sigma"], dt)
         columns |= _interval_estimates(regression, regression.robust, regression.fourth, dt)
         columns |= _formulas(columns)
         for name in _NEED_A_PULL:
@@ -124,36 +126,42 @@ def _estimates(regression: Regression, dt: Array) -> tuple[dict[str, Array], NDA
     return columns, status
 
 
-def _point_estimates(regression: Regression, dt: Array) -> dict[str, Array]:
-    """What the regression gives in closed form; the limits of the formulas at kappa = 0."""
-    n, beta, A, rss = regression.n, regression.slope, regression.spread, regression.rss
-    at_zero = np.flatnonzero(beta == 0)
-    b = 1 + beta
-    h = 0.0 - np.log1p(beta)
-    kappa = h / dt
-    slope_se = np.sqrt(rss / (A * (n - 2.0)))
-    h_se = slope_se / b
-    away = regression.drift / beta
-    theta = regression.level - away
-    theta_se = slope_se * np.sqrt(A / n + away * away) / np.abs(beta)
-    theta[at_zero] = theta_se[at_zero] = np.nan
-    half_loss = beta * (-1 - 0.5 * beta)  # (1 − b²)/2
-    per_step = h / half_loss
-    per_step[at_zero] = 1.0
-    sigma = np.sqrt(rss * per_step / (n * dt))
-    gradient = 1 / h - b * b / half_loss  # of ln(2h/(1 − e^{−2h})) in h
-    small = np.flatnonzero(np.abs(h) < _CANCELS)
-    if small.size:
-        gradient[small] = 1 - h[small] / 3 + h[small] ** 3 / 45
+def _point_estimates(regression: Regression, dt: Array, at_zero: NDArray[np.intp]) -> dict[str, Array]:
+    """Parameters and log-likelihood; `at_zero` are the places of a slope of exactly zero."""
+    n, beta, rss = regression.n, regression.slope, regression.rss
+    log_b = np.log1p(beta)
+    kappa = log_b / -dt
+    theta = regression.level - regression.drift / beta
+    per_step = log_b / (beta * (1 + 0.5 * beta))  # 2 ln b/(b² − 1)
+    if at_zero.size:
+        kappa[at_zero], theta[at_zero], per_step[at_zero] = 0.0, np.nan, 1.0
     return {
         "kappa": kappa,
-        "kappa_se": h_se / dt,
         "theta": theta,
-        "theta_se": theta_se,
-        "sigma": sigma,
-        "sigma_se": sigma * np.sqrt(np.square(gradient * h_se) * 0.25 + 1 / (2 * n)),
-        "loglik": (-0.5 * n) * (np.log(rss) + (np.log(2 * np.pi / n) + 1)),
+        "sigma": np.sqrt(rss * per_step / (n * dt)),
+        "loglik": (np.log(rss) + (np.log(2 * np.pi / n) + 1)) * (-0.5 * n),
     }
+
+
+def _standard_errors(regression: Regression, sigma: Array, dt: Array) -> dict[str, Array]:
+    """Of the parameters, by the delta method."""
+    n, beta, A = regression.n, regression.slope, regression.spread
+    slope_se = np.sqrt(regression.rss / (A * (n - 2.0)))
+    h_se = slope_se / (1 + beta)
+    away = regression.drift / beta
+    theta_se = slope_se * np.sqrt(A / n + np.square(away)) / np.abs(beta)
+    theta_se[beta == 0] = np.nan
+    sigma_se = sigma * np.sqrt(1 / (2 * n) + np.square(0.5 * _gradient(beta) * h_se))
+    return {"kappa_se": h_se / dt, "theta_se": theta_se, "sigma_se": sigma_se}
+
+
+def _gradient(beta: Array) -> Array:
+    """How ln(2h/(1 − e^{−2h})) grows with h = −ln(1 + beta): 1/h − 2/(e^{2h} − 1)."""
+    h = -np.log1p(beta)
+    small = np.abs(h) < _CANCELS
+    gradient = 1 / h + np.square(1 + beta) / (beta * (1 + 0.5 * beta))
+    gradient[small] = 1 - h[small] / 3 + h[small] ** 3 / 45
+    return gradient
 
 
 def _interval_estimates(regression: Regression, robust: Array, fourth: Array, dt: Array) -> dict[str, Array]:
@@ -212,28 +220,28 @@ def _repair(
     windows = piece.windows
     at_once = max(1, _GATHERED // (piece.lookback + 1))
     for start in range(0, doubtful.size, at_once):
-        where = doubtful[start : start + at_once]
-        part = windows[np.unravel_index(where, windows.shape[:-1])]
-        found, status[where] = _from_windows(part, dt[where], intervals=piece.intervals)
+        part = doubtful[start : start + at_once]
+        gathered = windows[np.unravel_index(part, windows.shape[:-1])]
+        finite = np.isfinite(np.abs(gathered).max(axis=1))
+        status[part[~finite]] = Status.OUT_OF_RANGE
+        _blank(columns, part[~finite])
+        where = part[finite]
+        found, status[where] = _from_windows(gathered[finite], dt[where], intervals=piece.intervals)
         for name, values in columns.items():
             values[where] = found[name]
 
 
 def _from_windows(windows: Array, dt: Array, *, intervals: bool) -> tuple[dict[str, Array], NDArray[np.int8]]:
-    """All columns and the status of windows of any values, shape (m, n + 1)."""
-    finite = np.isfinite(np.abs(windows).max(axis=1))
-    regression, unit, flat = from_windows(np.where(finite[:, None], windows, 0.0))
-    if not intervals:
-        regression = regression.without_fourth()
-    columns, status = _estimates(regression, dt)
+    """Columns and status of windows of finite values, shape (m, n + 1)."""
+    regression, unit, flat = from_windows(windows)
+    columns, status = _estimates(regression if intervals else regression.without_fourth(), dt)
     for name in _IN_UNITS_OF_X:
         if name in columns:
             columns[name] *= unit
     columns["loglik"] -= regression.n * np.log(unit)
     flat &= status != Status.ALTERNATING
-    _blank(columns, np.flatnonzero(flat | ~finite))
     status[flat] = Status.FLAT
-    status[~finite] = Status.OUT_OF_RANGE
+    _blank(columns, np.flatnonzero(flat))
     return columns, status
 
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import json
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from datetime import datetime
+from datetime import UTC, datetime
 from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 
 from driftbook.store.errors import UsageError
@@ -73,7 +73,7 @@ def _check_zone(zone: str) -> None:
 
 def _check_date_form(form: str) -> None:
     """A form must give back the year at least; strptime would silently put 1900 in its place."""
-    sample = datetime(2023, 11, 1)
+    sample = datetime(2023, 11, 1, tzinfo=UTC)
     try:
         is_dated = datetime.strptime(sample.strftime(form), form).year == sample.year
     except ValueError:

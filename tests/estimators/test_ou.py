@@ -20,7 +20,8 @@ ROUNDING = 1e-12
 # Data that are shifted or scaled are rounded anew: the fit answers with that times the number of steps.
 EQUIVARIANCE = 1e-9
 
-NOT_OF_INTERVALS = ("kappa", "kappa_se", "theta", "theta_se", "sigma", "sigma_se", "loglik")
+WITHOUT_INTERVALS = ("kappa", "theta", "sigma", "loglik")
+STANDARD_ERRORS = ("kappa_se", "theta_se", "sigma_se")
 IN_UNITS_OF_X = ("theta", "theta_se", "theta_lower", "theta_upper", "sigma", "sigma_se", "sigma_lower", "sigma_upper")
 OF_PULL = ("kappa", "kappa_se", "kappa_lower", "kappa_upper", "kappa_median_unbiased", "no_reversion_p", "kurtosis")
 
@@ -85,6 +86,7 @@ def bank():
         "1e3 flat, then noise of 1e-9": 1e3 + np.where(i < 600, 0.0, 1e-9 * rng.standard_normal(1500)),
         "a ramp": 0.1 * i,
         "a ramp with noise of 1e-6": i + 1e-6 * rng.standard_normal(1500),
+        "a steep trend": np.cumsum(10 + rng.standard_normal(1500)),
         "smooth": np.cumsum(lfilter([1.0], [1.0, -0.99], rng.standard_normal(1500))),
         "very fat tails": np.cumsum(rng.standard_t(1.5, 1500)),
         "in units of 1e12": 1e12 * pull,
@@ -150,7 +152,7 @@ def test_without_intervals_the_rest_has_the_same_bits():
     fit, without = rolling("ou", x, DT, 100), rolling("ou", x, DT, 100, intervals=False)
     assert np.array_equal(fit.status, without.status)
     for column in fit.columns:
-        if column in NOT_OF_INTERVALS:
+        if column in WITHOUT_INTERVALS:
             assert np.array_equal(fit.columns[column], without.columns[column], equal_nan=True), column
         else:
             assert np.isnan(without.columns[column]).all(), column
@@ -327,7 +329,7 @@ def test_case_shorter_than_the_table(n):
     ok = fit.status == Status.OK
     assert ok.any()
     for name, values in fit.columns.items():
-        known = name in (*NOT_OF_INTERVALS, "kurtosis", "half_life_mle", "stationary_sd")
+        known = name in (*WITHOUT_INTERVALS, *STANDARD_ERRORS, "kurtosis", "half_life_mle", "stationary_sd")
         assert np.array_equal(np.isfinite(values[ok]), np.full(ok.sum(), known)), name
 
 

@@ -17,6 +17,8 @@ from statsmodels.tools.tools import add_constant
 from statsmodels.tsa.ar_model import AutoReg
 
 from driftbook.estimators import MODELS, Status, rolling
+from driftbook.estimators.intervals import sigma_interval, theta_set, widened_pull
+from driftbook.estimators.slope_law import slope_law
 
 OU = MODELS["ou"]
 REFERENCE = 1e-8  # statsmodels solves by a pseudo-inverse of uncentred data
@@ -117,6 +119,30 @@ def test_statsmodels(name):
 
 
 @pytest.mark.parametrize("name", STATED)
+def test_intervals_come_from_the_regression(name):
+    """The law of the slope, widened by statsmodels' robust over its ordinary standard error (White 1980)."""
+    data, dt, *_ = STATED[name]
+    x = data()
+    fit, n = OU.fit(x, dt), len(x) - 1
+    by_ols = OLS(x[1:], add_constant(x[:-1])).fit()
+    law, b, A = slope_law(n), by_ols.params[1], ((x[:-1] - x[:-1].mean()) ** 2).sum()
+    pull = widened_pull(law, b, by_ols.HC1_se[1] / by_ols.bse[1])
+    expected = {
+        "kappa_lower": pull.lower / (n * dt),
+        "kappa_median_unbiased": pull.median / (n * dt),
+        "kappa_upper": pull.upper / (n * dt),
+        "no_reversion_p": law.p_no_pull(b),
+    }
+    s2, kurtosis = by_ols.ssr / (n - 2), n * (by_ols.resid**4).sum() / by_ols.ssr**2
+    theta = theta_set(law, b, mean_from=x[:-1].mean(), mean_to=x[1:].mean(), A=A, s2=s2)
+    sigma = sigma_interval(n, b, median_pull=pull.median, A=A, s2=s2, kurtosis=kurtosis, step=dt)
+    expected |= {"theta_lower": theta.lower, "theta_upper": theta.upper}
+    expected |= {"sigma_lower": sigma.lower, "sigma_upper": sigma.upper}
+    for column, value in expected.items():
+        assert fit.columns[column] == pytest.approx(float(value), rel=1e-6, nan_ok=True), column
+
+
+@pytest.mark.parametrize("name", STATED)
 def test_likelihood_is_that_of_the_exact_transition(name):
     data, dt, *_ = STATED[name]
     x = data()
@@ -200,8 +226,8 @@ def test_half_of_the_median_unbiased_estimates_are_too_high():
 def test_volatility_needs_many_steps_and_a_pull_needs_a_long_span():
     """Four times as many steps in the same span: sigma is twice as sure, kappa no surer."""
     fine = simulated(3.0, 1 / 1008, 4032, 200, seed=3)
-    often = OU.fit(fine, 1 / 1008, intervals=False)
-    rarely = OU.fit(fine[:, ::4], 1 / 252, intervals=False)
+    often = OU.fit(fine, 1 / 1008)
+    rarely = OU.fit(fine[:, ::4], 1 / 252)
     assert np.median(often.sigma_se / often.sigma) == pytest.approx(1 / np.sqrt(2 * 4032), rel=0.02)
     assert np.median(rarely.sigma_se / rarely.sigma) == pytest.approx(1 / np.sqrt(2 * 1008), rel=0.02)
     assert np.median(often.kappa_se / rarely.kappa_se) == pytest.approx(1.0, abs=0.02)

@@ -193,7 +193,7 @@ def same_numbers(old: tuple[float | None, ...], new: tuple[float | None, ...]) -
             if before is not now:
                 return False
             continue
-        error = stood.get(STANDARD_ERROR.get(name, ""), None) or 0.0
+        error = stood.get(STANDARD_ERROR.get(name, "")) or 0.0
         tolerance = 1e-6 if name == "loglik" else max(1e-9 * abs(before), 1e-6 * error)
         if abs(now - before) > tolerance:
             return False

@@ -14,7 +14,7 @@ from driftbook.store import digest
 from driftbook.store.digest import leaves, row_bytes
 from driftbook.store.tables import Tracked
 
-EPOCH = datetime(1970, 1, 1)  # noqa: DTZ001 - a TIMESTAMP has no zone
+EPOCH = datetime(1970, 1, 1)
 
 # What identifies one version of a row, in the order that a digest takes them, by table.
 KEYS = {
@@ -41,8 +41,8 @@ TYPES = {
     "boolean": st.booleans(),
     "varchar": texts,
     "date": st.dates(date(1, 1, 1), date(9999, 12, 31)),
-    "timestamp": st.datetimes(datetime(1, 1, 1), datetime(9999, 12, 31)),  # noqa: DTZ001
-    "timestamptz": st.datetimes(datetime(1, 1, 2), datetime(9999, 12, 30), timezones=st.just(UTC)),  # noqa: DTZ001
+    "timestamp": st.datetimes(datetime(1, 1, 1), datetime(9999, 12, 31)),
+    "timestamptz": st.datetimes(datetime(1, 1, 2), datetime(9999, 12, 30), timezones=st.just(UTC)),
 }
 WIDTHS = {"integer": 4, "bigint": 8, "double": 8, "boolean": 1, "date": 4, "timestamp": 8, "timestamptz": 8}
 
@@ -133,7 +133,7 @@ def test_pieces_and_slices_of_a_table_do_not_show_in_the_bytes(con):
     """Neither how Arrow cuts a table into chunks nor where a slice begins touches its bytes."""
     sql_types = ["integer", "varchar", "boolean", "timestamp"]
     rows = [
-        (k, None if k % 5 == 0 else "ab" * (k % 4), None if k % 7 == 0 else k % 2 == 0, datetime(2024, 1, 1 + k % 28))  # noqa: DTZ001
+        (k, None if k % 5 == 0 else "ab" * (k % 4), None if k % 7 == 0 else k % 2 == 0, datetime(2024, 1, 1 + k % 28))
         for k in range(60)
     ]
     whole = table_of(con, sql_types, rows)

@@ -144,12 +144,12 @@ def test_without_a_change_nothing_is_due_and_nothing_closed(state, lookback):
 
 @pytest.mark.parametrize("lookback", [1, 4])
 def test_when_all_observations_are_withdrawn_all_estimates_are_closed(lookback):
-    slices, spans = ask({day: 1 for day in range(6)}, {}, lookback)
+    slices, spans = ask(dict.fromkeys(range(6), 1), {}, lookback)
     assert slices == []
     assert all(in_a_span(end, spans) for end in range(6))
 
 
 def test_slices_and_spans_carry_the_series_the_lookback_and_the_step():
-    slices, spans = ask({}, {day: 1 for day in range(6)}, 2)
+    slices, spans = ask({}, dict.fromkeys(range(6), 1), 2)
     assert [(one.series_id, one.lookback, one.step) for one in slices] == [(3, 2, 0.25)]
     assert {(one.series_id, one.lookback) for one in spans} == {(3, 2)}

@@ -1,20 +1,20 @@
 """Random histories against a book that keeps a full copy after every run: every past moment and run is as it was."""
 
-import shutil
 import tempfile
 from datetime import UTC, datetime, timedelta
 from pathlib import Path
 
+import duckdb
 import polars as pl
 import pytest
-from conftest import FIRST_DAY, days, plan_text, wave
 from hypothesis import settings
 from hypothesis import strategies as st
-from hypothesis.stateful import RuleBasedStateMachine, invariant, precondition, rule, run_state_machine_as_test
+from hypothesis.stateful import RuleBasedStateMachine, initialize, precondition, rule, run_state_machine_as_test
+from made_series import FIRST_DAY, wave
 from naive_book import STORED, NaiveBook, Planned, Row, State, same_numbers
 
 from driftbook import store
-from driftbook.store.errors import BookError, IntakeError, PlanError
+from driftbook.store.errors import IntakeError, PlanError
 from driftbook.store.swap import create
 
 SERIES = ("pellets_fob", "power_da", "peg")
@@ -89,35 +89,51 @@ class History(RuleBasedStateMachine):
         self.naive = NaiveBook()
         self.moments = {0: FIRST_MOMENT}
         self.told_all_along = True
+        self.failures = 0
 
     # runs
+
+    @initialize(count=st.integers(7, 12), plan=plans)
+    def first_run(self, count, plan):
+        """Something to correct and to estimate from the beginning."""
+        said = [Row("peg", FIRST_DAY + timedelta(days=2 * k), value) for k, value in enumerate(wave(count))]
+        self._work([("history.csv", said, True)], {"peg": Planned(252.0, (5, 8))} | plan, False)
 
     @rule(what=st.lists(intakes, max_size=2), refreshed=refreshes, everything=st.booleans(), gap=gaps)
     def run(self, what, refreshed, everything, gap):
         """Takes in none, one or two intakes and refreshes or not, as one run with a told moment."""
-        if self.told_all_along:
-            self._work(what, refreshed, everything, self.moments[len(self.moments) - 1] + gap)
-        else:
-            self._work(what, refreshed, everything, None)
+        self._work(what, refreshed, everything, gap)
 
-    @rule(intake=intakes, refreshed=refreshes, gap=gaps)
-    def run_untold(self, intake, refreshed, gap):
+    @rule(intake=intakes, refreshed=st.just("stored") | plans, gap=gaps)
+    def morning(self, intake, refreshed, gap):
+        """What a cron job does every day."""
+        self._work([intake], refreshed, False, gap)
+
+    @rule(data=st.data(), count=st.integers(1, 3), gap=gaps)
+    def correction(self, data, count, gap):
+        """Values in force are corrected or withdrawn, and estimated again."""
+        known = sorted(self.naive.now.values) or [("peg", FIRST_DAY)]
+        said = [Row(*data.draw(st.sampled_from(known)), data.draw(values | st.none())) for _ in range(count)]
+        self._work([("corrections.csv", said, False)], "stored", False, gap)
+
+    @precondition(lambda self: len(self.moments) > 6)
+    @rule(intake=intakes, refreshed=refreshes)
+    def run_untold(self, intake, refreshed):
         """As `run`, with the machine's clock; no told moment can come later."""
         self.told_all_along = False
-        self._work([intake], refreshed, False, None)
+        self._work([intake], refreshed, False)
 
-    @precondition(lambda self: self.naive.newest)
-    @rule(data=st.data(), gap=gaps)
-    def repeat(self, data, gap):
+    @rule(data=st.data(), add_series=st.booleans(), gap=gaps)
+    def repeat(self, data, add_series, gap):
         """The newest intake of a source comes once more, perhaps now with leave to add series."""
         source = data.draw(st.sampled_from(sorted(self.naive.newest)))
-        self.run((), None, False, gap) if source is None else None
-        what = [(source, self.naive.newest[source][1], data.draw(st.booleans()))]
-        self._work(what, None, False, self.moments[len(self.moments) - 1] + gap if self.told_all_along else None)
+        self._work([(source, self.naive.newest[source][1], add_series)], None, False, gap)
 
+    @precondition(lambda self: self.failures < len(self.moments) // 4)
     @rule(intake=intakes, plan=plans, how=st.sampled_from(["exception", "mistake", "other name", "withdrawals"]))
     def failed_run(self, intake, plan, how):
         """Whatever makes a run fail, the book's bytes stay as they are."""
+        self.failures += 1
         before = self.book.read_bytes()
         with pytest.raises((Failure, PlanError, IntakeError)), store.writing(self.book) as work:
             self._fail(work, intake, plan, how)
@@ -144,8 +160,9 @@ class History(RuleBasedStateMachine):
             work.refresh(path)
         raise Failure
 
-    def _work(self, what, refreshed, everything, at):
+    def _work(self, what, refreshed, everything, gap=timedelta(microseconds=1)):
         run = len(self.moments)
+        at = self.moments[run - 1] + gap if self.told_all_along else None
         naive = self.naive.copy()
         with store.writing(self.book, at=at) as work:
             for source, rows, add_series in what:
@@ -172,12 +189,16 @@ class History(RuleBasedStateMachine):
         self.moments[run] = work.finished.moment
         assert at is None or work.finished.moment == at
 
+        self._compare_now()
+
     # comparisons
 
-    @invariant()
-    def what_is_in_force_is_right(self):
-        with store.connect(self.book) as con:
+    def _compare_now(self):
+        """What is in force, and what was at some earlier run, as any DuckDB program sees it."""
+        with duckdb.connect(self.book, read_only=True) as con:
             self._compare(con, "observation", "ou", self.naive.now)
+            run = len(self.moments) * 5 // 7 - 1
+            self._compare(con, f"observation_at_run({run})", f"ou_at_run({run})", self.naive.after[run])
 
     def teardown(self):
         try:
@@ -216,7 +237,9 @@ class History(RuleBasedStateMachine):
     def _compare_versions(self, con):
         """The versions, sorted out by hand, are the states after every run; their moments are those of the runs."""
         observed = con.execute("from versions.observation").fetchall()
-        estimated = con.execute(f"select {OU}, run_from, run_to, in_force_from, in_force_to from versions.ou").fetchall()
+        estimated = con.execute(
+            f"select {OU}, run_from, run_to, in_force_from, in_force_to from versions.ou"
+        ).fetchall()
         for row in [*observed, *estimated]:
             run_from, run_to, in_force_from, in_force_to = row[-4:]
             assert in_force_from == self.moments[run_from]

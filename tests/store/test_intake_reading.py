@@ -1,7 +1,7 @@
 """How one row is read: the accepted forms of times, numbers and lines, and the reason for each refusal."""
 
 from contextlib import closing
-from datetime import UTC, datetime, timedelta
+from datetime import UTC, datetime, time, timedelta
 from zoneinfo import ZoneInfo
 
 import duckdb
@@ -15,6 +15,7 @@ from driftbook.store.intake.delimited import split_line
 from driftbook.store.intake.numerals import read_number
 from driftbook.store.intake.reasons import Reason
 from driftbook.store.intake.times import read_time
+from driftbook.store.intake.zones import plain_days
 from driftbook.store.series import Setting, Stamp, add_series
 from driftbook.store.sql import query
 
@@ -27,6 +28,13 @@ def con():
         migrate.apply_pending(con)
         zones = {"gas": "UTC", "spot": "Europe/Berlin"}
         add_series(con, {name: Setting(time_zone=zone) for name, zone in zones.items()}, STAMP)
+        yield con
+
+
+@pytest.fixture(scope="module")
+def checks():
+    with closing(duckdb.connect()) as con:
+        con.execute(query("intake_number_checks"))
         yield con
 
 
@@ -155,6 +163,30 @@ def test_a_local_time_that_exists_once_comes_back_from_utc(hours, zone):
 
 
 @pytest.mark.parametrize(
+    "zone",
+    [
+        "Europe/Berlin",
+        "America/New_York",
+        "Pacific/Auckland",
+        "Pacific/Apia",
+        "Australia/Lord_Howe",
+        "Africa/Casablanca",
+    ],
+)
+def test_on_a_plain_day_the_bulk_conversion_is_the_careful_one(zone):
+    """Looked at where it can go wrong: the plain days beside those that are not."""
+    table = plain_days([zone]).to_pydict()
+    offsets = dict(zip(table["day"], table["utc_offset"], strict=True))
+    day = timedelta(days=1)
+    edges = [one for one in offsets if one - day not in offsets or one + day not in offsets]
+    assert len(edges) > 5
+    for edge in edges:
+        for clock in (time(0), time(0, 30), time(3), time(12), time(23, 59, 59)):
+            wall = datetime.combine(edge, clock)
+            assert read_time(wall.isoformat(), zone, None) == wall - offsets[edge]
+
+
+@pytest.mark.parametrize(
     ("text", "reason"),
     [
         ("inf", "not_finite"),
@@ -182,12 +214,10 @@ def test_what_is_no_plain_number_is_refused(take, text, reason):
 @example(text="1e1_0")
 @example(text="-.5e+0")
 @example(text="1.7976931348623159e308")
-def test_the_bulk_check_takes_no_number_that_the_careful_reading_refuses(text):
-    with closing(duckdb.connect()) as con:
-        con.execute(query("intake_number_checks"))
-        sql = "select intake_is_plain_number($1, try_cast($1 as double)), try_cast($1 as double)"
-        is_plain, number = con.execute(sql, [text]).fetchall()[0]
-        assert not is_plain or number == read_number(text.strip())
+def test_the_bulk_check_takes_no_number_that_the_careful_reading_refuses(checks, text):
+    sql = "select intake_is_plain_number($1, try_cast($1 as double)), try_cast($1 as double)"
+    is_plain, number = checks.execute(sql, [text]).fetchall()[0]
+    assert not is_plain or number == read_number(text.strip())
 
 
 def test_a_bad_bar_refuses_the_row_and_an_empty_one_is_no_harm(take, con):

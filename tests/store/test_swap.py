@@ -14,7 +14,7 @@ from pathlib import Path
 
 import duckdb
 import pytest
-from conftest import days, wave
+from made_series import days, wave
 
 from driftbook import store
 from driftbook.store import lock, moments
@@ -262,7 +262,9 @@ def test_no_foreign_writer_gets_in_while_the_book_is_copied(book):
     with rewriting(book, 0):
         book.read_bytes()
         store.connect(book).close()
-        attempt = subprocess.run([sys.executable, "-c", FOREIGN_ATTEMPT, book], capture_output=True, text=True, check=True)
+        attempt = subprocess.run(
+            [sys.executable, "-c", FOREIGN_ATTEMPT, book], capture_output=True, text=True, check=True
+        )
     assert attempt.stdout == "refused\n"
 
 
@@ -467,7 +469,7 @@ def run_at(book, at, count):
         ("2024-03-01 08:00:00.25", datetime(2024, 3, 1, 8, 0, 0, 250_000, UTC)),
         ("2024-03-01T08:00+02:00", datetime(2024, 3, 1, 6, tzinfo=UTC)),
         ("2024-03-01T08:00Z", datetime(2024, 3, 1, 8, tzinfo=UTC)),
-        (datetime(2024, 3, 1, 8), datetime(2024, 3, 1, 8, tzinfo=UTC)),  # noqa: DTZ001
+        (datetime(2024, 3, 1, 8), datetime(2024, 3, 1, 8, tzinfo=UTC)),
     ],
 )
 def test_a_told_moment_is_the_runs_moment(book, told, moment):
@@ -484,7 +486,9 @@ def test_todays_date_is_now(book):
     assert before <= moment <= datetime.now(UTC) or moment.date() == before.date() < datetime.now(UTC).date()
 
 
-@pytest.mark.parametrize("told", ["2024-03-01T08:00", "2024-03-01T07:59:59.999999", "2024-02-29", "2024-03-01T09:00+02:00"])
+@pytest.mark.parametrize(
+    "told", ["2024-03-01T08:00", "2024-03-01T07:59:59.999999", "2024-02-29", "2024-03-01T09:00+02:00"]
+)
 def test_a_moment_that_is_not_later_than_the_last_run_is_refused(book, told):
     run_at(book, "2024-03-01T08:00", 1)
     before = book.read_bytes()

@@ -5,7 +5,7 @@ import shutil
 
 import duckdb
 import pytest
-from conftest import days, wave
+from made_series import days, wave
 
 from driftbook import store
 from driftbook.store import digest, lock, runs
@@ -54,7 +54,9 @@ def ask(book, sql):
 
 def a_row(book, table, where="true"):
     """The rowid, run_from and series of one row in the middle of a table."""
-    series = "(select s.series from base.series s where s.series_id = t.series_id)" if TABLES[table].by_series else "null"
+    series = (
+        "(select s.series from base.series s where s.series_id = t.series_id)" if TABLES[table].by_series else "null"
+    )
     sql = f"select t.rowid, t.run_from, {series} from base.{table} t where {where} order by t.rowid"
     rows = ask(book, sql)
     return rows[len(rows) // 2]
@@ -139,7 +141,9 @@ def test_a_row_that_stands_there_twice_is_found(filled, table):
 def test_a_row_that_no_run_wrote_is_found(filled, table):
     """Also when it claims to be of a run that the book does not have."""
     rowid, _, _ = a_row(filled, table)
-    tamper(filled, f"insert into base.{table} select * replace (99 as run_from) from base.{table} where rowid = {rowid}")
+    tamper(
+        filled, f"insert into base.{table} select * replace (99 as run_from) from base.{table} where rowid = {rowid}"
+    )
     assert (table, 99) in {(name, run) for name, _, run in found_at(filled)}
 
 
@@ -179,7 +183,9 @@ def pairs(book, table, same_run):
     """Rowids of a closed version and one in force of the same subject."""
     subject = " and ".join(f"a.{name} = b.{name}" for name in TABLES[table].subject) or "true"
     sql = f"select a.rowid, b.rowid, a.run_to from base.{table} a join base.{table} b on {subject} "
-    return ask(book, sql + f"where a.run_to is not null and b.run_to is null and (a.run_from = b.run_from) = {same_run}")
+    return ask(
+        book, sql + f"where a.run_to is not null and b.run_to is null and (a.run_from = b.run_from) = {same_run}"
+    )
 
 
 @pytest.mark.parametrize(
@@ -441,7 +447,10 @@ SCHEMA = {
     "a macro added": ("create macro main.m(a) as a + 1", "main.m is in the book"),
     "a column added": ("alter table base.ou add column note varchar", "base.ou is defined differently"),
     "a column dropped": ("alter table base.ou drop column kurtosis", "base.ou is defined differently"),
-    "a type changed": ("alter table base.observation alter take type bigint", "base.observation is defined differently"),
+    "a type changed": (
+        "alter table base.observation alter take type bigint",
+        "base.observation is defined differently",
+    ),
     "a table dropped": ("drop table base.leaf", "base.leaf is missing"),
     "the table of runs dropped": ("drop table base.run", "base.run is missing"),
     "a table of numbers dropped": ("drop table base.ou", "base.ou is missing"),
