@@ -6,6 +6,7 @@ arguments are arrays of one shape, or scalars, and NaN means "no such end".
 """
 
 from dataclasses import dataclass
+from functools import lru_cache
 from statistics import NormalDist
 
 import numpy as np
@@ -174,6 +175,46 @@ def sigma_interval(
     own = np.maximum(1 / (2 * (n - 2)), (np.asarray(kurtosis, dtype=np.float64) - 1) / (4 * n))
     reach = _TWO_SIDED * np.sqrt(own + 0.25 * exact_over_euler_gradient(h) ** 2 * s2 / A * np.exp(2 * h))
     return Interval(lower=np.exp(log_sigma - reach), upper=np.exp(log_sigma + reach))
+
+
+def mean_interval(n: int, mean: ArrayLike, se: ArrayLike) -> Interval:
+    """95 % interval of a mean of n Gaussian terms: mean ± t se, with Student's t of n − 1 degrees of freedom.
+
+    References
+    ----------
+    Student (1908), The probable error of a mean, Biometrika 6, 1–25.
+    """
+    mean, reach = np.asarray(mean, dtype=np.float64), student_point(n - 1) * np.asarray(se, dtype=np.float64)
+    return Interval(lower=mean - reach, upper=mean + reach)
+
+
+def log_sd_interval(n: int, sd: ArrayLike, kurtosis: ArrayLike) -> Interval:
+    """95 % interval of a standard deviation from its estimate with n − 1 degrees of freedom.
+
+    The χ² interval on the scale of logarithms, stretched about the estimate by √(V/V₀) where fat tails make the
+    variance V = (kurtosis − 1)/(4n) of ln sd larger than the Gaussian V₀ = 1/(2(n − 1)).
+    """
+    sd, kurtosis = np.asarray(sd, dtype=np.float64), np.asarray(kurtosis, dtype=np.float64)
+    stretch = np.sqrt(np.maximum(1.0, (kurtosis - 1) * ((n - 1) / (2 * n))))
+    below, above = chi_square_reach(n - 1)
+    return Interval(lower=sd * np.exp(-stretch * below), upper=sd * np.exp(stretch * above))
+
+
+@lru_cache(maxsize=256)
+def student_point(freedom: int) -> float:
+    """The 97.5 % point of Student's t."""
+    from scipy.special import stdtrit
+
+    return float(stdtrit(freedom, 0.975))
+
+
+@lru_cache(maxsize=256)
+def chi_square_reach(freedom: int) -> tuple[float, float]:
+    """How far the 95 % χ² interval of ln sd reaches below and above its estimate."""
+    from scipy.special import chdtri
+
+    largest, least = float(chdtri(freedom, 0.025)), float(chdtri(freedom, 0.975))
+    return 0.5 * float(np.log(largest / freedom)), 0.5 * float(np.log(freedom / least))
 
 
 def exact_over_euler(h: ArrayLike) -> Floats:

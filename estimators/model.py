@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import operator
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import Literal
 
@@ -13,9 +13,11 @@ from numpy.typing import ArrayLike, NDArray
 from driftbook.estimators.batches import Kernel, in_pieces
 from driftbook.estimators.result import Fit
 from driftbook.estimators.status import Status
+from driftbook.estimators.stepping import EQUAL_STEPS
 from driftbook.estimators.windows import Array
 
-EQUAL_STEPS = 1e-9  # steps count as equal when they differ by no more than this share
+Loglik = Callable[..., Array]
+"""Of x, shape (..., n + 1), steps, which broadcast to (..., n), and parameters of shape (...): the log-likelihood."""
 
 
 @dataclass(frozen=True)
@@ -85,6 +87,15 @@ class Model:
         The model's equation in plain text.
     range : "real" or "positive"
         Which values it can take.
+    is_relative : bool
+        Whether `local_volatility` and `local_drift` are fractions of the value rather than in its units.
+    local_volatility : tuple of three str
+        Volatility at the last value of a window, and the ends of its 95 % interval: SQL over stored columns and `x`,
+        the last value (of the series plus its shift, for a model of positive values).
+    local_drift : str
+        Expected change per unit of time at the last value: SQL, likewise.
+    reaches_zero : bool or None
+        Whether its paths reach zero; None if that depends on the parameters, and a column of the fit tells it.
     steps : "equal" or "any"
         Which steps between observations it can fit.
     shortest : int
@@ -94,17 +105,24 @@ class Model:
         All columns of a fit, in order.
     kernel : callable
         Fits one piece of a batch; see `driftbook.estimators.batches`.
+    log_density : callable
+        What `loglik` calls with checked arguments.
     """
 
     name: str
     revision: int
     equation: str
     range: Literal["real", "positive"]
+    is_relative: bool
+    local_volatility: tuple[str, str, str]
+    local_drift: str
+    reaches_zero: bool | None
     steps: Literal["equal", "any"]
     shortest: int
     parameters: tuple[Parameter, ...]
     columns: tuple[Column, ...]
     kernel: Kernel
+    log_density: Loglik
 
     @property
     def stored(self) -> tuple[Column, ...]:
@@ -151,7 +169,16 @@ class Model:
         columns = {name: values[..., 0] for name, values in fit.columns.items()}
         return Fit(self.name, fit.n[..., 0], columns, fit.status[..., 0])
 
-    def rolling(self, x: ArrayLike, dt: ArrayLike, lookback: int, *, intervals: bool = True, threads: int = 1) -> Fit:
+    def rolling(
+        self,
+        x: ArrayLike,
+        dt: ArrayLike,
+        lookback: int,
+        *,
+        intervals: bool = True,
+        threads: int = 1,
+        first: int = 0,
+    ) -> Fit:
         """Fit every window of series, in rolling position.
 
         Parameters
@@ -167,32 +194,76 @@ class Model:
             column, standard errors too, is NaN.
         threads : int
             Threads to spread the work over. The bits do not depend on it.
+        first : int
+            The first window that is wanted: earlier ones cost next to nothing and are not returned. The bits of the
+            others do not depend on it.
 
         Returns
         -------
         Fit
-            Arrays of shape (..., windows) with windows = max(n_obs - lookback, 0); window k holds the observations
-            k … k + lookback. Data never raise: what can't be fitted has a status and NaN.
+            Arrays of shape (..., windows) with windows = max(n_obs - lookback - first, 0); entry k is of the window
+            that holds the observations first + k … first + k + lookback. Data never raise: what can't be fitted has
+            a status and NaN.
 
         Raises
         ------
         ValueError
-            If `x` has no time axis, `lookback` or `threads` is below 1, or `dt` is not positive, not finite, of
-            another shape, or unequal for a model that fits equal steps only.
+            If `x` has no time axis, `lookback` or `threads` is below 1, `first` below 0, or `dt` is not positive,
+            not finite, of another shape, or unequal for a model that fits equal steps only.
         TypeError
-            If `x` or `dt` are no real numbers, or `lookback` or `threads` no integer.
+            If `x` or `dt` are no real numbers, or `lookback`, `threads` or `first` no integer.
         """
-        x, lookback, threads = _series(x), _lookback(lookback), _threads(threads)
-        steps = _steps(dt, x)
-        batch, n_windows = x.shape[:-1], max(x.shape[-1] - lookback, 0)
+        x, lookback, threads, first = _series(x), _lookback(lookback), _threads(threads), _first(first)
+        steps = _one_a_series(_steps(dt, x))
+        if self.steps == "equal" and not _are_equal(steps):
+            raise ValueError(f"dt has unequal steps, which {self.name} can't fit")
+        batch, n_windows = x.shape[:-1], max(x.shape[-1] - lookback - first, 0)
         shape = (*batch, n_windows)
         if lookback < self.shortest or 0 in shape:
             return self._too_short(lookback, shape)
         rows = x.reshape(-1, x.shape[-1])
-        steps = np.broadcast_to(steps, (*batch, x.shape[-1] - 1)).reshape(len(rows), -1)
-        found, status = in_pieces(self.kernel, rows, steps, lookback, intervals=intervals, threads=threads)
+        steps = np.broadcast_to(steps, (*batch, steps.shape[-1])).reshape(len(rows), -1)
+        found, status = in_pieces(self.kernel, rows, steps, lookback, intervals=intervals, threads=threads, first=first)
         columns = {c.name: found[c.name].reshape(shape) if c.name in found else _nothing(shape) for c in self.columns}
         return Fit(self.name, _count(lookback, shape), columns, status.reshape(shape))
+
+    def loglik(self, x: ArrayLike, dt: ArrayLike, *parameters: ArrayLike) -> Array:
+        """Log-likelihood of windows at given parameters: log p(x_1 … x_n | x_0), in the series' own unit.
+
+        Parameters
+        ----------
+        x : array_like, shape (..., n + 1)
+            Windows of n steps, time last.
+        dt : array_like, shape (), (...) or (..., n)
+            The step, as in `fit`.
+        *parameters : array_like
+            The model's parameters, in its order; they broadcast with the windows.
+
+        Returns
+        -------
+        array
+            NaN where the model gives no density: values outside its range, a volatility that is not positive, or no
+            step at all.
+
+        Raises
+        ------
+        ValueError
+            If there are more or fewer parameters than the model has, or shapes that do not fit.
+        TypeError
+            If an argument is no array of real numbers.
+        """
+        x = _series(x)
+        steps = _steps(dt, x)
+        names = [parameter.name for parameter in self.parameters]
+        if len(parameters) != len(names):
+            raise ValueError(f"{self.name} has the parameters {', '.join(names)}; got {len(parameters)} numbers")
+        given = [_numbers(values, name) for values, name in zip(parameters, names, strict=True)]
+        shape = np.broadcast_shapes(x.shape[:-1], *(values.shape for values in given))
+        if x.shape[-1] < 2:
+            return np.full(shape, np.nan)
+        with np.errstate(all="ignore"):
+            found = self.log_density(x, steps, *given)
+        return np.where(np.isfinite(found), found, np.nan)
 
     def _too_short(self, n: int, shape: Sequence[int]) -> Fit:
         columns = {column.name: _nothing(shape) for column in self.columns}
@@ -229,6 +300,12 @@ def _lookback(lookback: int) -> int:
     return operator.index(lookback)
 
 
+def _first(first: int) -> int:
+    if operator.index(first) < 0:
+        raise ValueError(f"first must be 0 or more, got {first}")
+    return operator.index(first)
+
+
 def _threads(threads: int) -> int:
     if operator.index(threads) < 1:
         raise ValueError(f"threads must be 1 or more, got {threads}")
@@ -236,19 +313,22 @@ def _threads(threads: int) -> int:
 
 
 def _steps(dt: ArrayLike, x: Array) -> Array:
-    """Steps in a shape that broadcasts to that of the increments of x, checked."""
+    """Steps, checked: one a step, shape (..., n), or if each series has equal ones, one a series, shape (..., 1)."""
     steps = _numbers(dt, "dt")
     batch, n = x.shape[:-1], max(x.shape[-1] - 1, 0)
     if not (np.isfinite(steps) & (steps > 0)).all():
         raise ValueError("dt must be positive and finite")
     if steps.shape == (*batch, n):
-        return _equal(steps)
+        return steps
     if steps.shape in ((), batch):
         return steps[..., None]
     raise ValueError(f"dt must have shape (), {batch} or {(*batch, n)}, got {steps.shape}")
 
 
-def _equal(steps: Array) -> Array:
-    if steps.size and (np.ptp(steps, axis=-1) > EQUAL_STEPS * steps[..., 0]).any():
-        raise ValueError("dt has unequal steps, which are not fitted by this model yet")
-    return steps
+def _one_a_series(steps: Array) -> Array:
+    """One step a series where all of each are the same, shape (..., 1)."""
+    return steps[..., :1] if (steps == steps[..., :1]).all() else steps
+
+
+def _are_equal(steps: Array) -> bool:
+    return bool(not steps.size or (np.ptp(steps, axis=-1) <= EQUAL_STEPS * steps.min(axis=-1)).all())

@@ -8,13 +8,25 @@ from types import MappingProxyType
 from numpy.typing import ArrayLike
 
 from driftbook.estimators.model import Model
+from driftbook.estimators.models.abm import MODEL as ABM
+from driftbook.estimators.models.exp_ou import MODEL as EXP_OU
+from driftbook.estimators.models.gbm import MODEL as GBM
 from driftbook.estimators.models.ou import MODEL as OU
 from driftbook.estimators.result import Fit
 
-MODELS: Mapping[str, Model] = MappingProxyType({model.name: model for model in (OU,)})
+MODELS: Mapping[str, Model] = MappingProxyType({model.name: model for model in (ABM, GBM, OU, EXP_OU)})
 
 
-def rolling(name: str, x: ArrayLike, dt: ArrayLike, lookback: int, *, intervals: bool = True, threads: int = 1) -> Fit:
+def rolling(
+    name: str,
+    x: ArrayLike,
+    dt: ArrayLike,
+    lookback: int,
+    *,
+    intervals: bool = True,
+    threads: int = 1,
+    first: int = 0,
+) -> Fit:
     """Fit the model of that name to every window of series: `Model.rolling`, which describes the rest.
 
     Raises
@@ -31,4 +43,4 @@ def rolling(name: str, x: ArrayLike, dt: ArrayLike, lookback: int, *, intervals:
     """
     if name not in MODELS:
         raise ValueError(f"no model is called {name!r}; there are {', '.join(MODELS)}")
-    return MODELS[name].rolling(x, dt, lookback, intervals=intervals, threads=threads)
+    return MODELS[name].rolling(x, dt, lookback, intervals=intervals, threads=threads, first=first)

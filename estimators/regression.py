@@ -15,7 +15,8 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from driftbook.estimators.windows import Array, PairedTerms, segments
+from driftbook.estimators.batches import Piece
+from driftbook.estimators.windows import Array, PairedTerms
 
 Mask = NDArray[np.bool_]
 
@@ -76,44 +77,34 @@ class Regression:
         )
 
 
-def from_sums(x: Array, lookback: int, offsets: int, *, fourth: bool) -> tuple[Regression, Mask]:
-    """Regress in every window, from sums over windows.
-
-    Parameters
-    ----------
-    x : array, shape (rows, blocks * lookback + offsets)
-        Observations of whole blocks; see `driftbook.estimators.windows`.
-    lookback : int
-        Steps in a window, 3 or more.
-    offsets : int
-        Windows in a block.
-    fourth : bool
-        Whether to compute the sums of degree four, `robust` and `fourth`.
+def from_sums(piece: Piece) -> tuple[Regression, Mask]:
+    """Regress in every window of a piece, from sums over windows; with sums of degree four if intervals are wanted.
 
     Returns
     -------
     regression : Regression
-        Arrays of shape (rows, blocks, offsets).
-    sound : array of bool, shape (rows, blocks, offsets)
+        Arrays of `Piece.shape`.
+    sound : array of bool, of that shape
         False where a sum of squares may have lost more than `LOSS` of its size, left the range in which its square
         is a number, is no larger than rounding, or met a value that is not finite: what is said there means nothing.
     """
-    n, width = float(lookback), lookback + offsets - 1
-    steps = segments(x[:, 1:] - x[:, :-1], lookback, width)
-    levels = segments(x[:, :-1], lookback, width)
-    origin = levels[..., lookback - 1 : lookback]
-    drift = ((x[:, lookback:] - x[:, :-lookback]) * (1 / n)).reshape(len(x), -1, offsets)
+    x, lookback, skip = piece.x, piece.lookback, piece.skip
+    n = float(lookback)
+    steps = piece.by_step(x[:, 1:] - x[:, :-1])
+    levels = piece.by_step(x[:, :-1])
+    origin = levels[..., piece.pivot : piece.pivot + 1]
+    drift = piece.by_window((x[:, lookback:] - x[:, :-lookback]) * (1 / n))
     terms = _terms(levels, origin, steps)
-    Su, Suu, Sud, Sdd = terms.sums(lookback)
+    Su, Suu, Sud, Sdd = terms.sums(lookback, skip)
     u_mean = Su * (1 / n)
     spread = Suu - Su * u_mean
     slope = (Sud - Su * drift) / spread
     rss = Sdd - n * (drift * drift) - slope * slope * spread
     regression = Regression(lookback, u_mean + origin, drift, slope, spread, rss)
     sound = _is_sound(regression, origin, Suu, Sdd)
-    if fourth:
-        usual = steps[..., lookback - 1 : lookback]
-        higher = _higher_terms(steps - usual, terms).sums(lookback)
+    if piece.intervals:
+        usual = steps[..., piece.pivot : piece.pivot + 1]
+        higher = _higher_terms(steps - usual, terms).sums(lookback, skip)
         regression, kept = _with_fourth(regression, u_mean, drift - usual, [Suu, *higher])
         sound &= kept
     return regression, sound

@@ -135,29 +135,43 @@ def segments(values: Array, lookback: int, width: int) -> Array:
     return np.lib.stride_tricks.as_strided(values, (len(values), blocks, width), strides, writeable=False)
 
 
-def window_sums(terms: NDArray[Number], lookback: int) -> NDArray[Number]:
+def window_sums(terms: NDArray[Number], lookback: int, skip: int = 0) -> NDArray[Number]:
     """Sum terms over every window of a segment.
 
     Parameters
     ----------
-    terms : array, shape (..., lookback + offsets - 1)
-        One term a step, with 1 ≤ offsets ≤ lookback.
+    terms : array, shape (..., lookback + offsets - 1 - skip)
+        One term a step, with 1 ≤ offsets ≤ lookback, from the first step of the first wanted window on.
     lookback : int
         Terms in a window.
+    skip : int
+        Windows at the beginning of the segment that are not wanted; the others have the same bits for any.
 
     Returns
     -------
-    array, shape (..., offsets)
+    array, shape (..., offsets - skip)
         Entry o is the sum of terms o … o + lookback - 1; its relative rounding error is at most about ``lookback``
         units in the last place of the sum of absolute terms.
     """
-    offsets = terms.shape[-1] - lookback + 1
-    to_the_end = np.empty((*terms.shape[:-1], lookback), dtype=terms.dtype)
-    np.cumsum(terms[..., lookback - 1 :: -1], axis=-1, out=to_the_end[..., ::-1])
-    sums = to_the_end[..., :offsets]
-    if offsets > 1:
-        sums[..., 1:] += np.cumsum(terms[..., lookback:], axis=-1)
-    return sums
+    return _over_windows(np.add, terms, lookback, skip)
+
+
+def window_maxima(values: Array, lookback: int, skip: int = 0) -> Array:
+    """The largest of the values in every window of a segment; arguments and shapes as in `window_sums`."""
+    return _over_windows(np.maximum, values, lookback, skip)
+
+
+def _over_windows(ufunc: np.ufunc, terms: NDArray[Number], lookback: int, skip: int) -> NDArray[Number]:
+    """Reduce over every window: from each step to the pivot, and from the pivot to each step after it."""
+    head, count = lookback - skip, terms.shape[-1] - lookback + 1
+    to_the_pivot = np.empty((*terms.shape[:-1], head), dtype=terms.dtype)
+    ufunc.accumulate(terms[..., head - 1 :: -1], axis=-1, out=to_the_pivot[..., ::-1])
+    found = to_the_pivot[..., :count]
+    without_tail = 0 if skip else 1
+    if count > without_tail:
+        tails = ufunc.accumulate(terms[..., head:], axis=-1)
+        ufunc(found[..., without_tail:], tails[..., skip - 1 + without_tail :], out=found[..., without_tail:])
+    return found
 
 
 class PairedTerms:
@@ -186,9 +200,9 @@ class PairedTerms:
         self._count = count
         self.parts = self._unpaired(self._pairs)
 
-    def sums(self, lookback: int) -> list[Array]:
+    def sums(self, lookback: int, skip: int = 0) -> list[Array]:
         """Window sums of each term."""
-        return self._unpaired(window_sums(self._pairs, lookback))
+        return self._unpaired(window_sums(self._pairs, lookback, skip))
 
     def _unpaired(self, pairs: NDArray[np.complex128]) -> list[Array]:
         return [part for pair in pairs for part in (pair.real, pair.imag)][: self._count]

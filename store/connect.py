@@ -13,6 +13,7 @@ from driftbook.store import functions, migrate
 from driftbook.store.errors import BookError, BookLocked
 from driftbook.store.sql import query
 from driftbook.store.swap import require_book
+from driftbook.store.window_fit import add_window_fit
 
 _BOOK = "book"
 
@@ -32,6 +33,8 @@ def connect(book: str | os.PathLike[str]) -> duckdb.DuckDBPyConnection:
     try:
         _mirror(con)
         functions.register(con, functions.InlineExecutor())
+        functions.register_measures(con)
+        add_window_fit(con)
     except BaseException:
         con.close()
         raise

@@ -94,6 +94,15 @@ def due(asked: Asked, times: Microseconds, changed: Microseconds, days: Days) ->
     return _slices(asked, ends, times.size, days), spans
 
 
+def slice_of(asked: Asked, ends: Indexes, size: int) -> Slice:
+    """The slice that computes the windows with these ends again, bit for bit."""
+    if size <= asked.lookback or asked.lookback == 0:
+        return _everything(asked, np.empty(size, np.int64), ends)[0]
+    first = int(ends[0]) - asked.lookback
+    start = aligned_start(first, asked.lookback)
+    return Slice(asked.series_id, asked.lookback, asked.lookback, start, first, int(ends[-1]), ends)
+
+
 def slice_table(slices: list[Slice], shifts: dict[int, float]) -> pa.Table:
     """The slices as a table for SQL; shifts: what is added to the values of a series, 0 where it is not named."""
     return pa.table(
@@ -150,10 +159,12 @@ def _slices(asked: Asked, ranges: list[tuple[int, int]], size: int, days: Days) 
         ends = None if lasting is None else lasting[(lasting >= first_end) & (lasting <= last_end)]
         if ends is not None and ends.size == 0:
             continue
-        first = (first_end if ends is None else int(ends[0])) - asked.lookback
-        stop = last_end if ends is None else int(ends[-1])
+        if ends is not None:
+            found.append(slice_of(asked, ends, size))
+            continue
+        first = first_end - asked.lookback
         start = aligned_start(first, asked.lookback)
-        found.append(Slice(asked.series_id, asked.lookback, asked.lookback, start, first, stop, ends))
+        found.append(Slice(asked.series_id, asked.lookback, asked.lookback, start, first, last_end))
     return found
 
 

@@ -46,7 +46,7 @@ class EstimateTable:
         """Puts what changed in `fresh` in force and closes what it replaces or what is no longer there."""
         name = self.model.name
         con.register("due_span", spans)
-        con.execute(query("find_changed").format(table=name, same=self._same()))
+        con.execute(query("find_changed").format(table=name, same=self.same()))
         con.execute(query("close_replaced").format(table=name), {"run": run_id})
         con.execute(query("close_vanished").format(table=name), {"run": run_id})
         columns = ", ".join(["series_id", "lookback", "window_start", "window_end", "n", *self.stored, "status"])
@@ -63,7 +63,13 @@ class EstimateTable:
         for series_id, lookback in entries:
             con.execute(query("close_entry").format(table=self.model.name), [run_id, series_id, lookback])
 
-    def _same(self) -> str:
+    def identical(self) -> str:
+        """SQL: whether a computed row f and a stored row b are equal to the bit."""
+        columns = ["n", "window_start", "status", *self.stored]
+        return " and ".join(f"f.{name} is not distinct from b.{name}" for name in columns)
+
+    def same(self) -> str:
+        """SQL: whether a computed row f and a stored row b say the same."""
         exact = ["f.n = b.n", "f.window_start = b.window_start", "f.status = b.status"]
         return " and ".join([*exact, *(self._close(name) for name in self.stored)])
 

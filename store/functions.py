@@ -7,6 +7,8 @@ For each model there are, with x a list of values in time order and steps in yea
     rolling_<model>_from(x, steps, lookback, first)                the same, from window `first` on; a refresh calls it
     loglik_<model>(x, dt, <parameters>)                            the log-likelihood at given parameters
 
+and for a list of returns: realised_variance(r), bipower_variation(r).
+
 The forms with _at take times and count Act/365. A list that is too short for its lookback, or a NULL where a value
 must be, gives one STRUCT whose status says so; a query is never killed by its data.
 """
@@ -26,6 +28,7 @@ from duckdb.func import FunctionNullHandling, PythonUDFType
 from numpy.typing import NDArray
 
 from driftbook.estimators import MODELS, Fit, Model, Status, rolling
+from driftbook.estimators.realised import bipower_variation, realised_variance
 from driftbook.store.clocks import MICROSECONDS_PER_YEAR
 
 _BLOCK_VALUES = 1 << 18
@@ -62,6 +65,12 @@ def register(con: duckdb.DuckDBPyConnection, executor: Executor) -> None:
         _add(con, f"rolling_{name}_from", partial(_rolling_from, fits), types, many)
         numbers = ["DOUBLE"] * (1 + len(model.parameters))
         _add(con, f"loglik_{name}", partial(_loglik, model), ["DOUBLE[]", *numbers], "DOUBLE")
+
+
+def register_measures(con: duckdb.DuckDBPyConnection) -> None:
+    """Registers the measures of a list of returns on a connection."""
+    for measure in (realised_variance, bipower_variation):
+        _add(con, measure.__name__, partial(_measure, measure), ["DOUBLE[]"], "DOUBLE")
 
 
 def struct_type(model: Model) -> str:
@@ -156,6 +165,15 @@ def _loglik(model: Model, x: pa.ChunkedArray, dt: Any, *parameters: Any) -> pa.A
     rows = zip(_lists(x), _numbers(dt), *columns, strict=True)
     values = [model.loglik(series, step, *numbers) for series, step, *numbers in rows]
     return pa.array(np.array(values, np.float64), from_pandas=True)
+
+
+def _measure(measure: Callable[..., Values], r: pa.ChunkedArray) -> pa.Array:
+    lists = list(_lists(r))
+    counts = np.array([one.size for one in lists])
+    together = np.zeros((len(lists), max(1, counts.max(initial=1))))
+    for row, one in enumerate(lists):
+        together[row, : one.size] = one
+    return pa.array(measure(together, counts=counts), from_pandas=True)
 
 
 def _whole(x: Values, steps: Values) -> _Asked:

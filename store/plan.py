@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import difflib
 import hashlib
 import tomllib
 from collections import Counter
@@ -17,7 +16,7 @@ from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Fie
 
 from driftbook.estimators import MODELS
 from driftbook.store.errors import PlanError
-from driftbook.store.series import Setting
+from driftbook.store.series import Setting, near_name
 
 # Keys of later plan files: named, so that a plan that uses them hears that this driftbook cannot do it yet.
 _NOT_YET = {"breaks", "formula", "group", "also", "horizons", "decimal", "blank"}
@@ -27,13 +26,13 @@ BEST = "best"
 
 def _known_zone(zone: str) -> str:
     if zone not in available_timezones():
-        raise ValueError(f"no time zone is called {zone!r}{_near(zone, list(available_timezones()))}")
+        raise ValueError(f"no time zone is called {zone!r}{near_name(zone, list(available_timezones()))}")
     return zone
 
 
 def _known_model(model: str) -> str:
     if model not in MODELS:
-        hint = _near(model, list(MODELS)) or f"; there are {', '.join(MODELS)}"
+        hint = near_name(model, list(MODELS)) or f"; there are {', '.join(MODELS)}"
         raise ValueError(f"no model is called {model!r}{hint}")
     return model
 
@@ -185,7 +184,7 @@ class Plan(_Strict):
         for position, estimate in enumerate(self.estimate, start=1):
             for pattern in estimate.series:
                 if not self._matching([pattern]):
-                    yield f"estimate[{position}].series: no [[series]] is called {pattern!r}{_near(pattern, names)}"
+                    yield f"estimate[{position}].series: no [[series]] is called {pattern!r}{near_name(pattern, names)}"
 
     def _models_that_do_not_apply(self) -> Iterator[str]:
         """A glob passes over series that a model is not for; a series named in full is meant."""
@@ -244,11 +243,6 @@ def parse_plan(text: str, where: str) -> PlanText:
         raise PlanError(f"{where} has {_count(mistakes)}:\n" + "\n".join(f"  {line}" for line in mistakes)) from error
 
 
-def _near(name: str, names: list[str]) -> str:
-    near = difflib.get_close_matches(name, names, n=1)
-    return f"; did you mean {near[0]!r}?" if near else ""
-
-
 def _count(mistakes: list[str]) -> str:
     return "a mistake" if len(mistakes) == 1 else f"{len(mistakes)} mistakes"
 
@@ -282,4 +276,4 @@ def _unknown_key(location: tuple[int | str, ...]) -> str:
         "intake": PlannedIntake,
     }
     fields = tables.get(str(location[0]), Plan).model_fields if len(location) > 1 else Plan.model_fields
-    return "no such key" + (_near(key, list(fields)) or f"; there are {', '.join(fields)}")
+    return "no such key" + (near_name(key, list(fields)) or f"; there are {', '.join(fields)}")

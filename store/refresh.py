@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import duckdb
 
@@ -11,12 +11,13 @@ from driftbook.estimators import MODELS
 from driftbook.store import intake
 from driftbook.store.due import slice_table, span_table
 from driftbook.store.errors import PlanError, UsageError
+from driftbook.store.inbox import Delivered
 from driftbook.store.latest import write_latest
 from driftbook.store.plan import Plan, PlanText, parse_plan
 from driftbook.store.runs import Run
 from driftbook.store.series import Series, add_series, change_setting, known_series, put_aliases_in_force
 from driftbook.store.sql import first_row, only_row, query
-from driftbook.store.work import Work, find_work
+from driftbook.store.work import Work, find_work, needed, shifts
 
 
 @dataclass(frozen=True)
@@ -34,8 +35,9 @@ class Refreshed:
     windows_due: int
     windows_fitted: int
     rows_to_close: int
-    taken_up: int
-    plan_changed: bool
+    taken_up: int = 0
+    plan_changed: bool = False
+    delivered: Delivered = field(default_factory=Delivered)
 
     @property
     def windows_failed(self) -> int:
@@ -60,8 +62,6 @@ def refresh(
     everything: bool = False,
     yes: bool = False,
     dry_run: bool = False,
-    plan_changed: bool = False,
-    taken_up: int = 0,
     report: Callable[[Progress], None] | None = None,
 ) -> Refreshed:
     """Estimates what is due in the draft of a run; raises UsageError where a person has to say yes."""
@@ -70,7 +70,7 @@ def refresh(
     work = find_work(run.con, plan, last, revised, everything=everything)
     _ask_before_closing(work, yes)
     if dry_run:
-        return Refreshed(work.windows, work.windows, work.rows_leaving, taken_up, plan_changed)
+        return Refreshed(work.windows, work.windows, work.rows_leaving)
     run.kind = "refresh"
     for model in work.models:
         model.table.close_entries(run.con, list(model.leaving), run.stamp.run_id)
@@ -79,7 +79,7 @@ def refresh(
         if report is not None:
             report(Progress(run.windows.due, work.windows))
     write_latest(run, plan, work, last)
-    return Refreshed(run.windows.due, run.windows.fitted, work.rows_leaving, taken_up, plan_changed)
+    return Refreshed(run.windows.due, run.windows.fitted, work.rows_leaving)
 
 
 def last_refresh(con: duckdb.DuckDBPyConnection) -> int:
@@ -90,14 +90,14 @@ def last_refresh(con: duckdb.DuckDBPyConnection) -> int:
 def _estimate(run: Run, work: Work, portion: list[int]) -> None:
     """Computes and writes what is due for some series."""
     con, chosen = run.con, set(portion)
-    con.register("needed", work.needed(portion))
-    con.execute(query("list_observations"))
+    con.register("needed", needed(work.slices(portion), work.series, work.times))
+    con.execute(query("list_observations").format(in_force="o.run_to is null"))
     con.unregister("needed")
     for model in work.models:
         spans = [one for one in model.spans if one.series_id in chosen]
         if spans:
             slices = [one for one in model.slices if one.series_id in chosen]
-            due, fitted = model.table.estimate(con, slice_table(slices, work.shifts(model.name)))
+            due, fitted = model.table.estimate(con, slice_table(slices, shifts(model.name, work.series)))
             model.table.write(con, span_table(spans), run.stamp.run_id)
             run.windows.due += due
             run.windows.fitted += fitted

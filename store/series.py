@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import difflib
+from collections.abc import Collection
 from dataclasses import astuple, dataclass
 from datetime import datetime
 
@@ -41,6 +43,12 @@ class Stamp:
 
     run_id: int
     time: datetime
+
+
+def near_name(name: str, names: Collection[str]) -> str:
+    """`; did you mean 'x'?` where one of the names is near, else nothing."""
+    near = difflib.get_close_matches(name, names, n=1)
+    return f"; did you mean {near[0]!r}?" if near else ""
 
 
 def known_series(con: duckdb.DuckDBPyConnection) -> dict[str, Series]:

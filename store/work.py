@@ -34,15 +34,6 @@ class ModelWork:
     leaving: dict[tuple[int, int], int] = field(default_factory=dict)
 
 
-@dataclass(frozen=True)
-class Needed:
-    """From where on the observations of a series are needed."""
-
-    series_id: int
-    skipped: int
-    opens: int
-
-
 @dataclass
 class Work:
     """All that is due, and what is needed to compute it."""
@@ -84,32 +75,39 @@ class Work:
         if portion:
             yield portion
 
-    def needed(self, portion: list[int]) -> pa.Table:
-        """The series of a portion with the first observation that a slice needs and how their steps are counted."""
-        starts: dict[int, int] = {}
-        for model in self.models:
-            for one in model.slices:
-                starts[one.series_id] = min(one.start, starts.get(one.series_id, one.start))
-        chosen = [series_id for series_id in portion if series_id in starts]
-        settings = [self.series[series_id].setting for series_id in chosen]
-        steps = [equal_step(setting.clock, setting.periods_per_year) for setting in settings]
-        units = [microseconds_per_unit(setting.clock) if step is None else None
-                 for setting, step in zip(settings, steps, strict=True)]
-        return pa.table(
-            {
-                "series_id": pa.array(chosen, pa.int32()),
-                "skipped": pa.array([starts[series_id] for series_id in chosen], pa.int64()),
-                "opens": pa.array([int(self.times[one][starts[one]]) for one in chosen], pa.int64()),
-                "step": pa.array(steps, pa.float64()),
-                "unit": pa.array(units, pa.int64()),
-            }
-        )
+    def slices(self, portion: list[int]) -> list[Slice]:
+        """The due slices of some series, over all models."""
+        chosen = set(portion)
+        return [one for model in self.models for one in model.slices if one.series_id in chosen]
 
-    def shifts(self, model: str) -> dict[int, float]:
-        """What is added to the values of each series for a model."""
-        if MODELS[model].range == "real":
-            return {}
-        return {series_id: one.setting.shift for series_id, one in self.series.items() if one.setting.shift}
+
+def needed(slices: list[Slice], series: dict[int, Series], times: dict[int, Microseconds]) -> pa.Table:
+    """The series of some slices, with the first observation that is needed and how their steps are counted."""
+    starts: dict[int, int] = {}
+    for one in slices:
+        starts[one.series_id] = min(one.start, starts.get(one.series_id, one.start))
+    settings = [series[series_id].setting for series_id in starts]
+    steps = [equal_step(setting.clock, setting.periods_per_year) for setting in settings]
+    units = [
+        microseconds_per_unit(setting.clock) if step is None else None
+        for setting, step in zip(settings, steps, strict=True)
+    ]
+    return pa.table(
+        {
+            "series_id": pa.array(list(starts), pa.int32()),
+            "skipped": pa.array(list(starts.values()), pa.int64()),
+            "opens": pa.array([int(times[one][start]) for one, start in starts.items()], pa.int64()),
+            "step": pa.array(steps, pa.float64()),
+            "unit": pa.array(units, pa.int64()),
+        }
+    )
+
+
+def shifts(model: str, series: dict[int, Series]) -> dict[int, float]:
+    """What is added to the values of each series for a model: models for X > 0 alone take a shift."""
+    if MODELS[model].range == "real":
+        return {}
+    return {series_id: one.setting.shift for series_id, one in series.items() if one.setting.shift}
 
 
 def find_work(
@@ -163,7 +161,7 @@ def _with_what_is_due(
     sql = query("times_in_force").format(local_day=_LOCAL_DAY if thinned else "0::bigint")
     found = con.sql(sql, params={"series": concerned})
     columns = found.fetchnumpy()
-    times, days = _split(columns, "us"), _split(columns, "day")
+    times, days = split(columns, "us"), split(columns, "day")
     none = np.empty(0, np.int64)
     for each, model in zip(asked, models, strict=True):
         for one in each:
@@ -175,10 +173,10 @@ def _with_what_is_due(
 
 
 def _by_series(relation: duckdb.DuckDBPyRelation, column: str) -> dict[int, Microseconds]:
-    return _split(relation.fetchnumpy(), column)
+    return split(relation.fetchnumpy(), column)
 
 
-def _split(columns: dict[str, np.ndarray], column: str) -> dict[int, Days]:
+def split(columns: dict[str, np.ndarray], column: str) -> dict[int, Days]:
     """A column's values by series, from rows in the order of series."""
     series, values = np.asarray(columns["series_id"]), np.asarray(columns[column], np.int64)
     bounds = np.flatnonzero(np.diff(series)) + 1

@@ -6,6 +6,7 @@ import os
 from collections.abc import Callable, Iterator
 from concurrent.futures import Executor, ProcessPoolExecutor
 from contextlib import ExitStack, contextmanager
+from dataclasses import replace
 from datetime import datetime
 from multiprocessing import get_context
 from pathlib import Path
@@ -15,7 +16,8 @@ import polars as pl
 from driftbook.store import functions, intake, runs
 from driftbook.store.errors import UsageError
 from driftbook.store.plan import PlanText, read_plan
-from driftbook.store.refresh import Progress, Refreshed, refresh
+from driftbook.store.inbox import Delivered, take_in_folder
+from driftbook.store.refresh import Progress, Refreshed, put_plan_in_force, refresh
 from driftbook.store.swap import Draft, rewriting
 
 
@@ -48,18 +50,30 @@ class Writing:
         self,
         plan: str | os.PathLike[str] | PlanText | None = None,
         *,
+        inbox: str | os.PathLike[str] | None = None,
         everything: bool = False,
         yes: bool = False,
         workers: int = 1,
+        executor: Executor | None = None,
         report: Callable[[Progress], None] | None = None,
     ) -> Refreshed:
-        """Estimates what is due under a plan file, or under the book's plan, with `workers` processes."""
-        return self._refresh(plan, everything=everything, yes=yes, workers=workers, dry_run=False, report=report)
+        """Takes in what is new in a folder, then estimates what is due, under a plan file or the book's plan.
 
-    def due(self, plan: str | os.PathLike[str] | PlanText | None = None, *, everything: bool = False) -> Refreshed:
-        """Counts what a refresh would compute and close; the block then changes nothing."""
+        Blocks of series are computed by `executor`, or by `workers` processes.
+        """
+        chosen = executor or self._stack.enter_context(_executor(workers))
+        return self._refresh(plan, inbox, chosen, everything=everything, yes=yes, report=report)
+
+    def due(
+        self,
+        plan: str | os.PathLike[str] | PlanText | None = None,
+        *,
+        inbox: str | os.PathLike[str] | None = None,
+        everything: bool = False,
+    ) -> Refreshed:
+        """Counts what a refresh would take in, compute and close; the block then changes nothing."""
         self._dry = True
-        return self._refresh(plan, everything=everything, yes=True, workers=1, dry_run=True)
+        return self._refresh(plan, inbox, functions.InlineExecutor(), everything=everything, yes=True, dry_run=True)
 
     def discard(self) -> None:
         """Leaves the book as it is, whatever was done in this block."""
@@ -68,19 +82,23 @@ class Writing:
     def _refresh(
         self,
         plan: str | os.PathLike[str] | PlanText | None,
+        inbox: str | os.PathLike[str] | None,
+        executor: Executor,
         *,
         everything: bool,
         yes: bool,
-        workers: int,
-        dry_run: bool,
+        dry_run: bool = False,
         report: Callable[[Progress], None] | None = None,
     ) -> Refreshed:
         if self._refreshed:
             raise UsageError("one refresh a run: open another block for the next.")
         self._refreshed = True
         text = plan if plan is None or isinstance(plan, PlanText) else read_plan(Path(plan))
-        functions.register(self._run.con, self._stack.enter_context(_executor(workers)))
-        return refresh(self._run, text, everything=everything, yes=yes, dry_run=dry_run, report=report)
+        chosen, changed, taken_up = put_plan_in_force(self._run, text, yes=yes)
+        delivered = take_in_folder(self._run, Path(inbox), chosen, yes=yes) if inbox is not None else Delivered()
+        functions.register(self._run.con, executor)
+        done = refresh(self._run, chosen, everything=everything, yes=yes, dry_run=dry_run, report=report)
+        return replace(done, delivered=delivered, taken_up=taken_up, plan_changed=changed)
 
     def finish(self) -> None:
         """Ends the run: writes its row and digests, and lets the draft take the book's place if anything changed."""

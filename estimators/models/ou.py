@@ -24,6 +24,8 @@ White, H. (1980), A heteroskedasticity-consistent covariance matrix estimator, E
 
 from __future__ import annotations
 
+from functools import partial
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -31,8 +33,10 @@ from driftbook.estimators.batches import Answer, Piece
 from driftbook.estimators.intervals import sigma_interval, theta_set, widened_pull
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
 from driftbook.estimators.regression import Regression, from_sums, from_windows
+from driftbook.estimators.repair import blank, repair
 from driftbook.estimators.slope_law import slope_law
 from driftbook.estimators.status import Status
+from driftbook.estimators.stepping import by_steps
 from driftbook.estimators.windows import Array
 
 SHORTEST = 5
@@ -92,18 +96,17 @@ COLUMNS = (
 _IN_UNITS_OF_X = tuple(column.name for column in COLUMNS if column.unit.startswith("x"))
 _NEED_A_PULL = ("half_life", "half_life_mle", "stationary_sd")
 _CANCELS = 1e-3  # below this pull per step a difference loses digits and its series does not
-_GATHERED = 1 << 17  # observations in the windows that are repaired at one time: 1 MB
 
 
-def fit_piece(piece: Piece) -> Answer:
-    """Fit every window of a piece; see `driftbook.estimators.batches`."""
-    whole, sound = from_sums(piece.x, piece.lookback, piece.offsets, fourth=piece.intervals)
+def fit_equal(piece: Piece) -> Answer:
+    """Fit every window of a piece, of equal steps; see `driftbook.estimators.batches`."""
+    whole, sound = from_sums(piece)
     one_step = (piece.dt == piece.dt[0, 0]).all()
-    dt = piece.dt[:1, 0] if one_step else np.repeat(piece.dt, piece.offsets)
+    dt = piece.dt[:1, 0] if one_step else piece.of_windows(piece.dt)
     columns, status = _estimates(whole.flat(), dt)
     doubtful = np.flatnonzero(~sound)
     if doubtful.size:
-        _repair(piece, doubtful, np.broadcast_to(dt, status.shape), columns, status)
+        repair(piece, doubtful, partial(_from_windows, piece.intervals), columns, status)
     return Answer(columns, status)
 
 
@@ -122,7 +125,7 @@ def _estimates(regression: Regression, dt: Array) -> tuple[dict[str, Array], NDA
     alternating = np.flatnonzero(regression.slope <= -1)
     if alternating.size:
         status[alternating] = Status.ALTERNATING
-        _blank(columns, alternating)
+        blank(columns, alternating)
     return columns, status
 
 
@@ -208,32 +211,10 @@ def _finite(values: Array) -> Array:
     return values
 
 
-def _blank(columns: dict[str, Array], where: NDArray[np.intp]) -> None:
-    for values in columns.values():
-        values[where] = np.nan
-
-
-def _repair(
-    piece: Piece, doubtful: NDArray[np.intp], dt: Array, columns: dict[str, Array], status: NDArray[np.int8]
-) -> None:
-    """Fit again, from the windows themselves, what the sums can't vouch for."""
-    windows = piece.windows
-    at_once = max(1, _GATHERED // (piece.lookback + 1))
-    for start in range(0, doubtful.size, at_once):
-        part = doubtful[start : start + at_once]
-        gathered = windows[np.unravel_index(part, windows.shape[:-1])]
-        finite = np.isfinite(np.abs(gathered).max(axis=1))
-        status[part[~finite]] = Status.OUT_OF_RANGE
-        _blank(columns, part[~finite])
-        where = part[finite]
-        found, status[where] = _from_windows(gathered[finite], dt[where], intervals=piece.intervals)
-        for name, values in columns.items():
-            values[where] = found[name]
-
-
-def _from_windows(windows: Array, dt: Array, *, intervals: bool) -> tuple[dict[str, Array], NDArray[np.int8]]:
-    """Columns and status of windows of finite values, shape (m, n + 1)."""
+def _from_windows(intervals: bool, windows: Array, steps: Array) -> tuple[dict[str, Array], NDArray[np.int8]]:
+    """Columns and status of windows of finite values, shape (m, n + 1), and equal steps."""
     regression, unit, flat = from_windows(windows)
+    dt = steps[:, -1]
     columns, status = _estimates(regression if intervals else regression.without_fourth(), dt)
     for name in _IN_UNITS_OF_X:
         if name in columns:
@@ -241,18 +222,42 @@ def _from_windows(windows: Array, dt: Array, *, intervals: bool) -> tuple[dict[s
     columns["loglik"] -= regression.n * np.log(unit)
     flat &= status != Status.ALTERNATING
     status[flat] = Status.FLAT
-    _blank(columns, np.flatnonzero(flat))
+    blank(columns, np.flatnonzero(flat))
     return columns, status
 
+
+def log_density(x: Array, steps: Array, kappa: Array, theta: Array, sigma: Array) -> Array:
+    """Log-likelihood of windows, shape (..., n + 1), at given parameters."""
+    kappa, theta, sigma = kappa[..., None], theta[..., None], sigma[..., None]
+    from_theta, pull = x - theta, kappa * steps
+    residual = (np.diff(x, axis=-1) - from_theta[..., :-1] * np.expm1(-pull)) / sigma
+    euler = np.where(pull == 0, 1.0, -np.expm1(-2 * pull) / np.where(pull == 0, 1.0, 2 * pull))
+    variance = steps * euler
+    terms = np.log(2 * np.pi * np.square(sigma) * variance) + np.square(residual) / variance
+    return np.asarray(np.where(sigma[..., 0] > 0, -0.5 * terms.sum(axis=-1), np.nan))
+
+
+def _not_yet(piece: Piece) -> Answer:
+    m = int(np.prod(piece.shape))
+    names = [c.name for c in COLUMNS] if piece.intervals else ["kappa", "theta", "sigma", "loglik"]
+    return Answer({name: np.full(m, np.nan) for name in names}, np.full(m, Status.NOT_CONVERGED, dtype=np.int8))
+
+
+fit_piece = by_steps(fit_equal, _not_yet)
 
 MODEL = Model(
     name="ou",
     revision=1,
     equation="dX = kappa (theta - X) dt + sigma dW",
     range="real",
-    steps="equal",
+    is_relative=False,
+    local_volatility=("sigma", "sigma_lower", "sigma_upper"),
+    local_drift="kappa * (theta - x)",
+    reaches_zero=True,
+    steps="any",
     shortest=SHORTEST,
     parameters=PARAMETERS,
     columns=COLUMNS,
     kernel=fit_piece,
+    log_density=log_density,
 )

@@ -11,10 +11,11 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from driftbook.store.cli import options as opt
-from driftbook.store.cli.output import say, say_json
+from driftbook.store.cli.output import count_of, say, say_json
 from driftbook.store.errors import DifferenceFound
 
 if TYPE_CHECKING:
+    from driftbook.store.reproduce import Reproduced
     from driftbook.store.verify import Verified
 
 
@@ -29,8 +30,8 @@ class Format(StrEnum):
 
 def add_to(app: typer.Typer) -> None:
     """Adds these commands to the program."""
-    app.command(rich_help_panel=opt.WHEN_ASKED)(sql)
-    app.command(rich_help_panel=opt.WHEN_ASKED)(verify)
+    for command in (sql, reproduce, verify):
+        app.command(rich_help_panel=opt.WHEN_ASKED)(command)
 
 
 def sql(
@@ -74,6 +75,44 @@ def verify(book: opt.Book, quiet: opt.Quiet = False, as_json: opt.Json = False) 
     else:
         say(_report(seen), quiet=quiet and not seen.findings)
     return DifferenceFound.exit_code if seen.findings else 0
+
+
+def reproduce(
+    book: opt.Book,
+    run: Annotated[int | None, typer.Option("--run", metavar="N", help="By default the last.")] = None,
+    every: Annotated[bool, typer.Option("--all", help="Every run.")] = False,
+    quiet: opt.Quiet = False,
+    as_json: opt.Json = False,
+) -> int:
+    """Compute a run again from the data as known then, and compare; change nothing.
+
+    Example: driftbook reproduce desk.duckdb --run 41
+    """
+    from driftbook.store.reproduce import reproduce as compute_again
+
+    found = compute_again(book, run, every=every)
+    different = any(one.different or one.other_revision for one in found)
+    if as_json:
+        say_json({"runs": [asdict(one) for one in found]})
+    else:
+        say("\n".join(line for one in found for line in _again(one)), quiet=quiet and not different)
+    return DifferenceFound.exit_code if different else 0
+
+
+def _again(found: Reproduced) -> list[str]:
+    lines = [
+        f"Run {found.run_id}: {count_of(found.rows, 'row')} computed again, {found.identical} identical to the bit, "
+        f"{found.same} within rounding, {found.different} different."
+    ]
+    lines += [
+        f"  {count} of {model} were made by a revision that is not installed; they were not computed."
+        for model, count in found.other_revision.items()
+    ]
+    lines += [
+        f"  {one.series}, {one.model} {one.lookback}, {one.window_end}: {one.column} {one.stored} then, {one.again} now"
+        for one in found.worst
+    ]
+    return lines
 
 
 def _report(seen: Verified) -> str:

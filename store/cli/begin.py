@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from driftbook.store.cli import options as opt
-from driftbook.store.cli.output import say, say_json
+from driftbook.store.cli.output import outcome_text, say, say_json
 from driftbook.store.errors import UsageError
 
 if TYPE_CHECKING:
@@ -94,7 +94,7 @@ def ingest(
         say_json({"run": run_id, "dry_run": dry_run, "intakes": [_as_dict(outcome) for outcome in outcomes]})
     else:
         for outcome in outcomes:
-            say(_summary(outcome, dry_run), quiet=quiet)
+            say(outcome_text(outcome, dry_run=dry_run), quiet=quiet)
     return 3 if strict and refused else 0
 
 
@@ -109,20 +109,6 @@ def _roles(text: str | None) -> dict[str, str]:
             raise UsageError(f"--columns: {part!r} is no role=column; {hint}")
         roles[role] = column
     return roles
-
-
-def _summary(outcome: Outcome, dry_run: bool) -> str:
-    if outcome.known_already:
-        return f"{outcome.source}: these bytes are known already; nothing was done."
-    counts = (
-        f"{outcome.source}: {outcome.rows_read} rows read, {outcome.rows_new} new, {outcome.rows_revised} revised, "
-        f"{outcome.rows_same} same, {outcome.rows_refused} refused."
-    )
-    added = f"\n  series added: {', '.join(outcome.series_added)}" if outcome.series_added else ""
-    refused = "".join(f"\n  line {row.line}: {row.reason}: {row.text}" for row in outcome.refused)
-    more = outcome.rows_refused - len(outcome.refused)
-    rest = f"\n  and {more} more, in the view refused_row" if more > 0 else ""
-    return counts + added + refused + rest + ("\n  (dry run: nothing was changed)" if dry_run else "")
 
 
 def _as_dict(outcome: Outcome) -> dict[str, object]:

@@ -4,11 +4,14 @@ from __future__ import annotations
 
 import json
 from datetime import date
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import typer
 
 from driftbook.store.table import harmless
+
+if TYPE_CHECKING:
+    from driftbook.store.intake import Outcome
 
 
 def say(text: str, *, quiet: bool = False) -> None:
@@ -25,6 +28,21 @@ def say_error(text: str) -> None:
 def count_of(number: int, noun: str) -> str:
     """`1 window`, `2 windows`."""
     return f"{number} {noun}" if number == 1 else f"{number} {noun}s"
+
+
+def outcome_text(outcome: Outcome, *, dry_run: bool = False) -> str:
+    """What became of one file: counts, series added, the first refused rows."""
+    if outcome.known_already:
+        return f"{outcome.source}: these bytes are known already; nothing was done."
+    counts = (
+        f"{outcome.source}: {outcome.rows_read} rows read, {outcome.rows_new} new, {outcome.rows_revised} revised, "
+        f"{outcome.rows_same} same, {outcome.rows_refused} refused."
+    )
+    added = f"\n  series added: {', '.join(outcome.series_added)}" if outcome.series_added else ""
+    refused = "".join(f"\n  line {row.line}: {row.reason}: {row.text}" for row in outcome.refused)
+    more = outcome.rows_refused - len(outcome.refused)
+    rest = f"\n  and {more} more, in the view refused_row" if more > 0 else ""
+    return counts + added + refused + rest + ("\n  (dry run: nothing was changed)" if dry_run else "")
 
 
 def say_json(answer: dict[str, Any]) -> None:

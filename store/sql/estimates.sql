@@ -1,13 +1,13 @@
 -- name: list_observations
--- The observations in force of some series as ordered lists, from the first that a due slice needs. steps is one
--- number under the clock `trading`, else the elapsed time between neighbours.
+-- The observations of some series, as in force now or at a run, as ordered lists, from the first that a slice needs.
+-- steps is one number under the clock `trading`, else the elapsed time between neighbours.
 create or replace temp table listed as
 with lists as (
   select n.series_id, any_value(n.skipped) as skipped, any_value(n.step) as step, any_value(n.unit) as unit,
     list(o.observed_at order by o.observed_at) as times, list(o.value order by o.observed_at) as x
   from needed n
   join base.observation o
-    on o.series_id = n.series_id and o.run_to is null and o.observed_at >= make_timestamp(n.opens)
+    on o.series_id = n.series_id and {in_force} and o.observed_at >= make_timestamp(n.opens)
   group by n.series_id
 )
 select series_id, skipped, times, x,

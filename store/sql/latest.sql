@@ -29,3 +29,11 @@ where o.run_to is null and t.sign = 'positive' and o.value <= -t.shift
 -- What was said of some series ends with this run.
 update base.latest l set run_to = $run
 where l.run_to is null and l.series_id in (select unnest($series::integer[]))
+
+-- name: latest_in_order
+-- latest in the order in which its series were added.
+select l.* from {latest} l join base.series s on s.series = l.series order by s.series_id
+
+-- name: run_in_force
+-- The last run at or before a moment.
+select max(r.run_id), max(r.moment) from run r where r.moment <= $moment

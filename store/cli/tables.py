@@ -1,0 +1,98 @@
+"""The tables of `latest` and `explain` for people, at 80 columns."""
+
+from __future__ import annotations
+
+from datetime import datetime
+from typing import TYPE_CHECKING, Any
+
+from driftbook.store.cli.output import count_of
+from driftbook.store.digits import with_interval
+from driftbook.store.table import columns, word
+
+if TYPE_CHECKING:
+    from driftbook.store.explain import Explanation
+    from driftbook.store.state import State
+
+_DAY = 86_400
+
+
+def short_table(state: State) -> str:
+    """One sentence and the table that fits a terminal."""
+    rows = [
+        (row["series"], _value(row), _volatility(row), _half_life(row), row["model"] or "–", note(row, state.as_of))
+        for row in state.rows
+    ]
+    table = columns(("series", "value", "volatility", "half-life", "model", "note"), rows)
+    return f"{_sentence(state)}\n\n{table}" if rows else _sentence(state)
+
+
+def full_table(state: State) -> str:
+    """One sentence and every column, a series after the other."""
+    blocks = [columns(("", ""), [(name, word(row[name])) for name in state.columns]) for row in state.rows]
+    return "\n".join([_sentence(state), *blocks])
+
+
+def note(row: dict[str, Any], as_of: datetime) -> str:
+    """What needs a look, in words, with what only the moment of reading can tell."""
+    words = [row["note"]] if row["note"] else []
+    if row["stale"]:
+        age = as_of.replace(tzinfo=None) - row["observed_at"]
+        words.append(f"stale {age.total_seconds() // _DAY:.0f} d")
+    return "; ".join(words)
+
+
+def explanation_text(found: Explanation) -> str:
+    """Two statements side by side, and below what came between them."""
+    one, other = found.earlier, found.later
+    lookback = "all steps" if not found.lookback else count_of(found.lookback, "step")
+    head = f"{found.series}, {found.model}, {lookback}: run {one.run_id} and run {other.run_id}."
+    rows = [(name, with_interval(*one.numbers[name]), with_interval(*other.numbers[name])) for name in one.numbers]
+    rows.append(("window", f"{word(one.window_start)} – {word(one.window_end)}",
+                 f"{word(other.window_start)} – {word(other.window_end)}"))  # fmt: skip
+    rows.append(("status", one.status, other.status))
+    table = columns(("", f"run {one.run_id}, {word(one.moment)}", f"run {other.run_id}, {word(other.moment)}"), rows)
+    return "\n".join([head, "", table, "", *_between(found)])
+
+
+def _between(found: Explanation) -> list[str]:
+    lines = [
+        f"{word(one.observed_at)} corrected from {word(one.before)} to {word(one.after)} in run {one.run_id}."
+        if one.after is not None
+        else f"{word(one.observed_at)}, {word(one.before)}, withdrawn in run {one.run_id}."
+        for one in found.corrections
+    ]
+    if found.steps_that_came or found.steps_that_left:
+        came, left = count_of(found.steps_that_came, "step"), count_of(found.steps_that_left, "step")
+        lines.append(f"{came} came, {left} left.")
+    lines += [f"{cause[0].upper()}{cause[1:]}." for cause in found.causes]
+    return lines or ["Nothing came between them."]
+
+
+def _sentence(state: State) -> str:
+    if state.moment is None:
+        return "No run yet: take in files, then refresh with a plan."
+    late = sum(bool(row["stale"]) for row in state.rows)
+    look = sum(bool(row["note"]) for row in state.rows)
+    return (
+        f"Run {state.run_id} of {state.moment:%Y-%m-%d %H:%M}Z: {len(state.rows)} series, {late} late, "
+        f"{look} to look at."
+    )
+
+
+def _value(row: dict[str, Any]) -> str:
+    return f"{row['value']:.6g} {row['unit'] or ''}".rstrip()
+
+
+def _volatility(row: dict[str, Any]) -> str:
+    numbers = [row["volatility"], row["volatility_lower"], row["volatility_upper"]]
+    if not row["volatility_unit"].startswith("1/"):
+        return with_interval(*numbers)
+    shown = with_interval(*(None if number is None else 100 * number for number in numbers))
+    return f"{shown} %" if numbers[0] is not None else shown
+
+
+def _half_life(row: dict[str, Any]) -> str:
+    ends = row["half_life_days"], row["half_life_days_lower"], row["half_life_days_upper"]
+    if ends == (None, None, None):
+        return "no pull" if row["half_life_unbounded"] else "–"
+    return with_interval(*ends, "d")
