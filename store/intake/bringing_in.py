@@ -9,7 +9,7 @@ import duckdb
 from driftbook.store.errors import IntakeError
 from driftbook.store.intake import naming
 from driftbook.store.intake.reading import name_known, over
-from driftbook.store.intake.scratch import keep_ordered
+from driftbook.store.intake.scratch import as_written, keep_ordered
 from driftbook.store.intake.settling import Counts, settle
 from driftbook.store.intake.source import WHITESPACE, Rows
 from driftbook.store.series import Stamp, known_series
@@ -35,8 +35,7 @@ def _keep_refused(con: duckdb.DuckDBPyConnection, rows: Rows, intake_id: int, st
     refused = int(con.execute("select count(*) from intake_refusal").fetchall()[0][0])
     if refused:
         sql, values = rows.relation(con)
-        con.execute(
-            over("intake_keep_refused", sql),
-            {**values, "intake_id": intake_id, "run_id": stamp.run_id, "whitespace": WHITESPACE},
-        )
+        told = {"intake_id": intake_id, "run_id": stamp.run_id, "whitespace": WHITESPACE}
+        with as_written(con):
+            con.execute(over("intake_keep_refused", sql), {**values, **told})
     return refused

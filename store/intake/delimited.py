@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import os
 import re
 from dataclasses import dataclass
 from pathlib import Path
@@ -19,6 +18,7 @@ from driftbook.store.intake.source import WHITESPACE, Fields
 from driftbook.store.sql import query
 
 _DELIMITERS = (",", ";", "\t", "|")
+_FIRST_BYTES = 1 << 16
 _QUOTED = re.compile(r'"((?:[^"]|"")*)"')
 
 
@@ -32,11 +32,11 @@ class DelimitedText:
     width: int
     header_line: int
     place: dict[str, int | None]
-    before: os.stat_result
     has_bars: bool
+    has_quotes: bool
 
     def relation(self, con: duckdb.DuckDBPyConnection) -> tuple[str, dict[str, object]]:
-        """One reading of the file; fields are split in bulk where the line has no quote and the right width."""
+        """One reading of the file; fields are split in bulk where quotes and width are plain."""
         con.register("intake_line", line_batches(self.file))
         sql_places = {f"{role}_at": None if at is None else at + 1 for role, at in self.place.items()}
         return query("intake_delimited_rows"), {
@@ -45,6 +45,8 @@ class DelimitedText:
             "delimiter": self.delimiter,
             "width": self.width,
             "header_line": self.header_line,
+            "has_quotes": self.has_quotes,
+            "simply_quoted": _simply_quoted(self.delimiter),
         }
 
     def fields_of(self, text: str, fields: Fields) -> Fields | Reason | None:
@@ -61,12 +63,9 @@ class DelimitedText:
         return found if self.options.series is None else {**found, "series": self.options.series}
 
     def close(self, con: duckdb.DuckDBPyConnection) -> None:
-        """Closes the file; a file that somebody wrote to meanwhile is not taken in."""
+        """Closes the file."""
         con.unregister("intake_line")
-        after = os.fstat(self.file.fileno())
         self.file.close()
-        if (after.st_size, after.st_mtime_ns) != (self.before.st_size, self.before.st_mtime_ns):
-            raise IntakeError(f"{self.file.name} changed while it was read; take it in again once it is complete.")
 
 
 def open_delimited(path: Path, options: Options) -> DelimitedText:
@@ -86,12 +85,24 @@ def open_delimited(path: Path, options: Options) -> DelimitedText:
             width=len(columns),
             header_line=header_line,
             place=place,
-            before=os.fstat(file.fileno()),
             has_bars=has_bars(place),
+            has_quotes=_has_quotes(file),
         )
     except BaseException:
         file.close()
         raise
+
+
+def _simply_quoted(delimiter: str) -> str:
+    """The pattern of a line whose quotes wrap whole fields, with neither quote nor delimiter inside."""
+    field = f'(?:"[^"{delimiter}]*"|[^"{delimiter}]*)'
+    return rf"{field}(?:[{delimiter}]{field})*[\r\n]*"
+
+
+def _has_quotes(file: BinaryIO) -> bool:
+    """Whether the first lines have a quote; where they have none, a later one is rare enough for a careful look."""
+    file.seek(0)
+    return b'"' in file.read(_FIRST_BYTES)
 
 
 def _header(file: BinaryIO, source: str) -> tuple[int, str]:

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import hashlib
+from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
 from typing import BinaryIO, cast
 
@@ -29,20 +31,42 @@ class _Digest:
         return len(data)
 
 
-def digest_of(source: Path | pl.DataFrame) -> str:
+def _digest_of(source: Path | pl.DataFrame) -> str:
     """SHA-256 over a file's bytes, or over a frame's columns in Arrow's form."""
     if isinstance(source, pl.DataFrame):
         written = _Digest()
         source.rechunk().write_ipc_stream(cast(BinaryIO, written))
         return written.sha256.hexdigest()
+    with source.open("rb") as file:
+        return hashlib.file_digest(file, "sha256").hexdigest()
+
+
+@contextmanager
+def opened(
+    con: duckdb.DuckDBPyConnection, source: Path | pl.DataFrame, options: Options, name: str
+) -> Iterator[tuple[str, Rows]]:
+    """The digest and the rows of a source; one that somebody writes to meanwhile is not taken in."""
     try:
-        with source.open("rb") as file:
-            return hashlib.file_digest(file, "sha256").hexdigest()
+        before = _state(source)
+        rows = _rows(con, source, options, name)
     except OSError as problem:
         raise IntakeError(f"{source} cannot be read: {problem.strerror}.") from problem
+    try:
+        yield _digest_of(source), rows
+        if _state(source) != before:
+            raise IntakeError(f"{name} changed while it was read; take it in again once it is complete.")
+    finally:
+        rows.close(con)
 
 
-def open_rows(con: duckdb.DuckDBPyConnection, source: Path | pl.DataFrame, options: Options, name: str) -> Rows:
+def _state(source: Path | pl.DataFrame) -> tuple[int, ...]:
+    if isinstance(source, pl.DataFrame):
+        return ()
+    found = source.stat()
+    return found.st_dev, found.st_ino, found.st_size, found.st_mtime_ns
+
+
+def _rows(con: duckdb.DuckDBPyConnection, source: Path | pl.DataFrame, options: Options, name: str) -> Rows:
     """The rows of a source; its format is told by its first bytes."""
     if isinstance(source, pl.DataFrame):
         return open_frame(con, source, options, name)

@@ -11,7 +11,7 @@ import pyarrow as pa
 from driftbook.store.intake.numerals import read_number
 from driftbook.store.intake.options import ROLES, Options
 from driftbook.store.intake.reasons import Reason
-from driftbook.store.intake.scratch import keep_rows
+from driftbook.store.intake.scratch import as_written, keep_rows
 from driftbook.store.intake.source import WHITESPACE, Fields, Rows
 from driftbook.store.intake.times import read_time
 from driftbook.store.intake.zones import plain_days
@@ -82,12 +82,13 @@ def _look_at_odd(
     con: duckdb.DuckDBPyConnection, rows: Rows, options: Options, known: Mapping[str, Series]
 ) -> Iterator[dict[str, object]]:
     sql, values = rows.relation(con)
-    found = con.execute(over("intake_odd_lines", sql), values)
-    while chunk := found.fetchmany(_BATCH):
-        for line, text, fault, *said in chunk:
-            fields = Reason(fault) if fault else rows.fields_of(text, dict(zip(ROLES, said, strict=True)))
-            if fields is not None:
-                yield {"line": line, **_look(fields, options, known)}
+    with as_written(con):
+        found = con.execute(over("intake_odd_lines", sql), values)
+        while chunk := found.fetchmany(_BATCH):
+            for line, text, fault, *said in chunk:
+                fields = Reason(fault) if fault else rows.fields_of(text, dict(zip(ROLES, said, strict=True)))
+                if fields is not None:
+                    yield {"line": line, **_look(fields, options, known)}
 
 
 def _look(fields: Fields | Reason, options: Options, known: Mapping[str, Series]) -> dict[str, object]:

@@ -34,4 +34,4 @@ class Rows(Protocol):
         """The fields of a row that needs a careful look, why it has none, or None for a line that is no row."""
 
     def close(self, con: duckdb.DuckDBPyConnection) -> None:
-        """Lets go of what the readings held; refuses a source that changed meanwhile."""
+        """Lets go of what the readings held."""

@@ -10,7 +10,7 @@ import polars as pl
 
 from driftbook.store.intake import naming
 from driftbook.store.intake.bringing_in import bring_in
-from driftbook.store.intake.opening import digest_of, open_rows
+from driftbook.store.intake.opening import opened
 from driftbook.store.intake.options import Options, check
 from driftbook.store.intake.outcome import Outcome, Refused
 from driftbook.store.intake.reading import read_rows
@@ -46,16 +46,21 @@ def take_in(
     naming.check_named_series(con, options)
     origin = source if isinstance(source, pl.DataFrame) else Path(source)
     called = name or ("frame" if isinstance(origin, pl.DataFrame) else origin.name)
-    arrival = _Arrival(called, digest_of(origin), options, stamp)
-    for intake_id, *identity in con.execute(query("intake_newest"), [called]).fetchall():
-        if identity == [arrival.sha256, options.identity()]:
-            return _known_already(con, intake_id, arrival)
-    rows = open_rows(con, origin, options, called)
-    try:
+    with opened(con, origin, options, called) as (sha256, rows):
+        arrival = _Arrival(called, sha256, options, stamp)
+        known = _known_as(con, arrival)
+        if known is not None:
+            return _known_already(con, known, arrival)
         with scratch(con):
             return _take(con, rows, arrival)
-    finally:
-        rows.close(con)
+
+
+def _known_as(con: duckdb.DuckDBPyConnection, arrival: _Arrival) -> int | None:
+    """The newest intake of the source, if it had the same bytes and options."""
+    for intake_id, *identity in con.execute(query("intake_newest"), [arrival.source]).fetchall():
+        if identity == [arrival.sha256, arrival.options.identity()]:
+            return int(intake_id)
+    return None
 
 
 def _known_already(con: duckdb.DuckDBPyConnection, intake_id: int, arrival: _Arrival) -> Outcome:

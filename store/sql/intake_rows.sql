@@ -1,15 +1,22 @@
 -- name: intake_delimited_rows
 -- The lines of a delimited text file, split where that is plain. A place that is NULL gives a NULL field. Only a
 -- name or a time that ends the line loses the line end here: trimming every field would cost more than all the rest.
+-- Quotes that wrap whole fields without a quote or delimiter inside can just be left out.
 select line, rtrim(text, e'\r\n') as text,
-  is_utf8 and len(part) = $width and not contains(text, '"') as is_plain,
+  is_utf8 and len(part) = $width
+    and (not contains(text, '"') or ($has_quotes and regexp_full_match(text, $simply_quoted))) as is_plain,
   case when not is_utf8 then 'not_utf8' end as fault,
   coalesce($series,
     case when $series_at = $width then rtrim(part[$series_at::int], e'\r\n') else part[$series_at::int] end) as series,
   case when $time_at = $width then rtrim(part[$time_at::int], e'\r\n') else part[$time_at::int] end as time,
   part[$value_at::int] as value, part[$open_at::int] as open, part[$high_at::int] as high,
   part[$low_at::int] as low, part[$volume_at::int] as volume
-from (select line, text, is_utf8, string_split(text, $delimiter) as part from intake_line where line > $header_line)
+from (
+  select line, text, is_utf8,
+    string_split(case when $has_quotes then replace(text, '"', '') else text end, $delimiter) as part
+  from intake_line
+  where line > $header_line
+)
 
 -- name: intake_read_plain
 -- Reads what is plain in bulk: rows whose observed_at stays NULL need a careful look. Numbers are cast first and

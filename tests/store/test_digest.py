@@ -12,6 +12,7 @@ from hypothesis import strategies as st
 
 from driftbook.store import digest
 from driftbook.store.digest import leaves, row_bytes
+from driftbook.store.migrate import newest
 from driftbook.store.tables import Tracked
 
 EPOCH = datetime(1970, 1, 1)
@@ -144,7 +145,7 @@ def test_pieces_and_slices_of_a_table_do_not_show_in_the_bytes(con):
 
 @st.composite
 def versions(draw):
-    """Rows of a table with versions: (series_id, day, word, value, run_from, run_to), the first two and run_from a key."""
+    """Rows (series_id, day, word, value, run_from, run_to); series_id, day and run_from are a key."""
     keys = draw(
         st.lists(
             st.tuples(st.integers(1, 3), st.dates(date(2024, 1, 1), date(2024, 1, 9)), st.integers(1, 4)),
@@ -203,7 +204,7 @@ def test_a_table_without_series_has_one_leaf_a_run(con, rows):
     table = Tracked("thing", ("series_id", "day"), by_series=False)
     found = leaves(con, table, ["series_id", "day", "word", "value", "run_from"], (1, 5), 7)
     told = [(leaf.run_id, leaf.series_id, leaf.rows_in, leaf.rows_closed, leaf.sha256) for leaf in found]
-    assert told == expected_leaves(rows, (1, 5), lambda row: None)
+    assert told == expected_leaves(rows, (1, 5), lambda _: None)
 
 
 def _fill(con, rows):
@@ -259,7 +260,7 @@ def _leaves_of_book(con):
                         (len(came), encoded(list(columns.values()), came)),
                         (len(went), encoded([columns[name] for name in key], went)),
                     )
-                    yield run_id, table, series_id, 3, len(came), len(went), sha256
+                    yield run_id, table, series_id, newest(), len(came), len(went), sha256
 
 
 def _digest_of_run(con, before, run_id):

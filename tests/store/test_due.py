@@ -9,7 +9,7 @@ from driftbook.store.due import Asked, due
 
 LOOKBACKS = st.integers(1, 8)
 TIMES = st.integers(0, 40)
-thorough = settings(deadline=None, max_examples=400, derandomize=True)
+thorough = settings(deadline=None, max_examples=250, derandomize=True)
 
 
 def windows(state, lookback):
@@ -137,6 +137,7 @@ def test_everything_is_due_when_the_whole_is_asked_for(before, after, lookback):
     assert all(in_a_span(end, spans) for end in windows(before, lookback))
 
 
+@thorough
 @given(states, LOOKBACKS)
 def test_without_a_change_nothing_is_due_and_nothing_closed(state, lookback):
     assert ask(state, state, lookback) == ([], [])

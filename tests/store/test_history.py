@@ -2,6 +2,7 @@
 
 import tempfile
 from datetime import UTC, datetime, timedelta
+from functools import partial
 from pathlib import Path
 
 import duckdb
@@ -10,7 +11,7 @@ import pytest
 from hypothesis import settings
 from hypothesis import strategies as st
 from hypothesis.stateful import RuleBasedStateMachine, initialize, precondition, rule, run_state_machine_as_test
-from made_series import FIRST_DAY, wave
+from made_series import FIRST_DAY, days, wave
 from naive_book import STORED, NaiveBook, Planned, Row, State, same_numbers
 
 from driftbook import store
@@ -93,7 +94,7 @@ class History(RuleBasedStateMachine):
 
     # runs
 
-    @initialize(count=st.integers(7, 12), plan=plans)
+    @initialize(count=st.integers(4, 12), plan=plans)
     def first_run(self, count, plan):
         """Something to correct and to estimate from the beginning."""
         said = [Row("peg", FIRST_DAY + timedelta(days=2 * k), value) for k, value in enumerate(wave(count))]
@@ -108,6 +109,14 @@ class History(RuleBasedStateMachine):
     def morning(self, intake, refreshed, gap):
         """What a cron job does every day."""
         self._work([intake], refreshed, False, gap)
+
+    @rule(data=st.data(), said=st.lists(values, min_size=1, max_size=3), gap=gaps)
+    def next_days(self, data, said, gap):
+        """A series goes on behind its last observation."""
+        series = data.draw(st.sampled_from(SERIES))
+        last = max((time for name, time in self.naive.now.values if name == series), default=FIRST_DAY)
+        rows = [Row(series, last + timedelta(days=1 + k), value) for k, value in enumerate(said)]
+        self._work([("next.csv", rows, True)], "stored", False, gap)
 
     @rule(data=st.data(), count=st.integers(1, 3), gap=gaps)
     def correction(self, data, count, gap):
@@ -294,3 +303,86 @@ def test_long_histories():
     """The same with more and longer histories; hypothesis draws them from the fixed seed of `derandomize`."""
     longer = settings(TestHistory.settings, max_examples=150, stateful_step_count=40)
     run_state_machine_as_test(History, settings=longer)
+
+
+# single promises
+
+ZONES = ["UTC", "Asia/Tokyo", "America/St_Johns"]
+NOON = "2025-03-04 12:00:00"
+BEFORE_NOON = [
+    "'2025-03-04 11:59:59.999999'",
+    "timestamp '2025-03-04 11:59:59.999999'",
+    "timestamptz '2025-03-04 20:59:59.999999+09'",
+    "'2025-03-04T13:59:59+02:00'",
+    "'2025-03-04T11:59Z'",
+    "' 2025-03-03 '",
+    "date '2025-03-03'",
+    "timestamp '2025-03-04 00:00:00'",
+    "timestamptz '2025-03-04 00:00:00+00'",
+    "'2025-03-04 00:00'",
+]
+FROM_NOON = [
+    f"'{NOON}'",
+    f"timestamp '{NOON}'",
+    f"timestamptz '{NOON}+00'",
+    "'2025-03-04T21:00+09:00'",
+    "'2025-03-04 08:30:00-03:30'",
+    "'2025-03-04 12:00:00+00'",
+    "'2025-03-04'",
+    "date '2025-03-04'",
+    "timestamptz '2025-03-04 21:00:00+09'",
+]
+
+
+@pytest.fixture(scope="module")
+def two_days(tmp_path_factory):
+    """One observation known from the morning of the 3rd, corrected at noon of the 4th."""
+    book = tmp_path_factory.mktemp("as_of") / "desk.duckdb"
+    create(book)
+    for at, value in (("2025-03-03T08:00", 1.0), (NOON, 2.0)):
+        with store.writing(book, at=at) as work:
+            work.ingest(days("peg", [value]), store.Options(add_series=True), name="file")
+    return book
+
+
+def known_at(con, literal):
+    return con.execute(f"select value from observation_as_of({literal})").fetchall()
+
+
+@pytest.mark.parametrize("zone", ZONES)
+@pytest.mark.parametrize("reader", [store.connect, partial(duckdb.connect, read_only=True)])
+def test_a_moment_is_understood_in_every_form_whatever_the_sessions_zone(two_days, reader, zone):
+    """Without a zone it is UTC, and a bare date is the end of that UTC day."""
+    with reader(two_days) as con:
+        con.execute(f"set TimeZone = '{zone}'")
+        assert {literal: known_at(con, literal) for literal in BEFORE_NOON} == {key: [(1.0,)] for key in BEFORE_NOON}
+        assert {literal: known_at(con, literal) for literal in FROM_NOON} == {key: [(2.0,)] for key in FROM_NOON}
+        assert known_at(con, "'2025-03-02'") == []
+        assert known_at(con, "'2025-03-03 07:59:59.999999'") == []
+
+
+def test_the_moment_of_a_macro_may_come_from_a_column_or_a_parameter(two_days):
+    with store.connect(two_days) as con:
+        moment = datetime(2025, 3, 4, 11, tzinfo=UTC)
+        assert con.execute("select value from observation_as_of(?)", [moment]).fetchall() == [(1.0,)]
+        assert con.execute("select value from observation_as_of(?)", [moment.date()]).fetchall() == [(2.0,)]
+        assert con.execute("select value from observation_as_of((select min(moment) from run))").fetchall() == [(1.0,)]
+
+
+def test_rows_that_waited_for_a_name_are_taken_up_in_the_order_in_which_they_came(book):
+    """The later intake has the last word, also over one that made the name known itself."""
+    for value in (1.0, 2.0):
+        with store.writing(book) as work:
+            work.ingest(days("peg", [value]), name=f"file {value}")
+    with store.writing(book) as work:
+        work.ingest(days("peg", [3.0], 1), store.Options(add_series=True), name="third")
+    with store.connect(book) as con:
+        assert con.execute("select value, intake_id, run_id from observation order by observed_at").fetchall() == [
+            (2.0, 2, 3),
+            (3.0, 3, 3),
+        ]
+        assert con.execute(
+            "select value, run_from, run_to from versions.observation where intake_id = 1"
+        ).fetchall() == [(1.0, 3, 3)]
+        assert con.execute("select count(*) from refused_row").fetchall() == [(0,)]
+        assert con.execute("select count(*) from refused_row_at_run(2)").fetchall() == [(2,)]

@@ -10,6 +10,7 @@ import pytest
 
 from driftbook.store import intake, migrate
 from driftbook.store.errors import IntakeError, UsageError
+from driftbook.store.intake import delimited, reading
 from driftbook.store.series import Setting, Stamp, add_series, known_series
 
 ROWS = {
@@ -60,6 +61,12 @@ EXPECTED = [
 def test_any_of_four_delimiters_is_found_by_the_header(take, con, delimiter):
     table = pl.DataFrame(ROWS).write_csv(separator=delimiter)
     assert take(1, table).rows_new == 3
+    assert observations(con) == EXPECTED
+
+
+def test_quotes_round_every_field_change_nothing_and_need_no_careful_look(take, con, monkeypatch):
+    monkeypatch.setattr(reading, "_look_at_odd", lambda *_: pytest.fail("a simply quoted row was looked at"))
+    assert take(1, pl.DataFrame(ROWS).write_csv(quote_style="always")).rows_new == 3
     assert observations(con) == EXPECTED
 
 
@@ -146,6 +153,19 @@ def test_a_source_that_can_not_be_read_at_all_says_why_and_what_to_do(take, data
 def test_a_missing_file_is_named(con, tmp_path):
     with pytest.raises(IntakeError, match=r"nowhere.csv cannot be read: No such file"):
         intake.take_in(con, tmp_path / "nowhere.csv", intake.Options(), stamp(1))
+
+
+def test_a_file_that_is_written_to_meanwhile_is_not_taken_in(take, tmp_path, monkeypatch):
+    first_lines = delimited.line_batches
+
+    def and_somebody_writes(file):
+        with (tmp_path / "delivery.csv").open("a") as other:
+            other.write("gas,2024-01-02,2\n")
+        return first_lines(file)
+
+    monkeypatch.setattr(delimited, "line_batches", and_somebody_writes)
+    with pytest.raises(IntakeError, match="changed while it was read"):
+        take(1, "series,time,value\ngas,2024-01-01,1\n")
 
 
 @pytest.mark.parametrize("options", [{"zone": "Mars/Olympus"}, {"columns": {"worth": "x"}}])

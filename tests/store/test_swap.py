@@ -111,7 +111,7 @@ def test_what_is_kept_is_in_the_book_after_the_block(book):
 @pytest.mark.parametrize("error", [RuntimeError, KeyboardInterrupt, SystemExit])
 def test_an_exception_in_the_block_leaves_the_bytes_as_they_were(book, error):
     before = book.read_bytes()
-    with pytest.raises(error), rewriting(book, 0) as draft:
+    with pytest.raises(error), rewriting(book, 0) as draft:  # noqa: PT012
         put(draft.con, "desk")
         draft.kept = True
         raise error
@@ -192,7 +192,7 @@ def test_a_plain_copy_of_a_book_is_a_book(filled, tmp_path):
 def test_too_little_room_is_told_before_anything_is_done(book, monkeypatch):
     before = book.read_bytes()
     usage = shutil.disk_usage(book.parent)
-    monkeypatch.setattr(shutil, "disk_usage", lambda path: usage._replace(free=1 << 20))
+    monkeypatch.setattr(shutil, "disk_usage", lambda _: usage._replace(free=1 << 20))
     with pytest.raises(BookError, match=r"too little room beside .*desk\.duckdb: a run needs \d+ MiB and 1 MiB are"):
         write(book, "desk")
     assert book.read_bytes() == before
@@ -441,7 +441,7 @@ def test_the_book_keeps_its_rights(book, wide_umask, rights):
 
 @pytest.mark.parametrize("rights", [0o640, 0o600])
 def test_nothing_beside_the_book_is_open_to_more_people_than_the_book(book, wide_umask, rights):
-    """Neither the lock nor, while a run is under way, its draft and the draft's log; also when the book was narrowed."""
+    """Neither the lock nor, while a run is under way, its draft; also when the book was narrowed."""
     book.chmod(0o644)
     write(book, "desk")
     book.chmod(rights)
