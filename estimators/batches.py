@@ -91,7 +91,10 @@ class Piece:
 
 @dataclass(frozen=True)
 class Answer:
-    """A model's answer to a piece: arrays with `Piece.shape`, or with one axis for all three."""
+    """A model's answer to a piece: arrays with `Piece.shape`, or with one axis for all three.
+
+    Which columns there are may depend on `Piece.lookback` and `Piece.intervals`, and on nothing else of the piece.
+    """
 
     columns: Mapping[str, Array]
     status: NDArray[np.int8]

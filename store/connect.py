@@ -33,6 +33,7 @@ def connect(book: str | os.PathLike[str]) -> duckdb.DuckDBPyConnection:
     try:
         _mirror(con)
         functions.register(con, functions.InlineExecutor())
+        functions.register_likelihoods(con)
         functions.register_measures(con)
         add_window_fit(con)
     except BaseException:

@@ -63,8 +63,17 @@ def register(con: duckdb.DuckDBPyConnection, executor: Executor) -> None:
         _add(con, f"rolling_{name}_at", partial(_rolling_at, fits), ["TIMESTAMP[]", "DOUBLE[]", "INTEGER"], many)
         types = ["DOUBLE[]", "DOUBLE[]", "INTEGER", "BIGINT"]
         _add(con, f"rolling_{name}_from", partial(_rolling_from, fits), types, many)
-        numbers = ["DOUBLE"] * (1 + len(model.parameters))
-        _add(con, f"loglik_{name}", partial(_loglik, model), ["DOUBLE[]", *numbers], "DOUBLE")
+
+
+def register_likelihoods(con: duckdb.DuckDBPyConnection) -> None:
+    """Registers the log-likelihood of every model: a macro that names its parameters, over one function."""
+    for model in MODELS.values():
+        parameters = ", ".join(parameter.name for parameter in model.parameters)
+        _add(con, f"loglik_of_{model.name}", partial(_loglik, model), ["DOUBLE[]", "DOUBLE", "DOUBLE[]"], "DOUBLE")
+        con.execute(
+            f"create macro main.loglik_{model.name}(x, dt, {parameters}) as "
+            f"loglik_of_{model.name}(x, dt, [{parameters}]::double[])"
+        )
 
 
 def register_measures(con: duckdb.DuckDBPyConnection) -> None:
@@ -160,11 +169,15 @@ def _rolling_from(
     return _lists_of_structs(fits([_Asked(*row) for row in rows]))
 
 
-def _loglik(model: Model, x: pa.ChunkedArray, dt: Any, *parameters: Any) -> pa.Array:
-    columns = [_numbers(parameter) for parameter in parameters]
-    rows = zip(_lists(x), _numbers(dt), *columns, strict=True)
-    values = [model.loglik(series, step, *numbers) for series, step, *numbers in rows]
-    return pa.array(np.array(values, np.float64), from_pandas=True)
+def _loglik(model: Model, x: pa.ChunkedArray, dt: Any, parameters: pa.ChunkedArray) -> pa.Array:
+    rows = zip(_lists(x), _numbers(dt), _lists(parameters), strict=True)
+    return pa.array([_one_loglik(model, *row) for row in rows], pa.float64(), from_pandas=True)
+
+
+def _one_loglik(model: Model, x: Values, dt: float, parameters: Values) -> float:
+    if x.size < 2 or not dt > 0 or not np.isfinite(dt):
+        return float("nan")
+    return float(model.loglik(x, dt, *parameters))
 
 
 def _measure(measure: Callable[..., Values], r: pa.ChunkedArray) -> pa.Array:

@@ -239,7 +239,7 @@ def log_density(x: Array, steps: Array, kappa: Array, theta: Array, sigma: Array
 
 def _not_yet(piece: Piece) -> Answer:
     m = int(np.prod(piece.shape))
-    names = [c.name for c in COLUMNS] if piece.intervals else ["kappa", "theta", "sigma", "loglik"]
+    names = list(fit_equal(piece).columns) if piece.intervals else ["kappa", "theta", "sigma", "loglik"]
     return Answer({name: np.full(m, np.nan) for name in names}, np.full(m, Status.NOT_CONVERGED, dtype=np.int8))
 
 
