@@ -48,6 +48,8 @@ class Regression:
         Σ (x_i − level)² e_i² over the residuals e, the middle of White's (1980) covariance, HC0.
     fourth : array or None
         Σ e_i⁴.
+    evenness : array or float
+        By how much the variance of the level that increments point to is larger than at equal steps; 1 there.
     """
 
     n: int
@@ -58,6 +60,7 @@ class Regression:
     rss: Array
     robust: Array | None = None
     fourth: Array | None = None
+    evenness: Array | float = 1.0
 
     def without_fourth(self) -> Regression:
         """The same without the sums of degree four."""

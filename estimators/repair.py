@@ -46,6 +46,8 @@ def repair(
         finite = np.isfinite(np.abs(gathered).max(axis=1))
         status[part[~finite]] = Status.OUT_OF_RANGE
         blank(columns, part[~finite])
+        if not finite.any():
+            continue
         there = tuple(index[finite] for index in where)
         found, status[part[finite]] = fit(gathered[finite], steps[there])
         for name, values in columns.items():

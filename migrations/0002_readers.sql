@@ -5,7 +5,8 @@ create macro base.moment_us(word) as case
   when regexp_full_match(trim(word::varchar), '\d{4}-\d{2}-\d{2}')
     then epoch_us(trim(word::varchar)::date + interval 1 day) - 1
   when regexp_matches(trim(word::varchar), '\d{2}:\d{2}.*([Zz]|[+-]\d{2}(:?\d{2})?)$')
-    then epoch_us(trim(word::varchar)::timestamptz)
+    -- DuckDB 1.2 wants seconds before a zone, and no version takes a small z
+    then epoch_us(regexp_replace(upper(trim(word::varchar)), '([ T]\d{2}:\d{2})([Z+-])', '\1:00\2')::timestamptz)
   else epoch_us(trim(word::varchar)::timestamp) end;
 
 -- The last run at or before a moment in microseconds; NULL before the first.

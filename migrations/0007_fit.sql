@@ -1,47 +1,57 @@
 -- fit and estimate: views over all models. Printed by `python -m driftbook.store.fit_schema`.
 create view base.fit_rows as
-select m.series, m.lookback, m.window_start, m.window_end, 'abm' as model, m.n, 2 as k, m.loglik,
-  2 * 2 - 2 * m.loglik as aic, 2 * ln(m.n) - 2 * m.loglik as bic, m.status, m.run_from, m.run_to from base.abm_rows m
+select m.series, m.lookback, m.window_start, m.window_end, 'abm' as model, m.n, 2 as k,
+  m.loglik, 2 * 2 - 2 * m.loglik as aic, 2 * ln(m.n) - 2 * m.loglik as bic, m.status, m.run_from, m.run_to from base.abm_rows m
 union all
-select m.series, m.lookback, m.window_start, m.window_end, 'gbm' as model, m.n, 2 as k, m.loglik,
-  2 * 2 - 2 * m.loglik as aic, 2 * ln(m.n) - 2 * m.loglik as bic, m.status, m.run_from, m.run_to from base.gbm_rows m
+select m.series, m.lookback, m.window_start, m.window_end, 'gbm' as model, m.n, 2 as k,
+  m.loglik, 2 * 2 - 2 * m.loglik as aic, 2 * ln(m.n) - 2 * m.loglik as bic, m.status, m.run_from, m.run_to from base.gbm_rows m
 union all
-select m.series, m.lookback, m.window_start, m.window_end, 'ou' as model, m.n, 3 as k, m.loglik,
-  2 * 3 - 2 * m.loglik as aic, 3 * ln(m.n) - 2 * m.loglik as bic, m.status, m.run_from, m.run_to from base.ou_rows m
+select m.series, m.lookback, m.window_start, m.window_end, 'ou' as model, m.n, 3 as k,
+  m.loglik, 2 * 3 - 2 * m.loglik as aic, 3 * ln(m.n) - 2 * m.loglik as bic, m.status, m.run_from, m.run_to from base.ou_rows m
 union all
-select m.series, m.lookback, m.window_start, m.window_end, 'exp_ou' as model, m.n, 3 as k, m.loglik,
-  2 * 3 - 2 * m.loglik as aic, 3 * ln(m.n) - 2 * m.loglik as bic, m.status, m.run_from, m.run_to from base.exp_ou_rows m;
+select m.series, m.lookback, m.window_start, m.window_end, 'exp_ou' as model, m.n, 3 as k,
+  m.loglik, 2 * 3 - 2 * m.loglik as aic, 3 * ln(m.n) - 2 * m.loglik as bic, m.status, m.run_from, m.run_to from base.exp_ou_rows m;
 
 create view base.estimate_rows as
-select m.series, m.lookback, m.window_end, 'abm' as model, 'mu' as parameter, m.mu as value,
-  m.mu_se as se, m.mu_lower as lower, m.mu_upper as upper, m.status, m.run_from, m.run_to from base.abm_rows m
+select m.series, m.lookback, m.window_end, 'abm' as model, 'mu' as parameter,
+  m.mu as value, m.mu_se as se, m.mu_lower as lower, m.mu_upper as upper,
+  m.status, m.run_from, m.run_to from base.abm_rows m
 union all
-select m.series, m.lookback, m.window_end, 'abm' as model, 'sigma' as parameter, m.sigma as value,
-  m.sigma_se as se, m.sigma_lower as lower, m.sigma_upper as upper, m.status, m.run_from, m.run_to from base.abm_rows m
+select m.series, m.lookback, m.window_end, 'abm' as model, 'sigma' as parameter,
+  m.sigma as value, m.sigma_se as se, m.sigma_lower as lower, m.sigma_upper as upper,
+  m.status, m.run_from, m.run_to from base.abm_rows m
 union all
-select m.series, m.lookback, m.window_end, 'gbm' as model, 'mu' as parameter, m.mu as value,
-  m.mu_se as se, m.mu_lower as lower, m.mu_upper as upper, m.status, m.run_from, m.run_to from base.gbm_rows m
+select m.series, m.lookback, m.window_end, 'gbm' as model, 'mu' as parameter,
+  m.mu as value, m.mu_se as se, m.mu_lower as lower, m.mu_upper as upper,
+  m.status, m.run_from, m.run_to from base.gbm_rows m
 union all
-select m.series, m.lookback, m.window_end, 'gbm' as model, 'sigma' as parameter, m.sigma as value,
-  m.sigma_se as se, m.sigma_lower as lower, m.sigma_upper as upper, m.status, m.run_from, m.run_to from base.gbm_rows m
+select m.series, m.lookback, m.window_end, 'gbm' as model, 'sigma' as parameter,
+  m.sigma as value, m.sigma_se as se, m.sigma_lower as lower, m.sigma_upper as upper,
+  m.status, m.run_from, m.run_to from base.gbm_rows m
 union all
-select m.series, m.lookback, m.window_end, 'ou' as model, 'kappa' as parameter, m.kappa as value,
-  m.kappa_se as se, m.kappa_lower as lower, m.kappa_upper as upper, m.status, m.run_from, m.run_to from base.ou_rows m
+select m.series, m.lookback, m.window_end, 'ou' as model, 'kappa' as parameter,
+  m.kappa as value, m.kappa_se as se, m.kappa_lower as lower, m.kappa_upper as upper,
+  m.status, m.run_from, m.run_to from base.ou_rows m
 union all
-select m.series, m.lookback, m.window_end, 'ou' as model, 'theta' as parameter, m.theta as value,
-  m.theta_se as se, m.theta_lower as lower, m.theta_upper as upper, m.status, m.run_from, m.run_to from base.ou_rows m
+select m.series, m.lookback, m.window_end, 'ou' as model, 'theta' as parameter,
+  m.theta as value, m.theta_se as se, m.theta_lower as lower, m.theta_upper as upper,
+  m.status, m.run_from, m.run_to from base.ou_rows m
 union all
-select m.series, m.lookback, m.window_end, 'ou' as model, 'sigma' as parameter, m.sigma as value,
-  m.sigma_se as se, m.sigma_lower as lower, m.sigma_upper as upper, m.status, m.run_from, m.run_to from base.ou_rows m
+select m.series, m.lookback, m.window_end, 'ou' as model, 'sigma' as parameter,
+  m.sigma as value, m.sigma_se as se, m.sigma_lower as lower, m.sigma_upper as upper,
+  m.status, m.run_from, m.run_to from base.ou_rows m
 union all
-select m.series, m.lookback, m.window_end, 'exp_ou' as model, 'kappa' as parameter, m.kappa as value,
-  m.kappa_se as se, m.kappa_lower as lower, m.kappa_upper as upper, m.status, m.run_from, m.run_to from base.exp_ou_rows m
+select m.series, m.lookback, m.window_end, 'exp_ou' as model, 'kappa' as parameter,
+  m.kappa as value, m.kappa_se as se, m.kappa_lower as lower, m.kappa_upper as upper,
+  m.status, m.run_from, m.run_to from base.exp_ou_rows m
 union all
-select m.series, m.lookback, m.window_end, 'exp_ou' as model, 'theta' as parameter, m.theta as value,
-  m.theta_se as se, m.theta_lower as lower, m.theta_upper as upper, m.status, m.run_from, m.run_to from base.exp_ou_rows m
+select m.series, m.lookback, m.window_end, 'exp_ou' as model, 'theta' as parameter,
+  m.theta as value, m.theta_se as se, m.theta_lower as lower, m.theta_upper as upper,
+  m.status, m.run_from, m.run_to from base.exp_ou_rows m
 union all
-select m.series, m.lookback, m.window_end, 'exp_ou' as model, 'sigma' as parameter, m.sigma as value,
-  m.sigma_se as se, m.sigma_lower as lower, m.sigma_upper as upper, m.status, m.run_from, m.run_to from base.exp_ou_rows m;
+select m.series, m.lookback, m.window_end, 'exp_ou' as model, 'sigma' as parameter,
+  m.sigma as value, m.sigma_se as se, m.sigma_lower as lower, m.sigma_upper as upper,
+  m.status, m.run_from, m.run_to from base.exp_ou_rows m;
 
 create view main.fit as
 select y.series, y.lookback, y.window_start, y.window_end, y.model, y.n, y.k, y.loglik, y.aic, y.bic,

@@ -8,8 +8,8 @@ from pathlib import Path
 
 import duckdb
 
-from driftbook.store.connect import connect
 from driftbook.store.errors import UsageError
+from driftbook.store.reader import connect
 
 _READS = {duckdb.StatementType.SELECT, duckdb.StatementType.EXPLAIN}
 _LOCKED = ("set temp_directory = ''", "set enable_external_access = false", "set lock_configuration = true")

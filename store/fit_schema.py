@@ -66,16 +66,16 @@ def _fit_branch(model: Model) -> str:
     k = str(len(model.parameters))
     aic, bic = AIC_SQL.format(k=k, loglik="m.loglik"), BIC_SQL.format(k=k, n="m.n", loglik="m.loglik")
     return (
-        f"select m.series, m.lookback, m.window_start, m.window_end, '{model.name}' as model, m.n, {k} as k, m.loglik,\n"
-        f"  {aic} as aic, {bic} as bic, m.status, m.run_from, m.run_to from base.{model.name}_rows m"
+        f"select m.series, m.lookback, m.window_start, m.window_end, '{model.name}' as model, m.n, {k} as k,\n"
+        f"  m.loglik, {aic} as aic, {bic} as bic, m.status, m.run_from, m.run_to from base.{model.name}_rows m"
     )
 
 
 def _estimate_branch(model: Model, name: str) -> str:
     return (
-        f"select m.series, m.lookback, m.window_end, '{model.name}' as model, '{name}' as parameter, m.{name} as value,\n"
-        f"  m.{name}_se as se, m.{name}_lower as lower, m.{name}_upper as upper, m.status, m.run_from, m.run_to "
-        f"from base.{model.name}_rows m"
+        f"select m.series, m.lookback, m.window_end, '{model.name}' as model, '{name}' as parameter,\n"
+        f"  m.{name} as value, m.{name}_se as se, m.{name}_lower as lower, m.{name}_upper as upper,\n"
+        f"  m.status, m.run_from, m.run_to from base.{model.name}_rows m"
     )
 
 

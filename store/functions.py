@@ -93,9 +93,7 @@ def roll_block(name: str, x: Values, steps: Values, lookback: int, first: int) -
     return rolling(name, x, steps, lookback, first=first)
 
 
-def _add(
-    con: duckdb.DuckDBPyConnection, name: str, function: Callable[..., Any], takes: list[str], gives: str
-) -> None:
+def _add(con: duckdb.DuckDBPyConnection, name: str, function: Callable[..., Any], takes: list[Any], gives: str) -> None:
     con.create_function(
         name, function, takes, gives, type=PythonUDFType.ARROW, null_handling=FunctionNullHandling.SPECIAL
     )
@@ -195,7 +193,8 @@ def _whole(x: Values, steps: Values) -> _Asked:
 
 def _years(times: Values) -> Values:
     """Steps between times in years of 365 days."""
-    return np.diff(times.astype("datetime64[us]").astype(np.int64)) / MICROSECONDS_PER_YEAR
+    microseconds: NDArray[np.int64] = times.astype("datetime64[us]").astype(np.int64)
+    return np.asarray(np.diff(microseconds) / MICROSECONDS_PER_YEAR, np.float64)
 
 
 def _blocks(asked: list[_Asked], usable: list[int]) -> Iterator[tuple[list[int], tuple[Values, Values, int, int]]]:

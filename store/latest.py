@@ -205,7 +205,9 @@ def _row(fits: list[_Fit], series: Series, before: Row | None, marks: _Marks) ->
         half_life_unbounded=pulled.half_life_unbounded if pulled else None,
         can_reach_zero=_can_reach_zero(chosen.model, setting.sign),
         challenger=chosen.challenger,
-        note="; ".join([*_what_happened(first, marks), *_what_changed(chosen, before), *_what_is_missing(fit or first)]),
+        note="; ".join(
+            [*_what_happened(first, marks), *_what_changed(chosen, before), *_what_is_missing(fit or first)]
+        ),
     )
 
 

@@ -79,7 +79,7 @@ class PlannedSeries(_Strict):
     @model_validator(mode="after")
     def _fits_together(self) -> Self:
         if self.in_force != BEST and not self.admits(self.in_force):
-            raise ValueError(f"in_force: {self.in_force} is for series with sign = \"positive\"")
+            raise ValueError(f'in_force: {self.in_force} is for series with sign = "positive"')
         if self.shift and self.sign != "positive":
             raise ValueError('shift: only models of series with sign = "positive" use it')
         return self

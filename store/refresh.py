@@ -186,5 +186,3 @@ def _put_revision_in_force(run: Run, name: str) -> bool:
         [name, revision, run.stamp.run_id],
     )
     return True
-
-

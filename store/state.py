@@ -8,9 +8,9 @@ from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
 
-from driftbook.store.connect import connect
 from driftbook.store.errors import UsageError
 from driftbook.store.moments import parse_moment
+from driftbook.store.reader import connect
 from driftbook.store.series import near_name
 from driftbook.store.sql import only_row, query
 

@@ -58,12 +58,19 @@ def create(book: Path) -> None:
                 migrate.apply_pending(con)
                 con.execute("checkpoint")
             _sync(draft)
-            # link, unlike rename, never replaces a book that came into being meanwhile
-            os.link(draft, book)
+            _link(draft, book)
             _sync(book.parent)
         finally:
             _remove_draft(draft)
         lock.record_look(book, "made the book")
+
+
+def _link(draft: Path, book: Path) -> None:
+    """Gives the draft the book's name; a link, unlike a rename, never replaces what came into being meanwhile."""
+    try:
+        os.link(draft, book)
+    except FileExistsError:
+        raise UsageError(f"{book} exists already; choose another name or remove it yourself.") from None
 
 
 @contextmanager
@@ -172,6 +179,11 @@ def _clear_leftovers(book: Path) -> None:
     for path in _leftovers(book):
         _remove(path)
     aside = _aside(book)
+    if aside.exists() and _wal(book).exists():
+        raise BookError(
+            f"{aside.name} and {_wal(book).name} beside {book} both hold changes of a foreign writer; "
+            "look which belongs to the book and move the other away."
+        )
     if aside.exists():
         if _identity_file(book).exists() and _identity_file(book).read_text() == _identity(book):
             aside.rename(_wal(book))

@@ -19,9 +19,10 @@ from driftbook.store.errors import UsageError
 from driftbook.store.series import near_name
 from driftbook.store.sql import query
 
-_TAKES = ["VARCHAR", "DOUBLE[]", "BIGINT[]", "VARCHAR", "DOUBLE", "DOUBLE", "INTEGER"]
+_TAKES: list[Any] = ["VARCHAR", "DOUBLE[]", "BIGINT[]", "VARCHAR", "DOUBLE", "DOUBLE", "INTEGER"]
 _GIVES = "STRUCT(parameter VARCHAR, value DOUBLE, se DOUBLE, lower DOUBLE, upper DOUBLE, n INTEGER, status VARCHAR)[]"
 _FEWEST = 5
+_STATUSES = {int(status): status for status in Status}
 
 
 def add_window_fit(con: duckdb.DuckDBPyConnection) -> None:
@@ -37,7 +38,16 @@ def add_window_fit(con: duckdb.DuckDBPyConnection) -> None:
     con.execute(query("window_fit"))
 
 
-def _parameters_of_windows(*columns: pa.ChunkedArray) -> pa.Array:
+def _parameters_of_windows(
+    model: pa.ChunkedArray,
+    x: pa.ChunkedArray,
+    times: pa.ChunkedArray,
+    clock: pa.ChunkedArray,
+    periods_per_year: pa.ChunkedArray,
+    shift: pa.ChunkedArray,
+    lookback: pa.ChunkedArray,
+) -> pa.Array:
+    columns = (model, x, times, clock, periods_per_year, shift, lookback)
     rows = zip(*(column.to_pylist() for column in columns), strict=True)
     return pa.array([_parameters(*row) for row in rows])
 
@@ -52,8 +62,9 @@ def _parameters(
     lookback: int | None,
 ) -> list[dict[str, Any]]:
     """One entry a parameter of the last window of a list; a status alone where there is no such window."""
-    if model not in MODELS:
-        raise UsageError(f"no model is called {model!r}{near_name(str(model), list(MODELS))}; there are {', '.join(MODELS)}.")
+    if model is None or model not in MODELS:
+        near = near_name(str(model), list(MODELS)) or f"; there are {', '.join(MODELS)}"
+        raise UsageError(f"no model is called {model!r}{near}.")
     values = np.array([np.nan if value is None else value for value in x or []], np.float64)
     steps_wanted = lookback or max(values.size - 1, _FEWEST)
     names = [parameter.name for parameter in MODELS[model].parameters]
@@ -66,11 +77,9 @@ def _parameters(
     step = equal_step(clock, periods_per_year)
     steps: Any = step or np.diff(np.array(times, np.int64))[start:] / microseconds_per_unit(clock)
     fit = rolling(model, values[start:], steps, steps_wanted, first=first - start)
-    status = Status(int(fit.status[0]))
+    status = _STATUSES[int(fit.status[0])]
     ends = ("", "_se", "_lower", "_upper")
-    return [
-        _entry(name, [float(fit.columns[name + end][0]) for end in ends], int(fit.n[0]), status) for name in names
-    ]
+    return [_entry(name, [float(fit.columns[name + end][0]) for end in ends], int(fit.n[0]), status) for name in names]
 
 
 def _entry(name: str, numbers: list[float] | None, n: int, status: Status) -> dict[str, Any]:

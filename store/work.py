@@ -110,9 +110,7 @@ def shifts(model: str, series: dict[int, Series]) -> dict[int, float]:
     return {series_id: one.setting.shift for series_id, one in series.items() if one.setting.shift}
 
 
-def find_work(
-    con: duckdb.DuckDBPyConnection, plan: Plan, last: int, revised: set[str], *, everything: bool
-) -> Work:
+def find_work(con: duckdb.DuckDBPyConnection, plan: Plan, last: int, revised: set[str], *, everything: bool) -> Work:
     """What is due under a plan since run `last`; `revised` models are due as a whole."""
     series = known_series(con)
     tables = {name: EstimateTable(model) for name, model in MODELS.items()}

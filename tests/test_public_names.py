@@ -101,5 +101,5 @@ def test_help_and_sql_load_neither_polars_nor_scipy_nor_the_plan():
 
 
 def test_every_module_imports_on_its_own():
-    for name in ("driftbook.store.writing", "driftbook.store.verify", "driftbook.store.cli", "driftbook.estimators"):
+    for name in ("driftbook.store.writer", "driftbook.store.proof", "driftbook.store.cli", "driftbook.estimators"):
         import_module(name)

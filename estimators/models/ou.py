@@ -29,14 +29,16 @@ from functools import partial
 import numpy as np
 from numpy.typing import NDArray
 
+from driftbook.estimators import unequal
 from driftbook.estimators.batches import Answer, Piece
 from driftbook.estimators.intervals import sigma_interval, theta_set, widened_pull
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
-from driftbook.estimators.regression import Regression, from_sums, from_windows
+from driftbook.estimators.regression import Mask, Regression, from_sums, from_windows
 from driftbook.estimators.repair import blank, repair
 from driftbook.estimators.slope_law import slope_law
 from driftbook.estimators.status import Status
 from driftbook.estimators.stepping import by_steps
+from driftbook.estimators.unequal import Solution, as_regression
 from driftbook.estimators.windows import Array
 
 SHORTEST = 5
@@ -110,6 +112,43 @@ def fit_equal(piece: Piece) -> Answer:
     return Answer(columns, status)
 
 
+def fit_unequal(piece: Piece) -> Answer:
+    """The same for unequal steps."""
+    m = int(np.prod(piece.shape))
+    columns = {name: np.full(m, np.nan) for name in _names(piece)}
+    status, solved = np.zeros(m, dtype=np.int8), np.zeros(m, dtype=np.bool_)
+    for places, solution, sound in unequal.from_sums(piece):
+        found, became = _of_solution(solution)
+        solved[places] = sound & (became != Status.NOT_CONVERGED)
+        status[places] = became
+        for name, values in columns.items():
+            values[places] = found[name]
+    doubtful = np.flatnonzero(~solved)
+    if doubtful.size:
+        repair(piece, doubtful, partial(_from_unequal_windows, piece.intervals), columns, status)
+    return Answer(columns, status)
+
+
+fit_piece = by_steps(fit_equal, fit_unequal)
+
+
+def _names(piece: Piece) -> list[str]:
+    """Names of the columns of a fit."""
+    none = np.empty(0)
+    degree = none if piece.intervals else None
+    return list(_estimates(Regression(piece.lookback, none, none, none, none, none, degree, degree), none)[0])
+
+
+def _of_solution(solution: Solution) -> tuple[dict[str, Array], NDArray[np.int8]]:
+    """Columns and status of windows of unequal steps, shape (m,)."""
+    columns, status = _estimates(as_regression(solution), solution.duration / solution.n)
+    columns["loglik"] = solution.loglik
+    status[np.isnan(solution.kappa)] = Status.NOT_CONVERGED
+    status[solution.rising] = Status.ALTERNATING
+    blank(columns, np.flatnonzero(np.isnan(solution.kappa)))
+    return columns, status
+
+
 def _estimates(regression: Regression, dt: Array) -> tuple[dict[str, Array], NDArray[np.int8]]:
     """Columns and status of sound regressions of shape (m,), for one step or m; all columns if it has degree four."""
     no_pull = np.flatnonzero(regression.slope >= 0)
@@ -152,7 +191,7 @@ def _standard_errors(regression: Regression, sigma: Array, dt: Array) -> dict[st
     slope_se = np.sqrt(regression.rss / (A * (n - 2.0)))
     h_se = slope_se / (1 + beta)
     away = regression.drift / beta
-    theta_se = slope_se * np.sqrt(A / n + np.square(away)) / np.abs(beta)
+    theta_se = slope_se * np.sqrt(A / n * regression.evenness + np.square(away)) / np.abs(beta)
     theta_se[beta == 0] = np.nan
     sigma_se = sigma * np.sqrt(1 / (2 * n) + np.square(0.5 * _gradient(beta) * h_se))
     return {"kappa_se": h_se / dt, "theta_se": theta_se, "sigma_se": sigma_se}
@@ -177,7 +216,8 @@ def _interval_estimates(regression: Regression, robust: Array, fourth: Array, dt
         return {"kurtosis": kurtosis, "kappa_median_unbiased": nothing, "kappa_lower": nothing, "kappa_upper": nothing}
     b, s2, duration = 1 + regression.slope, rss / (n - 2), n * dt
     pull = widened_pull(law, b, np.sqrt(n * robust / (A * rss)))
-    theta = theta_set(law, b, mean_from=0.0, mean_to=regression.drift, A=A, s2=s2)
+    uneven = regression.evenness
+    theta = theta_set(law, b, mean_from=0.0, mean_to=regression.drift, A=A * uneven, s2=s2 * uneven)
     sigma = sigma_interval(n, b, median_pull=pull.median, A=A, s2=s2, kurtosis=kurtosis, step=dt)
     return {
         "kappa_lower": _finite(pull.lower / duration),
@@ -214,12 +254,25 @@ def _finite(values: Array) -> Array:
 def _from_windows(intervals: bool, windows: Array, steps: Array) -> tuple[dict[str, Array], NDArray[np.int8]]:
     """Columns and status of windows of finite values, shape (m, n + 1), and equal steps."""
     regression, unit, flat = from_windows(windows)
-    dt = steps[:, -1]
-    columns, status = _estimates(regression if intervals else regression.without_fourth(), dt)
+    columns, status = _estimates(regression if intervals else regression.without_fourth(), steps[:, -1])
+    return _in_units(columns, status, windows.shape[1] - 1, unit, flat)
+
+
+def _from_unequal_windows(intervals: bool, windows: Array, steps: Array) -> tuple[dict[str, Array], NDArray[np.int8]]:
+    """The same for unequal steps, shape (m, n)."""
+    solution, unit, flat = unequal.from_windows(windows, steps, fourth=intervals)
+    columns, status = _of_solution(solution)
+    return _in_units(columns, status, solution.n, unit, flat)
+
+
+def _in_units(
+    columns: dict[str, Array], status: NDArray[np.int8], n: int, unit: Array, flat: Mask
+) -> tuple[dict[str, Array], NDArray[np.int8]]:
+    """Columns of observations divided by a unit, in units of their own, and without those that are flat."""
     for name in _IN_UNITS_OF_X:
         if name in columns:
             columns[name] *= unit
-    columns["loglik"] -= regression.n * np.log(unit)
+    columns["loglik"] -= n * np.log(unit)
     flat &= status != Status.ALTERNATING
     status[flat] = Status.FLAT
     blank(columns, np.flatnonzero(flat))
@@ -236,14 +289,6 @@ def log_density(x: Array, steps: Array, kappa: Array, theta: Array, sigma: Array
     terms = np.log(2 * np.pi * np.square(sigma) * variance) + np.square(residual) / variance
     return np.asarray(np.where(sigma[..., 0] > 0, -0.5 * terms.sum(axis=-1), np.nan))
 
-
-def _not_yet(piece: Piece) -> Answer:
-    m = int(np.prod(piece.shape))
-    names = list(fit_equal(piece).columns) if piece.intervals else ["kappa", "theta", "sigma", "loglik"]
-    return Answer({name: np.full(m, np.nan) for name in names}, np.full(m, Status.NOT_CONVERGED, dtype=np.int8))
-
-
-fit_piece = by_steps(fit_equal, _not_yet)
 
 MODEL = Model(
     name="ou",

@@ -15,8 +15,8 @@ from driftbook.store.cli.output import count_of, say, say_json
 from driftbook.store.errors import DifferenceFound
 
 if TYPE_CHECKING:
-    from driftbook.store.reproduce import Reproduced
-    from driftbook.store.verify import Verified
+    from driftbook.store.proof import Verified
+    from driftbook.store.reproducing import Reproduced
 
 
 class Format(StrEnum):
@@ -67,7 +67,7 @@ def verify(book: opt.Book, quiet: opt.Quiet = False, as_json: opt.Json = False) 
 
     Example: driftbook verify desk.duckdb
     """
-    from driftbook.store.verify import verify as verify_book
+    from driftbook.store.proof import verify as verify_book
 
     seen = verify_book(book)
     if as_json:
@@ -88,7 +88,7 @@ def reproduce(
 
     Example: driftbook reproduce desk.duckdb --run 41
     """
-    from driftbook.store.reproduce import reproduce as compute_again
+    from driftbook.store.reproducing import reproduce as compute_again
 
     found = compute_again(book, run, every=every)
     different = any(one.different or one.other_revision for one in found)

@@ -81,7 +81,7 @@ def ingest(
     Example: driftbook ingest desk.duckdb prices.csv --add-series
     """
     from driftbook.store.intake import Options
-    from driftbook.store.writing import writing
+    from driftbook.store.writer import writing
 
     chosen = Options(series, _roles(columns), dates, zone, add_series=add_series, yes=yes)
     with writing(book, wait=wait, at=at) as work:

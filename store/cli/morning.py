@@ -27,7 +27,7 @@ def add_to(app: typer.Typer) -> None:
 def refresh(
     book: opt.Book,
     plan: Annotated[Path | None, typer.Option("--plan", help="A plan file; without it the book's own plan.")] = None,
-    inbox: Annotated[Path | None, typer.Option("--inbox", help="A folder; what is new in it is taken in first.")] = None,
+    inbox: Annotated[Path | None, typer.Option("--inbox", help="A folder; what is new there is taken in.")] = None,
     workers: Annotated[int, typer.Option("--workers", min=1, help="Processes that compute.")] = 1,
     everything: Annotated[bool, typer.Option("--all", help="Compute every window, due or not.")] = False,
     dry_run: opt.DryRun = False,
@@ -42,7 +42,7 @@ def refresh(
 
     Example: driftbook refresh desk.duckdb --plan plan.toml --inbox in
     """
-    from driftbook.store.writing import writing
+    from driftbook.store.writer import writing
 
     with writing(book, wait=wait, at=at) as work:
         if dry_run:
@@ -93,7 +93,7 @@ def explain(
 
     Example: driftbook explain desk.duckdb pellets_fob --from 2026-06-29
     """
-    from driftbook.store.explain import explain as explain_move
+    from driftbook.store.explaining import explain as explain_move
 
     found = explain_move(book, series, model=model, lookback=lookback, earlier=earlier, later=later)
     if as_json:

@@ -10,7 +10,7 @@ from driftbook.store.digits import with_interval
 from driftbook.store.table import columns, word
 
 if TYPE_CHECKING:
-    from driftbook.store.explain import Explanation
+    from driftbook.store.explaining import Explanation
     from driftbook.store.state import State
 
 _DAY = 86_400
@@ -87,7 +87,8 @@ def _volatility(row: dict[str, Any]) -> str:
     numbers = [row["volatility"], row["volatility_lower"], row["volatility_upper"]]
     if not row["volatility_unit"].startswith("1/"):
         return with_interval(*numbers)
-    shown = with_interval(*(None if number is None else 100 * number for number in numbers))
+    value, lower, upper = (None if number is None else 100 * number for number in numbers)
+    shown = with_interval(value, lower, upper)
     return f"{shown} %" if numbers[0] is not None else shown
 
 

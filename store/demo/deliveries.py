@@ -31,8 +31,7 @@ def write_deliveries(inbox: Path) -> list[Path]:
     true = _true_rows()
     history = [_miskeyed(row) for row in true if row[1] < _MORNINGS[0]]
     files = [_write(inbox / "history.csv", history)]
-    for day in _MORNINGS:
-        files.append(_write(inbox / f"{day.isoformat()}.csv", [row for row in true if row[1] == day]))
+    files += [_write(inbox / f"{day.isoformat()}.csv", [row for row in true if row[1] == day]) for day in _MORNINGS]
     _dirty(files[-1], true)
     corrected = [row for row in true if row[0] == _MISKEYED[0] and row[1] == _MISKEYED[1]]
     files.append(_write(inbox / "pellets_corrected.csv", corrected))

@@ -8,15 +8,15 @@ from pathlib import Path
 from tempfile import TemporaryDirectory
 from typing import Any
 
-from driftbook.store.connect import connect
 from driftbook.store.demo.deliveries import write_deliveries
 from driftbook.store.digits import with_interval
 from driftbook.store.errors import UsageError
 from driftbook.store.intake import Options
+from driftbook.store.reader import connect
 from driftbook.store.sql import query
 from driftbook.store.swap import create
 from driftbook.store.table import columns
-from driftbook.store.writing import writing
+from driftbook.store.writer import writing
 
 # When the desk took in each delivery, told: the demo reads the same on any day.
 _TOLD = (

@@ -15,6 +15,22 @@ union all
 select 'column', c.schema_name || '.' || c.table_name || '.' || c.column_name, c.data_type, c.comment
 from duckdb_columns() c
 where c.database_name = current_database() and not c.internal
+union all
+select 'index', i.schema_name || '.' || i.index_name, coalesce(i.sql, ''), i.comment
+from duckdb_indexes() i
+where i.database_name = current_database()
+union all
+select 'sequence', q.schema_name || '.' || q.sequence_name, coalesce(q.sql, ''), q.comment
+from duckdb_sequences() q
+where q.database_name = current_database() and not q.temporary
+union all
+select 'type', y.schema_name || '.' || y.type_name, y.logical_type, y.comment
+from duckdb_types() y
+where y.database_name = current_database() and not y.internal
+union all
+select 'schema', m.schema_name, coalesce(m.sql, ''), m.comment
+from duckdb_schemas() m
+where m.database_name = current_database() and not m.internal
 
 -- name: all_leaves
 -- Every digest that was stored.

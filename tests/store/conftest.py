@@ -8,6 +8,7 @@ import polars as pl
 import pytest
 
 from driftbook import store
+from driftbook.estimators import MODELS
 from driftbook.store.swap import create
 
 # what stands beside the tests is imported by its bare name
@@ -32,7 +33,10 @@ def _history(tmp_path_factory: pytest.TempPathFactory) -> Path:
     adding = store.Options(add_series=True)
     with store.writing(path, at="2026-01-05T08:00") as work:
         work.ingest(pl.concat([days("pellets_fob", wave(30)), days("power_da", wave(24, 60.0))]), adding, name="first")
-        work.refresh(plan_text({"pellets_fob": [8, 12], "power_da": [8]}))
+        first = plan_text(
+            {"pellets_fob": [8, 12], "power_da": [8]}, models=tuple(MODELS), also_called={"pellets_fob": "PEL FOB"}
+        )
+        work.refresh(first)
     with store.writing(path, at="2026-01-06") as work:
         work.ingest(
             pl.concat([days("pellets_fob", wave(2, first=30), 30), days("peg", wave(3, 1.0)), days("spark", wave(2))]),
@@ -48,7 +52,7 @@ def _history(tmp_path_factory: pytest.TempPathFactory) -> Path:
         work.refresh()
     with store.writing(path, at="2026-01-09T08:00") as work:
         work.ingest(days("peg", wave(12, 1.0), 3), adding, name="fifth")
-        work.refresh(plan_text({"pellets_fob": [8], "peg": [6, 8]}), yes=True)
+        work.refresh(plan_text({"pellets_fob": [8], "peg": [6, 8]}, models=tuple(MODELS), also_called={"peg": "PEG FIX"}), yes=True)
     with store.writing(path) as work:
         work.ingest(days("pellets_fob", wave(1, first=32), 32), name="sixth")
         work.refresh()

@@ -9,11 +9,22 @@ from driftbook.store.plan import PlanText, parse_plan
 FIRST_DAY = datetime(2024, 1, 1)
 
 
-def plan_text(lookbacks: dict[str, list[int]], periods: float = 252.0, name: str = "desk") -> PlanText:
-    """A plan of ou on some series, each with its lookbacks."""
-    series = "".join(f'[[series]]\nname = "{one}"\nperiods_per_year = {periods}\n' for one in lookbacks)
+def plan_text(
+    lookbacks: dict[str, list[int]],
+    periods: float = 252.0,
+    name: str = "desk",
+    models: tuple[str, ...] = ("ou",),
+    also_called: dict[str, str] | None = None,
+) -> PlanText:
+    """A plan of some models on some series, each with its lookbacks and perhaps another name."""
+    other = {one: f'also_called = ["{called}"]\n' for one, called in (also_called or {}).items()}
+    series = "".join(
+        f'[[series]]\nname = "{one}"\nsign = "positive"\nperiods_per_year = {periods}\n{other.get(one, "")}'
+        for one in lookbacks
+    )
     estimates = "".join(
-        f'[[estimate]]\nseries = ["{one}"]\nmodels = ["ou"]\nlookbacks = {steps}\n' for one, steps in lookbacks.items()
+        f'[[estimate]]\nseries = ["{one}"]\nmodels = {list(models)}\nlookbacks = {steps}\n'
+        for one, steps in lookbacks.items()
     )
     return parse_plan(f'name = "{name}"\n{series}{estimates}', "the test's plan")
 

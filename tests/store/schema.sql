@@ -1,5 +1,25 @@
+base.abm
+  CREATE TABLE base.abm(series_id INTEGER NOT NULL, lookback INTEGER NOT NULL, window_start TIMESTAMP NOT NULL, window_end TIMESTAMP NOT NULL, n INTEGER NOT NULL, mu DOUBLE, mu_se DOUBLE, mu_lower DOUBLE, mu_upper DOUBLE, sigma DOUBLE, sigma_se DOUBLE, sigma_lower DOUBLE, sigma_upper DOUBLE, kurtosis DOUBLE, loglik DOUBLE, status VARCHAR NOT NULL, revision INTEGER NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
+base.abm_rows
+  CREATE VIEW base.abm_rows AS SELECT s.series, m.lookback, m.window_start, m.window_end, m.n, m.mu, m.mu_se, m.mu_lower, m.mu_upper, m.sigma, m.sigma_se, m.sigma_lower, m.sigma_upper, m.kurtosis, m.loglik, m.status, m.revision, m.run_from, m.run_to FROM base.abm AS m INNER JOIN base.series AS s ON ((s.series_id = m.series_id));
+base.alias
+  CREATE TABLE base.alias(series_id INTEGER NOT NULL, "name" VARCHAR NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
+base.estimate_rows
+  CREATE VIEW base.estimate_rows AS (SELECT m.series, m.lookback, m.window_end, 'abm' AS model, 'mu' AS parameter, m.mu AS "value", m.mu_se AS se, m.mu_lower AS lower, m.mu_upper AS upper, m.status, m.run_from, m.run_to FROM base.abm_rows AS m) UNION ALL (((((SELECT m.series, m.lookback, m.window_end, 'abm' AS model, 'sigma' AS parameter, m.sigma AS "value", m.sigma_se AS se, m.sigma_lower AS lower, m.sigma_upper AS upper, m.status, m.run_from, m.run_to FROM base.abm_rows AS m) UNION ALL (SELECT m.series, m.lookback, m.window_end, 'gbm' AS model, 'mu' AS parameter, m.mu AS "value", m.mu_se AS se, m.mu_lower AS lower, m.mu_upper AS upper, m.status, m.run_from, m.run_to FROM base.gbm_rows AS m)) UNION ALL ((SELECT m.series, m.lookback, m.window_end, 'gbm' AS model, 'sigma' AS parameter, m.sigma AS "value", m.sigma_se AS se, m.sigma_lower AS lower, m.sigma_upper AS upper, m.status, m.run_from, m.run_to FROM base.gbm_rows AS m) UNION ALL (SELECT m.series, m.lookback, m.window_end, 'ou' AS model, 'kappa' AS parameter, m.kappa AS "value", m.kappa_se AS se, m.kappa_lower AS lower, m.kappa_upper AS upper, m.status, m.run_from, m.run_to FROM base.ou_rows AS m))) UNION ALL (((SELECT m.series, m.lookback, m.window_end, 'ou' AS model, 'theta' AS parameter, m.theta AS "value", m.theta_se AS se, m.theta_lower AS lower, m.theta_upper AS upper, m.status, m.run_from, m.run_to FROM base.ou_rows AS m) UNION ALL (SELECT m.series, m.lookback, m.window_end, 'ou' AS model, 'sigma' AS parameter, m.sigma AS "value", m.sigma_se AS se, m.sigma_lower AS lower, m.sigma_upper AS upper, m.status, m.run_from, m.run_to FROM base.ou_rows AS m)) UNION ALL ((SELECT m.series, m.lookback, m.window_end, 'exp_ou' AS model, 'kappa' AS parameter, m.kappa AS "value", m.kappa_se AS se, m.kappa_lower AS lower, m.kappa_upper AS upper, m.status, m.run_from, m.run_to FROM base.exp_ou_rows AS m) UNION ALL (SELECT m.series, m.lookback, m.window_end, 'exp_ou' AS model, 'theta' AS parameter, m.theta AS "value", m.theta_se AS se, m.theta_lower AS lower, m.theta_upper AS upper, m.status, m.run_from, m.run_to FROM base.exp_ou_rows AS m)))) UNION ALL (SELECT m.series, m.lookback, m.window_end, 'exp_ou' AS model, 'sigma' AS parameter, m.sigma AS "value", m.sigma_se AS se, m.sigma_lower AS lower, m.sigma_upper AS upper, m.status, m.run_from, m.run_to FROM base.exp_ou_rows AS m));
+base.exp_ou
+  CREATE TABLE base.exp_ou(series_id INTEGER NOT NULL, lookback INTEGER NOT NULL, window_start TIMESTAMP NOT NULL, window_end TIMESTAMP NOT NULL, n INTEGER NOT NULL, kappa DOUBLE, kappa_se DOUBLE, kappa_lower DOUBLE, kappa_upper DOUBLE, theta DOUBLE, theta_se DOUBLE, theta_lower DOUBLE, theta_upper DOUBLE, sigma DOUBLE, sigma_se DOUBLE, sigma_lower DOUBLE, sigma_upper DOUBLE, kappa_median_unbiased DOUBLE, no_reversion_p DOUBLE, kurtosis DOUBLE, loglik DOUBLE, status VARCHAR NOT NULL, revision INTEGER NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
+base.exp_ou_rows
+  CREATE VIEW base.exp_ou_rows AS SELECT s.series, m.lookback, m.window_start, m.window_end, m.n, m.kappa, m.kappa_se, m.kappa_lower, m.kappa_upper, m.theta, m.theta_se, m.theta_lower, m.theta_upper, m.sigma, m.sigma_se, m.sigma_lower, m.sigma_upper, m.kappa_median_unbiased, m.no_reversion_p, CASE  WHEN ((kappa > 0)) THEN ((ln(2) / "nullif"(kappa_median_unbiased, 0))) ELSE NULL END AS half_life, CASE  WHEN ((kappa_upper > 0)) THEN ((ln(2) / kappa_upper)) ELSE NULL END AS half_life_lower, CASE  WHEN ((kappa_lower > 0)) THEN ((ln(2) / kappa_lower)) ELSE NULL END AS half_life_upper, CASE  WHEN ((kappa > 0)) THEN ((ln(2) / kappa)) ELSE NULL END AS half_life_mle, (kappa_lower = 0) AS half_life_unbounded, CASE  WHEN ((kappa > 0)) THEN ((sigma / sqrt((2 * kappa)))) ELSE NULL END AS stationary_sd, CASE  WHEN (((kappa > 0) AND (theta < 700))) THEN (exp(theta)) ELSE NULL END AS long_run_median, m.kurtosis, m.loglik, m.status, m.revision, m.run_from, m.run_to FROM base.exp_ou AS m INNER JOIN base.series AS s ON ((s.series_id = m.series_id));
+base.fit_rows
+  CREATE VIEW base.fit_rows AS (SELECT m.series, m.lookback, m.window_start, m.window_end, 'abm' AS model, m.n, 2 AS k, m.loglik, ((2 * 2) - (2 * m.loglik)) AS aic, ((2 * ln(m.n)) - (2 * m.loglik)) AS bic, m.status, m.run_from, m.run_to FROM base.abm_rows AS m) UNION ALL (((SELECT m.series, m.lookback, m.window_start, m.window_end, 'gbm' AS model, m.n, 2 AS k, m.loglik, ((2 * 2) - (2 * m.loglik)) AS aic, ((2 * ln(m.n)) - (2 * m.loglik)) AS bic, m.status, m.run_from, m.run_to FROM base.gbm_rows AS m) UNION ALL (SELECT m.series, m.lookback, m.window_start, m.window_end, 'ou' AS model, m.n, 3 AS k, m.loglik, ((2 * 3) - (2 * m.loglik)) AS aic, ((3 * ln(m.n)) - (2 * m.loglik)) AS bic, m.status, m.run_from, m.run_to FROM base.ou_rows AS m)) UNION ALL (SELECT m.series, m.lookback, m.window_start, m.window_end, 'exp_ou' AS model, m.n, 3 AS k, m.loglik, ((2 * 3) - (2 * m.loglik)) AS aic, ((3 * ln(m.n)) - (2 * m.loglik)) AS bic, m.status, m.run_from, m.run_to FROM base.exp_ou_rows AS m));
+base.gbm
+  CREATE TABLE base.gbm(series_id INTEGER NOT NULL, lookback INTEGER NOT NULL, window_start TIMESTAMP NOT NULL, window_end TIMESTAMP NOT NULL, n INTEGER NOT NULL, mu DOUBLE, mu_se DOUBLE, mu_lower DOUBLE, mu_upper DOUBLE, sigma DOUBLE, sigma_se DOUBLE, sigma_lower DOUBLE, sigma_upper DOUBLE, kurtosis DOUBLE, loglik DOUBLE, status VARCHAR NOT NULL, revision INTEGER NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
+base.gbm_rows
+  CREATE VIEW base.gbm_rows AS SELECT s.series, m.lookback, m.window_start, m.window_end, m.n, m.mu, m.mu_se, m.mu_lower, m.mu_upper, m.sigma, m.sigma_se, m.sigma_lower, m.sigma_upper, m.kurtosis, m.loglik, m.status, m.revision, m.run_from, m.run_to FROM base.gbm AS m INNER JOIN base.series AS s ON ((s.series_id = m.series_id));
 base.intake
   CREATE TABLE base.intake(intake_id INTEGER NOT NULL, "source" VARCHAR NOT NULL, sha256 VARCHAR NOT NULL, "options" VARCHAR NOT NULL, received_at TIMESTAMP WITH TIME ZONE NOT NULL, rows_read BIGINT NOT NULL, rows_new BIGINT NOT NULL, rows_revised BIGINT NOT NULL, rows_same BIGINT NOT NULL, rows_refused BIGINT NOT NULL, run_from INTEGER NOT NULL);
+base.latest
+  CREATE TABLE base.latest(series_id INTEGER NOT NULL, observed_at TIMESTAMP NOT NULL, "value" DOUBLE NOT NULL, lookback INTEGER NOT NULL, window_end TIMESTAMP NOT NULL, model VARCHAR, model_weight DOUBLE, volatility DOUBLE, volatility_lower DOUBLE, volatility_upper DOUBLE, volatility_unit VARCHAR NOT NULL, drift DOUBLE, half_life_days DOUBLE, half_life_days_lower DOUBLE, half_life_days_upper DOUBLE, half_life_unbounded BOOLEAN, can_reach_zero BOOLEAN, challenger VARCHAR, note VARCHAR NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
 base.leaf
   CREATE TABLE base.leaf(run_id INTEGER NOT NULL, table_name VARCHAR NOT NULL, series_id INTEGER, migration INTEGER NOT NULL, rows_in BIGINT NOT NULL, rows_closed BIGINT NOT NULL, sha256 VARCHAR NOT NULL);
 base.migration
@@ -7,7 +27,7 @@ base.migration
 base.model_revision
   CREATE TABLE base.model_revision(model VARCHAR NOT NULL, revision INTEGER NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
 base.moment_us
-  macro (word) CASE  WHEN (regexp_full_match("trim"(CAST(word AS VARCHAR)), '\d{4}-\d{2}-\d{2}')) THEN ((epoch_us((CAST("trim"(CAST(word AS VARCHAR)) AS DATE) + to_days(CAST(trunc(CAST(1 AS DOUBLE)) AS INTEGER)))) - 1)) WHEN (regexp_matches("trim"(CAST(word AS VARCHAR)), '\d{2}:\d{2}.*([Zz]|[+-]\d{2}(:?\d{2})?)$')) THEN (epoch_us(CAST("trim"(CAST(word AS VARCHAR)) AS TIMESTAMPTZ))) ELSE epoch_us(CAST("trim"(CAST(word AS VARCHAR)) AS TIMESTAMP_US)) END
+  macro (word) CASE  WHEN (regexp_full_match("trim"(CAST(word AS VARCHAR)), '\d{4}-\d{2}-\d{2}')) THEN ((epoch_us((CAST("trim"(CAST(word AS VARCHAR)) AS DATE) + to_days(CAST(trunc(CAST(1 AS DOUBLE)) AS INTEGER)))) - 1)) WHEN (regexp_matches("trim"(CAST(word AS VARCHAR)), '\d{2}:\d{2}.*([Zz]|[+-]\d{2}(:?\d{2})?)$')) THEN (epoch_us(CAST(regexp_replace(upper("trim"(CAST(word AS VARCHAR))), '([ T]\d{2}:\d{2})([Z+-])', '\1:00\2') AS TIMESTAMPTZ))) ELSE epoch_us(CAST("trim"(CAST(word AS VARCHAR)) AS TIMESTAMP_US)) END
 base.observation
   CREATE TABLE base.observation(series_id INTEGER NOT NULL, observed_at TIMESTAMP NOT NULL, "value" DOUBLE NOT NULL, open DOUBLE, high DOUBLE, low DOUBLE, volume DOUBLE, intake_id INTEGER NOT NULL, take INTEGER NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
 base.observation_rows
@@ -31,9 +51,330 @@ base.run_at
 base.series
   CREATE TABLE base.series(series_id INTEGER NOT NULL, series VARCHAR NOT NULL, added_at TIMESTAMP WITH TIME ZONE NOT NULL, run_from INTEGER NOT NULL);
 base.series_rows
-  CREATE VIEW base.series_rows AS SELECT s.series, t.sign, t.unit, t.clock, t.periods_per_year, t.time_zone, t.same_time, t.stale_after_days, t.planned, s.added_at, t.run_from, t.run_to FROM base.setting AS t INNER JOIN base.series AS s ON ((s.series_id = t.series_id));
+  CREATE VIEW base.series_rows AS SELECT s.series, t.sign, t.unit, t.clock, t.periods_per_year, t.time_zone, t.same_time, t.stale_after_days, t.in_force, t.shift, t.planned, s.added_at, t.run_from, t.run_to FROM base.setting AS t INNER JOIN base.series AS s ON ((s.series_id = t.series_id));
 base.setting
-  CREATE TABLE base.setting(series_id INTEGER NOT NULL, sign VARCHAR NOT NULL, unit VARCHAR, clock VARCHAR NOT NULL, periods_per_year DOUBLE, time_zone VARCHAR NOT NULL, same_time VARCHAR NOT NULL, stale_after_days DOUBLE NOT NULL, planned BOOLEAN NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
+  CREATE TABLE base.setting(series_id INTEGER NOT NULL, sign VARCHAR NOT NULL, unit VARCHAR, clock VARCHAR NOT NULL, periods_per_year DOUBLE, time_zone VARCHAR NOT NULL, same_time VARCHAR NOT NULL, stale_after_days DOUBLE NOT NULL, in_force VARCHAR NOT NULL, shift DOUBLE NOT NULL, planned BOOLEAN NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
+main.abm
+  CREATE VIEW abm AS SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.abm_rows AS x WHERE (x.run_to IS NULL);
+  -- dX = mu dt + sigma dW: estimates in force, one row per fit
+main.abm.kurtosis
+  DOUBLE
+  -- Fourth moment of the standardised increments over the squared second: 3 for a Gaussian. [1]
+main.abm.loglik
+  DOUBLE
+  -- Log-likelihood of the observations after the first, given the first. [1]
+main.abm.lookback
+  INTEGER
+  -- steps in the window; 0: all
+main.abm.mu
+  DOUBLE
+  -- Drift: expected change per unit of time. [x/t]
+main.abm.mu_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of mu; empty: no end on this side. [x/t]
+main.abm.mu_se
+  DOUBLE
+  -- Standard error of mu. [x/t]
+main.abm.mu_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of mu; empty: no end on this side. [x/t]
+main.abm.n
+  INTEGER
+  -- steps used
+main.abm.revision
+  INTEGER
+  -- revision of the model that computed the row
+main.abm.run_id
+  INTEGER
+  -- run that wrote the row
+main.abm.series
+  VARCHAR
+  -- name of the series
+main.abm.sigma
+  DOUBLE
+  -- Volatility. [x/√t]
+main.abm.sigma_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of sigma; empty: no end on this side. [x/√t]
+main.abm.sigma_se
+  DOUBLE
+  -- Standard error of sigma. [x/√t]
+main.abm.sigma_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of sigma; empty: no end on this side. [x/√t]
+main.abm.status
+  VARCHAR
+  -- what became of the fit, in a word
+main.abm.window_end
+  TIMESTAMP
+  -- time of the window's last observation, UTC
+main.abm.window_start
+  TIMESTAMP
+  -- time of the window's first observation, UTC
+main.abm_as_of
+  macro (moment) WITH k AS (SELECT base.run_at(base.moment_us(moment)) AS run_id) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.abm_rows AS x WHERE ((x.run_from <= (SELECT k.run_id FROM k)) AND ((x.run_to IS NULL) OR (x.run_to > (SELECT k.run_id FROM k))))
+  -- the view abm as it was known at a moment: abm_as_of('2026-01-31')
+main.abm_at_run
+  macro (run) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.abm_rows AS x WHERE ((x.run_from <= run) AND ((x.run_to IS NULL) OR (x.run_to > run)))
+  -- the view abm as it was after a run: abm_at_run(41)
+main.estimate
+  CREATE VIEW estimate AS SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.estimate_rows AS x WHERE (x.run_to IS NULL);
+  -- all models: one row per parameter of a fit
+main.estimate.lookback
+  INTEGER
+  -- steps in the window; 0: all
+main.estimate.lower
+  DOUBLE
+  -- lower end of the 95 % interval; NULL with status ok or no_reversion: no end on this side
+main.estimate.model
+  VARCHAR
+  -- name of the model
+main.estimate.parameter
+  VARCHAR
+  -- name of the parameter
+main.estimate.run_id
+  INTEGER
+  -- run that wrote the row
+main.estimate.se
+  DOUBLE
+  -- standard error
+main.estimate.series
+  VARCHAR
+  -- name of the series
+main.estimate.status
+  VARCHAR
+  -- what became of the fit, in a word
+main.estimate.upper
+  DOUBLE
+  -- upper end of the 95 % interval; NULL with status ok or no_reversion: no end on this side
+main.estimate.value
+  DOUBLE
+  -- estimate, in the parameter's unit
+main.estimate.window_end
+  TIMESTAMP
+  -- time of the window's last observation, UTC
+main.estimate_as_of
+  macro (moment) WITH k AS (SELECT base.run_at(base.moment_us(moment)) AS run_id) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.estimate_rows AS x WHERE ((x.run_from <= (SELECT k.run_id FROM k)) AND ((x.run_to IS NULL) OR (x.run_to > (SELECT k.run_id FROM k))))
+  -- the view estimate as it was known at a moment: estimate_as_of('2026-01-31')
+main.estimate_at_run
+  macro (run) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.estimate_rows AS x WHERE ((x.run_from <= run) AND ((x.run_to IS NULL) OR (x.run_to > run)))
+  -- the view estimate as it was after a run: estimate_at_run(41)
+main.exp_ou
+  CREATE VIEW exp_ou AS SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.exp_ou_rows AS x WHERE (x.run_to IS NULL);
+  -- d ln X = kappa (theta - ln X) dt + sigma dW: estimates in force, one row per fit
+main.exp_ou.half_life
+  DOUBLE
+  -- Time in which a distance to theta halves, by kappa_median_unbiased; empty without evidence of a pull. [t]
+main.exp_ou.half_life_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of half_life; empty: no end on this side. [t]
+main.exp_ou.half_life_mle
+  DOUBLE
+  -- Half-life by kappa itself: too short on average. [t]
+main.exp_ou.half_life_unbounded
+  BOOLEAN
+  -- Whether the data leave the half-life without an upper end. [1]
+main.exp_ou.half_life_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of half_life; empty: no end on this side. [t]
+main.exp_ou.kappa
+  DOUBLE
+  -- Speed of the pull to theta; the likelihood's estimate, some 4/T too high on average. [1/t]
+main.exp_ou.kappa_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of kappa; empty: no end on this side. [1/t]
+main.exp_ou.kappa_median_unbiased
+  DOUBLE
+  -- Estimate of kappa that is too high as often as too low. [1/t]
+main.exp_ou.kappa_se
+  DOUBLE
+  -- Standard error of kappa. [1/t]
+main.exp_ou.kappa_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of kappa; empty: no end on this side. [1/t]
+main.exp_ou.kurtosis
+  DOUBLE
+  -- Fourth moment of the residuals over the squared second: 3 for a Gaussian. [1]
+main.exp_ou.loglik
+  DOUBLE
+  -- Log-likelihood of the observations after the first, given the first. [1]
+main.exp_ou.long_run_median
+  DOUBLE
+  -- Level that the value is pulled to: its median in the long run, of the value plus the series' shift. [x]
+main.exp_ou.lookback
+  INTEGER
+  -- steps in the window; 0: all
+main.exp_ou.n
+  INTEGER
+  -- steps used
+main.exp_ou.no_reversion_p
+  DOUBLE
+  -- One-sided p-value of no pull; below 0.05 speaks for a pull. [1]
+main.exp_ou.revision
+  INTEGER
+  -- revision of the model that computed the row
+main.exp_ou.run_id
+  INTEGER
+  -- run that wrote the row
+main.exp_ou.series
+  VARCHAR
+  -- name of the series
+main.exp_ou.sigma
+  DOUBLE
+  -- Volatility, as a share of the value. [1/√t]
+main.exp_ou.sigma_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of sigma; empty: no end on this side. [1/√t]
+main.exp_ou.sigma_se
+  DOUBLE
+  -- Standard error of sigma. [1/√t]
+main.exp_ou.sigma_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of sigma; empty: no end on this side. [1/√t]
+main.exp_ou.stationary_sd
+  DOUBLE
+  -- Standard deviation of the stationary law; empty where there is none, of the logarithm. [1]
+main.exp_ou.status
+  VARCHAR
+  -- what became of the fit, in a word
+main.exp_ou.theta
+  DOUBLE
+  -- Logarithm of the median in the long run. [1]
+main.exp_ou.theta_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of theta; empty: no end on this side. [1]
+main.exp_ou.theta_se
+  DOUBLE
+  -- Standard error of theta. [1]
+main.exp_ou.theta_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of theta; empty: no end on this side. [1]
+main.exp_ou.window_end
+  TIMESTAMP
+  -- time of the window's last observation, UTC
+main.exp_ou.window_start
+  TIMESTAMP
+  -- time of the window's first observation, UTC
+main.exp_ou_as_of
+  macro (moment) WITH k AS (SELECT base.run_at(base.moment_us(moment)) AS run_id) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.exp_ou_rows AS x WHERE ((x.run_from <= (SELECT k.run_id FROM k)) AND ((x.run_to IS NULL) OR (x.run_to > (SELECT k.run_id FROM k))))
+  -- the view exp_ou as it was known at a moment: exp_ou_as_of('2026-01-31')
+main.exp_ou_at_run
+  macro (run) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.exp_ou_rows AS x WHERE ((x.run_from <= run) AND ((x.run_to IS NULL) OR (x.run_to > run)))
+  -- the view exp_ou as it was after a run: exp_ou_at_run(41)
+main.fit
+  CREATE VIEW fit AS SELECT y.series, y.lookback, y.window_start, y.window_end, y.model, y.n, y.k, y.loglik, y.aic, y.bic, (y.ratio / sum(y.ratio) OVER (PARTITION BY y.series, y.lookback, y.window_end)) AS model_weight, y.models_compared, y.status, y.run_id FROM (SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id, CASE  WHEN ((x.status IN ('ok', 'no_reversion', 'at_bound'))) THEN (exp((-0.5 * (x.bic - min(CASE  WHEN ((x.status IN ('ok', 'no_reversion', 'at_bound'))) THEN (x.bic) ELSE NULL END) OVER (PARTITION BY x.series, x.lookback, x.window_end))))) ELSE NULL END AS ratio, count(CASE  WHEN ((x.status IN ('ok', 'no_reversion', 'at_bound'))) THEN (1) ELSE NULL END) OVER (PARTITION BY x.series, x.lookback, x.window_end) AS models_compared FROM base.fit_rows AS x WHERE (x.run_to IS NULL)) AS y;
+  -- all models: one row per fit, with what compares models
+main.fit.aic
+  DOUBLE
+  -- 2 k - 2 loglik [1]
+main.fit.bic
+  DOUBLE
+  -- k ln n - 2 loglik [1]
+main.fit.k
+  INTEGER
+  -- parameters of the model
+main.fit.loglik
+  DOUBLE
+  -- log-likelihood of the observations after the first, given the first [1]
+main.fit.lookback
+  INTEGER
+  -- steps in the window; 0: all
+main.fit.model
+  VARCHAR
+  -- name of the model
+main.fit.model_weight
+  DOUBLE
+  -- exp(-bic/2), normalised over the usable models of the window; describes fit, no probability [1]
+main.fit.models_compared
+  BIGINT
+  -- usable models of the window
+main.fit.n
+  INTEGER
+  -- steps used
+main.fit.run_id
+  INTEGER
+  -- run that wrote the row
+main.fit.series
+  VARCHAR
+  -- name of the series
+main.fit.status
+  VARCHAR
+  -- what became of the fit, in a word
+main.fit.window_end
+  TIMESTAMP
+  -- time of the window's last observation, UTC
+main.fit.window_start
+  TIMESTAMP
+  -- time of the window's first observation, UTC
+main.fit_as_of
+  macro (moment) WITH k AS (SELECT base.run_at(base.moment_us(moment)) AS run_id) SELECT y.series, y.lookback, y.window_start, y.window_end, y.model, y.n, y.k, y.loglik, y.aic, y.bic, (y.ratio / sum(y.ratio) OVER (PARTITION BY y.series, y.lookback, y.window_end)) AS model_weight, y.models_compared, y.status, y.run_id FROM (SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id, CASE  WHEN ((x.status IN ('ok', 'no_reversion', 'at_bound'))) THEN (exp((-0.5 * (x.bic - min(CASE  WHEN ((x.status IN ('ok', 'no_reversion', 'at_bound'))) THEN (x.bic) ELSE NULL END) OVER (PARTITION BY x.series, x.lookback, x.window_end))))) ELSE NULL END AS ratio, count(CASE  WHEN ((x.status IN ('ok', 'no_reversion', 'at_bound'))) THEN (1) ELSE NULL END) OVER (PARTITION BY x.series, x.lookback, x.window_end) AS models_compared FROM base.fit_rows AS x WHERE ((x.run_from <= (SELECT k.run_id FROM k)) AND ((x.run_to IS NULL) OR (x.run_to > (SELECT k.run_id FROM k))))) AS y
+  -- the view fit as it was known at a moment: fit_as_of('2026-01-31')
+main.fit_at_run
+  macro (run) SELECT y.series, y.lookback, y.window_start, y.window_end, y.model, y.n, y.k, y.loglik, y.aic, y.bic, (y.ratio / sum(y.ratio) OVER (PARTITION BY y.series, y.lookback, y.window_end)) AS model_weight, y.models_compared, y.status, y.run_id FROM (SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id, CASE  WHEN ((x.status IN ('ok', 'no_reversion', 'at_bound'))) THEN (exp((-0.5 * (x.bic - min(CASE  WHEN ((x.status IN ('ok', 'no_reversion', 'at_bound'))) THEN (x.bic) ELSE NULL END) OVER (PARTITION BY x.series, x.lookback, x.window_end))))) ELSE NULL END AS ratio, count(CASE  WHEN ((x.status IN ('ok', 'no_reversion', 'at_bound'))) THEN (1) ELSE NULL END) OVER (PARTITION BY x.series, x.lookback, x.window_end) AS models_compared FROM base.fit_rows AS x WHERE ((x.run_from <= run) AND ((x.run_to IS NULL) OR (x.run_to > run)))) AS y
+  -- the view fit as it was after a run: fit_at_run(41)
+main.gbm
+  CREATE VIEW gbm AS SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.gbm_rows AS x WHERE (x.run_to IS NULL);
+  -- dX = mu X dt + sigma X dW: estimates in force, one row per fit
+main.gbm.kurtosis
+  DOUBLE
+  -- Fourth moment of the standardised log-increments over the squared second: 3 for a Gaussian. [1]
+main.gbm.loglik
+  DOUBLE
+  -- Log-likelihood of the observations after the first, given the first. [1]
+main.gbm.lookback
+  INTEGER
+  -- steps in the window; 0: all
+main.gbm.mu
+  DOUBLE
+  -- Drift: expected change per unit of time, as a share of the value. [1/t]
+main.gbm.mu_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of mu; empty: no end on this side. [1/t]
+main.gbm.mu_se
+  DOUBLE
+  -- Standard error of mu. [1/t]
+main.gbm.mu_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of mu; empty: no end on this side. [1/t]
+main.gbm.n
+  INTEGER
+  -- steps used
+main.gbm.revision
+  INTEGER
+  -- revision of the model that computed the row
+main.gbm.run_id
+  INTEGER
+  -- run that wrote the row
+main.gbm.series
+  VARCHAR
+  -- name of the series
+main.gbm.sigma
+  DOUBLE
+  -- Volatility, as a share of the value. [1/√t]
+main.gbm.sigma_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of sigma; empty: no end on this side. [1/√t]
+main.gbm.sigma_se
+  DOUBLE
+  -- Standard error of sigma. [1/√t]
+main.gbm.sigma_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of sigma; empty: no end on this side. [1/√t]
+main.gbm.status
+  VARCHAR
+  -- what became of the fit, in a word
+main.gbm.window_end
+  TIMESTAMP
+  -- time of the window's last observation, UTC
+main.gbm.window_start
+  TIMESTAMP
+  -- time of the window's first observation, UTC
+main.gbm_as_of
+  macro (moment) WITH k AS (SELECT base.run_at(base.moment_us(moment)) AS run_id) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.gbm_rows AS x WHERE ((x.run_from <= (SELECT k.run_id FROM k)) AND ((x.run_to IS NULL) OR (x.run_to > (SELECT k.run_id FROM k))))
+  -- the view gbm as it was known at a moment: gbm_as_of('2026-01-31')
+main.gbm_at_run
+  macro (run) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.gbm_rows AS x WHERE ((x.run_from <= run) AND ((x.run_to IS NULL) OR (x.run_to > run)))
+  -- the view gbm as it was after a run: gbm_at_run(41)
 main.intake
   CREATE VIEW intake AS SELECT i.intake_id, i.run_from AS run_id, i."source", i.sha256, i.received_at, i.rows_read, i.rows_new, i.rows_revised, i.rows_same, i.rows_refused FROM base.intake AS i;
   -- batches of incoming rows; every row is counted once: read = new + revised + same + refused
@@ -67,6 +408,93 @@ main.intake.sha256
 main.intake.source
   VARCHAR
   -- name of the file or frame
+main.latest
+  CREATE VIEW latest AS SELECT s.series, t.unit, l.observed_at, l."value", ((epoch_us(now()) - epoch_us(l.observed_at)) > (t.stale_after_days * 86400000000)) AS stale, l.lookback, l.window_end, l.model, l.model_weight, l.volatility, l.volatility_lower, l.volatility_upper, l.volatility_unit, CAST(NULL AS DOUBLE) AS realised_volatility, l.drift, l.half_life_days, l.half_life_days_lower, l.half_life_days_upper, l.half_life_unbounded, l.can_reach_zero, CAST(NULL AS BIGINT) AS wells, CAST(NULL AS DOUBLE) AS mean_exit_time_days, CAST(NULL AS VARCHAR) AS backtest_zone, CAST(NULL AS BIGINT) AS alarms, l.note, l.run_from AS run_id FROM base.latest AS l INNER JOIN base.series AS s ON ((s.series_id = l.series_id)) INNER JOIN base.setting AS t ON (((t.series_id = l.series_id) AND (t.run_to IS NULL))) WHERE (l.run_to IS NULL);
+  -- what the book says of each series now, by the model in force
+main.latest.alarms
+  BIGINT
+  -- not raised yet
+main.latest.backtest_zone
+  VARCHAR
+  -- not estimated yet
+main.latest.can_reach_zero
+  BOOLEAN
+  -- whether the series can reach zero under the model in force; NULL: not told, or not a series of prices
+main.latest.drift
+  DOUBLE
+  -- expected change at the latest value: a fraction of it for positive series, else in units, per year or second
+main.latest.half_life_days
+  DOUBLE
+  -- time in which a distance to the mean halves, by the model in force or the heaviest with a pull [calendar days]
+main.latest.half_life_days_lower
+  DOUBLE
+  -- lower end of its 95 % interval; NULL: no end on this side [calendar days]
+main.latest.half_life_days_upper
+  DOUBLE
+  -- upper end of its 95 % interval; NULL: no end on this side [calendar days]
+main.latest.half_life_unbounded
+  BOOLEAN
+  -- whether the data leave the half-life without an upper end
+main.latest.lookback
+  INTEGER
+  -- steps in the window that is spoken of; 0: all
+main.latest.mean_exit_time_days
+  DOUBLE
+  -- not estimated yet
+main.latest.model
+  VARCHAR
+  -- model in force
+main.latest.model_weight
+  DOUBLE
+  -- its weight among the usable models of the window [1]
+main.latest.note
+  VARCHAR
+  -- what needs a look, in words; empty: nothing
+main.latest.observed_at
+  TIMESTAMP
+  -- time of the latest observation, UTC
+main.latest.realised_volatility
+  DOUBLE
+  -- not estimated yet
+main.latest.run_id
+  INTEGER
+  -- run that wrote the row
+main.latest.series
+  VARCHAR
+  -- name of the series
+main.latest.stale
+  BOOLEAN
+  -- whether it is older than stale_after_days, judged when read
+main.latest.unit
+  VARCHAR
+  -- unit of the values
+main.latest.value
+  DOUBLE
+  -- its value, in the unit of the series
+main.latest.volatility
+  DOUBLE
+  -- total volatility at the latest value, in volatility_unit
+main.latest.volatility_lower
+  DOUBLE
+  -- lower end of its 95 % interval; NULL: no end on this side
+main.latest.volatility_unit
+  VARCHAR
+  -- unit of volatility: 1/√year is a fraction of the value per square root of a year
+main.latest.volatility_upper
+  DOUBLE
+  -- upper end of its 95 % interval; NULL: no end on this side
+main.latest.wells
+  BIGINT
+  -- not estimated yet
+main.latest.window_end
+  TIMESTAMP
+  -- last observation of that window, UTC
+main.latest_as_of
+  macro (moment) WITH k AS (SELECT base.run_at(base.moment_us(moment)) AS run_id) SELECT s.series, t.unit, l.observed_at, l."value", ((base.moment_us(moment) - epoch_us(l.observed_at)) > (t.stale_after_days * 86400000000)) AS stale, l.lookback, l.window_end, l.model, l.model_weight, l.volatility, l.volatility_lower, l.volatility_upper, l.volatility_unit, CAST(NULL AS DOUBLE) AS realised_volatility, l.drift, l.half_life_days, l.half_life_days_lower, l.half_life_days_upper, l.half_life_unbounded, l.can_reach_zero, CAST(NULL AS BIGINT) AS wells, CAST(NULL AS DOUBLE) AS mean_exit_time_days, CAST(NULL AS VARCHAR) AS backtest_zone, CAST(NULL AS BIGINT) AS alarms, l.note, l.run_from AS run_id FROM base.latest AS l INNER JOIN base.series AS s ON ((s.series_id = l.series_id)) INNER JOIN base.setting AS t ON (((t.series_id = l.series_id) AND (t.run_from <= (SELECT k.run_id FROM k)) AND ((t.run_to IS NULL) OR (t.run_to > (SELECT k.run_id FROM k))))) WHERE ((l.run_from <= (SELECT k.run_id FROM k)) AND ((l.run_to IS NULL) OR (l.run_to > (SELECT k.run_id FROM k))))
+  -- the view latest as it was known at a moment: latest_as_of('2026-01-31')
+main.latest_at_run
+  macro (run) SELECT s.series, t.unit, l.observed_at, l."value", (((SELECT epoch_us(r.moment) FROM base.run AS r WHERE (r.run_id = run)) - epoch_us(l.observed_at)) > (t.stale_after_days * 86400000000)) AS stale, l.lookback, l.window_end, l.model, l.model_weight, l.volatility, l.volatility_lower, l.volatility_upper, l.volatility_unit, CAST(NULL AS DOUBLE) AS realised_volatility, l.drift, l.half_life_days, l.half_life_days_lower, l.half_life_days_upper, l.half_life_unbounded, l.can_reach_zero, CAST(NULL AS BIGINT) AS wells, CAST(NULL AS DOUBLE) AS mean_exit_time_days, CAST(NULL AS VARCHAR) AS backtest_zone, CAST(NULL AS BIGINT) AS alarms, l.note, l.run_from AS run_id FROM base.latest AS l INNER JOIN base.series AS s ON ((s.series_id = l.series_id)) INNER JOIN base.setting AS t ON (((t.series_id = l.series_id) AND (t.run_from <= run) AND ((t.run_to IS NULL) OR (t.run_to > run)))) WHERE ((l.run_from <= run) AND ((l.run_to IS NULL) OR (l.run_to > run)))
+  -- the view latest as it was after a run: latest_at_run(41)
 main.observation
   CREATE VIEW observation AS SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.observation_rows AS x WHERE (x.run_to IS NULL);
   -- the value in force of every observation
@@ -297,7 +725,10 @@ main.series.added_at
   -- when the series was added
 main.series.clock
   VARCHAR
-  -- how time between observations is counted: trading
+  -- how time between observations is counted: trading, act365 or seconds
+main.series.in_force
+  VARCHAR
+  -- best, or the model that is always in force
 main.series.periods_per_year
   DOUBLE
   -- steps in a year under the clock trading
@@ -313,6 +744,9 @@ main.series.same_time
 main.series.series
   VARCHAR
   -- name of the series
+main.series.shift
+  DOUBLE
+  -- what models for X > 0 add to the values, in the unit of the series
 main.series.sign
   VARCHAR
   -- positive: prices that models for X > 0 may be fitted to; any: others
@@ -331,6 +765,435 @@ main.series_as_of
 main.series_at_run
   macro (run) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.series_rows AS x WHERE ((x.run_from <= run) AND ((x.run_to IS NULL) OR (x.run_to > run)))
   -- the view series as it was after a run: series_at_run(41)
+main.versions_of
+  macro (name, model, lookback, window_end) SELECT v.* FROM versions.estimate AS v WHERE ((v.series = "name") AND (v.model = model) AND (v.lookback = lookback) AND (v.window_end = CAST(window_end AS TIMESTAMP_US))) ORDER BY v.parameter, v.run_from
+  -- every version of one window's estimates: versions_of('pellets_fob', 'ou', 250, '2026-06-29')
+versions.abm
+  CREATE VIEW versions.abm AS SELECT x.*, f.moment AS in_force_from, t.moment AS in_force_to FROM base.abm_rows AS x INNER JOIN base.run AS f ON ((f.run_id = x.run_from)) LEFT JOIN base.run AS t ON ((t.run_id = x.run_to));
+  -- dX = mu dt + sigma dW: every version of every estimate
+versions.abm.in_force_from
+  TIMESTAMP WITH TIME ZONE
+  -- moment of run_from
+versions.abm.in_force_to
+  TIMESTAMP WITH TIME ZONE
+  -- moment of run_to
+versions.abm.kurtosis
+  DOUBLE
+  -- Fourth moment of the standardised increments over the squared second: 3 for a Gaussian. [1]
+versions.abm.loglik
+  DOUBLE
+  -- Log-likelihood of the observations after the first, given the first. [1]
+versions.abm.lookback
+  INTEGER
+  -- steps in the window; 0: all
+versions.abm.mu
+  DOUBLE
+  -- Drift: expected change per unit of time. [x/t]
+versions.abm.mu_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of mu; empty: no end on this side. [x/t]
+versions.abm.mu_se
+  DOUBLE
+  -- Standard error of mu. [x/t]
+versions.abm.mu_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of mu; empty: no end on this side. [x/t]
+versions.abm.n
+  INTEGER
+  -- steps used
+versions.abm.revision
+  INTEGER
+  -- revision of the model that computed the row
+versions.abm.run_from
+  INTEGER
+  -- run from which the row is in force
+versions.abm.run_to
+  INTEGER
+  -- run from which it is no longer in force; NULL: still in force
+versions.abm.series
+  VARCHAR
+  -- name of the series
+versions.abm.sigma
+  DOUBLE
+  -- Volatility. [x/√t]
+versions.abm.sigma_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of sigma; empty: no end on this side. [x/√t]
+versions.abm.sigma_se
+  DOUBLE
+  -- Standard error of sigma. [x/√t]
+versions.abm.sigma_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of sigma; empty: no end on this side. [x/√t]
+versions.abm.status
+  VARCHAR
+  -- what became of the fit, in a word
+versions.abm.window_end
+  TIMESTAMP
+  -- time of the window's last observation, UTC
+versions.abm.window_start
+  TIMESTAMP
+  -- time of the window's first observation, UTC
+versions.estimate
+  CREATE VIEW versions.estimate AS SELECT x.*, f.moment AS in_force_from, t.moment AS in_force_to FROM base.estimate_rows AS x INNER JOIN base.run AS f ON ((f.run_id = x.run_from)) LEFT JOIN base.run AS t ON ((t.run_id = x.run_to));
+  -- every version of estimate
+versions.estimate.in_force_from
+  TIMESTAMP WITH TIME ZONE
+  -- moment of run_from
+versions.estimate.in_force_to
+  TIMESTAMP WITH TIME ZONE
+  -- moment of run_to
+versions.estimate.lookback
+  INTEGER
+  -- steps in the window; 0: all
+versions.estimate.lower
+  DOUBLE
+  -- lower end of the 95 % interval; NULL with status ok or no_reversion: no end on this side
+versions.estimate.model
+  VARCHAR
+  -- name of the model
+versions.estimate.parameter
+  VARCHAR
+  -- name of the parameter
+versions.estimate.run_from
+  INTEGER
+  -- run from which the row is in force
+versions.estimate.run_to
+  INTEGER
+  -- run from which it is no longer in force; NULL: still in force
+versions.estimate.se
+  DOUBLE
+  -- standard error
+versions.estimate.series
+  VARCHAR
+  -- name of the series
+versions.estimate.status
+  VARCHAR
+  -- what became of the fit, in a word
+versions.estimate.upper
+  DOUBLE
+  -- upper end of the 95 % interval; NULL with status ok or no_reversion: no end on this side
+versions.estimate.value
+  DOUBLE
+  -- estimate, in the parameter's unit
+versions.estimate.window_end
+  TIMESTAMP
+  -- time of the window's last observation, UTC
+versions.exp_ou
+  CREATE VIEW versions.exp_ou AS SELECT x.*, f.moment AS in_force_from, t.moment AS in_force_to FROM base.exp_ou_rows AS x INNER JOIN base.run AS f ON ((f.run_id = x.run_from)) LEFT JOIN base.run AS t ON ((t.run_id = x.run_to));
+  -- d ln X = kappa (theta - ln X) dt + sigma dW: every version of every estimate
+versions.exp_ou.half_life
+  DOUBLE
+  -- Time in which a distance to theta halves, by kappa_median_unbiased; empty without evidence of a pull. [t]
+versions.exp_ou.half_life_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of half_life; empty: no end on this side. [t]
+versions.exp_ou.half_life_mle
+  DOUBLE
+  -- Half-life by kappa itself: too short on average. [t]
+versions.exp_ou.half_life_unbounded
+  BOOLEAN
+  -- Whether the data leave the half-life without an upper end. [1]
+versions.exp_ou.half_life_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of half_life; empty: no end on this side. [t]
+versions.exp_ou.in_force_from
+  TIMESTAMP WITH TIME ZONE
+  -- moment of run_from
+versions.exp_ou.in_force_to
+  TIMESTAMP WITH TIME ZONE
+  -- moment of run_to
+versions.exp_ou.kappa
+  DOUBLE
+  -- Speed of the pull to theta; the likelihood's estimate, some 4/T too high on average. [1/t]
+versions.exp_ou.kappa_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of kappa; empty: no end on this side. [1/t]
+versions.exp_ou.kappa_median_unbiased
+  DOUBLE
+  -- Estimate of kappa that is too high as often as too low. [1/t]
+versions.exp_ou.kappa_se
+  DOUBLE
+  -- Standard error of kappa. [1/t]
+versions.exp_ou.kappa_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of kappa; empty: no end on this side. [1/t]
+versions.exp_ou.kurtosis
+  DOUBLE
+  -- Fourth moment of the residuals over the squared second: 3 for a Gaussian. [1]
+versions.exp_ou.loglik
+  DOUBLE
+  -- Log-likelihood of the observations after the first, given the first. [1]
+versions.exp_ou.long_run_median
+  DOUBLE
+  -- Level that the value is pulled to: its median in the long run, of the value plus the series' shift. [x]
+versions.exp_ou.lookback
+  INTEGER
+  -- steps in the window; 0: all
+versions.exp_ou.n
+  INTEGER
+  -- steps used
+versions.exp_ou.no_reversion_p
+  DOUBLE
+  -- One-sided p-value of no pull; below 0.05 speaks for a pull. [1]
+versions.exp_ou.revision
+  INTEGER
+  -- revision of the model that computed the row
+versions.exp_ou.run_from
+  INTEGER
+  -- run from which the row is in force
+versions.exp_ou.run_to
+  INTEGER
+  -- run from which it is no longer in force; NULL: still in force
+versions.exp_ou.series
+  VARCHAR
+  -- name of the series
+versions.exp_ou.sigma
+  DOUBLE
+  -- Volatility, as a share of the value. [1/√t]
+versions.exp_ou.sigma_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of sigma; empty: no end on this side. [1/√t]
+versions.exp_ou.sigma_se
+  DOUBLE
+  -- Standard error of sigma. [1/√t]
+versions.exp_ou.sigma_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of sigma; empty: no end on this side. [1/√t]
+versions.exp_ou.stationary_sd
+  DOUBLE
+  -- Standard deviation of the stationary law; empty where there is none, of the logarithm. [1]
+versions.exp_ou.status
+  VARCHAR
+  -- what became of the fit, in a word
+versions.exp_ou.theta
+  DOUBLE
+  -- Logarithm of the median in the long run. [1]
+versions.exp_ou.theta_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of theta; empty: no end on this side. [1]
+versions.exp_ou.theta_se
+  DOUBLE
+  -- Standard error of theta. [1]
+versions.exp_ou.theta_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of theta; empty: no end on this side. [1]
+versions.exp_ou.window_end
+  TIMESTAMP
+  -- time of the window's last observation, UTC
+versions.exp_ou.window_start
+  TIMESTAMP
+  -- time of the window's first observation, UTC
+versions.fit
+  CREATE VIEW versions.fit AS SELECT x.series, x.lookback, x.window_start, x.window_end, x.model, x.n, x.k, x.loglik, x.aic, x.bic, CASE  WHEN ((x.status IN ('ok', 'no_reversion', 'at_bound'))) THEN ((1 / (SELECT sum(exp((-0.5 * (p.bic - x.bic)))) FROM base.fit_rows AS p WHERE ((p.series = x.series) AND (p.lookback = x.lookback) AND (p.window_end = x.window_end) AND (p.run_from <= x.run_from) AND ((p.run_to IS NULL) OR (p.run_to > x.run_from) OR (p.run_from = x.run_from)) AND (p.status IN ('ok', 'no_reversion', 'at_bound')))))) ELSE NULL END AS model_weight, (SELECT count_star() FROM base.fit_rows AS p WHERE ((p.series = x.series) AND (p.lookback = x.lookback) AND (p.window_end = x.window_end) AND (p.run_from <= x.run_from) AND ((p.run_to IS NULL) OR (p.run_to > x.run_from) OR (p.run_from = x.run_from)) AND (p.status IN ('ok', 'no_reversion', 'at_bound')))) AS models_compared, x.status, x.run_from, x.run_to, f.moment AS in_force_from, t.moment AS in_force_to FROM base.fit_rows AS x INNER JOIN base.run AS f ON ((f.run_id = x.run_from)) LEFT JOIN base.run AS t ON ((t.run_id = x.run_to));
+  -- every version of fit
+versions.fit.aic
+  DOUBLE
+  -- 2 k - 2 loglik [1]
+versions.fit.bic
+  DOUBLE
+  -- k ln n - 2 loglik [1]
+versions.fit.in_force_from
+  TIMESTAMP WITH TIME ZONE
+  -- moment of run_from
+versions.fit.in_force_to
+  TIMESTAMP WITH TIME ZONE
+  -- moment of run_to
+versions.fit.k
+  INTEGER
+  -- parameters of the model
+versions.fit.loglik
+  DOUBLE
+  -- log-likelihood of the observations after the first, given the first [1]
+versions.fit.lookback
+  INTEGER
+  -- steps in the window; 0: all
+versions.fit.model
+  VARCHAR
+  -- name of the model
+versions.fit.model_weight
+  DOUBLE
+  -- exp(-bic/2), normalised over the usable models of the window; describes fit, no probability [1]
+versions.fit.models_compared
+  BIGINT
+  -- usable models of the window
+versions.fit.n
+  INTEGER
+  -- steps used
+versions.fit.run_from
+  INTEGER
+  -- run from which the row is in force
+versions.fit.run_to
+  INTEGER
+  -- run from which it is no longer in force; NULL: still in force
+versions.fit.series
+  VARCHAR
+  -- name of the series
+versions.fit.status
+  VARCHAR
+  -- what became of the fit, in a word
+versions.fit.window_end
+  TIMESTAMP
+  -- time of the window's last observation, UTC
+versions.fit.window_start
+  TIMESTAMP
+  -- time of the window's first observation, UTC
+versions.gbm
+  CREATE VIEW versions.gbm AS SELECT x.*, f.moment AS in_force_from, t.moment AS in_force_to FROM base.gbm_rows AS x INNER JOIN base.run AS f ON ((f.run_id = x.run_from)) LEFT JOIN base.run AS t ON ((t.run_id = x.run_to));
+  -- dX = mu X dt + sigma X dW: every version of every estimate
+versions.gbm.in_force_from
+  TIMESTAMP WITH TIME ZONE
+  -- moment of run_from
+versions.gbm.in_force_to
+  TIMESTAMP WITH TIME ZONE
+  -- moment of run_to
+versions.gbm.kurtosis
+  DOUBLE
+  -- Fourth moment of the standardised log-increments over the squared second: 3 for a Gaussian. [1]
+versions.gbm.loglik
+  DOUBLE
+  -- Log-likelihood of the observations after the first, given the first. [1]
+versions.gbm.lookback
+  INTEGER
+  -- steps in the window; 0: all
+versions.gbm.mu
+  DOUBLE
+  -- Drift: expected change per unit of time, as a share of the value. [1/t]
+versions.gbm.mu_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of mu; empty: no end on this side. [1/t]
+versions.gbm.mu_se
+  DOUBLE
+  -- Standard error of mu. [1/t]
+versions.gbm.mu_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of mu; empty: no end on this side. [1/t]
+versions.gbm.n
+  INTEGER
+  -- steps used
+versions.gbm.revision
+  INTEGER
+  -- revision of the model that computed the row
+versions.gbm.run_from
+  INTEGER
+  -- run from which the row is in force
+versions.gbm.run_to
+  INTEGER
+  -- run from which it is no longer in force; NULL: still in force
+versions.gbm.series
+  VARCHAR
+  -- name of the series
+versions.gbm.sigma
+  DOUBLE
+  -- Volatility, as a share of the value. [1/√t]
+versions.gbm.sigma_lower
+  DOUBLE
+  -- Lower end of the 95 % interval of sigma; empty: no end on this side. [1/√t]
+versions.gbm.sigma_se
+  DOUBLE
+  -- Standard error of sigma. [1/√t]
+versions.gbm.sigma_upper
+  DOUBLE
+  -- Upper end of the 95 % interval of sigma; empty: no end on this side. [1/√t]
+versions.gbm.status
+  VARCHAR
+  -- what became of the fit, in a word
+versions.gbm.window_end
+  TIMESTAMP
+  -- time of the window's last observation, UTC
+versions.gbm.window_start
+  TIMESTAMP
+  -- time of the window's first observation, UTC
+versions.latest
+  CREATE VIEW versions.latest AS SELECT s.series, t.unit, l.observed_at, l."value", ((epoch_us(f.moment) - epoch_us(l.observed_at)) > (t.stale_after_days * 86400000000)) AS stale, l.lookback, l.window_end, l.model, l.model_weight, l.volatility, l.volatility_lower, l.volatility_upper, l.volatility_unit, CAST(NULL AS DOUBLE) AS realised_volatility, l.drift, l.half_life_days, l.half_life_days_lower, l.half_life_days_upper, l.half_life_unbounded, l.can_reach_zero, CAST(NULL AS BIGINT) AS wells, CAST(NULL AS DOUBLE) AS mean_exit_time_days, CAST(NULL AS VARCHAR) AS backtest_zone, CAST(NULL AS BIGINT) AS alarms, l.note, l.run_from, l.run_to, f.moment AS in_force_from, u.moment AS in_force_to FROM base.latest AS l INNER JOIN base.series AS s ON ((s.series_id = l.series_id)) INNER JOIN base.setting AS t ON (((t.series_id = l.series_id) AND (t.run_from <= l.run_from) AND ((t.run_to IS NULL) OR (t.run_to > l.run_from)))) INNER JOIN base.run AS f ON ((f.run_id = l.run_from)) LEFT JOIN base.run AS u ON ((u.run_id = l.run_to));
+  -- every version of latest; stale as it was when the version came
+versions.latest.alarms
+  BIGINT
+  -- not raised yet
+versions.latest.backtest_zone
+  VARCHAR
+  -- not estimated yet
+versions.latest.can_reach_zero
+  BOOLEAN
+  -- whether the series can reach zero under the model in force; NULL: not told, or not a series of prices
+versions.latest.drift
+  DOUBLE
+  -- expected change at the latest value: a fraction of it for positive series, else in units, per year or second
+versions.latest.half_life_days
+  DOUBLE
+  -- time in which a distance to the mean halves, by the model in force or the heaviest with a pull [calendar days]
+versions.latest.half_life_days_lower
+  DOUBLE
+  -- lower end of its 95 % interval; NULL: no end on this side [calendar days]
+versions.latest.half_life_days_upper
+  DOUBLE
+  -- upper end of its 95 % interval; NULL: no end on this side [calendar days]
+versions.latest.half_life_unbounded
+  BOOLEAN
+  -- whether the data leave the half-life without an upper end
+versions.latest.in_force_from
+  TIMESTAMP WITH TIME ZONE
+  -- moment of run_from
+versions.latest.in_force_to
+  TIMESTAMP WITH TIME ZONE
+  -- moment of run_to
+versions.latest.lookback
+  INTEGER
+  -- steps in the window that is spoken of; 0: all
+versions.latest.mean_exit_time_days
+  DOUBLE
+  -- not estimated yet
+versions.latest.model
+  VARCHAR
+  -- model in force
+versions.latest.model_weight
+  DOUBLE
+  -- its weight among the usable models of the window [1]
+versions.latest.note
+  VARCHAR
+  -- what needs a look, in words; empty: nothing
+versions.latest.observed_at
+  TIMESTAMP
+  -- time of the latest observation, UTC
+versions.latest.realised_volatility
+  DOUBLE
+  -- not estimated yet
+versions.latest.run_from
+  INTEGER
+  -- run from which the row is in force
+versions.latest.run_to
+  INTEGER
+  -- run from which it is no longer in force; NULL: still in force
+versions.latest.series
+  VARCHAR
+  -- name of the series
+versions.latest.stale
+  BOOLEAN
+  -- whether it is older than stale_after_days, judged when read
+versions.latest.unit
+  VARCHAR
+  -- unit of the values
+versions.latest.value
+  DOUBLE
+  -- its value, in the unit of the series
+versions.latest.volatility
+  DOUBLE
+  -- total volatility at the latest value, in volatility_unit
+versions.latest.volatility_lower
+  DOUBLE
+  -- lower end of its 95 % interval; NULL: no end on this side
+versions.latest.volatility_unit
+  VARCHAR
+  -- unit of volatility: 1/√year is a fraction of the value per square root of a year
+versions.latest.volatility_upper
+  DOUBLE
+  -- upper end of its 95 % interval; NULL: no end on this side
+versions.latest.wells
+  BIGINT
+  -- not estimated yet
+versions.latest.window_end
+  TIMESTAMP
+  -- last observation of that window, UTC
 versions.observation
   CREATE VIEW versions.observation AS SELECT x.*, f.moment AS in_force_from, t.moment AS in_force_to FROM base.observation_rows AS x INNER JOIN base.run AS f ON ((f.run_id = x.run_from)) LEFT JOIN base.run AS t ON ((t.run_id = x.run_to));
   -- every version of observation
@@ -531,7 +1394,10 @@ versions.series.added_at
   -- when the series was added
 versions.series.clock
   VARCHAR
-  -- how time between observations is counted: trading
+  -- how time between observations is counted: trading, act365 or seconds
+versions.series.in_force
+  VARCHAR
+  -- best, or the model that is always in force
 versions.series.in_force_from
   TIMESTAMP WITH TIME ZONE
   -- moment of run_from
@@ -556,6 +1422,9 @@ versions.series.same_time
 versions.series.series
   VARCHAR
   -- name of the series
+versions.series.shift
+  DOUBLE
+  -- what models for X > 0 add to the values, in the unit of the series
 versions.series.sign
   VARCHAR
   -- positive: prices that models for X > 0 may be fitted to; any: others

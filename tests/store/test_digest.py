@@ -10,6 +10,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from driftbook.estimators import MODELS
 from driftbook.store import digest
 from driftbook.store.digest import leaves, row_bytes
 from driftbook.store.migrate import newest
@@ -26,7 +27,9 @@ KEYS = {
     "refused_row": ["intake_id", "line", "cell", "run_from", "reason"],
     "plan": ["run_from", "plan_sha256"],
     "model_revision": ["model", "run_from"],
-    "ou": ["series_id", "lookback", "window_end", "run_from"],
+    "alias": ["name", "run_from", "series_id"],
+    "latest": ["series_id", "run_from"],
+    **dict.fromkeys(MODELS, ["series_id", "lookback", "window_end", "run_from"]),
 }
 WITHOUT_SERIES = {"intake", "refused_row", "plan", "model_revision"}
 NEVER_CLOSED = {"series", "intake"}

@@ -1,5 +1,7 @@
 """What is due, against brute force: a window is due if and only if its observations changed or it is new."""
 
+from datetime import date, timedelta
+
 import numpy as np
 import pytest
 from hypothesis import given, settings
@@ -26,7 +28,8 @@ def windows(state, lookback):
 def ask(before, after, lookback, *, whole=False, touched=()):
     changed = {time for time in before.keys() | after.keys() if before.get(time) != after.get(time)} | set(touched)
     times = np.array(sorted(after), np.int64)
-    return due(Asked(3, lookback, 0.25, whole), times, np.array(sorted(changed), np.int64))
+    asked = Asked(3, lookback, "observation", whole)
+    return due(asked, times, np.array(sorted(changed), np.int64), np.zeros(0, np.int64))
 
 
 def computed_ends(slices, after, lookback):
@@ -150,7 +153,55 @@ def test_when_all_observations_are_withdrawn_all_estimates_are_closed(lookback):
     assert all(in_a_span(end, spans) for end in range(6))
 
 
-def test_slices_and_spans_carry_the_series_the_lookback_and_the_step():
+def test_slices_and_spans_carry_the_series_and_the_lookback():
     slices, spans = ask({}, dict.fromkeys(range(6), 1), 2)
-    assert [(one.series_id, one.lookback, one.step) for one in slices] == [(3, 2, 0.25)]
+    assert [(one.series_id, one.lookback, one.steps) for one in slices] == [(3, 2, 2)]
     assert {(one.series_id, one.lookback) for one in spans} == {(3, 2)}
+
+
+def period_of(time, every):
+    """Times of these tests are days since 1 January 1970, a Thursday."""
+    day = date(1970, 1, 1) + timedelta(days=time)
+    return {"day": day, "week": day.isocalendar()[:2], "month": (day.year, day.month)}[every]
+
+
+def thinned(state, lookback, every):
+    """The windows of a state that end at the last observation of a period."""
+    times = sorted(state)
+    last = {period_of(time, every): time for time in times}
+    return {end: window for end, window in windows(state, lookback).items() if end in last.values()}
+
+
+def thinned_ends(slices, after, lookback):
+    times = sorted(after)
+    if len(times) <= lookback:
+        return [times[-1]] if slices else []
+    return sorted(times[end] for one in slices for end in one.ends)
+
+
+EVERY = st.sampled_from(["day", "week", "month"])
+
+
+@thorough
+@given(states, states, LOOKBACKS, EVERY)
+def test_with_periods_only_the_last_observation_of_each_ends_a_window(before, after, lookback, every):
+    """Nothing that changed is missed, and what is no longer the end of its period is closed."""
+    changed = sorted({time for time in before.keys() | after.keys() if before.get(time) != after.get(time)})
+    times = np.array(sorted(after), np.int64)
+    slices, spans = due(Asked(3, lookback, every, whole=False), times, np.array(changed, np.int64), times)
+    new, old = thinned(after, lookback, every), thinned(before, lookback, every)
+    computed = thinned_ends(slices, after, lookback)
+    assert set(computed) >= {end for end, window in new.items() if old.get(end) != window}
+    assert set(computed) <= set(new)
+    assert len(computed) == len(set(computed))
+    closed = {end for end in old if in_a_span(end, spans) and end not in computed}
+    assert closed == old.keys() - new.keys()
+
+
+@pytest.mark.parametrize(("size", "steps"), [(1, 5), (3, 5), (6, 5), (40, 39)])
+def test_all_steps_make_one_window_that_ends_at_the_latest_observation(size, steps):
+    """A series of fewer than five steps asks for five, and is told that it is too short."""
+    times = np.arange(size, dtype=np.int64)
+    slices, spans = due(Asked(3, 0, "observation", whole=False), times, times[-1:], times)
+    assert [(one.steps, one.start, one.first, one.stop, one.windows) for one in slices] == [(steps, 0, 0, size - 1, 1)]
+    assert all(in_a_span(end, spans) for end in range(-5, size + 5))

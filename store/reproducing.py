@@ -15,10 +15,10 @@ import numpy as np
 
 from driftbook.estimators import MODELS
 from driftbook.store import functions
-from driftbook.store.connect import attached
 from driftbook.store.due import OBSERVATION, Asked, Slice, slice_of, slice_table
 from driftbook.store.errors import UsageError
 from driftbook.store.estimates import EstimateTable
+from driftbook.store.reader import attached
 from driftbook.store.series import Series, Setting
 from driftbook.store.sql import only_row, query
 from driftbook.store.work import needed, shifts, split
@@ -145,5 +145,3 @@ def _compare(con: duckdb.DuckDBPyConnection, table: EstimateTable, run_id: int, 
                 Deviation(series, name, lookback, str(end), column, stored, again, apart)
                 for series, lookback, end, stored, again, apart in rows
             ]
-
-

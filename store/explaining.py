@@ -11,9 +11,9 @@ from pathlib import Path
 import duckdb
 
 from driftbook.estimators import MODELS
-from driftbook.store.connect import connect
 from driftbook.store.errors import UsageError
 from driftbook.store.moments import parse_moment
+from driftbook.store.reader import connect
 from driftbook.store.series import near_name
 from driftbook.store.sql import first_row, query
 
@@ -73,7 +73,7 @@ def explain(
     with connect(Path(book)) as con:
         _check_series(con, series)
         chosen_model, chosen_lookback = _chosen(con, series, model, lookback)
-        runs = [run for (run,) in con.execute(query("runs_of"), _values(series, chosen_model, chosen_lookback)).fetchall()]
+        runs = _runs_of(con, series, chosen_model, chosen_lookback)
         if not runs:
             raise UsageError(f"there is no estimate of {chosen_model} on {series!r} with that lookback.")
         last = _run_at(con, later) if later else runs[-1]
@@ -95,8 +95,9 @@ def explain(
         )
 
 
-def _values(series: str, model: str, lookback: int) -> dict[str, object]:
-    return {"series": series, "model": model, "lookback": lookback}
+def _runs_of(con: duckdb.DuckDBPyConnection, series: str, model: str, lookback: int) -> list[int]:
+    values = {"series": series, "model": model, "lookback": lookback}
+    return [run_id for (run_id,) in con.execute(query("runs_of"), values).fetchall()]
 
 
 def _check_series(con: duckdb.DuckDBPyConnection, series: str) -> None:
@@ -105,9 +106,7 @@ def _check_series(con: duckdb.DuckDBPyConnection, series: str) -> None:
         raise UsageError(f"the book has no series {series!r}{near_name(series, names)}.")
 
 
-def _chosen(
-    con: duckdb.DuckDBPyConnection, series: str, model: str | None, lookback: int | None
-) -> tuple[str, int]:
+def _chosen(con: duckdb.DuckDBPyConnection, series: str, model: str | None, lookback: int | None) -> tuple[str, int]:
     if model is not None and model not in MODELS:
         raise UsageError(f"no model is called {model!r}{near_name(model, list(MODELS))}.")
     row = first_row(con, query("headline_of"), {"series": series})
@@ -123,7 +122,7 @@ def _run_at(con: duckdb.DuckDBPyConnection, when: str) -> int:
     else:
         row = first_row(con, "select max(run_id) from run where moment <= ?", [parse_moment(when)])
     if row is None or row[0] is None:
-        raise UsageError(f"the book has no run at {when}; see driftbook sql BOOK \"from run\".")
+        raise UsageError(f'the book has no run at {when}; see driftbook sql BOOK "from run".')
     return int(row[0])
 
 

@@ -15,8 +15,8 @@ import polars as pl
 
 from driftbook.store import functions, intake, runs
 from driftbook.store.errors import UsageError
-from driftbook.store.plan import PlanText, read_plan
 from driftbook.store.inbox import Delivered, take_in_folder
+from driftbook.store.plan import PlanText, read_plan
 from driftbook.store.refresh import Progress, Refreshed, put_plan_in_force, refresh
 from driftbook.store.swap import Draft, rewriting
 

@@ -14,8 +14,8 @@ from tempfile import TemporaryDirectory
 import duckdb
 
 from driftbook.store import digest, lock, migrate
-from driftbook.store.connect import attached
 from driftbook.store.errors import BookError
+from driftbook.store.reader import attached
 from driftbook.store.runs import NO_DIGEST, chain
 from driftbook.store.sql import only_row, query
 from driftbook.store.swap import create
