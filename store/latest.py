@@ -3,10 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import astuple, dataclass, fields
+from dataclasses import dataclass, fields
 from datetime import datetime
 from itertools import groupby
-from typing import Any
 
 import duckdb
 import numpy as np
@@ -92,14 +91,24 @@ def write_latest(run: Run, plan: Plan, work: Work, last: int) -> None:
     con = run.con
     marks = _Marks(con, last)
     before = {row.series_id: row for row in (Row(*values) for values in con.execute(query("latest_rows")).fetchall())}
+    headline = _headlines(plan, work.series)
+    asked = sorted(_touched(work, before, headline) & headline.keys())
     rows = [
         _row(list(group), work.series[series_id], before.get(series_id), marks)
-        for series_id, group in groupby(_fits(con, plan, work), key=lambda fit: fit.series_id)
+        for series_id, group in groupby(_fits(con, asked, headline), key=lambda fit: fit.series_id)
     ]
     changed = [row for row in rows if row != before.get(row.series_id)]
-    planned = {work_series.series_id for work_series in work.series.values() if work_series.setting.planned}
-    gone = [series_id for series_id in before if series_id not in planned]
+    without = set(asked) - {row.series_id for row in rows}  # all its observations were withdrawn
+    gone = [series_id for series_id in before if series_id not in headline or series_id in without]
     _put_in_force(con, changed, gone, run.stamp.run_id)
+
+
+def _touched(work: Work, before: dict[int, Row], headline: dict[int, int]) -> set[int]:
+    """The series of which the book may say something else now: estimated, less estimated, or by another lookback."""
+    estimated = {one.series_id for model in work.models for one in model.spans}
+    less = {series_id for model in work.models for series_id, _ in model.leaving}
+    moved = {series_id for series_id, row in before.items() if row.lookback != headline.get(series_id)}
+    return estimated | less | moved
 
 
 class _Marks:
@@ -129,25 +138,22 @@ def _within(times: dict[int, list[datetime]], fit: _Fit) -> int:
     return sum(fit.window_start <= time <= fit.observed_at for time in times.get(fit.series_id, []))
 
 
-def _fits(con: duckdb.DuckDBPyConnection, plan: Plan, work: Work) -> Iterable[_Fit]:
-    touched = {one.series_id for model in work.models for one in model.spans}
-    headline = _headlines(plan, work.series)
-    chosen = sorted(touched & headline.keys())
+def _fits(con: duckdb.DuckDBPyConnection, asked: list[int], headline: dict[int, int]) -> Iterable[_Fit]:
+    """The fits of the latest window of some series, a series after the other, models in the registry's order."""
     con.register(
         "asked_headline",
         pa.table(
             {
-                "series_id": pa.array(chosen, pa.int32()),
-                "lookback": pa.array([headline[one] for one in chosen], pa.int32()),
+                "series_id": pa.array(asked, pa.int32()),
+                "lookback": pa.array([headline[one] for one in asked], pa.int32()),
             }
         ),
     )
     con.execute(query("find_headlines"))
     con.unregister("asked_headline")
-    union = " union all ".join(_local_sql(model) for model in MODELS.values())
-    found = con.execute(f"{union} order by series_id").fetchall()
+    found = [_Fit(*values) for model in MODELS.values() for values in con.execute(_local_sql(model)).fetchall()]
     con.execute("drop table headline")
-    return [_Fit(*values) for values in found]
+    return sorted(found, key=lambda fit: fit.series_id)
 
 
 def _headlines(plan: Plan, series: dict[int, Series]) -> dict[int, int]:
@@ -163,17 +169,25 @@ def _headlines(plan: Plan, series: dict[int, Series]) -> dict[int, int]:
 
 
 def _local_sql(model: Model) -> str:
-    """The latest fits of one model: volatility and drift at the last value, relative for positive series."""
+    """The latest fits of one model: volatility and drift at the last value, relative for positive series.
+
+    A model of X > 0 is fitted to X + shift and speaks in fractions of that; relative to X they are larger by
+    (X + shift)/X. Where a series of prices is not above zero, nothing is relative to it.
+    """
     there = {column.name: column.sql or column.name for column in model.columns}
     pull = ", ".join(f"({there[name]})" if name in there else "null" for name in _PULL)
-    per_level = "1" if model.is_relative else "case when h.sign = 'positive' then x else 1 end"
-    volatility = ", ".join(f"({sql}) / {per_level}" for sql in model.local_volatility)
+    x = "case when value + shift > 0 then value + shift end" if model.range == "positive" else "value"
+    of_value = "x" if model.is_relative else "1"
+    scale = f"case when sign <> 'positive' then 1.0 when value > 0 then {of_value} / value end"
+    volatility = ", ".join(f"({sql}) * scale" for sql in model.local_volatility)
     p_value = "no_reversion_p" if "no_reversion_p" in there else "null"
     return (
-        "select h.series_id, h.observed_at, h.x, h.lookback, m.window_start, "
+        f"with there as (select h.*, {x} as x from headline h), "
+        f"scaled as (select *, {scale} as scale from there) "
+        "select h.series_id, h.observed_at, h.value, h.lookback, m.window_start, "
         f"'{model.name}', {len(model.parameters)}, n, loglik, status, {p_value}, {volatility}, "
-        f"({model.local_drift}) / {per_level}, {pull} "
-        f"from headline h join base.{model.name} m on m.series_id = h.series_id and m.lookback = h.lookback "
+        f"({model.local_drift}) * scale, {pull} "
+        f"from scaled h join base.{model.name} m on m.series_id = h.series_id and m.lookback = h.lookback "
         "and m.window_end = h.observed_at and m.run_to is null"
     )
 
@@ -274,14 +288,11 @@ def _put_in_force(con: duckdb.DuckDBPyConnection, rows: list[Row], gone: list[in
     con.execute(query("close_latest"), {"run": run_id, "series": leaving})
     if rows:
         names = [field.name for field in fields(Row)]
-        columns = list(zip(*(astuple(row) for row in rows), strict=True))
-        con.register("latest_row", _table(names, columns))
+        columns = [[getattr(row, name) for row in rows] for name in names]
+        con.register("latest_row", pa.table(columns, names))
         con.execute(
             f"insert into base.latest ({', '.join(names)}, run_from) "
             f"select {', '.join(names)}, {run_id} from latest_row order by series_id"
         )
         con.unregister("latest_row")
 
-
-def _table(names: list[str], columns: list[tuple[Any, ...]]) -> pa.Table:
-    return pa.table({name: pa.array(list(values)) for name, values in zip(names, columns, strict=True)})

@@ -68,6 +68,8 @@ def _parameters(
     values = np.array([np.nan if value is None else value for value in x or []], np.float64)
     steps_wanted = lookback or max(values.size - 1, _FEWEST)
     names = [parameter.name for parameter in MODELS[model].parameters]
+    if steps_wanted < 1:
+        return [_entry(name, None, max(values.size - 1, 0), Status.OUT_OF_RANGE) for name in names]
     if values.size <= steps_wanted:
         return [_entry(name, None, max(values.size - 1, 0), Status.TOO_SHORT) for name in names]
     if MODELS[model].range == "positive":

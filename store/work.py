@@ -157,14 +157,16 @@ def _with_what_is_due(
     concerned = sorted({one.series_id for each in asked for one in each if one.whole or one.series_id in changed})
     thinned = any(one.every != OBSERVATION for each in asked for one in each)
     sql = query("times_in_force").format(local_day=_LOCAL_DAY if thinned else "0::bigint")
-    found = con.sql(sql, params={"series": concerned})
-    columns = found.fetchnumpy()
+    columns = con.sql(sql, params={"series": concerned}).fetchnumpy()
     times, days = split(columns, "us"), split(columns, "day")
     none = np.empty(0, np.int64)
+    found: dict[Asked, tuple[list[Slice], list[Span]]] = {}  # models mostly ask for the same
     for each, model in zip(asked, models, strict=True):
         for one in each:
-            key = one.series_id
-            slices, spans = due(one, times.get(key, none), changed.get(key, none), days.get(key, none))
+            if one not in found:
+                key = one.series_id
+                found[one] = due(one, times.get(key, none), changed.get(key, none), days.get(key, none))
+            slices, spans = found[one]
             model.slices += slices
             model.spans += spans
     return Work(models, series, times, changed)

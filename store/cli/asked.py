@@ -41,6 +41,10 @@ def sql(
     ],
     how: Annotated[Format, typer.Option("--format", help="How rows are written.")] = Format.TABLE,
     output: Annotated[Path | None, typer.Option("--output", help="A file instead of standard output.")] = None,
+    timeout: Annotated[
+        float | None, typer.Option("--timeout", metavar="SECONDS", min=0, help="Give up after this time.")
+    ] = None,
+    most: Annotated[int | None, typer.Option("--rows", metavar="N", min=0, help="At most so many rows.")] = None,
     quiet: opt.Quiet = False,
     as_json: opt.Json = False,
 ) -> None:
@@ -52,7 +56,7 @@ def sql(
     from driftbook.store.cli.rows import write_rows
 
     text = sys.stdin.read() if statement == "-" else statement
-    with ask(book, text) as rows:
+    with ask(book, text, timeout=timeout, rows=most) as rows:
         if as_json:
             table = rows.to_arrow_table()
             say_json({"columns": table.column_names, "rows": [list(row.values()) for row in table.to_pylist()]})

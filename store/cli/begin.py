@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import difflib
+from functools import partial
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
 
@@ -10,6 +11,7 @@ import typer
 
 from driftbook.store.cli import options as opt
 from driftbook.store.cli.output import outcome_text, say, say_json
+from driftbook.store.cli.tables import explanation_text, short_table
 from driftbook.store.errors import UsageError
 
 if TYPE_CHECKING:
@@ -37,7 +39,8 @@ def demo(
     from driftbook.store.demo import run_demo
 
     lines: list[str] = []
-    run_demo(folder, lines.append if as_json else lambda text: say(text, quiet=quiet))
+    tell = lines.append if as_json else partial(say, quiet=quiet)
+    run_demo(folder, tell, short_table, explanation_text)
     if as_json:
         say_json({"folder": str(folder), "said": lines})
 
@@ -58,16 +61,31 @@ def new(book: opt.Book, quiet: opt.Quiet = False, as_json: opt.Json = False) -> 
 
 def ingest(
     book: opt.Book,
-    files: Annotated[list[Path], typer.Argument(metavar="FILE…", help="CSV or Parquet.", show_default=False)],
+    files: Annotated[
+        list[Path],
+        typer.Argument(
+            metavar="FILE…",
+            help="CSV, JSON lines, Parquet, Arrow, any of them .gz; - is standard input.",
+            show_default=False,
+        ),
+    ],
     series: Annotated[str | None, typer.Option("--series", help="All rows are this series.")] = None,
     add_series: Annotated[bool, typer.Option("--add-series", help="Add series that the book lacks.")] = False,
+    wide: Annotated[bool, typer.Option("--wide", help="A column of times, and a column for each series.")] = False,
     columns: Annotated[
         str | None, typer.Option("--columns", metavar="time=…,value=…", help="Which column is what.")
     ] = None,
     dates: Annotated[
         str | None, typer.Option("--dates", metavar="day-first|month-first|FORMAT", help="How dates are written.")
     ] = None,
+    decimal: Annotated[
+        str, typer.Option("--decimal", metavar="MARK", help="The decimal mark of numbers, . or a comma.")
+    ] = ".",
     zone: Annotated[str | None, typer.Option("--zone", help="Zone of times that have none.")] = None,
+    blank: Annotated[
+        list[str] | None,
+        typer.Option("--blank", metavar="TEXT", help="Means an empty value, such as NA; can be given several times."),
+    ] = None,
     dry_run: opt.DryRun = False,
     at: opt.At = None,
     strict: opt.Strict = False,
@@ -83,7 +101,17 @@ def ingest(
     from driftbook.store.intake import Options
     from driftbook.store.writer import writing
 
-    chosen = Options(series, _roles(columns), dates, zone, add_series=add_series, yes=yes)
+    chosen = Options(
+        series=series,
+        columns=_roles(columns),
+        dates=dates,
+        zone=zone,
+        layout="wide" if wide else "long",
+        decimal=decimal,
+        blank=blank or (),
+        add_series=add_series,
+        yes=yes,
+    )
     with writing(book, wait=wait, at=at) as work:
         outcomes = [work.ingest(file, chosen) for file in files]
         if dry_run:

@@ -35,8 +35,8 @@ def outcome_text(outcome: Outcome, *, dry_run: bool = False) -> str:
     if outcome.known_already:
         return f"{outcome.source}: these bytes are known already; nothing was done."
     counts = (
-        f"{outcome.source}: {outcome.rows_read} rows read, {outcome.rows_new} new, {outcome.rows_revised} revised, "
-        f"{outcome.rows_same} same, {outcome.rows_refused} refused."
+        f"{outcome.source}: {count_of(outcome.rows_read, 'row')} read, {outcome.rows_new} new, "
+        f"{outcome.rows_revised} revised, {outcome.rows_same} same, {outcome.rows_refused} refused."
     )
     added = f"\n  series added: {', '.join(outcome.series_added)}" if outcome.series_added else ""
     refused = "".join(f"\n  line {row.line}: {row.reason}: {row.text}" for row in outcome.refused)
