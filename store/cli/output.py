@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import json
 from datetime import date
+from decimal import Decimal
+from math import isfinite
 from typing import TYPE_CHECKING, Any
 
 import typer
@@ -47,7 +49,18 @@ def outcome_text(outcome: Outcome, *, dry_run: bool = False) -> str:
 
 def say_json(answer: dict[str, Any]) -> None:
     """One JSON object on standard output."""
-    typer.echo(json.dumps(answer, default=json_value))
+    typer.echo(json.dumps(plain(answer), default=json_value, allow_nan=False))
+
+
+def plain(value: Any) -> Any:
+    """A value of which JSON has all parts: a decimal is a number, and what is no number is null."""
+    if isinstance(value, dict):
+        return {str(key): plain(one) for key, one in value.items()}
+    if isinstance(value, list | tuple):
+        return [plain(one) for one in value]
+    if isinstance(value, Decimal):
+        return float(value)
+    return None if isinstance(value, float) and not isfinite(value) else value
 
 
 def json_value(value: Any) -> Any:

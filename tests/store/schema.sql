@@ -4,6 +4,8 @@ base.abm_rows
   CREATE VIEW base.abm_rows AS SELECT s.series, m.lookback, m.window_start, m.window_end, m.n, m.mu, m.mu_se, m.mu_lower, m.mu_upper, m.sigma, m.sigma_se, m.sigma_lower, m.sigma_upper, m.kurtosis, m.loglik, m.status, m.revision, m.run_from, m.run_to FROM base.abm AS m INNER JOIN base.series AS s ON ((s.series_id = m.series_id));
 base.alias
   CREATE TABLE base.alias(series_id INTEGER NOT NULL, "name" VARCHAR NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
+base.dictionary_entry
+  CREATE TABLE base.dictionary_entry("name" VARCHAR NOT NULL, column_name VARCHAR, unit VARCHAR, meaning VARCHAR NOT NULL, example VARCHAR);
 base.estimate_rows
   CREATE VIEW base.estimate_rows AS (SELECT m.series, m.lookback, m.window_end, 'abm' AS model, 'mu' AS parameter, m.mu AS "value", m.mu_se AS se, m.mu_lower AS lower, m.mu_upper AS upper, m.status, m.run_from, m.run_to FROM base.abm_rows AS m) UNION ALL (((((SELECT m.series, m.lookback, m.window_end, 'abm' AS model, 'sigma' AS parameter, m.sigma AS "value", m.sigma_se AS se, m.sigma_lower AS lower, m.sigma_upper AS upper, m.status, m.run_from, m.run_to FROM base.abm_rows AS m) UNION ALL (SELECT m.series, m.lookback, m.window_end, 'gbm' AS model, 'mu' AS parameter, m.mu AS "value", m.mu_se AS se, m.mu_lower AS lower, m.mu_upper AS upper, m.status, m.run_from, m.run_to FROM base.gbm_rows AS m)) UNION ALL ((SELECT m.series, m.lookback, m.window_end, 'gbm' AS model, 'sigma' AS parameter, m.sigma AS "value", m.sigma_se AS se, m.sigma_lower AS lower, m.sigma_upper AS upper, m.status, m.run_from, m.run_to FROM base.gbm_rows AS m) UNION ALL (SELECT m.series, m.lookback, m.window_end, 'ou' AS model, 'kappa' AS parameter, m.kappa AS "value", m.kappa_se AS se, m.kappa_lower AS lower, m.kappa_upper AS upper, m.status, m.run_from, m.run_to FROM base.ou_rows AS m))) UNION ALL (((SELECT m.series, m.lookback, m.window_end, 'ou' AS model, 'theta' AS parameter, m.theta AS "value", m.theta_se AS se, m.theta_lower AS lower, m.theta_upper AS upper, m.status, m.run_from, m.run_to FROM base.ou_rows AS m) UNION ALL (SELECT m.series, m.lookback, m.window_end, 'ou' AS model, 'sigma' AS parameter, m.sigma AS "value", m.sigma_se AS se, m.sigma_lower AS lower, m.sigma_upper AS upper, m.status, m.run_from, m.run_to FROM base.ou_rows AS m)) UNION ALL ((SELECT m.series, m.lookback, m.window_end, 'exp_ou' AS model, 'kappa' AS parameter, m.kappa AS "value", m.kappa_se AS se, m.kappa_lower AS lower, m.kappa_upper AS upper, m.status, m.run_from, m.run_to FROM base.exp_ou_rows AS m) UNION ALL (SELECT m.series, m.lookback, m.window_end, 'exp_ou' AS model, 'theta' AS parameter, m.theta AS "value", m.theta_se AS se, m.theta_lower AS lower, m.theta_upper AS upper, m.status, m.run_from, m.run_to FROM base.exp_ou_rows AS m)))) UNION ALL (SELECT m.series, m.lookback, m.window_end, 'exp_ou' AS model, 'sigma' AS parameter, m.sigma AS "value", m.sigma_se AS se, m.sigma_lower AS lower, m.sigma_upper AS upper, m.status, m.run_from, m.run_to FROM base.exp_ou_rows AS m));
 base.exp_ou
@@ -12,6 +14,8 @@ base.exp_ou_rows
   CREATE VIEW base.exp_ou_rows AS SELECT s.series, m.lookback, m.window_start, m.window_end, m.n, m.kappa, m.kappa_se, m.kappa_lower, m.kappa_upper, m.theta, m.theta_se, m.theta_lower, m.theta_upper, m.sigma, m.sigma_se, m.sigma_lower, m.sigma_upper, m.kappa_median_unbiased, m.no_reversion_p, CASE  WHEN ((kappa > 0)) THEN ((ln(2) / "nullif"(kappa_median_unbiased, 0))) ELSE NULL END AS half_life, CASE  WHEN ((kappa_upper > 0)) THEN ((ln(2) / kappa_upper)) ELSE NULL END AS half_life_lower, CASE  WHEN ((kappa_lower > 0)) THEN ((ln(2) / kappa_lower)) ELSE NULL END AS half_life_upper, CASE  WHEN ((kappa > 0)) THEN ((ln(2) / kappa)) ELSE NULL END AS half_life_mle, (kappa_lower = 0) AS half_life_unbounded, CASE  WHEN ((kappa > 0)) THEN ((sigma / sqrt((2 * kappa)))) ELSE NULL END AS stationary_sd, CASE  WHEN (((kappa > 0) AND (theta < 700))) THEN (exp(theta)) ELSE NULL END AS long_run_median, m.kurtosis, m.loglik, m.status, m.revision, m.run_from, m.run_to FROM base.exp_ou AS m INNER JOIN base.series AS s ON ((s.series_id = m.series_id));
 base.fit_rows
   CREATE VIEW base.fit_rows AS (SELECT m.series, m.lookback, m.window_start, m.window_end, 'abm' AS model, m.n, 2 AS k, m.loglik, ((2 * 2) - (2 * m.loglik)) AS aic, ((2 * ln(m.n)) - (2 * m.loglik)) AS bic, m.status, m.run_from, m.run_to FROM base.abm_rows AS m) UNION ALL (((SELECT m.series, m.lookback, m.window_start, m.window_end, 'gbm' AS model, m.n, 2 AS k, m.loglik, ((2 * 2) - (2 * m.loglik)) AS aic, ((2 * ln(m.n)) - (2 * m.loglik)) AS bic, m.status, m.run_from, m.run_to FROM base.gbm_rows AS m) UNION ALL (SELECT m.series, m.lookback, m.window_start, m.window_end, 'ou' AS model, m.n, 3 AS k, m.loglik, ((2 * 3) - (2 * m.loglik)) AS aic, ((3 * ln(m.n)) - (2 * m.loglik)) AS bic, m.status, m.run_from, m.run_to FROM base.ou_rows AS m)) UNION ALL (SELECT m.series, m.lookback, m.window_start, m.window_end, 'exp_ou' AS model, m.n, 3 AS k, m.loglik, ((2 * 3) - (2 * m.loglik)) AS aic, ((3 * ln(m.n)) - (2 * m.loglik)) AS bic, m.status, m.run_from, m.run_to FROM base.exp_ou_rows AS m));
+base.forgotten_leaf
+  CREATE TABLE base.forgotten_leaf(run_id INTEGER NOT NULL, table_name VARCHAR NOT NULL, series_id INTEGER, rows_in BIGINT NOT NULL, rows_closed BIGINT NOT NULL, sha256 VARCHAR NOT NULL, run_from INTEGER NOT NULL);
 base.gbm
   CREATE TABLE base.gbm(series_id INTEGER NOT NULL, lookback INTEGER NOT NULL, window_start TIMESTAMP NOT NULL, window_end TIMESTAMP NOT NULL, n INTEGER NOT NULL, mu DOUBLE, mu_se DOUBLE, mu_lower DOUBLE, mu_upper DOUBLE, sigma DOUBLE, sigma_se DOUBLE, sigma_lower DOUBLE, sigma_upper DOUBLE, kurtosis DOUBLE, loglik DOUBLE, status VARCHAR NOT NULL, revision INTEGER NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
 base.gbm_rows
@@ -54,6 +58,8 @@ base.series_rows
   CREATE VIEW base.series_rows AS SELECT s.series, t.sign, t.unit, t.clock, t.periods_per_year, t.time_zone, t.same_time, t.stale_after_days, t.in_force, t.shift, t.planned, s.added_at, t.run_from, t.run_to FROM base.setting AS t INNER JOIN base.series AS s ON ((s.series_id = t.series_id));
 base.setting
   CREATE TABLE base.setting(series_id INTEGER NOT NULL, sign VARCHAR NOT NULL, unit VARCHAR, clock VARCHAR NOT NULL, periods_per_year DOUBLE, time_zone VARCHAR NOT NULL, same_time VARCHAR NOT NULL, stale_after_days DOUBLE NOT NULL, in_force VARCHAR NOT NULL, shift DOUBLE NOT NULL, planned BOOLEAN NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
+base.steps_of
+  macro (name) SELECT o.observed_at, o."value", first_value(o."value") OVER (ORDER BY o.observed_at) AS origin, (o."value" - first_value(o."value") OVER (ORDER BY o.observed_at)) AS x, t.periods_per_year FROM base.observation AS o INNER JOIN base.series AS s ON ((s.series_id = o.series_id)) INNER JOIN base.setting AS t ON (((t.series_id = o.series_id) AND (t.run_to IS NULL))) WHERE ((s.series = "name") AND (o.run_to IS NULL) AND (t.periods_per_year IS NOT NULL))
 main.abm
   CREATE VIEW abm AS SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.abm_rows AS x WHERE (x.run_to IS NULL);
   -- dX = mu dt + sigma dW: estimates in force, one row per fit
@@ -117,6 +123,27 @@ main.abm_as_of
 main.abm_at_run
   macro (run) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.abm_rows AS x WHERE ((x.run_from <= run) AND ((x.run_to IS NULL) OR (x.run_to > run)))
   -- the view abm as it was after a run: abm_at_run(41)
+main.abm_closed_form
+  macro (name, lookback) WITH steps AS (SELECT q.observed_at, q.periods_per_year, (q.x - lag(q.x) OVER (ORDER BY q.observed_at)) AS d, lag(q.observed_at, lookback) OVER (ORDER BY q.observed_at) AS window_start FROM base.steps_of("name") AS q), moments AS (SELECT p.window_start, p.observed_at AS window_end, p.periods_per_year, count(p.d) OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS n, avg(p.d) OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS mean_step, var_pop(p.d) OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS variance FROM steps AS p WHERE (p.d IS NOT NULL)) SELECT m.window_start, m.window_end, m.n, (m.mean_step * m.periods_per_year) AS mu, sqrt((m.variance * m.periods_per_year)) AS sigma, ((-0.5 * m.n) * (ln(((2 * pi()) * m.variance)) + 1)) AS loglik FROM moments AS m WHERE ((m.n = lookback) AND (m.window_start IS NOT NULL) AND (m.variance > 0)) ORDER BY m.window_end
+  -- abm on every window of a series, in SQL alone: abm_closed_form('pellets_fob', 250)
+main.dictionary
+  CREATE VIEW "dictionary" AS SELECT d."name", d.column_name, d.unit, d.meaning, d.example FROM base.dictionary_entry AS d;
+  -- what every view, column, macro and function means
+main.dictionary.column_name
+  VARCHAR
+  -- column of a view; NULL: the entry is about the whole
+main.dictionary.example
+  VARCHAR
+  -- a query that runs; functions need a connection of driftbook
+main.dictionary.meaning
+  VARCHAR
+  -- what it says
+main.dictionary.name
+  VARCHAR
+  -- view, macro or function
+main.dictionary.unit
+  VARCHAR
+  -- unit in words; x: unit of the series, t: year or second, 1: a pure number
 main.estimate
   CREATE VIEW estimate AS SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.estimate_rows AS x WHERE (x.run_to IS NULL);
   -- all models: one row per parameter of a fit
@@ -375,6 +402,9 @@ main.gbm_as_of
 main.gbm_at_run
   macro (run) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.gbm_rows AS x WHERE ((x.run_from <= run) AND ((x.run_to IS NULL) OR (x.run_to > run)))
   -- the view gbm as it was after a run: gbm_at_run(41)
+main.gbm_closed_form
+  macro (name, lookback) WITH logs AS (SELECT q.observed_at, q.periods_per_year, CASE  WHEN ((q."value" > 0)) THEN (ln(q."value")) ELSE NULL END AS y FROM base.steps_of("name") AS q), steps AS (SELECT l.observed_at, l.periods_per_year, l.y, (l.y - lag(l.y) OVER (ORDER BY l.observed_at)) AS d, lag(l.observed_at, lookback) OVER (ORDER BY l.observed_at) AS window_start FROM logs AS l), moments AS (SELECT p.window_start, p.observed_at AS window_end, p.periods_per_year, count(p.d) OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS n, avg(p.d) OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS mean_step, var_pop(p.d) OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS variance, avg(p.y) OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS mean_log FROM steps AS p) SELECT m.window_start, m.window_end, m.n, ((m.mean_step + (m.variance / 2)) * m.periods_per_year) AS mu, sqrt((m.variance * m.periods_per_year)) AS sigma, (((-0.5 * m.n) * (ln(((2 * pi()) * m.variance)) + 1)) - (m.n * m.mean_log)) AS loglik FROM moments AS m WHERE ((m.n = lookback) AND (m.window_start IS NOT NULL) AND (m.variance > 0)) ORDER BY m.window_end
+  -- gbm on every window of a series, in SQL alone: gbm_closed_form('pellets_fob', 250)
 main.intake
   CREATE VIEW intake AS SELECT i.intake_id, i.run_from AS run_id, i."source", i.sha256, i.received_at, i.rows_read, i.rows_new, i.rows_revised, i.rows_same, i.rows_refused FROM base.intake AS i;
   -- batches of incoming rows; every row is counted once: read = new + revised + same + refused
@@ -630,6 +660,9 @@ main.ou_as_of
 main.ou_at_run
   macro (run) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.ou_rows AS x WHERE ((x.run_from <= run) AND ((x.run_to IS NULL) OR (x.run_to > run)))
   -- the view ou as it was after a run: ou_at_run(41)
+main.ou_closed_form
+  macro (name, lookback) WITH steps AS (SELECT q.observed_at, q.periods_per_year, q.origin, lag(q.x) OVER (ORDER BY q.observed_at) AS "level", (q.x - lag(q.x) OVER (ORDER BY q.observed_at)) AS d, lag(q.observed_at, lookback) OVER (ORDER BY q.observed_at) AS window_start FROM base.steps_of("name") AS q), moments AS (SELECT p.window_start, p.observed_at AS window_end, p.periods_per_year, p.origin, count(p.d) OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS n, avg(p."level") OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS mean_level, avg(p.d) OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS mean_step, regr_sxx(p.d, p."level") OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS spread, regr_syy(p.d, p."level") OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS total, regr_sxy(p.d, p."level") OVER (ORDER BY p.observed_at ROWS BETWEEN (lookback - 1) PRECEDING AND CURRENT ROW) AS joint FROM steps AS p WHERE (p.d IS NOT NULL)), slopes AS (SELECT m.*, (m.joint / m.spread) AS beta, ((m.total - ((m.joint * m.joint) / m.spread)) / m.n) AS residual FROM moments AS m WHERE ((m.n = lookback) AND (m.window_start IS NOT NULL) AND (m.spread > 0))) SELECT f.window_start, f.window_end, f.n, ((-(ln((1 + f.beta)))) * f.periods_per_year) AS kappa, ((f.origin + f.mean_level) - (f.mean_step / f.beta)) AS theta, sqrt(((((f.residual * f.periods_per_year) * 2) * ln((1 + f.beta))) / (f.beta * (2 + f.beta)))) AS sigma, ((-0.5 * f.n) * (ln(((2 * pi()) * f.residual)) + 1)) AS loglik FROM slopes AS f WHERE ((f.beta > -1) AND (f.beta != 0) AND (f.residual > 0)) ORDER BY f.window_end
+  -- ou on every window of a series, in SQL alone: ou_closed_form('pellets_fob', 250)
 main.plan
   CREATE VIEW plan AS SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.plan_rows AS x WHERE (x.run_to IS NULL);
   -- the plan in force
