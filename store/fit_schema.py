@@ -107,7 +107,8 @@ def _weighted(name: str, where: str) -> str:
     """Fits with their weights among the usable models of the same window."""
     return (
         "select y.series, y.lookback, y.window_start, y.window_end, y.model, y.n, y.k, y.loglik, y.aic, y.bic,\n"
-        "  y.ratio / sum(y.ratio) over (partition by y.series, y.lookback, y.window_end) as model_weight,\n"
+        "  y.ratio / sum(y.ratio) over (partition by y.series, y.lookback, y.window_end order by y.model\n"
+        "    rows between unbounded preceding and unbounded following) as model_weight,\n"
         "  y.models_compared, y.status, y.run_id\n"
         "from (\n"
         f"  select x.* exclude (run_from, run_to), x.run_from as run_id,\n"
@@ -130,7 +131,9 @@ def _fit_versions() -> list[str]:
     return [
         "create view versions.fit as",
         "select x.series, x.lookback, x.window_start, x.window_end, x.model, x.n, x.k, x.loglik, x.aic, x.bic,",
-        f"  case when {_USABLE} then 1 / (select sum(exp(-0.5 * (p.bic - x.bic))) from {peers}) end as model_weight,",
+        f"  case when {_USABLE} then 1 / (",
+        "    select sum(exp(-0.5 * (p.bic - x.bic)) order by p.model, p.run_from)",
+        f"    from {peers}) end as model_weight,",
         f"  (select count(*) from {peers}) as models_compared,",
         "  x.status, x.run_from, x.run_to, f.moment as in_force_from, t.moment as in_force_to",
         "from base.fit_rows x",

@@ -18,7 +18,7 @@ from __future__ import annotations
 from collections.abc import Callable, Iterator
 from concurrent.futures import Executor, Future
 from dataclasses import dataclass
-from functools import partial
+from functools import cache, partial
 from typing import Any
 
 import duckdb
@@ -34,7 +34,6 @@ from driftbook.store.clocks import MICROSECONDS_PER_YEAR
 _BLOCK_VALUES = 1 << 18
 _PADDING = 1.25
 _SQL_TYPES = {"double": "DOUBLE", "boolean": "BOOLEAN"}
-_WORDS = pa.array([status.word for status in Status], pa.string())
 # What a list without a single step is asked for, so that it is told to be too short.
 _SOME_STEPS = 5
 # What DuckDB keeps for the times 'infinity' and '-infinity'; a NULL becomes a number below.
@@ -294,8 +293,14 @@ def _structs(found: list[_Rows]) -> pa.Array:
         fields.append(_nullable(values, column.kind))
         names.append(column.name)
     codes = _joined([rows.cut(rows.fit.status) for rows in found])
-    fields.append(_WORDS.take(pa.array(codes.astype(np.int64))))
+    fields.append(_words().take(pa.array(codes.astype(np.int64))))
     return pa.StructArray.from_arrays(fields, [*names, "status"])
+
+
+@cache
+def _words() -> pa.Array:
+    # made when first needed: pyarrow looks for pandas at its first array, and loads it where it is installed
+    return pa.array([status.word for status in Status], pa.string())
 
 
 def _joined(parts: list[NDArray[Any]]) -> NDArray[Any]:

@@ -295,4 +295,3 @@ def _put_in_force(con: duckdb.DuckDBPyConnection, rows: list[Row], gone: list[in
             f"select {', '.join(names)}, {run_id} from latest_row order by series_id"
         )
         con.unregister("latest_row")
-

@@ -14,7 +14,7 @@ _GAP = "  "
 
 def harmless(text: str) -> str:
     """Text with control and direction characters made visible, so that names from files cannot drive a terminal."""
-    return "".join(_visible(character) for character in text)
+    return text if text.isprintable() else "".join(_visible(character) for character in text)
 
 
 def columns(header: Sequence[str], rows: Sequence[Sequence[Any]]) -> str:

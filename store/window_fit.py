@@ -16,7 +16,7 @@ from duckdb.func import FunctionNullHandling, PythonUDFType
 from driftbook.estimators import MODELS, Status, aligned_start, rolling
 from driftbook.store.clocks import equal_step, microseconds_per_unit
 from driftbook.store.errors import UsageError
-from driftbook.store.series import near_name
+from driftbook.store.series import ended, near_name
 from driftbook.store.sql import query
 
 _TAKES: list[Any] = ["VARCHAR", "DOUBLE[]", "BIGINT[]", "VARCHAR", "DOUBLE", "DOUBLE", "INTEGER"]
@@ -64,7 +64,7 @@ def _parameters(
     """One entry a parameter of the last window of a list; a status alone where there is no such window."""
     if model is None or model not in MODELS:
         near = near_name(str(model), list(MODELS)) or f"; there are {', '.join(MODELS)}"
-        raise UsageError(f"no model is called {model!r}{near}.")
+        raise UsageError(ended(f"no model is called {model!r}{near}"))
     values = np.array([np.nan if value is None else value for value in x or []], np.float64)
     steps_wanted = lookback or max(values.size - 1, _FEWEST)
     names = [parameter.name for parameter in MODELS[model].parameters]

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import json
+import os
 import sys
 from io import StringIO
 from pathlib import Path
@@ -32,7 +33,8 @@ def write_rows(rows: duckdb.DuckDBPyRelation, how: str, output: Path | None) -> 
     except BrokenPipeError:
         raise
     except OSError as error:
-        raise UsageError(f"cannot write {output}: {error.strerror}.") from error
+        reason = os.strerror(error.errno) if error.errno else str(error)
+        raise UsageError(f"cannot write {output}: {reason}.") from error
 
 
 def _as_table(names: list[str], rows: list[tuple[Any, ...]]) -> str:

@@ -1,5 +1,7 @@
 """`forget` deletes for good: no byte is left, the digest chain is whole, and everything else is as it was."""
 
+import struct
+
 import duckdb
 import pytest
 from made_series import days, plan_text, wave
@@ -48,8 +50,6 @@ def in_bytes(book, text):
 
 
 def as_bytes(value):
-    import struct
-
     return struct.pack("<d", value)
 
 
@@ -90,6 +90,16 @@ def test_a_row_put_back_after_the_forgetting_is_found(desk):
     with duckdb.connect(desk) as con:
         con.execute(f"insert into base.observation values ({', '.join('?' * len(rows[0]))})", list(rows[0]))
     assert [(one.table_name, one.run_id) for one in store.verify(desk).findings] == [("observation", 1)]
+
+
+@pytest.mark.parametrize(
+    "change", ["delete from {0}", "update {0} set rows_in = rows_in + 1", "insert into {0} from {0}"]
+)
+def test_what_was_noted_of_a_forgetting_cannot_be_changed_unseen(desk, change):
+    forget(desk, "diesel", before="2024-01-06T12:00", yes=True)
+    with duckdb.connect(desk) as con:
+        con.execute(change.format("base.forgotten_leaf"))
+    assert ("forgotten_leaf", 4) in {(one.table_name, one.run_id) for one in store.verify(desk).findings}
 
 
 def test_what_is_left_of_a_series_past_is_still_proven(desk):
