@@ -22,7 +22,7 @@ from driftbook.store.intake.naming import why_no_name
 from driftbook.store.series import Setting, near_name
 
 # Keys of later plan files: named, so that a plan that uses them hears that this driftbook cannot do it yet.
-_NOT_YET = {"breaks", "formula", "group", "also", "horizons", "decimal", "blank"}
+_NOT_YET = {"breaks", "formula", "group", "also", "horizons"}
 ALL = 0
 BEST = "best"
 _LONGEST = 10_000_000
@@ -130,6 +130,8 @@ class PlannedIntake(_Strict):
     columns: dict[str, str] = {}
     dates: str | None = None
     zone: Annotated[str, AfterValidator(_known_zone)] | None = None
+    decimal: Literal[".", ","] = "."
+    blank: list[str] = []
 
 
 @dataclass(frozen=True)
