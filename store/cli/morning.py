@@ -114,6 +114,7 @@ def _answer(done: Refreshed, finished: Finished | None) -> dict[str, Any]:
         "windows_fitted": done.windows_fitted,
         "windows_failed": done.windows_failed,
         "rows_to_close": done.rows_to_close,
+        "warnings": list(done.warnings),
         "rows_written": finished.rows_written if finished else 0,
         "digest": finished.digest if finished else None,
     }
@@ -128,6 +129,7 @@ def _summary(done: Refreshed, finished: Finished | None, *, dry_run: bool) -> li
     if dry_run:
         closing = f", {count_of(done.rows_to_close, 'row')} to close" if done.rows_to_close else ""
         return [*lines, f"Due: {count_of(done.windows_due, 'window')}{closing}; nothing was changed."]
+    lines += [f"warning: {warning}" for warning in done.warnings]
     if finished is None:
         return [*lines, "Nothing new; nothing was written."]
     failed = f", {done.windows_failed} without numbers" if done.windows_failed else ""
