@@ -102,6 +102,7 @@ COLUMNS = (
 
 _IN_UNITS_OF_X = tuple(column.name for column in COLUMNS if column.unit.startswith("x"))
 _NEED_A_PULL = ("half_life", "half_life_mle", "stationary_sd")
+_NO_MEMORY = 1e-9  # a slope b below this cannot be told from none: rounding decides its sign
 _CANCELS = 1e-3  # below this pull per step a difference loses digits and its series does not
 
 
@@ -172,7 +173,7 @@ def _estimates(regression: Regression, dt: Array) -> tuple[dict[str, Array], NDA
             columns[name][no_pull] = np.nan
     status = np.zeros(regression.slope.shape, dtype=np.int8)
     status[no_pull] = Status.NO_REVERSION
-    alternating = np.flatnonzero((regression.slope <= -1) & (regression.log_b is None))
+    alternating = np.flatnonzero((regression.slope <= -1 + _NO_MEMORY) & (regression.log_b is None))
     if alternating.size:
         status[alternating] = Status.ALTERNATING
         blank(columns, alternating)
