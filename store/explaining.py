@@ -71,30 +71,43 @@ def explain(
     and now. model and lookback default to what `latest` speaks of. Raises UsageError where there is nothing to compare.
     """
     with connect(Path(book)) as con:
-        _check_series(con, series)
-        chosen_model, chosen_lookback = _chosen(con, series, model, lookback)
-        runs = _runs_of(con, series, chosen_model, chosen_lookback)
-        if not runs:
-            raise UsageError(f"there is no estimate of {chosen_model} on {series!r} with that lookback.")
-        last = _run_at(con, later) if later else runs[-1]
-        before = [run for run in runs if run < last]
-        first = _run_at(con, earlier) if earlier else (before[-1] if before else runs[0])
-        if first > last:
-            raise UsageError(f"--from is run {first} and --to is run {last}; the earlier comes first.")
-        one = _statement(con, series, chosen_model, chosen_lookback, first)
-        other = _statement(con, series, chosen_model, chosen_lookback, last)
-        left, came = _steps(con, series, one, other)
-        return Explanation(
-            series=series,
-            model=chosen_model,
-            lookback=chosen_lookback,
-            earlier=one,
-            later=other,
-            corrections=_corrections(con, series, one, other),
-            steps_that_left=left,
-            steps_that_came=came,
-            causes=_causes(con, series, first, last),
-        )
+        return explain_on(con, series, model=model, lookback=lookback, earlier=earlier, later=later)
+
+
+def explain_on(
+    con: duckdb.DuckDBPyConnection,
+    series: str,
+    *,
+    model: str | None = None,
+    lookback: int | None = None,
+    earlier: str | None = None,
+    later: str | None = None,
+) -> Explanation:
+    """As `explain`, on a book that is open."""
+    _check_series(con, series)
+    chosen_model, chosen_lookback = _chosen(con, series, model, lookback)
+    runs = _runs_of(con, series, chosen_model, chosen_lookback)
+    if not runs:
+        raise UsageError(f"there is no estimate of {chosen_model} on {series!r} with that lookback.")
+    last = _run_at(con, later) if later else runs[-1]
+    before = [run for run in runs if run < last]
+    first = _run_at(con, earlier) if earlier else (before[-1] if before else runs[0])
+    if first > last:
+        raise UsageError(f"--from is run {first} and --to is run {last}; the earlier comes first.")
+    one = _statement(con, series, chosen_model, chosen_lookback, first)
+    other = _statement(con, series, chosen_model, chosen_lookback, last)
+    left, came = _steps(con, series, one, other)
+    return Explanation(
+        series=series,
+        model=chosen_model,
+        lookback=chosen_lookback,
+        earlier=one,
+        later=other,
+        corrections=_corrections(con, series, one, other),
+        steps_that_left=left,
+        steps_that_came=came,
+        causes=_causes(con, series, first, last),
+    )
 
 
 def _runs_of(con: duckdb.DuckDBPyConnection, series: str, model: str, lookback: int) -> list[int]:

@@ -12,7 +12,7 @@ from typing import Annotated
 
 import typer
 
-from driftbook.store.cli import asked, begin, morning
+from driftbook.store.cli import asked, begin, morning, page_command
 from driftbook.store.cli.output import say_error
 from driftbook.store.errors import BookError
 
@@ -46,6 +46,7 @@ def _about(
 
 morning.add_to(app)
 asked.add_to(app)
+page_command.add_to(app)
 begin.add_to(app)
 
 
