@@ -6,11 +6,10 @@ brings a new migration that makes them again.
 
 from __future__ import annotations
 
-from collections.abc import Callable
-
 from driftbook.estimators import MODELS, Model
 from driftbook.estimators.compare import AIC_SQL, BIC_SQL
-from driftbook.store.model_schema import IDENTITY, VERSIONED, column_comments
+from driftbook.store.model_schema import IDENTITY
+from driftbook.store.reader_schema import comments, readers, versions
 
 _FIT = (
     *IDENTITY[:4],
@@ -51,10 +50,10 @@ def migration_text() -> str:
         "\nunion all\n".join(_estimate_branch(model, one.name) for model in MODELS.values() for one in model.parameters)
         + ";",
         "",
-        *_readers("fit", _weighted),
+        *readers("fit", _weighted),
         *_fit_versions(),
-        *_readers("estimate", _plain),
-        *_versions("estimate"),
+        *readers("estimate"),
+        *versions("estimate"),
         *_versions_of(),
         *_comments("fit", "all models: one row per fit, with what compares models", _FIT),
         *_comments("estimate", "all models: one row per parameter of a fit", _ESTIMATE),
@@ -77,30 +76,6 @@ def _estimate_branch(model: Model, name: str) -> str:
         f"  m.{name} as value, m.{name}_se as se, m.{name}_lower as lower, m.{name}_upper as upper,\n"
         f"  m.status, m.run_from, m.run_to from base.{model.name}_rows m"
     )
-
-
-def _readers(name: str, make: Callable[[str, str], str]) -> list[str]:
-    """The view in force, at a run and as of a moment."""
-    return [
-        f"create view main.{name} as",
-        f"{make(name, 'x.run_to is null')};",
-        "",
-        f"create macro main.{name}_at_run(run) as table",
-        f"{make(name, 'x.run_from <= run and (x.run_to is null or x.run_to > run)')};",
-        "",
-        f"create macro main.{name}_as_of(moment) as table",
-        "with k as (select base.run_at(base.moment_us(moment)) as run_id)",
-        make(
-            name,
-            "x.run_from <= (select k.run_id from k) and (x.run_to is null or x.run_to > (select k.run_id from k))",
-        )
-        + ";",
-        "",
-    ]
-
-
-def _plain(name: str, where: str) -> str:
-    return f"select x.* exclude (run_from, run_to), x.run_from as run_id from base.{name}_rows x where {where}"
 
 
 def _weighted(name: str, where: str) -> str:
@@ -143,17 +118,6 @@ def _fit_versions() -> list[str]:
     ]
 
 
-def _versions(name: str) -> list[str]:
-    return [
-        f"create view versions.{name} as",
-        "select x.*, f.moment as in_force_from, t.moment as in_force_to",
-        f"from base.{name}_rows x",
-        "join base.run f on f.run_id = x.run_from",
-        "left join base.run t on t.run_id = x.run_to;",
-        "",
-    ]
-
-
 def _versions_of() -> list[str]:
     return [
         "create macro main.versions_of(name, model, lookback, window_end) as table",
@@ -166,16 +130,8 @@ def _versions_of() -> list[str]:
     ]
 
 
-def _comments(name: str, meaning: str, described: tuple[tuple[str, str], ...]) -> list[str]:
-    return [
-        f"comment on view main.{name} is '{meaning}';",
-        *column_comments(f"main.{name}", [*described, ("run_id", "run that wrote the row")]),
-        f"comment on view versions.{name} is 'every version of {name}';",
-        *column_comments(f"versions.{name}", [*described, *VERSIONED]),
-        f"comment on macro table main.{name}_at_run is 'the view {name} as it was after a run: {name}_at_run(41)';",
-        f"comment on macro table main.{name}_as_of is "
-        f"'the view {name} as it was known at a moment: {name}_as_of(''2026-01-31'')';",
-    ]
+def _comments(name: str, meaning: str, columns: tuple[tuple[str, str], ...]) -> list[str]:
+    return comments(name, in_force=meaning, every_version=f"every version of {name}", columns=columns)
 
 
 if __name__ == "__main__":

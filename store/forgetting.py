@@ -15,11 +15,11 @@ from pathlib import Path
 import duckdb
 import pyarrow as pa
 
-from driftbook.store import digest, runs
+from driftbook.store import digest, migrate, runs
 from driftbook.store.errors import UsageError
 from driftbook.store.moments import parse_moment
 from driftbook.store.series import Series, known_series, near_name
-from driftbook.store.sql import query
+from driftbook.store.sql import only_row, query
 from driftbook.store.swap import rewriting
 from driftbook.store.tables import Tracked, columns_at, tracked_tables
 
@@ -60,7 +60,7 @@ def forget(
         one = _series(con, series)
         if before is None:
             _check_not_planned(one)
-        conditions = dict(_conditions(con, one, None if before is None else parse_moment(before)))
+        conditions = dict(_conditions(one, None if before is None else parse_moment(before)))
         touched = _touched_leaves(con, conditions)
         counts = {name: _delete(con, name, where) for name, where in conditions.items()}
         if not any(counts.values()):
@@ -87,16 +87,16 @@ def _check_not_planned(series: Series) -> None:
         )
 
 
-def _conditions(con: duckdb.DuckDBPyConnection, series: Series, before: datetime | None) -> Iterable[tuple[str, str]]:
+def _conditions(series: Series, before: datetime | None) -> Iterable[tuple[str, str]]:
     """For each table, which of its rows go."""
     mine = f"series_id = {series.series_id}"
+    there = columns_at(migrate.newest())
     for table in tracked_tables():
-        columns = columns_at(_migration(con))[table.name]
         if before is None:
             if table.by_series:
                 yield table.name, mine
             continue
-        about = _ABOUT.get(table.name) or (_WINDOW_OPENS if _WINDOW_OPENS in columns else None)
+        about = _ABOUT.get(table.name) or (_WINDOW_OPENS if _WINDOW_OPENS in there[table.name] else None)
         if table.by_series and about:
             yield table.name, f"{mine} and {about} < make_timestamp({round(before.timestamp() * 1_000_000)})"
     if before is None:
@@ -119,7 +119,7 @@ def _touched_leaves(con: duckdb.DuckDBPyConnection, conditions: dict[str, str]) 
 
 
 def _delete(con: duckdb.DuckDBPyConnection, table: str, where: str) -> int:
-    return int(con.execute(f"delete from base.{table} where {where}").fetchall()[0][0])
+    return int(only_row(con, f"delete from base.{table} where {where}")[0])
 
 
 def _note_what_is_left(
@@ -133,10 +133,9 @@ def _note_what_is_left(
 
 def _left(con: duckdb.DuckDBPyConnection, table: Tracked, series_id: int | None, run_id: int) -> dict[str, object]:
     """The leaf of one run, table and series over the rows that are still there."""
-    migration = _migration(con, run_id)
+    (migration,) = only_row(con, "select migration from base.run where run_id = ?", [run_id])
     columns = columns_at(migration)[table.name]
-    found = digest.leaves(con, table, columns, (run_id, run_id), migration)
-    leaf = next((one for one in found if one.series_id == series_id), None)
+    leaf = next(digest.leaves(con, table, columns, (run_id, run_id), migration, series_id=series_id), None)
     return {
         "run_id": run_id,
         "table_name": table.name,
@@ -145,9 +144,3 @@ def _left(con: duckdb.DuckDBPyConnection, table: Tracked, series_id: int | None,
         "rows_closed": leaf.rows_closed if leaf else 0,
         "sha256": leaf.sha256 if leaf else "",
     }
-
-
-def _migration(con: duckdb.DuckDBPyConnection, run_id: int | None = None) -> int:
-    """The schema under which a run was written, or the book's own."""
-    sql = "select migration from base.run where run_id = ?" if run_id else "select max(number) from base.migration"
-    return int(con.execute(sql, [run_id] if run_id else []).fetchall()[0][0])

@@ -30,12 +30,11 @@ from numpy.typing import NDArray
 from driftbook.estimators import MODELS, Fit, Model, Status, rolling
 from driftbook.estimators.realised import bipower_variation, realised_variance
 from driftbook.store.clocks import MICROSECONDS_PER_YEAR
+from driftbook.store.due import steps_over_all
 
 _BLOCK_VALUES = 1 << 18
 _PADDING = 1.25
 _SQL_TYPES = {"double": "DOUBLE", "boolean": "BOOLEAN"}
-# What a list without a single step is asked for, so that it is told to be too short.
-_SOME_STEPS = 5
 # What DuckDB keeps for the times 'infinity' and '-infinity'; a NULL becomes a number below.
 _ENDLESS = np.iinfo(np.int64).max
 
@@ -207,7 +206,7 @@ def _alike(sizes: list[int], padding: float) -> Iterator[list[int]]:
 
 
 def _whole(x: Values, steps: Values) -> _Asked:
-    return _Asked(x, steps, max(x.size - 1, 0) or _SOME_STEPS)
+    return _Asked(x, steps, steps_over_all(x.size))
 
 
 def _steps_at(times: NDArray[Any], x: Values) -> Values:

@@ -17,6 +17,11 @@ def harmless(text: str) -> str:
     return text if text.isprintable() else "".join(_visible(character) for character in text)
 
 
+def count_of(number: int, noun: str, nouns: str | None = None) -> str:
+    """`1 window`, `2 windows`; `nouns` where an s does not make the plural."""
+    return f"{number} {noun if number == 1 else nouns or noun + 's'}"
+
+
 def columns(header: Sequence[str], rows: Sequence[Sequence[Any]]) -> str:
     """Rows as aligned columns without boxes; numbers to the right."""
     words = [[harmless(word(value)) for value in row] for row in rows]

@@ -11,8 +11,9 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from driftbook.store.cli import options as opt
-from driftbook.store.cli.output import count_of, say, say_json
+from driftbook.store.cli.output import say, say_json
 from driftbook.store.errors import DifferenceFound
+from driftbook.store.table import count_of
 
 if TYPE_CHECKING:
     from driftbook.store.proof import Verified

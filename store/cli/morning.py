@@ -10,8 +10,9 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 
 from driftbook.store.cli import options as opt
-from driftbook.store.cli.output import count_of, outcome_text, say, say_json
+from driftbook.store.cli.output import outcome_text, say, say_json
 from driftbook.store.cli.tables import explanation_text, full_table, short_table
+from driftbook.store.table import count_of
 
 if TYPE_CHECKING:
     from driftbook.store.refresh import Progress, Refreshed

@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 import typer
 
-from driftbook.store.table import harmless
+from driftbook.store.table import count_of, harmless
 
 if TYPE_CHECKING:
     from driftbook.store.intake import Outcome
@@ -25,11 +25,6 @@ def say(text: str, *, quiet: bool = False) -> None:
 def say_error(text: str) -> None:
     """A line on standard error, as harmless as `say`."""
     typer.echo("\n".join(harmless(line) for line in text.split("\n")), err=True)
-
-
-def count_of(number: int, noun: str) -> str:
-    """`1 window`, `2 windows`."""
-    return f"{number} {noun}" if number == 1 else f"{number} {noun}s"
 
 
 def outcome_text(outcome: Outcome, *, dry_run: bool = False) -> str:
