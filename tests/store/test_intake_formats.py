@@ -221,6 +221,14 @@ def test_a_damaged_arrow_file_is_named(take, con, how):
     assert observations(con) == []
 
 
+def test_an_arrow_file_without_columns_is_named(take):
+    sink = io.BytesIO()
+    with pa.ipc.new_stream(sink, pa.schema([])):
+        pass
+    with pytest.raises(IntakeError, match=r"^delivery cannot be read: .*at least one column"):
+        take(sink.getvalue())
+
+
 def test_arrow_times_with_a_zone_and_dictionaries_are_read(take, con):
     table = pa.table(
         {
