@@ -64,7 +64,7 @@ def run(arguments: list[str]) -> int:
     except BookError as error:
         _complain(str(error), arguments)
         return error.exit_code
-    except BrokenPipeError:  # whoever read, as `head` does, has read enough
+    except (BrokenPipeError, SystemExit):  # typer exits on a broken pipe: whoever read, as `head` does, has enough
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 0
     except (Exception, KeyboardInterrupt) as error:

@@ -471,9 +471,9 @@ def test_help_of_every_command_has_an_example_and_the_caution_stands_below(say):
 
 
 def test_help_and_sql_load_neither_polars_scipy_pandas_nor_the_plan(book):
-    """Nor pydantic, but for what the command line's own library wants of it."""
+    """Nor pydantic, but for what the command line's own library wants of it; sql not even DuckDB, but in its child."""
     script = ("import sys; from driftbook.store.cli.app import run; code = run(sys.argv[1:]); "
-              "heavy = ('polars', 'scipy', 'pandas', 'driftbook.store.plan'); "
+              "heavy = ('polars', 'scipy', 'pandas', 'duckdb', 'pyarrow', 'numpy', 'driftbook.store.plan'); "
               "print([name for name in heavy if name in sys.modules], file=sys.stderr)")  # fmt: skip
     for words in (["--help"], ["sql", str(book), "select 1"]):
         done = subprocess.run(
