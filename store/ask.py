@@ -64,7 +64,7 @@ def _answer(
         return written(found if rows is None else found.limit(rows))
     except duckdb.OutOfMemoryException as error:
         raise MemoryError from error
-    except (duckdb.Error, UnicodeEncodeError) as error:
+    except duckdb.Error as error:
         raise UsageError(f"the query failed: {str(error).strip()}") from error
 
 

@@ -14,7 +14,7 @@ import typer
 
 from driftbook.store.cli import asked, begin, morning, page_command
 from driftbook.store.cli.output import say_error
-from driftbook.store.errors import BookError
+from driftbook.store.errors import BookError, UsageError
 
 CAUTION = (
     "Numbers are statistical estimates from past data: no advice and no forecast of returns. Limits, margin "
@@ -59,6 +59,7 @@ def run(arguments: list[str]) -> int:
     """Runs one command; gives its exit code: 0, 1, 2, 3, 4, 75 or 130."""
     interrupts = _Interrupts()
     try:
+        _check_text(arguments)
         with interrupts:
             code = app(arguments, prog_name="driftbook", standalone_mode=False)
     except BookError as error:
@@ -72,6 +73,13 @@ def run(arguments: list[str]) -> int:
     if code == _INTERRUPTED:  # typer took the interrupt itself
         _complain(_SAY_INTERRUPTED, arguments)
     return code if isinstance(code, int) else 0
+
+
+def _check_text(arguments: list[str]) -> None:
+    """Bytes that are no UTF-8 come as letters that nothing can write down again."""
+    for argument in arguments:
+        if any("\ud800" <= letter <= "\udfff" for letter in argument):
+            raise UsageError(f"{argument!r} is no UTF-8 text; rename or write it in UTF-8.")
 
 
 class _Interrupts:

@@ -68,11 +68,19 @@ def sql(
         raise UsageError("--json writes to standard output; write a file with --format json.")
     written = _written("object" if as_json else how.value, output, guarded=guarded)
     _check_output(book, output)
-    text = sys.stdin.read() if statement == "-" else statement
-    with ask(book, text, written, Limits(timeout), rows=most) as pieces:
+    with ask(
+        book, _from_standard_input() if statement == "-" else statement, written, Limits(timeout), rows=most
+    ) as pieces:
         deliver(pieces, output)
     if output is not None:
         say(f"written to {output}", quiet=quiet)
+
+
+def _from_standard_input() -> str:
+    try:
+        return sys.stdin.buffer.read().decode()
+    except UnicodeDecodeError as error:
+        raise UsageError("standard input is no UTF-8 text.") from error
 
 
 def _written(how: str, output: Path | None, *, guarded: bool) -> Callable[[duckdb.DuckDBPyRelation], bytes]:

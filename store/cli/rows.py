@@ -7,6 +7,7 @@ import json
 import os
 import sys
 from collections.abc import Iterable
+from decimal import Decimal
 from io import BytesIO, StringIO
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -22,6 +23,14 @@ if TYPE_CHECKING:
 _FORMULA = tuple("=+-@\t\r\n＝＋－＠")
 
 
+class _Lines(StringIO):
+    """Rows that end with a line feed alone; the writer itself has to know of both, to quote a text that holds one."""
+
+    def write(self, row: str) -> int:
+        """Takes one row."""
+        return super().write(row.removesuffix("\r\n") + "\n")
+
+
 def as_table(rows: duckdb.DuckDBPyRelation) -> bytes:
     """Aligned columns for people."""
     return f"{columns([harmless(name) for name in rows.columns], rows.fetchall())}\n".encode()
@@ -33,8 +42,8 @@ def as_csv(rows: duckdb.DuckDBPyRelation, *, guarded: bool, shown: bool) -> byte
     `guarded`: a text that a spreadsheet would take for a formula begins with an apostrophe, and each text is quoted,
     whatever delimiter the spreadsheet believes in. `shown`: on a terminal, which must not obey what a text says.
     """
-    text = StringIO(newline="")
-    writer = csv.writer(text, lineterminator="\n", quoting=csv.QUOTE_NONNUMERIC if guarded else csv.QUOTE_MINIMAL)
+    text = _Lines(newline="")
+    writer = csv.writer(text, lineterminator="\r\n", quoting=csv.QUOTE_NONNUMERIC if guarded else csv.QUOTE_MINIMAL)
     told = _unlike_a_formula if guarded else json_value
     writer.writerow(map(told, rows.columns))
     writer.writerows(map(told, row) for row in rows.fetchall())
@@ -82,5 +91,7 @@ def _json(value: Any) -> bytes:
 
 
 def _unlike_a_formula(value: Any) -> Any:
+    if isinstance(value, Decimal):
+        return value
     told = json_value(value)
     return f"'{told}" if isinstance(told, str) and told.lstrip(" ").startswith(_FORMULA) else told

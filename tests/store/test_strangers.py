@@ -367,9 +367,15 @@ def test_a_query_does_not_outlive_its_time_though_nobody_waits_for_it_any_more(f
     assert is_gone(child, within=20)
 
 
-def test_a_foreign_writer_is_named_as_without_a_child(filled):
-    with duckdb.connect(filled), pytest.raises(BookLocked, match="is open for writing outside driftbook"):
-        answer(filled, "select 1")
+def test_a_foreign_writer_is_told_of_as_without_a_child(filled):
+    script = "import duckdb, sys; con = duckdb.connect(sys.argv[1]); print('open', flush=True); sys.stdin.read()"
+    with subprocess.Popen(
+        [sys.executable, "-c", script, filled], stdin=subprocess.PIPE, stdout=subprocess.PIPE, text=True
+    ) as writer:
+        assert writer.stdout.readline() == "open\n"
+        with pytest.raises(BookLocked, match="is open for writing outside driftbook"):
+            answer(filled, "select 1")
+        writer.stdin.close()
 
 
 def test_the_book_is_left_to_others_while_a_query_runs(filled):
