@@ -28,6 +28,7 @@ VERSIONED = ("series", "observation", "refused_row", "plan", "ou")
 COMMANDS = {
     "refresh": "--plan --workers --all --dry-run --at --strict --yes --wait --quiet --json",
     "sql": "--format --output --quiet --json",
+    "page": "--port --output --quiet --json",
     "verify": "--quiet --json",
     "demo": "--quiet --json",
     "new": "--quiet --json",
