@@ -41,13 +41,21 @@ class Leaf:
 
 
 def leaves(
-    con: duckdb.DuckDBPyConnection, table: Tracked, columns: list[str], runs: tuple[int, int], migration: int
+    con: duckdb.DuckDBPyConnection,
+    table: Tracked,
+    columns: list[str],
+    runs: tuple[int, int],
+    migration: int,
+    *,
+    series_id: int | None = None,
 ) -> Iterator[Leaf]:
     """The leaves of one table for all runs from runs[0] to runs[1], in the order of series and run.
 
-    `columns` are those that the table had at these runs, without run_to, in their order.
+    `columns` are those that the table had at these runs, without run_to, in their order. `series_id` asks for the
+    leaves of one series alone.
     """
-    for first, last in _batches(con, table, runs):
+    batches = _batches(con, table, runs) if series_id is None else [(series_id, series_id)]
+    for first, last in batches:
         came = _grouped_rows(con, table, columns, "run_from", runs, (first, last))
         went = _grouped_rows(con, table, list(table.key), "run_to", runs, (first, last)) if table.closes else {}
         for series_id, run_id in sorted(came.keys() | went.keys(), key=_nulls_first):

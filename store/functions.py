@@ -18,7 +18,7 @@ from __future__ import annotations
 from collections.abc import Callable, Iterator
 from concurrent.futures import Executor, Future
 from dataclasses import dataclass
-from functools import partial
+from functools import cache, partial
 from typing import Any
 
 import duckdb
@@ -30,13 +30,11 @@ from numpy.typing import NDArray
 from driftbook.estimators import MODELS, Fit, Model, Status, rolling
 from driftbook.estimators.realised import bipower_variation, realised_variance
 from driftbook.store.clocks import MICROSECONDS_PER_YEAR
+from driftbook.store.due import steps_over_all
 
 _BLOCK_VALUES = 1 << 18
 _PADDING = 1.25
 _SQL_TYPES = {"double": "DOUBLE", "boolean": "BOOLEAN"}
-_WORDS = pa.array([status.word for status in Status], pa.string())
-# What a list without a single step is asked for, so that it is told to be too short.
-_SOME_STEPS = 5
 # What DuckDB keeps for the times 'infinity' and '-infinity'; a NULL becomes a number below.
 _ENDLESS = np.iinfo(np.int64).max
 
@@ -208,7 +206,7 @@ def _alike(sizes: list[int], padding: float) -> Iterator[list[int]]:
 
 
 def _whole(x: Values, steps: Values) -> _Asked:
-    return _Asked(x, steps, max(x.size - 1, 0) or _SOME_STEPS)
+    return _Asked(x, steps, steps_over_all(x.size))
 
 
 def _steps_at(times: NDArray[Any], x: Values) -> Values:
@@ -294,8 +292,14 @@ def _structs(found: list[_Rows]) -> pa.Array:
         fields.append(_nullable(values, column.kind))
         names.append(column.name)
     codes = _joined([rows.cut(rows.fit.status) for rows in found])
-    fields.append(_WORDS.take(pa.array(codes.astype(np.int64))))
+    fields.append(_words().take(pa.array(codes.astype(np.int64))))
     return pa.StructArray.from_arrays(fields, [*names, "status"])
+
+
+@cache
+def _words() -> pa.Array:
+    # made when first needed: pyarrow looks for pandas at its first array, and loads it where it is installed
+    return pa.array([status.word for status in Status], pa.string())
 
 
 def _joined(parts: list[NDArray[Any]]) -> NDArray[Any]:

@@ -14,6 +14,7 @@ import pyarrow as pa
 from driftbook.estimators import MODELS, Model
 from driftbook.estimators.compare import bic, weights
 from driftbook.store.in_force import Candidate, Choice, choose
+from driftbook.store.local_sql import local_columns
 from driftbook.store.plan import Plan
 from driftbook.store.runs import Run
 from driftbook.store.series import Series
@@ -169,24 +170,17 @@ def _headlines(plan: Plan, series: dict[int, Series]) -> dict[int, int]:
 
 
 def _local_sql(model: Model) -> str:
-    """The latest fits of one model: volatility and drift at the last value, relative for positive series.
-
-    A model of X > 0 is fitted to X + shift and speaks in fractions of that; relative to X they are larger by
-    (X + shift)/X. Where a series of prices is not above zero, nothing is relative to it.
-    """
+    """The latest fits of one model, with what it says at the last value."""
     there = {column.name: column.sql or column.name for column in model.columns}
     pull = ", ".join(f"({there[name]})" if name in there else "null" for name in _PULL)
-    x = "case when value + shift > 0 then value + shift end" if model.range == "positive" else "value"
-    of_value = "x" if model.is_relative else "1"
-    scale = f"case when sign <> 'positive' then 1.0 when value > 0 then {of_value} / value end"
-    volatility = ", ".join(f"({sql}) * scale" for sql in model.local_volatility)
     p_value = "no_reversion_p" if "no_reversion_p" in there else "null"
+    local = local_columns(model)
     return (
-        f"with there as (select h.*, {x} as x from headline h), "
-        f"scaled as (select *, {scale} as scale from there) "
+        f"with there as (select h.*, {local['x']} as x from headline h), "
+        f"scaled as (select *, {local['scale']} as scale from there) "
         "select h.series_id, h.observed_at, h.value, h.lookback, m.window_start, "
-        f"'{model.name}', {len(model.parameters)}, n, loglik, status, {p_value}, {volatility}, "
-        f"({model.local_drift}) * scale, {pull} "
+        f"'{model.name}', {len(model.parameters)}, n, loglik, status, {p_value}, {local['volatility']}, "
+        f"{local['drift']}, {pull} "
         f"from scaled h join base.{model.name} m on m.series_id = h.series_id and m.lookback = h.lookback "
         "and m.window_end = h.observed_at and m.run_to is null"
     )
@@ -227,15 +221,11 @@ def _row(fits: list[_Fit], series: Series, before: Row | None, marks: _Marks) ->
 
 def _candidate(fit: _Fit) -> Candidate:
     criterion = None if fit.loglik is None else fit.criterion
-    return Candidate(fit.model, fit.status, criterion, _has_pull(fit.model), fit.no_reversion_p)
+    return Candidate(fit.model, fit.status, criterion, MODELS[fit.model].has_pull, fit.no_reversion_p)
 
 
 def _choice(before: Row | None) -> Choice | None:
     return None if before is None else Choice(before.model, before.challenger)
-
-
-def _has_pull(model: str) -> bool:
-    return any(column.name == "half_life" for column in MODELS[model].columns)
 
 
 def _weights(fits: list[_Fit]) -> list[float | None]:
@@ -247,9 +237,9 @@ def _weights(fits: list[_Fit]) -> list[float | None]:
 
 def _pulled(fit: _Fit | None, fits: list[_Fit], weight: dict[str, float | None]) -> _Fit | None:
     """The fit that the half-life is told from: the model in force, or the heaviest that has a pull."""
-    if fit is not None and _has_pull(fit.model):
+    if fit is not None and MODELS[fit.model].has_pull:
         return fit
-    heaviest = sorted((one for one in fits if _has_pull(one.model)), key=lambda one: -(weight[one.model] or 0.0))
+    heaviest = sorted((one for one in fits if MODELS[one.model].has_pull), key=lambda one: -(weight[one.model] or 0.0))
     return heaviest[0] if heaviest else None
 
 
@@ -295,4 +285,3 @@ def _put_in_force(con: duckdb.DuckDBPyConnection, rows: list[Row], gone: list[in
             f"select {', '.join(names)}, {run_id} from latest_row order by series_id"
         )
         con.unregister("latest_row")
-

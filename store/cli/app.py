@@ -64,6 +64,9 @@ def run(arguments: list[str]) -> int:
     except BookError as error:
         _complain(str(error), arguments)
         return error.exit_code
+    except BrokenPipeError:  # whoever read, as `head` does, has read enough
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return 0
     except (Exception, KeyboardInterrupt) as error:
         return _other(error, arguments, interrupted=interrupts.seen or isinstance(error, KeyboardInterrupt))
     if code == _INTERRUPTED:  # typer took the interrupt itself

@@ -25,6 +25,7 @@ def add_to(app: typer.Typer) -> None:
     app.command(rich_help_panel=opt.TO_BEGIN)(demo)
     app.command(rich_help_panel=opt.TO_BEGIN)(new)
     app.command(rich_help_panel=opt.TO_BEGIN)(ingest)
+    app.command(rich_help_panel=opt.TO_BEGIN)(forget)
 
 
 def demo(
@@ -124,6 +125,32 @@ def ingest(
         for outcome in outcomes:
             say(outcome_text(outcome, dry_run=dry_run), quiet=quiet)
     return 3 if strict and refused else 0
+
+
+def forget(
+    book: opt.Book,
+    series: Annotated[str, typer.Argument(metavar="SERIES", show_default=False)],
+    before: Annotated[
+        str | None, typer.Option("--before", metavar="WHEN", help="Only what it says of times before this.")
+    ] = None,
+    yes: Annotated[bool, typer.Option("--yes", help="It cannot be undone.")] = False,
+    at: opt.At = None,
+    wait: opt.Wait = 0,
+    quiet: opt.Quiet = False,
+    as_json: opt.Json = False,
+) -> None:
+    """Delete a series, or its past, for good; the digest chain says so, and no byte of it is left.
+
+    Example: driftbook forget desk.duckdb diesel --before 2020-01-01 --yes
+    """
+    from driftbook.store.forgetting import forget as delete
+
+    done = delete(book, series, before=before, yes=yes, wait=wait, at=at)
+    if as_json:
+        say_json({"run": done.run.run_id, "rows": done.rows, "digest": done.run.digest})
+    else:
+        rows = ", ".join(f"{count} of {table}" for table, count in done.rows.items())
+        say(f"Run {done.run.run_id}: deleted for good {rows}.", quiet=quiet)
 
 
 def _roles(text: str | None) -> dict[str, str]:

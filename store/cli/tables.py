@@ -8,9 +8,8 @@ from typing import TYPE_CHECKING, Any
 
 from rich.cells import cell_len
 
-from driftbook.store.cli.output import count_of
 from driftbook.store.digits import with_interval
-from driftbook.store.table import columns, word
+from driftbook.store.table import columns, count_of, word
 
 if TYPE_CHECKING:
     from driftbook.store.explaining import Explanation, Statement

@@ -13,7 +13,6 @@ from driftbook.estimators.simulate import simulate_ou
 
 _SEED = 20260630
 _FIRST_DAY, _LAST_DAY = date(2023, 6, 26), date(2026, 6, 29)
-_STEP = 1 / 252
 # A keying error of the first morning: the comma in the wrong place. And a settlement that came late.
 _MISKEYED, _SLIP = ("pellets_fob", date(2026, 6, 11)), 10.0
 _SETTLED, _SURCHARGE = ("power_da", date(2026, 6, 25)), 41.0
@@ -80,16 +79,16 @@ def deliveries() -> Iterator[Delivery]:
 
 
 def _true_rows() -> list[Row]:
-    days = _weekdays()
     rng = np.random.default_rng(_SEED)
     rows: list[Row] = []
     for name, made in _SERIES.items():
+        days = _days(weekends=name == "reservoir")
         path = simulate_ou(
             rng,
             kappa=made.kappa,
             theta=made.theta,
             sigma=made.sigma,
-            dt=_STEP,
+            dt=1 / 365 if name == "reservoir" else 1 / 252,
             steps=len(days) - 1,
             start=made.theta,
         )[0]
@@ -100,9 +99,9 @@ def _true_rows() -> list[Row]:
     return rows
 
 
-def _weekdays() -> list[date]:
+def _days(*, weekends: bool) -> list[date]:
     count = (_LAST_DAY - _FIRST_DAY).days + 1
-    return [day for day in (_FIRST_DAY + timedelta(n) for n in range(count)) if day.weekday() < 5]
+    return [day for day in (_FIRST_DAY + timedelta(n) for n in range(count)) if weekends or day.weekday() < 5]
 
 
 def _peg(day: date) -> float:

@@ -11,6 +11,7 @@ from jinja2 import Environment, PackageLoader, StrictUndefined
 from driftbook.store.page import small_year, whiskers, words
 from driftbook.store.page.known import Known
 from driftbook.store.page.links import Links
+from driftbook.store.table import count_of
 
 CAUTION = (
     "Statistical estimates from past data: no advice and no forecast of returns. Limits, margin and capital rules are "
@@ -27,7 +28,9 @@ def _environment() -> Environment:
         trim_blocks=True,
         lstrip_blocks=True,
     )
-    made.globals.update(words=words, ticks=whiskers.ticks, caution=CAUTION, small_height=small_year.HEIGHT)
+    made.globals.update(
+        words=words, count_of=count_of, ticks=whiskers.ticks, caution=CAUTION, small_height=small_year.HEIGHT
+    )
     made.filters["shell"] = shlex.quote
     return made
 

@@ -17,6 +17,7 @@ from driftbook.store.page.level import Crossed, Window, crossed
 from driftbook.store.page.overview import changes, one_row
 from driftbook.store.page.scale import Scale, in_decades, straight, within_reach
 from driftbook.store.sql import first_row, query
+from driftbook.store.table import count_of
 
 _PICTURE, _STRIP, _RAIL = 300.0, 130.0, 12
 _MOST_VALUES, _ALL_STEPS = 4000, 2000
@@ -182,7 +183,7 @@ def _small_print(row: dict[str, Any], window: Window | None) -> str:
     if window is None:
         return f"Clock {row['clock']}."
     return (
-        f"Window of {words.count(window.n, 'step')}, {words.day(window.opens)} – {words.day(window.closes)}; "
+        f"Window of {count_of(window.n, 'step')}, {words.day(window.opens)} – {words.day(window.closes)}; "
         f"clock {row['clock']}; intervals are 95 %; said by run {row['run_id']}; "
         f"status of the fit: {window.status.replace('_', ' ')}."
     )
@@ -239,7 +240,7 @@ def _values_summary(row: dict[str, Any], times: Sequence[datetime], values: Sequ
     unit = words.clean(row["unit"])
     return (
         f"Values of {words.clean(row['series'])} from {words.day(times[0])} to {words.day(times[-1])}: "
-        f"{words.count(len(values), 'observation')}, lowest {min(values):.6g}, highest {max(values):.6g}, "
+        f"{count_of(len(values), 'observation')}, lowest {min(values):.6g}, highest {max(values):.6g}, "
         f"last {values[-1]:.6g} {unit}".rstrip()
         + "."
     )
@@ -257,7 +258,7 @@ def _said(book: Known, row: dict[str, Any], corrections: list[dict[str, Any]]) -
     there = [dict(zip(columns, one, strict=True)) for one in rows]
     if not there:
         return [], "", []
-    pulled = there if words.has_pull(row["model"]) else _heaviest_with_pull(book, row)
+    pulled = there if MODELS[row["model"]].has_pull else _heaviest_with_pull(book, row)
     ends = [one["window_end"] for one in there if one["run_to"] is None] or [one["window_end"] for one in there]
     clock = Clock(min(ends), max(ends))
     unit, time = words.volatility_unit(row["volatility_unit"]), words.volatility_time(row["volatility_unit"])
@@ -269,10 +270,10 @@ def _said(book: Known, row: dict[str, Any], corrections: list[dict[str, Any]]) -
     ]
     replaced = sum(one["run_to"] is not None for one in there)
     answer = (
-        f"{words.count(replaced, 'earlier statement')} of {words.count(len(set(ends)), 'window')} "
-        f"{'was' if replaced == 1 else 'were'} replaced; {words.count(len(corrections), 'correction')} came."
+        f"{count_of(replaced, 'earlier statement')} of {count_of(len(set(ends)), 'window')} "
+        f"{'was' if replaced == 1 else 'were'} replaced; {count_of(len(corrections), 'correction')} came."
         if replaced or corrections
-        else f"Nothing that was said of {words.count(len(set(ends)), 'window')} has been replaced since."
+        else f"Nothing that was said of {count_of(len(set(ends)), 'window')} has been replaced since."
     )
     return [one for one in told if one is not None], answer, _rail(clock, corrections)
 
@@ -298,7 +299,7 @@ def _heaviest_with_pull(book: Known, row: dict[str, Any]) -> list[dict[str, Any]
     """The statements of the model from which the half-life is told when the one in force has none."""
     columns, rows = models_table(book, row)
     weights = [dict(zip(columns, one, strict=True)) for one in rows if one[0] == row["window_end"]]
-    with_pull = [one for one in weights if one["model"] in MODELS and words.has_pull(one["model"])]
+    with_pull = [one for one in weights if one["model"] in MODELS and MODELS[one["model"]].has_pull]
     if not with_pull:
         return []
     heaviest = max(with_pull, key=lambda one: one["model_weight"] or 0.0)
@@ -354,11 +355,11 @@ def _times(number: float | None, factor: float) -> float | None:
 def _said_summary(title: str, numbers: list[float | None], replaced: int) -> str:
     known = [number for number in numbers if number is not None]
     if not known:
-        return f"{title}: {words.count(len(numbers), 'window')}, none with a number."
+        return f"{title}: {count_of(len(numbers), 'window')}, none with a number."
     last = "none" if numbers[-1] is None else f"{numbers[-1]:.4g}"
     return (
-        f"{title}, over {words.count(len(numbers), 'window')}: lowest {min(known):.4g}, highest {max(known):.4g}, "
-        f"last {last}; {words.count(replaced, 'earlier statement')} faint."
+        f"{title}, over {count_of(len(numbers), 'window')}: lowest {min(known):.4g}, highest {max(known):.4g}, "
+        f"last {last}; {count_of(replaced, 'earlier statement')} faint."
     )
 
 

@@ -10,6 +10,7 @@ from driftbook.store.digits import with_interval
 from driftbook.store.errors import UsageError
 from driftbook.store.explaining import Explanation, Statement, explain_on
 from driftbook.store.page import words
+from driftbook.store.table import count_of
 
 
 @dataclass(frozen=True)
@@ -47,9 +48,9 @@ def _head(one: Statement) -> str:
 def _sentence(found: Explanation) -> str:
     causes = []
     if found.corrections:
-        causes.append(words.count(len(found.corrections), "correction"))
+        causes.append(count_of(len(found.corrections), "correction"))
     if found.steps_that_came or found.steps_that_left:
-        causes.append(f"{words.count(found.steps_that_came, 'step')} that came and {found.steps_that_left} that left")
+        causes.append(f"{count_of(found.steps_that_came, 'step')} that came and {found.steps_that_left} that left")
     causes += found.causes
     return f"Between run {found.earlier.run_id} and run {found.later.run_id}: {'; '.join(causes) or 'nothing came'}."
 

@@ -95,13 +95,8 @@ def model(name: str | None) -> str:
     if name not in MODELS:
         return name
     found = MODELS[name]
-    pull = "pulled to a level" if has_pull(name) else "no pull"
+    pull = "pulled to a level" if found.has_pull else "no pull"
     return f"{pull}, in proportion" if found.is_relative else pull
-
-
-def has_pull(name: str) -> bool:
-    """Whether a model has a half-life."""
-    return any(column.name == "half_life" for column in MODELS[name].columns)
 
 
 def day(when: datetime | None) -> str:
@@ -129,8 +124,3 @@ def age(row: dict[str, Any], now: datetime) -> int:
     """Days since the last observation."""
     observed_at: datetime = row["observed_at"]
     return (now.replace(tzinfo=None) - observed_at) // timedelta(days=1)
-
-
-def count(number: int, noun: str, nouns: str | None = None) -> str:
-    """`1 step`, `2 steps`."""
-    return f"{number} {noun if number == 1 else nouns or noun + 's'}"
