@@ -7,11 +7,12 @@ from html.parser import HTMLParser
 
 import duckdb
 import pytest
-from page_books import HOSTILE, correct, small_book, thousand_series
+from page_books import HOSTILE, correct, small_book
 from starlette.testclient import TestClient
 
 from driftbook import store
 from driftbook.store.cli.app import run as run_command
+from driftbook.store.demo import run_demo
 from driftbook.store.page import create_app
 from driftbook.store.page.csv_text import csv_text
 from driftbook.store.page.guard import HEADERS
@@ -33,6 +34,13 @@ def small(tmp_path_factory):
 @pytest.fixture(scope="module")
 def client(small):
     return client_of(small)
+
+
+@pytest.fixture(scope="module")
+def island(tmp_path_factory):
+    folder = tmp_path_factory.mktemp("demo") / "island"
+    run_demo(folder, lambda _: None, lambda _: "", lambda _: "")
+    return folder / "island.duckdb"
 
 
 class _Words(HTMLParser):
@@ -257,8 +265,30 @@ def test_without_evidence_of_a_pull_a_half_life_has_a_lower_end_only():
     assert half_life(None, None, None, unbounded=True) == "no pull seen"
 
 
-def test_a_thousand_series_are_a_light_page_in_little_time(tmp_path):
-    client = client_of(thousand_series(tmp_path / "many.duckdb"))
+def test_the_demo_is_shown_as_the_tour_tells_it(island):
+    client = client_of(island)
+    first = words_of(client.get("/"))
+    assert ": 9 series," in first
+    assert "no advice and no forecast of returns" in first
+    with store.connect(island) as con:
+        names = [name for (name,) in con.execute("select series from series").fetchall()]
+        models = con.execute("select series, model from latest order by series").fetchall()
+    assert all(f"{name} " in first for name in names)
+    columns, *rows = rows_of(client.get("/csv/latest.csv"))
+    assert sorted((row[0], row[columns.index("model")]) for row in rows) == models
+    assert "358 (322–395)" in words_of(client.get("/series?name=power_da"))
+    assert "Run 7 of" in words_of(client.get("/?as_of=2026-06-30T08:00Z"))
+
+
+@pytest.mark.parametrize("path", ["/series?name=dieselle", "/nowhere", "/csv/../page.css", "/static/../app.py"])
+def test_what_is_not_there_is_not_found_in_a_sentence(client, path):
+    answer = client.get(path)
+    assert answer.status_code == 404
+    assert "Traceback" not in answer.text
+
+
+def test_a_thousand_series_are_a_light_page_in_little_time(many):
+    client = client_of(many)
     seconds = []
     for _ in range(4):
         start = time.process_time()

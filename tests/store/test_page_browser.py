@@ -8,7 +8,7 @@ from pathlib import Path
 
 import pytest
 import uvicorn
-from page_books import HOSTILE, correct, small_book, thousand_series
+from page_books import HOSTILE, correct, small_book
 from playwright.sync_api import sync_playwright
 
 from driftbook.store.cli.app import run as run_command
@@ -259,8 +259,8 @@ def test_the_sheets_can_be_read_without_a_script(browser, small):
     context.close()
 
 
-def test_a_thousand_series_are_filtered_as_one_types(page, serve, tmp_path):
-    page.goto(serve(thousand_series(tmp_path / "many.duckdb")))
+def test_a_thousand_series_are_filtered_as_one_types(page, serve, many):
+    page.goto(serve(many))
     page.locator("#filter").focus()
     took = page.evaluate(
         "() => { const field = document.getElementById('filter'), start = performance.now(); field.value = '0999'; "
