@@ -4,11 +4,10 @@ from __future__ import annotations
 
 import os
 from collections.abc import Callable, Iterator
-from concurrent.futures import Executor, ProcessPoolExecutor
+from concurrent.futures import Executor
 from contextlib import ExitStack, contextmanager
 from dataclasses import replace
 from datetime import datetime
-from multiprocessing import get_context
 from pathlib import Path
 
 from driftbook.store import functions, intake, runs
@@ -17,6 +16,7 @@ from driftbook.store.inbox import Delivered, take_in_folder
 from driftbook.store.plan import PlanText, read_plan
 from driftbook.store.refresh import Progress, Refreshed, put_plan_in_force, refresh
 from driftbook.store.swap import Draft, rewriting
+from driftbook.store.workers import worker_processes
 
 
 class Writing:
@@ -140,6 +140,8 @@ def _executor(workers: int) -> Iterator[Executor]:
     if workers == 1:
         yield functions.InlineExecutor()
         return
-    # spawned, never forked: a fork would copy DuckDB's threads and locks in mid-air
-    with ProcessPoolExecutor(workers, mp_context=get_context("spawn")) as pool:
+    pool = worker_processes(workers)
+    try:
         yield pool
+    finally:
+        pool.shutdown(cancel_futures=True)
