@@ -6,9 +6,9 @@ import tomllib
 from dataclasses import dataclass
 from typing import Any
 
-from driftbook.store.page import words
-from driftbook.store.page.known import Known
-from driftbook.store.page.scale import Scale
+from driftbook.store import words
+from driftbook.store.charts.scale import Scale
+from driftbook.store.known import Known
 from driftbook.store.page.small_year import SmallYear, periods_for, small_year
 from driftbook.store.page.whiskers import Whisker, shared_axis, whisker
 from driftbook.store.sql import first_row, query
@@ -80,14 +80,6 @@ def overview(book: Known) -> Overview:
         volatility_axis=volatility_axis,
         half_life_axis=half_life_axis,
     )
-
-
-def one_row(book: Known, series: str) -> dict[str, Any] | None:
-    """What the book says of one series; None if it was not known."""
-    source, told = book.latest()
-    sql = query("page_rows").format(latest=source, chosen="s.series = $series")
-    found = book.rows(sql, run=book.run_id, series=series, **told)
-    return found[0] if found else None
 
 
 def years_of(book: Known, series: int) -> dict[str, SmallYear]:

@@ -1,16 +1,27 @@
-"""Figures, times and models as people read them on the page."""
+"""Figures, times and models as people read them."""
 
 from __future__ import annotations
 
 from datetime import UTC, datetime, timedelta
 from typing import Any
 
-from driftbook.estimators import MODELS
 from driftbook.store.digits import with_interval
 from driftbook.store.table import harmless
 
 _MONTHS = ["Jan", "Feb", "Mar", "Apr", "May", "Jun", "Jul", "Aug", "Sep", "Oct", "Nov", "Dec"]
 NOTHING = "no number"
+_MODELS = {
+    "abm": "no pull",
+    "gbm": "no pull, in proportion",
+    "ou": "pulled to a level",
+    "exp_ou": "pulled to a level, in proportion",
+    "cir": "pulled to a level, calmer near zero",
+    "ckls": "pulled to a level, moves by a power of it",
+    "quartic": "one or two resting levels",
+    "merton": "no pull, with jumps",
+    "inertial": "swings about a level",
+    "ou_noise": "pulled to a level, seen through noise",
+}
 _PER_TIME = {"√year": "a √year", "√second": "a √second"}
 
 
@@ -88,15 +99,21 @@ def half_life_before(row: dict[str, Any]) -> str:
     )
 
 
+def drift(row: dict[str, Any]) -> str:
+    """The drift at the last value, in three digits."""
+    number = scaled(row["drift"], row["volatility_unit"])
+    return NOTHING if number is None else f"{float(f'{number:.3g}'):.10g}, without an interval so far"
+
+
+def correction(one: dict[str, Any]) -> str:
+    """What became of an observation, and in which run."""
+    now = "withdrawn" if one["after"] is None else f"corrected to {one['after']:.6g}"
+    return f"{day(one['observed_at'])}: {one['before']:.6g} {now} in run {one['run_id']}"
+
+
 def model(name: str | None) -> str:
-    """A model in words: whether it has a pull, and whether it works in proportions."""
-    if name is None:
-        return "none"
-    if name not in MODELS:
-        return name
-    found = MODELS[name]
-    pull = "pulled to a level" if found.has_pull else "no pull"
-    return f"{pull}, in proportion" if found.is_relative else pull
+    """A model in words; one without words goes by its name."""
+    return "none" if name is None else _MODELS.get(name, name)
 
 
 def day(when: datetime | None) -> str:
