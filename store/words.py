@@ -5,11 +5,10 @@ from __future__ import annotations
 from datetime import UTC, datetime, timedelta
 from typing import Any
 
-from driftbook.store.digits import with_interval
+from driftbook.store import figures
 from driftbook.store.table import harmless
 
 _MONTHS = ["Jan", "Feb", "Mar", "Apr", "May", "Jun", "Jul", "Aug", "Sep", "Oct", "Nov", "Dec"]
-NOTHING = "no number"
 _MODELS = {
     "abm": "no pull",
     "gbm": "no pull, in proportion",
@@ -22,7 +21,6 @@ _MODELS = {
     "inertial": "swings about a level",
     "ou_noise": "pulled to a level, seen through noise",
 }
-_PER_TIME = {"√year": "a √year", "√second": "a √second"}
 
 
 def clean(text: str | None) -> str:
@@ -32,56 +30,18 @@ def clean(text: str | None) -> str:
 
 def value(row: dict[str, Any]) -> str:
     """The last value with its unit."""
-    return NOTHING if row["value"] is None else f"{row['value']:.6g} {clean(row['unit'])}".rstrip()
-
-
-def is_relative(unit: str | None) -> bool:
-    """Whether a volatility is a fraction of the value, and so shown in per cent."""
-    return (unit or "").startswith("1/")
-
-
-def volatility_unit(unit: str | None) -> str:
-    """`1/√year` is per cent; any other unit without its time."""
-    return "%" if is_relative(unit) else clean((unit or "").rpartition("/")[0])
-
-
-def volatility_time(unit: str | None) -> str:
-    """What a volatility is counted over."""
-    return _PER_TIME.get((unit or "").rpartition("/")[2], "")
+    return figures.with_unit(row["value"], row["unit"])
 
 
 def volatility(row: dict[str, Any], of: str = "") -> str:
     """A volatility with its interval and unit, of now or of before."""
-    unit = row[f"{of}volatility_unit"]
-    number, lower, upper = (scaled(row[f"{of}volatility{end}"], unit) for end in ("", "_lower", "_upper"))
-    return amount(number, lower, upper, volatility_unit(unit))
-
-
-def scaled(number: float | None, unit: str | None) -> float | None:
-    """A volatility as it is shown: fractions in per cent."""
-    return number * 100 if number is not None and is_relative(unit) else number
-
-
-def amount(number: float | None, lower: float | None, upper: float | None, unit: str) -> str:
-    """`23.4 (21.3–25.5) %`, or that there is none."""
-    if number is None:
-        return NOTHING
-    without = "" if (lower, upper) != (None, None) else ", no interval"
-    return f"{with_interval(number, lower, upper)} {unit}".rstrip() + without
-
-
-def half_life(number: float | None, lower: float | None, upper: float | None, *, unbounded: bool | None) -> str:
-    """`28 d (12 d – no end)`; without evidence of a pull, from where on it lies."""
-    if number is None and lower is not None and upper is None:
-        return f"over {with_interval(lower, None, None)} d"
-    if number is None and lower is None and upper is None:
-        return "no pull seen" if unbounded else NOTHING
-    return with_interval(number, lower, upper, "d")
+    number, lower, upper = (row[f"{of}volatility{end}"] for end in ("", "_lower", "_upper"))
+    return figures.volatility(number, lower, upper, row[f"{of}volatility_unit"])
 
 
 def half_life_now(row: dict[str, Any]) -> str:
     """The half-life that is in force."""
-    return half_life(
+    return figures.half_life(
         row["half_life_days"],
         row["half_life_days_lower"],
         row["half_life_days_upper"],
@@ -91,7 +51,7 @@ def half_life_now(row: dict[str, Any]) -> str:
 
 def half_life_before(row: dict[str, Any]) -> str:
     """The half-life of the run before."""
-    return half_life(
+    return figures.half_life(
         row["before_half_life"],
         row["before_half_life_lower"],
         row["before_half_life_upper"],
@@ -101,8 +61,8 @@ def half_life_before(row: dict[str, Any]) -> str:
 
 def drift(row: dict[str, Any]) -> str:
     """The drift at the last value, in three digits."""
-    number = scaled(row["drift"], row["volatility_unit"])
-    return NOTHING if number is None else f"{float(f'{number:.3g}'):.10g}, without an interval so far"
+    number = figures.scaled(row["drift"], row["volatility_unit"])
+    return figures.NOTHING if number is None else f"{float(f'{number:.3g}'):.10g}, without an interval so far"
 
 
 def correction(one: dict[str, Any]) -> str:

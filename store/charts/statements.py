@@ -14,9 +14,9 @@ from driftbook.estimators import MODELS
 from driftbook.store.charts.scale import Scale, in_decades, straight, within_reach
 from driftbook.store.charts.style import Palette, along, milliseconds, on_paper, up
 from driftbook.store.charts.tables import as_rows, corrections_table, models_table, statements_table
+from driftbook.store.figures import is_relative, volatility_time, volatility_unit
 from driftbook.store.known import Known
 from driftbook.store.table import count_of
-from driftbook.store.words import is_relative, volatility_time, volatility_unit
 
 HEIGHT = 130
 QUANTITIES = ("volatility", "half_life", "drift")

@@ -10,6 +10,7 @@ from starlette.responses import HTMLResponse, JSONResponse, Response
 
 from driftbook.store.errors import BookLocked, UsageError
 from driftbook.store.known import Known, known
+from driftbook.store.page import guide
 from driftbook.store.page.data import csv_of
 from driftbook.store.page.links import Served
 from driftbook.store.page.overview import overview
@@ -47,6 +48,19 @@ def csv_file(request: Request) -> Response:
         text = csv_of(book, kind, request.query_params.get("name"))
     name = f'attachment; filename="{kind}.csv"'
     return Response(text, media_type="text/csv; charset=utf-8", headers={"content-disposition": name})
+
+
+def guide_list(_: Request) -> Response:
+    """The pages of the guide."""
+    return HTMLResponse(render("guide.html", None, Served(None), pages=guide.pages(), text=None, mailed=False))
+
+
+def guide_page(request: Request) -> Response:
+    """One page of the guide."""
+    found = guide.page(request.path_params["name"])
+    if found is None:
+        raise HTTPException(404, "The guide has no such page.")
+    return HTMLResponse(render("guide.html", None, Served(None), pages=[], text=found, mailed=False))
 
 
 def newest(request: Request) -> Response:

@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Any
 
-from driftbook.store import words
+from driftbook.store import figures, words
 from driftbook.store.charts.tables import one_row
 from driftbook.store.known import Known
 from driftbook.store.page.level import Levelled, levelled
@@ -98,7 +98,7 @@ def _answer(row: dict[str, Any]) -> list[str]:
     if row["model"] is None:
         reason = f": {row['note']}" if row["note"] else ""
         return [f"There is no estimate in force{reason}."]
-    time = words.volatility_time(row["volatility_unit"])
+    time = figures.volatility_time(row["volatility_unit"])
     return [
         f"Volatility {words.volatility(row)} {time}.",
         f"Half-life {words.half_life_now(row)}.",

@@ -49,14 +49,22 @@ def test_a_level_is_a_layer_of_its_own(con):
     assert "level" not in [layer.get("name") for layer in charts.values(con, "power_da").to_dict()["layer"]]
 
 
-def test_what_is_said_of_the_last_window_is_what_latest_says_and_an_open_end_runs_to_the_edge(con):
-    names = "volatility, volatility_lower, volatility_upper"
-    number, lower, upper = con.execute(f"select {names} from latest where series = 'power_da'").fetchone()
-    chart = charts.said(con, "power_da")
-    low, high = chart.to_dict()["layer"][0]["encoding"]["y"]["scale"]["domain"]
-    assert (lower, upper) == (None, None)
-    shown = data_of(chart, "value", "lower", "upper")[-1]
-    assert shown == pytest.approx((100 * number, low, high), rel=1e-12)
+def test_what_is_said_of_the_last_window_is_what_latest_says(island):
+    with store.connect(island / "island.duckdb") as con:
+        names = "volatility, volatility_lower, volatility_upper"
+        told = con.execute(f"select {names} from latest where series = 'power_da'").fetchone()
+        assert data_of(charts.said(con, "power_da"), "value", "lower", "upper")[-1] == pytest.approx(told, rel=1e-12)
+
+
+def test_an_open_end_runs_to_the_edge_and_nothing_known_breaks_the_band(island, con):
+    with store.connect(island / "island.duckdb") as opened:
+        sql = "select half_life_days_lower, half_life_days_upper from latest where series = 'diesel'"
+        (lower, upper) = opened.execute(sql).fetchone()
+        chart = charts.said(opened, "diesel", "half_life")
+    (_, edge) = chart.to_dict()["layer"][0]["encoding"]["y"]["scale"]["domain"]
+    assert upper is None
+    assert data_of(chart, "value", "lower", "upper")[-1] == (None, pytest.approx(lower, rel=1e-12), edge)
+    assert data_of(charts.said(con, "power_da"), "value", "lower", "upper")[-1][1:] == (None, None)
 
 
 def test_a_half_life_is_told_in_days(con):
