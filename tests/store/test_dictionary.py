@@ -2,11 +2,9 @@
 
 import duckdb
 import pytest
-from documents import ROOT
 
 from driftbook import store
 from driftbook.store.demo import run_demo
-from driftbook.store.guide import reference
 
 
 @pytest.fixture(scope="module")
@@ -47,7 +45,3 @@ def test_a_unit_stands_apart_from_the_meaning(island):
             "select unit, meaning from dictionary where name = 'ou' and column_name = 'sigma'"
         ).fetchall()
     assert found == [("x/√t", "Volatility of the driving noise.")]
-
-
-def test_the_reference_of_the_guide_is_what_the_dictionary_says():
-    assert (ROOT / "store" / "guide" / "reference.md").read_text(encoding="utf-8") == reference.page()
