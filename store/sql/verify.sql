@@ -79,7 +79,8 @@ order by all
 -- Every base table with its columns.
 select c.table_name, list(c.column_name order by c.column_index)
 from duckdb_columns() c
-where c.database_name = current_database() and c.schema_name = 'base'
+join duckdb_tables() t using (table_oid)
+where c.database_name = current_database() and t.database_name = current_database() and c.schema_name = 'base'
 group by c.table_name
 order by c.table_name
 
