@@ -129,13 +129,13 @@ class _Asked:
 def _fits(model: Model, executor: Executor, asked: list[_Asked]) -> list[_Rows]:
     """The wanted windows of each row; blocks of similar rows are worked on together."""
     usable = [row for row, one in enumerate(asked) if one.is_readable and one.windows]
-    found = [_without_numbers(model, one) for one in asked]
     futures = [(rows, executor.submit(roll_block, model.name, *block)) for rows, block in _blocks(asked, usable)]
+    found = {}
     for rows, future in futures:
         fit = future.result()
         for position, row in enumerate(rows):
             found[row] = _Rows(fit, position, asked[row].windows)
-    return found
+    return [found[row] if row in found else _without_numbers(model, one) for row, one in enumerate(asked)]
 
 
 def _fit(fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, dt: Any) -> pa.Array:
@@ -252,16 +252,11 @@ def _padded(series: list[_Asked]) -> tuple[Values, Values, int, int]:
 
 @dataclass(frozen=True)
 class _Rows:
-    """The windows of one series: a row of a fit, cut to its own length."""
+    """The windows of one series: the first of a row of a fit, as many as its own length gives."""
 
     fit: Fit
     position: int
     windows: int
-
-    def cut(self, values: NDArray[Any]) -> NDArray[Any]:
-        """This series' part of one of the fit's arrays."""
-        part: NDArray[Any] = values[self.position, : self.windows]
-        return part
 
 
 def _without_numbers(model: Model, asked: _Asked) -> _Rows:
@@ -285,25 +280,35 @@ def _lists_of_structs(found: list[_Rows]) -> pa.Array:
 def _structs(found: list[_Rows]) -> pa.Array:
     """The fits of all rows, one after the other."""
     model = MODELS[found[0].fit.model]
-    fields = [pa.array(_joined([rows.cut(rows.fit.n) for rows in found]), pa.int32())]
-    names = ["n"]
+    together = list({id(rows.fit): rows.fit for rows in found}.values())
+    wanted = _places(found, together)
+
+    def values_of(parts: list[NDArray[Any]]) -> NDArray[Any]:
+        values: NDArray[Any] = np.concatenate([part.reshape(-1) for part in parts])[wanted]
+        return values
+
+    fields = [pa.array(values_of([fit.n for fit in together]), pa.int32())]
     for column in model.columns:
-        values = _joined([rows.cut(rows.fit.columns[column.name]) for rows in found])
+        values = values_of([fit.columns[column.name] for fit in together])
         fields.append(_nullable(values, column.kind))
-        names.append(column.name)
-    codes = _joined([rows.cut(rows.fit.status) for rows in found])
-    fields.append(_words().take(pa.array(codes.astype(np.int64))))
-    return pa.StructArray.from_arrays(fields, [*names, "status"])
+    fields.append(_words().take(pa.array(values_of([fit.status for fit in together]).astype(np.int64))))
+    return pa.StructArray.from_arrays(fields, ["n", *(column.name for column in model.columns), "status"])
+
+
+def _places(found: list[_Rows], together: list[Fit]) -> NDArray[np.int64]:
+    """Where the windows of each row stand in the arrays of all fits, put end to end."""
+    ends = np.cumsum([fit.status.size for fit in together]).tolist()
+    starts = dict(zip(map(id, together), [0, *ends], strict=False))
+    places = [
+        np.arange(rows.windows) + (starts[id(rows.fit)] + rows.position * rows.fit.status.shape[1]) for rows in found
+    ]
+    return np.concatenate(places)
 
 
 @cache
 def _words() -> pa.Array:
     # made when first needed: pyarrow looks for pandas at its first array, and loads it where it is installed
     return pa.array([status.word for status in Status], pa.string())
-
-
-def _joined(parts: list[NDArray[Any]]) -> NDArray[Any]:
-    return np.concatenate(parts)
 
 
 def _nullable(values: Values, kind: str) -> pa.Array:
