@@ -105,10 +105,15 @@ def test_latest_is_a_sentence_and_a_table_that_fits_80_columns(book, say):
     code, out, err = say("latest", book, "--as-of", "2026-01-06")
     sentence, blank, head, *rows = out.splitlines()
     assert (code, err, blank) == (0, "", "")
-    assert sentence == "Run 2 of 2026-01-06 08:00Z: 4 series, 4 late, 2 to look at."
-    assert head.split()[:5] == ["series", "value", "volatility", "half-life", "model"]
+    assert sentence == "Run 2 of 2026-01-06 08:00Z: 4 series, 4 late, 4 to look at."
+    assert head.split() == ["series", "value", "volatility", "half-life"]
     assert [row.split()[0] for row in rows[::2]] == ["pellets_fob", "power_da", "crown_peg", "reservoir_level"]
-    assert rows[1::2] == ["  correction; stale 657 d", "  stale 657 d", "  no variation; stale 657 d", "  stale 657 d"]
+    assert rows[1::2] == [
+        "  exp_ou; correction; stale 657 d",
+        "  abm; stale 657 d",
+        "  –; no variation; stale 657 d",
+        "  ou; stale 657 d",
+    ]
     assert [line for line in out.splitlines() if len(line) > 80] == []
 
 
