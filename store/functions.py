@@ -4,7 +4,6 @@ For each model there are, with x a list of values in time order and steps in yea
 
     fit_<model>(x, dt), fit_<model>_at(t, x)                       one STRUCT: the fit of the whole list
     rolling_<model>(x, dt, lookback), rolling_<model>_at(t, x, lookback)    STRUCT[]: one a window
-    rolling_<model>_from(x, steps, lookback, first)                the same, from window `first` on; a refresh calls it
     loglik_<model>(x, dt, <parameters>)                            the log-likelihood at given parameters
 
 and for a list of returns: realised_variance(r), bipower_variation(r).
@@ -15,7 +14,7 @@ must be, gives one STRUCT whose status says so; a query is never killed by its d
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from concurrent.futures import Executor, Future
 from dataclasses import dataclass
 from functools import cache, partial
@@ -61,8 +60,6 @@ def register(con: duckdb.DuckDBPyConnection, executor: Executor) -> None:
         _add(con, f"fit_{name}_at", partial(_fit_at, fits), ["TIMESTAMP[]", "DOUBLE[]"], one)
         _add(con, f"rolling_{name}", partial(_rolling, fits), ["DOUBLE[]", "DOUBLE", "INTEGER"], many)
         _add(con, f"rolling_{name}_at", partial(_rolling_at, fits), ["TIMESTAMP[]", "DOUBLE[]", "INTEGER"], many)
-        types = ["DOUBLE[]", "DOUBLE[]", "INTEGER", "BIGINT"]
-        _add(con, f"rolling_{name}_from", partial(_rolling_from, fits), types, many)
 
 
 def register_likelihoods(con: duckdb.DuckDBPyConnection) -> None:
@@ -80,6 +77,19 @@ def register_measures(con: duckdb.DuckDBPyConnection) -> None:
     """Registers the measures of a list of returns on a connection."""
     for measure in (realised_variance, bipower_variation):
         _add(con, measure.__name__, partial(_measure, measure), ["DOUBLE[]"], "DOUBLE")
+
+
+def rolled(
+    model: Model, executor: Executor, stretches: Iterable[tuple[Values, Values, int, int]]
+) -> tuple[NDArray[np.int64], pa.StructArray]:
+    """What rolling_<model> gives for stretches of series, each with its steps, lookback and first wanted window.
+
+    How many windows each has, and the fits of all, one after the other.
+    """
+    found = _fits(model, executor, [_Asked(*one) for one in stretches])
+    if not found:
+        return np.empty(0, np.int64), _structs([_without_numbers(model, _Asked(np.empty(0), np.empty(0), 1))])[:0]
+    return np.array([rows.windows for rows in found], np.int64), _structs(found)
 
 
 def struct_type(model: Model) -> str:
@@ -158,13 +168,6 @@ def _rolling_at(
 ) -> pa.Array:
     rows = zip(_lists(t), _lists(x), _integers(lookback), strict=True)
     return _lists_of_structs(fits([_Asked(series, _steps_at(times, series), steps) for times, series, steps in rows]))
-
-
-def _rolling_from(
-    fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, steps: pa.ChunkedArray, lookback: Any, first: Any
-) -> pa.Array:
-    rows = zip(_lists(x), _lists(steps), _integers(lookback), _integers(first), strict=True)
-    return _lists_of_structs(fits([_Asked(*row) for row in rows]))
 
 
 def _loglik(model: Model, x: pa.ChunkedArray, dt: Any, parameters: pa.ChunkedArray) -> pa.Array:

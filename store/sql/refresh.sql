@@ -14,14 +14,11 @@ where o.run_from > $last or o.run_to > $last
 group by all
 order by all
 
--- name: times_in_force
--- The times of the observations in force of some series, with the local day that each falls on.
-select o.series_id, epoch_us(o.observed_at) as us,
-  {local_day} as day
+-- name: observed
+-- Observations of some series in any order, with the local day that each falls on if it is asked for.
+select o.series_id, epoch_us(o.observed_at) as us, o.value, {day} as day
 from base.observation o
-join base.setting t on t.series_id = o.series_id and t.run_to is null
-where o.run_to is null and o.series_id in (select unnest($series::integer[]))
-order by o.series_id, o.observed_at
+where {when} and o.series_id in (select unnest($series::integer[]))
 
 -- name: weekday_series_on_elapsed_time
 -- Planned series under act365 whose last 250 observations all fall on weekdays.
