@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from itertools import pairwise
+from typing import Any
 
 import duckdb
 import numpy as np
@@ -41,32 +42,27 @@ def observed(
     """The observations of some series that are in force, or for which the SQL condition `when` on o holds."""
     sql = query("observed").format(when=when, day=_LOCAL_DAY if with_days else "null::bigint")
     rows = con.sql(sql, params={"series": series}).to_arrow_table()
-    series_id, us = rows.column("series_id").to_numpy(), rows.column("us").to_numpy()
-    values, days = rows.column("value").to_numpy(), rows.column("day").to_numpy() if with_days else us[:0]
-    order = _order(series_id, us)
-    if order is not None:
-        series_id, us, values = series_id[order], us[order], values[order]
-        days = days[order] if with_days else days
-    return Observed(us, values, days, places(series_id))
+    names = ["series_id", "us", "value", *(["day"] if with_days else [])]
+    columns = _in_order({name: rows.column(name).to_numpy() for name in names})
+    days = columns.get("day", columns["us"][:0])
+    return Observed(columns["us"], columns["value"], days, places(columns["series_id"]))
+
+
+def _in_order(columns: dict[str, NDArray[Any]]) -> dict[str, NDArray[Any]]:
+    """Rows put in the order of series and times: a book grows by intakes in order, that mostly bring later times."""
+    if (columns["series_id"][1:] < columns["series_id"][:-1]).any():
+        columns = _taken(columns, np.argsort(columns["series_id"], kind="stable"))
+    series_id, us = columns["series_id"], columns["us"]
+    if ((us[1:] <= us[:-1]) & (series_id[1:] == series_id[:-1])).any():
+        columns = _taken(columns, np.lexsort((us, series_id)))
+    return columns
+
+
+def _taken(columns: dict[str, NDArray[Any]], order: NDArray[np.intp]) -> dict[str, NDArray[Any]]:
+    return {name: column[order] for name, column in columns.items()}
 
 
 def places(series_id: NDArray[np.int32]) -> dict[int, slice]:
     """Where the rows of each series stand among rows in the order of series."""
     bounds = [0, *(np.flatnonzero(np.diff(series_id)) + 1).tolist(), series_id.size]
     return {int(series_id[begin]): slice(begin, end) for begin, end in pairwise(bounds) if end > begin}
-
-
-def _order(series_id: NDArray[np.int32], us: Microseconds) -> NDArray[np.intp] | None:
-    """What puts rows into the order of series and time; None where they lie in it.
-
-    They mostly do, or nearly: a book grows by intakes that are in order, and later ones bring later times.
-    """
-    if _is_in_order(series_id, us):
-        return None
-    order = np.argsort(series_id, kind="stable")
-    return order if _is_in_order(series_id[order], us[order]) else np.lexsort((us, series_id))
-
-
-def _is_in_order(series_id: NDArray[np.int32], us: Microseconds) -> bool:
-    later = (series_id[1:] > series_id[:-1]) | ((series_id[1:] == series_id[:-1]) & (us[1:] > us[:-1]))
-    return bool(later.all())

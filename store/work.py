@@ -13,9 +13,9 @@ from driftbook.store.due import OBSERVATION, Asked, Slice, Span, due
 from driftbook.store.errors import PlanError
 from driftbook.store.estimates import EstimateTable
 from driftbook.store.observed import Microseconds, Observed, observed, places
-from driftbook.store.plan import Plan, parse_plan
+from driftbook.store.plan import Entry, Plan, parse_plan
 from driftbook.store.series import Series, known_series
-from driftbook.store.sql import query
+from driftbook.store.sql import only_row, query
 
 _WINDOWS_AT_ONCE = 400_000
 
@@ -87,9 +87,9 @@ def find_work(con: duckdb.DuckDBPyConnection, plan: Plan, last: int, revised: se
     """What is due under a plan since run `last`; `revised` models are due as a whole."""
     series = known_series(con)
     tables = {name: EstimateTable(model) for name, model in MODELS.items()}
-    in_force = {name: table.in_force(con) for name, table in tables.items()}
     reset = {series_id for (series_id,) in con.execute(query("settings_since"), [last]).fetchall()}
-    before = _entries_at(con, last)
+    before = _entries_at(con, last, plan)
+    in_force = _in_force(con, tables, last, before, plan)
     asked: dict[str, list[Asked]] = {name: [] for name in MODELS}
     for entry in plan.entries:
         series_id = series[entry.series].series_id
@@ -98,25 +98,37 @@ def find_work(con: duckdb.DuckDBPyConnection, plan: Plan, last: int, revised: se
             or series_id in reset
             or entry.model in revised
             or entry not in before
-            or (series_id, entry.lookback) not in in_force[entry.model]
+            or (in_force is not None and (series_id, entry.lookback) not in in_force[entry.model])
         )
         asked[entry.model].append(Asked(series_id, entry.lookback, entry.every, whole))
     models = []
     for name, wanted in asked.items():
+        there = in_force[name] if in_force is not None else {}
         kept = {(one.series_id, one.lookback) for one in wanted}
-        leaving = {key: count for key, count in in_force[name].items() if key not in kept}
-        models.append(ModelWork(tables[name], in_force=sum(in_force[name].values()), leaving=leaving))
+        leaving = {key: count for key, count in there.items() if key not in kept}
+        models.append(ModelWork(tables[name], in_force=sum(there.values()), leaving=leaving))
     by_id = {one.series_id: one for one in series.values()}
     return _with_what_is_due(con, last, list(asked.values()), models, by_id)
 
 
-def _entries_at(con: duckdb.DuckDBPyConnection, run_id: int) -> set[object]:
-    """The entries of the plan at a run; none if that plan can no longer be read."""
+def _in_force(
+    con: duckdb.DuckDBPyConnection, tables: dict[str, EstimateTable], last: int, before: set[Entry], plan: Plan
+) -> dict[str, dict[tuple[int, int], int]] | None:
+    """How many estimates each entry has in force; None, unread, where none left the plan and none was forgotten."""
+    (forgettings,) = only_row(con, query("forgettings_since"), [last])
+    if before and before.issubset(plan.entries) and not forgettings:
+        return None
+    return {name: table.in_force(con) for name, table in tables.items()}
+
+
+def _entries_at(con: duckdb.DuckDBPyConnection, run_id: int, plan: Plan) -> set[Entry]:
+    """The entries of the plan at a run, which may be `plan`, in force now; none if it can no longer be read."""
     found = con.execute(query("plan_at"), {"run": run_id}).fetchall()
     try:
-        return {entry for (text,) in found for entry in parse_plan(text, "the plan before").plan.entries}
+        plans = [plan if is_in_force else parse_plan(text, "the plan before").plan for text, is_in_force in found]
     except PlanError:
         return set()
+    return {entry for one in plans for entry in one.entries}
 
 
 def _with_what_is_due(

@@ -3,8 +3,12 @@
 select t.series_id from base.setting t where t.run_to is null and t.run_from > ?
 
 -- name: plan_at
--- The plan that was in force at a run.
-select p.text from base.plan p where p.run_from <= $run and (p.run_to is null or p.run_to > $run)
+-- The plan that was in force at a run, and whether it is in force now.
+select p.text, p.run_to is null from base.plan p where p.run_from <= $run and (p.run_to is null or p.run_to > $run)
+
+-- name: forgettings_since
+-- How many runs after a run have forgotten something.
+select count(*) from base.run r where r.kind = 'forget' and r.run_id > ?
 
 -- name: changed_since
 -- When and where observations were added, corrected or withdrawn after a run.
