@@ -58,17 +58,26 @@ def matches(expected: str, printed: str) -> bool:
 
 def shell(command: str, folder: Path) -> str:
     """What a command prints at 80 columns, standard error included."""
-    binaries = Path(sys.executable).parent
-    environment = {**os.environ, "PATH": f"{binaries}{os.pathsep}{os.environ['PATH']}", "COLUMNS": "80"}
     done = subprocess.run(
-        ["bash", "-c", command], cwd=folder, env=environment, capture_output=True, text=True, stdin=subprocess.DEVNULL
+        ["bash", "-c", command],
+        cwd=folder,
+        env=environment(),
+        capture_output=True,
+        text=True,
+        stdin=subprocess.DEVNULL,
     )
     return "\n".join(line.rstrip() for line in (done.stdout + done.stderr).rstrip("\n").split("\n"))
 
 
+def environment() -> dict[str, str]:
+    """This environment with the programs beside the running Python on the path, at 80 columns."""
+    binaries = Path(sys.executable).parent
+    return {**os.environ, "PATH": f"{binaries}{os.pathsep}{os.environ['PATH']}", "COLUMNS": "80"}
+
+
 def python(text: str, folder: Path) -> str:
     """What a piece of Python prints; an error ends in an exception."""
-    done = subprocess.run([sys.executable, "-c", text], cwd=folder, capture_output=True, text=True)
+    done = subprocess.run([sys.executable, "-c", text], cwd=folder, env=environment(), capture_output=True, text=True)
     if done.returncode:
         raise AssertionError(done.stderr)
     return done.stdout.rstrip("\n")
@@ -81,7 +90,7 @@ def _as_printed_now(document: Path, folder: Path) -> str:
     def again(found: re.Match[str]) -> str:
         nonlocal last
         block, before = Block(found[1] or "", found[2] or "", found[3]), last
-        last = python(block.text, folder) if block.kind == "python" else ""
+        last = python(block.text, folder) if block.kind == "python" and not block.file else ""
         if block.file:
             (folder / block.file).write_text(block.text, encoding="utf-8")
         if block.kind == "text" and before:

@@ -1,6 +1,5 @@
 """README and the guide: every command in them is run, and prints what stands there."""
 
-import shutil
 from pathlib import Path
 
 import pytest
@@ -8,19 +7,6 @@ from documents import ROOT, blocks, commands, matches, python, shell
 
 README = ROOT / "README.md"
 DOCUMENTS = [README, *sorted((ROOT / "store" / "guide").glob("*.md"))]
-
-
-@pytest.fixture(scope="session")
-def island(tmp_path_factory):
-    folder = tmp_path_factory.mktemp("documents")
-    assert "To copy:" in shell("driftbook demo", folder)
-    return folder / "island"
-
-
-@pytest.fixture
-def folder(island, tmp_path):
-    shutil.copytree(island, tmp_path / "island")
-    return tmp_path
 
 
 def test_the_first_two_blocks_are_the_two_commands_each_complete():
