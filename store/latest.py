@@ -156,7 +156,8 @@ def _fits(con: duckdb.DuckDBPyConnection, asked: list[int], headline: dict[int, 
 
 
 def _fits_of(model: Model, rows: list[Any]) -> list[_Fit]:
-    n, loglik = (np.array([row[at] for row in rows], np.float64) for at in (_PLACES["n"], _PLACES["loglik"]))
+    loglik = np.array([row[_PLACES["loglik"]] for row in rows], np.float64)
+    n = np.where(np.isnan(loglik), np.nan, [row[_PLACES["n"]] for row in rows])
     criteria = bic(loglik, len(model.parameters), n).tolist()
     return [_Fit(*(*row, criterion)) for row, criterion in zip(rows, criteria, strict=True)]
 

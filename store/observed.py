@@ -72,7 +72,8 @@ def _in_order(columns: dict[str, NDArray[Any]]) -> dict[str, NDArray[Any]]:
         stretches.sort(key=lambda one: (int(series_id[one.start]), int(us[one.start])))
         columns = {name: np.concatenate([values[one] for one in stretches]) for name, values in columns.items()}
         series_id, us = columns["series_id"], columns["us"]
-    if ((us[1:] <= us[:-1]) & (series_id[1:] == series_id[:-1])).any():
+    step = series_id[1:] - series_id[:-1]
+    if not ((step > 0) | ((step == 0) & (us[1:] > us[:-1]))).all():
         order = np.lexsort((us, series_id))
         columns = {name: values[order] for name, values in columns.items()}
     return columns

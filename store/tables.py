@@ -63,7 +63,7 @@ def columns_at(migration: int) -> dict[str, list[str]]:
 
 def columns_of(con: duckdb.DuckDBPyConnection) -> dict[str, list[str]]:
     """The columns that every base table of the default catalog has, without run_to, in their order."""
-    rows = con.execute(query("columns_of_base")).fetchall()
+    rows = con.execute(query("columns_in_order")).fetchall()
     found: dict[str, list[str]] = {}
     for table_name, column_name in rows:
         found.setdefault(table_name, [])

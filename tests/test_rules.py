@@ -1,6 +1,7 @@
 """The rules of the house that a machine can hold."""
 
 import ast
+import re
 import subprocess
 import sys
 import tomllib
@@ -121,3 +122,10 @@ def test_the_project_stands_alone_and_names_no_foreign_path():
         if path.suffix in {".py", ".md", ".sql", ".toml", ".css", ".html"} or path.name == "run":
             text = (ROOT / path).read_text(encoding="utf-8")
             assert not [word for word in words if word in text], path
+
+
+def test_every_named_query_has_a_name_of_its_own():
+    texts = [path.read_text(encoding="utf-8") for path in sorted((ROOT / "store" / "sql").glob("*.sql"))]
+    names = [name for text in texts for name in re.findall(r"^-- name: (\w+)$", text, re.MULTILINE)]
+    assert len(names) > 50
+    assert [name for name in set(names) if names.count(name) > 1] == []

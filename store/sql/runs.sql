@@ -18,7 +18,7 @@ from base.leaf l
 where l.run_id = ?
 order by l.table_name, l.series_id nulls first
 
--- name: columns_of_base
+-- name: columns_in_order
 -- The columns of the tables in the schema base.
 select c.table_name, c.column_name
 from duckdb_columns() c
