@@ -130,10 +130,3 @@ def test_the_project_stands_alone_and_names_no_foreign_path():
         if path.suffix in {".py", ".md", ".sql", ".toml", ".css", ".html"} or path.name == "run":
             text = (ROOT / path).read_text(encoding="utf-8")
             assert not [word for word in words if word in text], path
-
-
-def test_no_two_queries_share_a_name():
-    text = "".join(path.read_text(encoding="utf-8") for path in (ROOT / "store" / "sql").glob("*.sql"))
-    names = re.findall(r"^-- name: (\w+)$", text, re.MULTILINE)
-    assert len(names) > 50
-    assert len(names) == len(set(names))
