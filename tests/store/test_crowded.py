@@ -31,7 +31,7 @@ def day(book, number):
 
 
 def expected(run):
-    """What the book holds after a run: of two series the values 0 to run - 1, of one all but the last and a half more."""
+    """What the book holds after a run: two series from 0 to run - 1, one of them and a half more but for the last."""
     total = run * (run - 1) + 0.5 * (run - 1)
     return [2 * run, total, 3 * run - 1, run]
 
