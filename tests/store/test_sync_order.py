@@ -14,7 +14,7 @@ from killing import book_with_a_stray_log, small_book
 PROGRAM = [sys.executable, "-c", "from driftbook.store.cli import main; main()"]
 CALLS = (
     "open,openat,creat,fsync,fdatasync,rename,renameat,renameat2,link,linkat,unlink,unlinkat,"
-    "write,pwrite64,writev,pwritev,ftruncate,truncate,copy_file_range,sendfile"
+    "write,pwrite64,writev,pwritev,ftruncate,truncate,copy_file_range,sendfile,chmod,fchmod,fchmodat,chown,fchownat"
 )
 CALL = re.compile(r"^(?:\d+ +)?(\w+)\((.*)\) += (-?\d+)")
 RESUMED = re.compile(r"^(\d+) +<\.\.\. (\w+) resumed>(.*)$")
@@ -62,6 +62,7 @@ def _needs_strace():
 
 SYNCS = {"fsync", "fdatasync"}
 RENAMES = {"rename", "renameat", "renameat2"}
+RIGHTS = {"chmod", "fchmod", "fchmodat", "chown", "fchownat"}
 
 
 def only(found):
@@ -73,8 +74,9 @@ def swap_in_order(calls, folder):
     """Checks a swap; gives the places of its rename and of the folder's sync."""
     book = f"{folder}/desk.duckdb"
     rename = only(places(calls, RENAMES, "/draft.duckdb", f'"{book}"'))
-    last_write = max(places(calls, WRITES | {"copy_file_range"}, "/draft.duckdb>"))
-    synced = [k for k in places(calls, SYNCS, "/draft.duckdb>") if last_write < k < rename]
+    changed = places(calls, WRITES | {"copy_file_range"}, "/draft.duckdb>") + places(calls, RIGHTS, "/draft.duckdb")
+    assert {calls[k][0] for k in changed} & RIGHTS
+    synced = [k for k in places(calls, SYNCS, "/draft.duckdb>") if max(changed) < k < rename]
     assert synced
     confirmed = [k for k in places(calls, SYNCS, f"<{folder}>") if k > rename]
     assert confirmed
