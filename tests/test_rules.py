@@ -1,6 +1,7 @@
 """The rules of the house that a machine can hold."""
 
 import ast
+import re
 import subprocess
 import sys
 import tomllib
@@ -96,6 +97,14 @@ def test_the_table_that_is_loaded_holds_no_objects():
     for path in (ROOT / "estimators" / "data").glob("*.npz"):
         with np.load(path, allow_pickle=False) as stored:
             assert all(stored[name].dtype.kind in "fiub" for name in stored.files)
+
+
+def test_every_named_query_has_a_name_of_its_own_and_is_used():
+    texts = [path.read_text(encoding="utf-8") for path in (ROOT / "store" / "sql").glob("*.sql")]
+    names = re.findall(r"^-- name: (\w+)$", "\n".join(texts), re.MULTILINE)
+    assert sorted(names) == sorted(set(names))
+    code = "\n".join(path.read_text(encoding="utf-8") for path in _python_files("store"))
+    assert [name for name in names if f'"{name}"' not in code] == []
 
 
 def test_no_second_copy_of_the_packages_is_imported():
