@@ -98,6 +98,7 @@ def _mirror(con: duckdb.DuckDBPyConnection) -> None:
 
     The names then resolve for every cursor, which a `USE` would not do.
     """
+    con.execute("begin")  # a commit for each of a hundred statements would take its time
     for schema in ("base", "versions"):
         con.execute(f"create schema {schema}")
     for (table,) in con.execute(query("tables_of"), [_BOOK]).fetchall():
@@ -106,6 +107,7 @@ def _mirror(con: duckdb.DuckDBPyConnection) -> None:
         for statement in con.extract_statements(migration.text):
             if _is_for_readers(statement.query):
                 con.execute(statement)
+    con.execute("commit")
 
 
 def _is_for_readers(sql: str) -> bool:
