@@ -1,0 +1,217 @@
+"""The jump diffusion: its derivatives, its cases, and that windows depend on their past alone."""
+
+import numpy as np
+import pytest
+
+from driftbook.estimators import MODELS, Status
+from driftbook.estimators.jump_mixture import limits, standardised
+from driftbook.estimators.models.merton import MODEL as MERTON
+from driftbook.estimators.models.merton import STRIDE
+
+DT = 1 / 252
+N = 120
+DIFFERENCES = 1e-6  # of the largest entry: central differences over 1e-5
+TRUTH = {"mu": 0.08, "sigma": 0.2, "jump_rate": 15.0, "jump_mean": -0.02, "jump_sd": 0.04}
+
+NAMES = tuple(column.name for column in MERTON.columns)
+WITHOUT_INTERVALS = ("mu", "sigma", "jump_rate", "jump_mean", "jump_sd", "loglik")
+
+
+def increments(n, m, seed, dt=DT, **truth):
+    """Increments of the logarithm, shape (m, n)."""
+    p = TRUTH | truth
+    rng = np.random.default_rng(seed)
+    steps = np.broadcast_to(dt, (m, n))
+    jumps = rng.poisson(p["jump_rate"] * steps)
+    drift = p["mu"] - p["sigma"] ** 2 / 2 - p["jump_rate"] * np.expm1(p["jump_mean"] + p["jump_sd"] ** 2 / 2)
+    sd = np.sqrt(p["sigma"] ** 2 * steps + jumps * p["jump_sd"] ** 2)
+    return drift * steps + jumps * p["jump_mean"] + sd * rng.standard_normal((m, n))
+
+
+def prices(n, m, seed, dt=DT, **truth):
+    d = increments(n, m, seed, dt, **truth)
+    return 50 * np.exp(np.concatenate([np.zeros((m, 1)), np.cumsum(d, axis=1)], axis=1))
+
+
+@pytest.mark.parametrize("unequal", [False, True])
+def test_derivatives_are_those_of_the_likelihood(unequal):
+    steps = np.random.default_rng(1).uniform(0.4, 2, (6, 80)) if unequal else None
+    z, _, _ = standardised(increments(80, 6, seed=2) * 30, steps)
+    places, h = np.arange(6), 1e-5
+    for point in z.starts():
+        surface = z.surface(point, places)
+        np.testing.assert_allclose(surface.value, z.loglik(point), rtol=1e-14)
+        for i in range(5):
+            up, down = point.copy(), point.copy()
+            up[i] += h
+            down[i] -= h
+            by_value = (z.loglik(up) - z.loglik(down)) / (2 * h)
+            by_gradient = (z.surface(up, places).gradient - z.surface(down, places).gradient) / (2 * h)
+            assert np.abs(by_value - surface.gradient[i]).max() <= DIFFERENCES * np.abs(surface.gradient).max()
+            assert np.abs(by_gradient - surface.hessian[i]).max() <= DIFFERENCES * np.abs(surface.hessian).max()
+
+
+def test_em_never_goes_down():
+    """A property of the algorithm (Dempster, Laird & Rubin 1977); inside the bounds."""
+    from driftbook.estimators.jump_mixture import EM_TERMS, _Mixture
+
+    z, _, _ = standardised(increments(200, 20, seed=3), None)
+    point = z.starts()[0]
+    values = [_Mixture.at(z, point, EM_TERMS).loglik]
+    for _ in range(5):
+        point = _Mixture.at(z, point, EM_TERMS).em_step()
+        values.append(_Mixture.at(z, point, EM_TERMS).loglik)
+    assert (np.diff(values, axis=0) > -1e-9).all()
+
+
+@pytest.mark.parametrize("unequal", [False, True])
+def test_the_loglik_is_its_own_and_at_a_maximum(unequal):
+    dt = np.tile(np.random.default_rng(4).choice([1, 1, 3], N) * DT, (12, 1)) if unequal else DT
+    x = prices(N, 12, seed=5, dt=dt)
+    fit = MERTON.fit(x, dt)
+    usable = fit.status == Status.OK
+    assert usable.sum() > 3
+    at = [fit.columns[name][usable] for name in TRUTH]
+    dt = dt[usable] if unequal else dt
+    np.testing.assert_allclose(MERTON.loglik(x[usable], dt, *at), fit.loglik[usable], atol=1e-8)
+    for k, name in enumerate(TRUTH):
+        for sign in (-1, 1):
+            moved = list(at)
+            moved[k] = at[k] + sign * 1e-3 * fit.columns[f"{name}_se"][usable]
+            assert (MERTON.loglik(x[usable], dt, *moved) <= fit.loglik[usable] + 1e-9).all(), name
+
+
+def test_equal_steps_told_one_by_one_are_equal():
+    x = prices(300, 2, seed=6)
+    one, each = MERTON.rolling(x, DT, N), MERTON.rolling(x, np.full((2, 300), DT), N)
+    for name in NAMES:
+        np.testing.assert_array_equal(one.columns[name], each.columns[name])
+
+
+def test_paths_for_equal_and_unequal_steps_agree():
+    x = prices(N, 10, seed=7)
+    nearly = np.tile(DT * (1 + 1e-8 * (np.arange(N) % 2)), (10, 1))
+    equal, unequal = MERTON.fit(x, DT), MERTON.fit(x, nearly)
+    np.testing.assert_array_equal(equal.status, unequal.status)
+    np.testing.assert_allclose(unequal.loglik, equal.loglik, atol=1e-5)  # the steps themselves differ by 5e-9
+    np.testing.assert_allclose(unequal.total_volatility, equal.total_volatility, rtol=1e-6)
+
+
+def test_a_window_depends_on_its_past_in_its_block_alone():
+    """The same bits with one thread or two, from a later first window, in other company, and with more data after."""
+    x = prices(290, 3, seed=8)
+    whole = MERTON.rolling(x, DT, N)
+    alone = MERTON.rolling(x[1], DT, N)
+    shorter = MERTON.rolling(x[:, :-57], DT, N)
+    for name in NAMES:
+        values = whole.columns[name]
+        assert np.array_equal(alone.columns[name], values[1], equal_nan=True), name
+        assert np.array_equal(shorter.columns[name], values[:, :-57], equal_nan=True), name
+    for kwargs in ({"threads": 2}, {"first": 137}, {"first": STRIDE + 1}):
+        part = MERTON.rolling(x, DT, N, **kwargs)
+        for name in NAMES:
+            kept = whole.columns[name][:, kwargs.get("first", 0) :]
+            assert np.array_equal(part.columns[name], kept, equal_nan=True), (name, kwargs)
+
+
+def test_without_intervals_the_rest_has_the_same_bits():
+    x = prices(300, 2, seed=9)
+    fit, without = MERTON.rolling(x, DT, N), MERTON.rolling(x, DT, N, intervals=False)
+    assert np.array_equal(fit.status, without.status)
+    for name in NAMES:
+        if name in WITHOUT_INTERVALS:
+            assert np.array_equal(fit.columns[name], without.columns[name], equal_nan=True), name
+        else:
+            assert np.isnan(without.columns[name]).all(), name
+
+
+@pytest.mark.parametrize("scale", [1e-100, 1e-12, 1e12, 1e100])
+def test_scale_of_prices_does_not_matter(scale):
+    x = prices(N, 8, seed=10)
+    fit, scaled = MERTON.fit(x, DT), MERTON.fit(x * scale, DT)
+    np.testing.assert_array_equal(scaled.status, fit.status)
+    np.testing.assert_allclose(scaled.total_volatility, fit.total_volatility, rtol=1e-6)
+    np.testing.assert_allclose(scaled.loglik + N * np.log(scale), fit.loglik, atol=1e-6)
+
+
+# What a row holds, case by case.
+
+RNG = np.random.default_rng(11)
+WALK = 50 * np.exp(0.01 * np.cumsum(RNG.standard_normal(N + 1)))
+CASES = {
+    "constant": (np.full(N + 1, 3.0), Status.FLAT),
+    "exponential": (np.exp(0.01 * np.arange(N + 1)), Status.FLAT),
+    "one jump": (np.where(np.arange(N + 1) < 40, 3.0, 4.0), Status.DISCRETE),
+    "one in ten unchanged": (np.repeat(WALK, 2)[np.sort(np.r_[0:220:2, 1:22:2])], Status.DISCRETE),
+    "a zero": (np.where(np.arange(N + 1) == 40, 0.0, WALK), Status.OUT_OF_RANGE),
+    "below zero": (WALK - 60, Status.OUT_OF_RANGE),
+    "not a number": (np.where(np.arange(N + 1) == 40, np.nan, WALK), Status.OUT_OF_RANGE),
+    "infinite": (np.where(np.arange(N + 1) == 40, np.inf, WALK), Status.OUT_OF_RANGE),
+}
+
+
+@pytest.mark.parametrize("name", CASES)
+def test_case_without_a_fit(name):
+    x, status = CASES[name]
+    healthy = prices(N, 2, seed=12)
+    fit, alone = MERTON.fit(np.stack([healthy[0], x, healthy[1]]), DT), MERTON.fit(healthy, DT)
+    assert Status(int(fit.status[1])) == status
+    for column in NAMES:
+        assert np.isnan(fit.columns[column][1]), column
+        assert np.array_equal(fit.columns[column][[0, 2]], alone.columns[column], equal_nan=True), column
+
+
+def test_too_short():
+    assert MERTON.fit(WALK[:15], DT).status == Status.TOO_SHORT
+
+
+def test_case_jumps():
+    fit = MERTON.fit(prices(1500, 1, seed=13)[0], DT)
+    row = {name: float(values) for name, values in fit.columns.items()}
+    assert fit.status == Status.OK
+    assert not [name for name in NAMES if np.isnan(row[name])]
+    for name, truth in TRUTH.items():
+        assert row[f"{name}_lower"] < row[name] < row[f"{name}_upper"]
+        assert abs(row[name] - truth) < 5 * row[f"{name}_se"]
+    jump = row["jump_rate"] * (row["jump_mean"] ** 2 + row["jump_sd"] ** 2)
+    assert row["total_volatility"] == pytest.approx(np.sqrt(row["sigma"] ** 2 + jump), rel=1e-12)
+
+
+def test_jump_probability_knows_a_jump():
+    x = prices(N, 1, seed=14)[0]
+    calm, jumped = x.copy(), x.copy()
+    calm[-1], jumped[-1] = x[-2] * 1.001, x[-2] * 0.7
+    assert MERTON.fit(jumped, DT).jump_probability > 0.999
+    assert MERTON.fit(calm, DT).jump_probability < 0.2
+
+
+def test_case_at_bound():
+    """Gaussian increments: jumps are not in the data, and the volatility that counts is gbm's."""
+    rng = np.random.default_rng(15)
+    x = np.exp(0.01 * np.cumsum(rng.standard_normal((60, 251)), axis=1))
+    fit, gbm = MERTON.fit(x, DT), MODELS["gbm"].fit(x, DT)
+    bound = fit.status == Status.AT_BOUND
+    assert bound.mean() > 0.3
+    assert np.isfinite(fit.loglik).all()
+    np.testing.assert_allclose(fit.total_volatility, gbm.sigma, rtol=0.03)
+    none = fit.jump_rate * 250 * DT < 0.1001  # a tenth of a jump in the window
+    assert np.isnan(fit.jump_rate_se[none]).all()
+
+
+def test_bounds_hold():
+    fit = MERTON.rolling(prices(600, 3, seed=16, jump_rate=200.0, jump_mean=0.0, jump_sd=0.015), DT, N)
+    d = np.diff(np.log(prices(600, 3, seed=16, jump_rate=200.0, jump_mean=0.0, jump_sd=0.015)), axis=1)
+    windows = np.sort(np.lib.stride_tricks.sliding_window_view(d, N, axis=1), axis=-1)
+    robust = (windows[..., N - 1 - N // 4] - windows[..., N // 4]) / 1.349 / np.sqrt(DT)
+    assert (fit.sigma >= 0.25 * robust * (1 - 1e-9)).all()
+    assert (fit.jump_rate * DT <= 1 + 1e-9).all()
+    assert (fit.jump_rate * DT >= 0.1 / N * (1 - 1e-9)).all()
+    assert limits(N).lower[1] == 2 * np.log(0.25)
+
+
+def test_loglik_of_a_diffusion_without_jumps_is_gbms():
+    x = prices(50, 4, seed=17)
+    gbm = MODELS["gbm"].loglik(x, DT, 0.1, 0.3)
+    np.testing.assert_allclose(MERTON.loglik(x, DT, 0.1, 0.3, 0.0, -0.1, 0.2), gbm, rtol=1e-13)
+    assert np.isnan(MERTON.loglik(x, DT, 0.1, 0.0, 1.0, 0.0, 0.1)).all()
+    assert np.isnan(MERTON.loglik(x, DT, 0.1, 0.2, -1.0, 0.0, 0.1)).all()
