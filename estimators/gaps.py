@@ -124,7 +124,7 @@ def by_length(segments: Segments, few: NDArray[np.bool_]) -> NodeProfile:
     sums = _sums(segments, weights)
     count, T = sums[:2]
     mean = T.sum(axis=0) / segments.n
-    gap = np.where(count > 0, T / count, mean)
+    gap = np.where(count > 0, T / np.maximum(count, 1), mean)
     return NodeProfile(segments.n, gap, *sums)
 
 

@@ -130,6 +130,11 @@ class Model:
         return tuple(column for column in self.columns if column.sql is None)
 
     @property
+    def has_pull(self) -> bool:
+        """Whether it has a pull to a level, and so a half-life."""
+        return any(column.name == "half_life" for column in self.columns)
+
+    @property
     def derived(self) -> tuple[Column, ...]:
         """Columns that are formulas of stored ones."""
         return tuple(column for column in self.columns if column.sql is not None)

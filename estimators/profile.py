@@ -64,6 +64,10 @@ class Spot:
         a.
     variance_information : array
         Information on kappa from the spread of the variances, sigma being estimated too.
+    variance_slope : array
+        By how much the mean logarithm of the variances, at sigma = 1, falls when kappa rises by one.
+    told : array
+        What the steps tell of the pull, in time: the sum of their lengths, each weighted as `told` says.
     sound : array of bool
         Whether R kept its digits.
     """
@@ -75,6 +79,8 @@ class Spot:
     lean: Array
     weight: Array
     variance_information: Array
+    variance_slope: Array
+    told: Array
     sound: Mask
 
 
@@ -147,7 +153,8 @@ class NodeProfile:
         sound &= _total(self.XX + self.DD) < LARGEST
         sound &= (R > SMALLEST) & (squares > SMALLEST)
         log_q = _total(self.count * np.log(q))
-        return Spot(alpha, R, log_q, squares - lean * lean * a, lean, a, 0.5 * spread, sound)
+        in_time = _total(told(unbiased(kappa, _total(self.T)), self.gap) * self.T)
+        return Spot(alpha, R, log_q, squares - lean * lean * a, lean, a, 0.5 * spread, mean_g, in_time, sound)
 
     def _normal(self, kappa: Array, pull: Pull) -> tuple[Array, Array, Array]:
         """The sums a, b and C."""
@@ -204,9 +211,11 @@ class StepProfile:
         lean = _total(pull.p * self.steps * bend) / a
         information = _total(pull.q * self.steps * np.square(bend - lean * pull.phi))
         g = self.steps * pull.log_q_slope
-        spread = _total(np.square(g - _total(g) / self.n))
+        mean_g = _total(g) / self.n
+        spread = _total(np.square(g - mean_g))
         R = _total(pull.q * r * r / self.steps)
-        return Spot(alpha, R, _total(np.log(pull.q)), information, lean, a, 0.5 * spread, R > 0)
+        in_time = _total(told(unbiased(kappa, _total(self.steps)), self.steps) * self.steps)
+        return Spot(alpha, R, _total(np.log(pull.q)), information, lean, a, 0.5 * spread, mean_g, in_time, R > 0)
 
     def fourth(self, kappa: Array, alpha: Array, lean: Array) -> tuple[Array, Array]:
         """Kurtosis of the standardised residuals, and White's over the ordinary variance of kappa, from the mean."""
@@ -229,6 +238,21 @@ class StepProfile:
         r = r - self.steps * pull.phi * alpha
         lost = _total(pull.p * r) / a
         return r - self.steps * pull.phi * lost, alpha + lost, a
+
+
+def told(kappa: Array, steps: Array) -> Array:
+    """What a step tells of the pull, per unit of its length and against a short one: 2z/(e^{2z} − 1), z = kappa Δ ≥ 0.
+
+    A level that varies as it does in the long run gives a step of z the information Δ²/(e^{2z} − 1) on kappa: after a
+    long step nothing is left of where it began.
+    """
+    pull = Pull(np.maximum(kappa, 0.0) * steps)
+    return pull.q * np.square(pull.decay)
+
+
+def unbiased(kappa: Array, duration: Array) -> Array:
+    """A pull less its bias to first order, 4/T (Tang, C. Y. & Chen, S. X. (2009), J. Econometrics 149, 65–81)."""
+    return kappa - 4 / duration
 
 
 def _total(values: Array) -> Array:

@@ -50,6 +50,8 @@ class Regression:
         Σ e_i⁴.
     evenness : array or float
         By how much the variance of the level that increments point to is larger than at equal steps; 1 there.
+    log_b : array or None
+        ln(1 + slope) where it is known better than from the slope.
     """
 
     n: int
@@ -61,6 +63,7 @@ class Regression:
     robust: Array | None = None
     fourth: Array | None = None
     evenness: Array | float = 1.0
+    log_b: Array | None = None
 
     def without_fourth(self) -> Regression:
         """The same without the sums of degree four."""

@@ -23,7 +23,7 @@ COARSEST = 8.0  # pull over the shortest step at which steps hold no trace of wh
 FARTHEST = 256.0  # of a negative pull: over the window,
 FASTEST = 30.0  # and over its longest step
 _HALVINGS = 40
-TOLERANCE = 1e-10  # of asinh(kappa T): far inside the standard error, which is 1 or more of kappa T
+TOLERANCE = 1e-13  # of asinh(kappa T): so that what follows a curve exactly is seen to
 
 
 @dataclass(frozen=True)

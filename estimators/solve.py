@@ -69,7 +69,8 @@ def roots(function: Callable[[Array, Places], Array], a: Array, b: Array, fa: Ar
         least = tol / np.abs(b - a)
         done = (least > 0.5) | (fa == 0) | np.isnan(fa)
         found[at[done]] = np.where(np.isnan(fa), np.nan, np.where(fa == 0, a, best))[done]
-        share = np.clip(_share(a, b, c, fa, fb, fc), least, 1 - least)
+        with np.errstate(all="ignore"):  # where interpolation makes no sense it is not used
+            share = np.clip(_share(a, b, c, fa, fb, fc), least, 1 - least)
         keep = ~done
         at, a, b, fa, fb, share = (each[keep] for each in (at, a, b, fa, fb, share))
     return found
@@ -77,14 +78,15 @@ def roots(function: Callable[[Array, Places], Array], a: Array, b: Array, fa: Ar
 
 def _first_share(fa: Array, fb: Array) -> Array:
     """Where a straight line would vanish, kept away from the ends."""
-    return np.clip(np.where(fa == fb, 0.5, fa / (fa - fb)), 0.05, 0.95)
+    straight: Array = np.divide(fa, fa - fb, out=np.full(fa.shape, 0.5), where=fa != fb)
+    return np.asarray(np.clip(straight, 0.05, 0.95))
 
 
 def _share(a: Array, b: Array, c: Array, fa: Array, fb: Array, fc: Array) -> Array:
     """How far from a to b to go: by inverse quadratic interpolation where it can be trusted, else half."""
     xi, phi = (a - b) / (c - b), (fa - fb) / (fc - fb)
     trusted = (phi * phi < xi) & (np.square(1 - phi) < 1 - xi)
-    inverse = fa / (fb - fa) * (fc / (fb - fc)) + (c - a) / (b - a) * (fa / (fc - fa)) * (fb / (fc - fb))
+    inverse: Array = fa / (fb - fa) * (fc / (fb - fc)) + (c - a) / (b - a) * (fa / (fc - fa)) * (fb / (fc - fb))
     return np.where(trusted, inverse, 0.5)
 
 

@@ -3,6 +3,9 @@
 With T the time of a window and Δ = T/n its mean step, estimates with the errors found here are those of a regression
 of increments on levels at steps of Δ, as in `driftbook.estimators.regression`, with the slope e^{−kappa Δ} − 1 on the
 level. So what holds for that regression, intervals above all, is used for any steps, and at equal steps it is the same.
+
+Where a few long gaps hold much of T they tell less of the pull than as many equal steps would. The interval of kappa
+is widened by that too: by the root of the information that steps of Δ would hold over the information there is.
 """
 
 from __future__ import annotations
@@ -15,17 +18,18 @@ from numpy.typing import NDArray
 
 from driftbook.estimators.batches import Piece
 from driftbook.estimators.gaps import FEW, Segments, by_length, by_octaves, by_range, distinct_lengths, segments_of
-from driftbook.estimators.profile import NodeProfile, Spot, StepProfile
+from driftbook.estimators.profile import NodeProfile, Spot, StepProfile, told, unbiased
 from driftbook.estimators.pull import Pull
 from driftbook.estimators.regression import ROUNDING, Mask, Regression
 from driftbook.estimators.repair import GATHERED, Places
 from driftbook.estimators.search import Times, look, settle
 from driftbook.estimators.windows import Array
 
-AT_ONCE = 1 << 14  # steps in the segments that are worked on at one time: with all nodes some ten megabytes
+AT_ONCE = 1 << 12  # steps in the segments that are worked on at one time: with all nodes, what fits in the cache
+FEW_WINDOWS = 512  # that are worked on at one time in any case
 LOOK_POINTS = 4  # interpolation points an octave to look over the whole range: f is right to some 0.01
-POINTS = 16  # points of the range up to the longest step
-LONGEST_LOOK, LONGEST_PULL = 1.0, 3.0  # pull over that range up to which they serve: before, and after all is found
+POINTS = 20  # points of the range up to the longest step
+LONGEST_LOOK, LONGEST_PULL = 4.0, 4.5  # pull over that range up to which they serve: before, and after all is found
 
 
 @dataclass(frozen=True)
@@ -61,6 +65,35 @@ class Solution:
     widening: Array | None = None
 
     @property
+    def theta(self) -> Array:
+        """The level that values are pulled to."""
+        return np.asarray(self.origin + self.spot.alpha / self.kappa)
+
+    @property
+    def sigma(self) -> Array:
+        """The volatility."""
+        return np.sqrt(self.spot.rss / self.n)
+
+    @property
+    def kappa_se(self) -> Array:
+        """Standard error of kappa, from the expected information at the estimates, with n − 2 in the variance."""
+        information = self.spot.information * ((self.n - 2) / self.spot.rss) + self.spot.variance_information
+        return np.asarray(1 / np.sqrt(information))
+
+    @property
+    def theta_se(self) -> Array:
+        """Standard error of theta: at given kappa, and by how theta moves with it."""
+        spot = self.spot
+        at_kappa = spot.rss / (self.n - 2) / spot.weight
+        return np.sqrt(at_kappa + np.square((spot.lean + spot.alpha / self.kappa) * self.kappa_se)) / np.abs(self.kappa)
+
+    @property
+    def sigma_se(self) -> Array:
+        """Standard error of sigma: at given kappa, and by how sigma moves with it."""
+        of_kappa = 0.5 * self.spot.variance_slope * self.kappa_se
+        return np.asarray(self.sigma * np.sqrt(1 / (2 * self.n) + np.square(of_kappa)))
+
+    @property
     def loglik(self) -> Array:
         """Log-likelihood at the estimates."""
         n, R = self.n, self.spot.rss
@@ -79,7 +112,7 @@ def from_sums(piece: Piece) -> Iterator[tuple[Places, Solution, Mask]]:
         False where sums lost digits or met a value that is not finite: what is said there means nothing.
     """
     whole = segments_of(piece)
-    at_once = max(1, AT_ONCE // whole.steps.shape[1])
+    at_once = max(1, AT_ONCE // whole.steps.shape[1], FEW_WINDOWS // whole.windows)
     for start in range(0, len(whole.steps), at_once):
         segments = whole.take(slice(start, start + at_once))
         for places, solution, sound in _solved(segments):
@@ -179,7 +212,8 @@ def from_windows(windows: Array, steps: Array, *, fourth: bool) -> tuple[Solutio
     times = Times(steps.sum(axis=1), steps.min(axis=1), steps.max(axis=1))
     found = settle(profile, times, *look(profile, times))
     spot = profile.spot(np.where(np.isnan(found.kappa), 0.0, found.kappa))
-    flat = ~(ROUNDING**2 * (np.square(scaled[:, :-1]) / steps).sum(axis=1) < spot.rss)
+    least = np.fmin(spot.rss, profile.spot(np.zeros(len(steps))).rss)  # of a straight line at zero
+    flat = ~(ROUNDING**2 * (np.square(scaled[:, :-1]) / steps).sum(axis=1) < least)
     log_steps = np.log(steps).sum(axis=1)
     solution = Solution(len(steps[0]), found.kappa, found.rising, spot, times.duration, log_steps, origin)
     if fourth:
@@ -189,14 +223,13 @@ def from_windows(windows: Array, steps: Array, *, fourth: bool) -> tuple[Solutio
 
 
 def as_regression(solution: Solution) -> Regression:
-    """The regression at equal steps of the mean length that has these estimates and their errors."""
+    """The regression at equal steps that has these estimates and their errors."""
     n, spot, step = solution.n, solution.spot, solution.duration / solution.n
     h = solution.kappa * step
     pull, growth = Pull(h), Pull(-h)
     variance = spot.rss / (n - 2)
-    kappa_se = 1 / np.sqrt(spot.information / variance + spot.variance_information)
     s2 = variance * step / pull.q
-    spread = s2 / np.square(pull.decay * kappa_se * step)
+    spread = s2 / np.square(pull.decay * solution.kappa_se * step)
     gain = -np.expm1(-h)
     bend = growth.phi_slope + growth.phi  # ((e^h − 1)/h − 1)/h
     rss = s2 * (n - 2)
@@ -207,7 +240,16 @@ def as_regression(solution: Solution) -> Regression:
         slope=-gain,
         spread=spread,
         rss=rss,
-        robust=None if solution.widening is None else solution.widening * spread * rss / n,
+        robust=None if solution.widening is None else _widened(solution, solution.widening, step) * spread * rss / n,
         fourth=None if solution.kurtosis is None else solution.kurtosis * np.square(rss) / n,
         evenness=solution.duration * pull.tau / spot.weight,
+        log_b=-h,
     )
+
+
+def _widened(solution: Solution, widening: Array, step: Array) -> Array:
+    """The square by which the interval of kappa is widened: for uneven variance, and for what long gaps do not tell."""
+    spot, duration = solution.spot, solution.duration
+    likely = unbiased(solution.kappa, duration)
+    of_gaps = duration * told(likely, step) / (spot.told + 2 * np.maximum(likely, 0.0) * spot.variance_information)
+    return np.asarray(np.maximum(widening, 1.0) * np.maximum(of_gaps, 1.0))

@@ -31,6 +31,17 @@ create table base.leaf (
   sha256 varchar not null
 );
 
+-- What `forget` left of a leaf: the digest of the rows that are still there, or of none.
+create table base.forgotten_leaf (
+  run_id integer not null,
+  table_name varchar not null,
+  series_id integer,
+  rows_in bigint not null,
+  rows_closed bigint not null,
+  sha256 varchar not null,
+  run_from integer not null
+);
+
 -- Series: a name never changes its number; settings are versioned.
 create table base.series (
   series_id integer not null,

@@ -41,14 +41,11 @@ create view main.gbm as
 select x.* exclude (run_from, run_to), x.run_from as run_id from base.gbm_rows x where x.run_to is null;
 
 create macro main.gbm_at_run(run) as table
-select x.* exclude (run_from, run_to), x.run_from as run_id from base.gbm_rows x
-where x.run_from <= run and (x.run_to is null or x.run_to > run);
+select x.* exclude (run_from, run_to), x.run_from as run_id from base.gbm_rows x where x.run_from <= run and (x.run_to is null or x.run_to > run);
 
 create macro main.gbm_as_of(moment) as table
 with k as (select base.run_at(base.moment_us(moment)) as run_id)
-select x.* exclude (run_from, run_to), x.run_from as run_id from base.gbm_rows x
-where x.run_from <= (select k.run_id from k)
-  and (x.run_to is null or x.run_to > (select k.run_id from k));
+select x.* exclude (run_from, run_to), x.run_from as run_id from base.gbm_rows x where x.run_from <= (select k.run_id from k) and (x.run_to is null or x.run_to > (select k.run_id from k));
 
 create view versions.gbm as
 select x.*, f.moment as in_force_from, t.moment as in_force_to

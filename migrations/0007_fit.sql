@@ -55,7 +55,8 @@ select m.series, m.lookback, m.window_end, 'exp_ou' as model, 'sigma' as paramet
 
 create view main.fit as
 select y.series, y.lookback, y.window_start, y.window_end, y.model, y.n, y.k, y.loglik, y.aic, y.bic,
-  y.ratio / sum(y.ratio) over (partition by y.series, y.lookback, y.window_end) as model_weight,
+  y.ratio / sum(y.ratio) over (partition by y.series, y.lookback, y.window_end order by y.model
+    rows between unbounded preceding and unbounded following) as model_weight,
   y.models_compared, y.status, y.run_id
 from (
   select x.* exclude (run_from, run_to), x.run_from as run_id,
@@ -68,7 +69,8 @@ from (
 
 create macro main.fit_at_run(run) as table
 select y.series, y.lookback, y.window_start, y.window_end, y.model, y.n, y.k, y.loglik, y.aic, y.bic,
-  y.ratio / sum(y.ratio) over (partition by y.series, y.lookback, y.window_end) as model_weight,
+  y.ratio / sum(y.ratio) over (partition by y.series, y.lookback, y.window_end order by y.model
+    rows between unbounded preceding and unbounded following) as model_weight,
   y.models_compared, y.status, y.run_id
 from (
   select x.* exclude (run_from, run_to), x.run_from as run_id,
@@ -82,7 +84,8 @@ from (
 create macro main.fit_as_of(moment) as table
 with k as (select base.run_at(base.moment_us(moment)) as run_id)
 select y.series, y.lookback, y.window_start, y.window_end, y.model, y.n, y.k, y.loglik, y.aic, y.bic,
-  y.ratio / sum(y.ratio) over (partition by y.series, y.lookback, y.window_end) as model_weight,
+  y.ratio / sum(y.ratio) over (partition by y.series, y.lookback, y.window_end order by y.model
+    rows between unbounded preceding and unbounded following) as model_weight,
   y.models_compared, y.status, y.run_id
 from (
   select x.* exclude (run_from, run_to), x.run_from as run_id,
@@ -95,7 +98,9 @@ from (
 
 create view versions.fit as
 select x.series, x.lookback, x.window_start, x.window_end, x.model, x.n, x.k, x.loglik, x.aic, x.bic,
-  case when x.status in ('ok', 'no_reversion', 'at_bound') then 1 / (select sum(exp(-0.5 * (p.bic - x.bic))) from base.fit_rows p where p.series = x.series and p.lookback = x.lookback and p.window_end = x.window_end
+  case when x.status in ('ok', 'no_reversion', 'at_bound') then 1 / (
+    select sum(exp(-0.5 * (p.bic - x.bic)) order by p.model, p.run_from)
+    from base.fit_rows p where p.series = x.series and p.lookback = x.lookback and p.window_end = x.window_end
     and p.run_from <= x.run_from and (p.run_to is null or p.run_to > x.run_from or p.run_from = x.run_from)
     and p.status in ('ok', 'no_reversion', 'at_bound')) end as model_weight,
   (select count(*) from base.fit_rows p where p.series = x.series and p.lookback = x.lookback and p.window_end = x.window_end

@@ -16,15 +16,22 @@ _LOCKED = ("set temp_directory = ''", "set enable_external_access = false", "set
 
 
 @contextmanager
-def ask(book: Path, sql: str) -> Iterator[duckdb.DuckDBPyRelation]:
-    """The rows of one SELECT; raises UsageError for anything else and for a query that fails."""
+def ask(
+    book: Path, sql: str, *, timeout: float | None = None, rows: int | None = None
+) -> Iterator[duckdb.DuckDBPyRelation]:
+    """The rows of one SELECT, `rows` of them at most, within `timeout` seconds.
+
+    Raises UsageError for anything else, for a query that fails, and for one that takes longer.
+    """
     with connect(book) as con:
+        if timeout is not None:
+            con.execute(f"set max_execution_time = {max(1, round(1000 * timeout))}")
         for setting in _LOCKED:
             con.execute(setting)
         try:
             statement = _only_statement(con, sql)
-            rows = con.sql(statement.query)
-            yield rows if rows is not None else con.sql("select null where false")
+            found = con.sql(statement.query)
+            yield found if rows is None else found.limit(rows)
         except duckdb.Error as error:
             raise UsageError(f"the query failed: {str(error).strip()}") from error
 

@@ -23,6 +23,7 @@ from numpy.typing import NDArray
 from driftbook.store.tables import Tracked
 
 _ROWS_AT_ONCE = 1_000_000
+_ROWS_ENCODED_AT_ONCE = 50_000
 _NO_ROWS = (0, hashlib.sha256().digest())
 
 
@@ -40,13 +41,21 @@ class Leaf:
 
 
 def leaves(
-    con: duckdb.DuckDBPyConnection, table: Tracked, columns: list[str], runs: tuple[int, int], migration: int
+    con: duckdb.DuckDBPyConnection,
+    table: Tracked,
+    columns: list[str],
+    runs: tuple[int, int],
+    migration: int,
+    *,
+    series_id: int | None = None,
 ) -> Iterator[Leaf]:
     """The leaves of one table for all runs from runs[0] to runs[1], in the order of series and run.
 
-    `columns` are those that the table had at these runs, without run_to, in their order.
+    `columns` are those that the table had at these runs, without run_to, in their order. `series_id` asks for the
+    leaves of one series alone.
     """
-    for first, last in _batches(con, table, runs):
+    batches = _batches(con, table, runs) if series_id is None else [(series_id, series_id)]
+    for first, last in batches:
         came = _grouped_rows(con, table, columns, "run_from", runs, (first, last))
         went = _grouped_rows(con, table, list(table.key), "run_to", runs, (first, last)) if table.closes else {}
         for series_id, run_id in sorted(came.keys() | went.keys(), key=_nulls_first):
@@ -59,9 +68,7 @@ def leaves(
 
 def row_bytes(table: pa.Table) -> bytes:
     """The bytes of all rows of an Arrow table, in order."""
-    if table.num_rows == 0:
-        return b""
-    return b"".join(_encoded_runs(table.combine_chunks()))
+    return b"".join(_encoded_runs(_laid_out(table))) if table.num_rows else b""
 
 
 def _nulls_first(group: tuple[int | None, int]) -> tuple[int, int]:
@@ -113,12 +120,29 @@ def _grouped_rows(
     order = ", ".join([*group, *table.key])
     rows = con.sql(f"select {select}, {marks} from base.{table.name} where {where} order by {order}").to_arrow_table()
     found = {}
-    for start, stop in _group_bounds(rows, [f"_{column}" for column in group]):
-        run_id = rows.column(f"_{run_column}")[start].as_py()
-        series_id = rows.column("_series_id")[start].as_py() if table.by_series else None
-        group_bytes = row_bytes(rows.select(columns).slice(start, stop - start))
-        found[series_id, run_id] = stop - start, hashlib.sha256(group_bytes).digest()
+    for groups in _some_at_once(_group_bounds(rows, [f"_{column}" for column in group])):
+        first, last = groups[0][0], groups[-1][1]
+        laid_out = _laid_out(rows.select(columns).slice(first, last - first))
+        encoded = memoryview(b"".join(_encoded_runs(laid_out)))
+        ends = _row_ends(laid_out)
+        for start, stop in groups:
+            run_id = rows.column(f"_{run_column}")[start].as_py()
+            series_id = rows.column("_series_id")[start].as_py() if table.by_series else None
+            group_bytes = encoded[ends[start - first] : ends[stop - first]]
+            found[series_id, run_id] = stop - start, hashlib.sha256(group_bytes).digest()
     return found
+
+
+def _some_at_once(bounds: Iterable[tuple[int, int]]) -> Iterator[list[tuple[int, int]]]:
+    """Groups that are encoded together, so that neither a group nor a million rows cost more than they must."""
+    some: list[tuple[int, int]] = []
+    for start, stop in bounds:
+        if some and stop - some[0][0] > _ROWS_ENCODED_AT_ONCE:
+            yield some
+            some = []
+        some.append((start, stop))
+    if some:
+        yield some
 
 
 def _group_bounds(rows: pa.Table, group: list[str]) -> Iterable[tuple[int, int]]:
@@ -133,17 +157,29 @@ def _group_bounds(rows: pa.Table, group: list[str]) -> Iterable[tuple[int, int]]
     return zip(starts, [*starts[1:], rows.num_rows], strict=True)
 
 
-def _encoded_runs(rows: pa.Table) -> Iterator[bytes]:
+def _laid_out(rows: pa.Table) -> list[_Column]:
+    return [_Column.of(rows.column(name)) for name in rows.column_names]
+
+
+def _encoded_runs(columns: list[_Column]) -> Iterator[bytes]:
     """Runs of rows whose texts have the same lengths: these have one fixed layout and are encoded at once."""
-    columns = [_Column.of(rows.column(name)) for name in rows.column_names]
-    changed = np.zeros(rows.num_rows, dtype=bool)
+    size = columns[0].marks.size
+    changed = np.zeros(size, dtype=bool)
     changed[:1] = True
     for column in columns:
         if column.lengths is not None:
             changed[1:] |= column.lengths[1:] != column.lengths[:-1]
     starts = np.flatnonzero(changed)
-    for start, stop in zip(starts, np.append(starts[1:], rows.num_rows), strict=True):
+    for start, stop in zip(starts, [*starts[1:], size], strict=True):
         yield _fixed_layout(columns, int(start), int(stop))
+
+
+def _row_ends(columns: list[_Column]) -> NDArray[np.int64]:
+    """Where each row ends in the bytes of all rows, and before them 0."""
+    widths = np.zeros(columns[0].marks.size, np.int64)
+    for column in columns:
+        widths += 1 + (column.values.shape[1] if column.lengths is None else 4 + column.lengths.astype(np.int64))
+    return np.concatenate([[0], np.cumsum(widths)])
 
 
 @dataclass(frozen=True)

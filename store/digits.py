@@ -12,7 +12,7 @@ def with_interval(value: float | None, lower: float | None, upper: float | None,
     places = decimal_places(value, lower, upper)
     space = f" {unit}" if unit else ""
     ends = [NO_END if end is None else f"{end:.{places}f}{space}" for end in (lower, upper)]
-    dash = "–" if not space and NO_END not in ends else " – "
+    dash = " – " if space or any(end == NO_END or end.startswith("-") for end in ends) else "–"
     shown = "–" if value is None else f"{value:.{places}f}{space}"
     return f"{shown} ({dash.join(ends)})" if (lower, upper) != (None, None) else shown
 

@@ -94,13 +94,16 @@ def due(asked: Asked, times: Microseconds, changed: Microseconds, days: Days) ->
     return _slices(asked, ends, times.size, days), spans
 
 
+def steps_over_all(observations: int) -> int:
+    """The steps of the one window over all observations; of fewer than six, more than there are: it is too short."""
+    return max(observations - 1, _FEWEST)
+
+
 def slice_of(asked: Asked, ends: Indexes, size: int) -> Slice:
     """The slice that computes the windows with these ends again, bit for bit."""
     if size <= asked.lookback or asked.lookback == 0:
         return _everything(asked, np.empty(size, np.int64), ends)[0]
-    first = int(ends[0]) - asked.lookback
-    start = aligned_start(first, asked.lookback)
-    return Slice(asked.series_id, asked.lookback, asked.lookback, start, first, int(ends[-1]), ends)
+    return _windows_ending(asked, int(ends[0]), int(ends[-1]), ends)
 
 
 def slice_table(slices: list[Slice], shifts: dict[int, float]) -> pa.Table:
@@ -147,7 +150,7 @@ def _merged(firsts: NDArray[np.int64], lasts: NDArray[np.int64]) -> list[tuple[i
 def _everything(asked: Asked, times: Microseconds, days: Days) -> list[Slice]:
     last = times.size - 1
     if times.size <= asked.lookback or asked.lookback == 0:
-        steps = asked.lookback or max(last, _FEWEST)
+        steps = asked.lookback or steps_over_all(times.size)
         return [Slice(asked.series_id, asked.lookback, steps, 0, 0, last)] if times.size else []
     return _slices(asked, [(asked.lookback, last)], times.size, days)
 
@@ -157,15 +160,18 @@ def _slices(asked: Asked, ranges: list[tuple[int, int]], size: int, days: Days) 
     found = []
     for first_end, last_end in ranges:
         ends = None if lasting is None else lasting[(lasting >= first_end) & (lasting <= last_end)]
-        if ends is not None and ends.size == 0:
-            continue
-        if ends is not None:
+        if ends is None:
+            found.append(_windows_ending(asked, first_end, last_end))
+        elif ends.size:
             found.append(slice_of(asked, ends, size))
-            continue
-        first = first_end - asked.lookback
-        start = aligned_start(first, asked.lookback)
-        found.append(Slice(asked.series_id, asked.lookback, asked.lookback, start, first, last_end))
     return found
+
+
+def _windows_ending(asked: Asked, first_end: int, last_end: int, ends: Indexes | None = None) -> Slice:
+    """The slice from where the blocks of its first window begin."""
+    first = first_end - asked.lookback
+    start = aligned_start(first, asked.lookback)
+    return Slice(asked.series_id, asked.lookback, asked.lookback, start, first, last_end, ends)
 
 
 def _last_of_period(every: str, days: Days, size: int) -> Indexes:

@@ -60,8 +60,13 @@ class EstimateTable:
 
     def close_entries(self, con: duckdb.DuckDBPyConnection, entries: list[tuple[int, int]], run_id: int) -> None:
         """Closes all rows in force of some (series, lookback)."""
-        for series_id, lookback in entries:
-            con.execute(query("close_entry").format(table=self.model.name), [run_id, series_id, lookback])
+        if entries:
+            values = {
+                "run": run_id,
+                "series": [series_id for series_id, _ in entries],
+                "lookbacks": [lookback for _, lookback in entries],
+            }
+            con.execute(query("close_entries").format(table=self.model.name), values)
 
     def identical(self) -> str:
         """SQL: whether a computed row f and a stored row b are equal to the bit."""

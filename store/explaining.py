@@ -14,7 +14,7 @@ from driftbook.estimators import MODELS
 from driftbook.store.errors import UsageError
 from driftbook.store.moments import parse_moment
 from driftbook.store.reader import connect
-from driftbook.store.series import near_name
+from driftbook.store.series import ended, near_name
 from driftbook.store.sql import first_row, query
 
 
@@ -71,28 +71,43 @@ def explain(
     and now. model and lookback default to what `latest` speaks of. Raises UsageError where there is nothing to compare.
     """
     with connect(Path(book)) as con:
-        _check_series(con, series)
-        chosen_model, chosen_lookback = _chosen(con, series, model, lookback)
-        runs = _runs_of(con, series, chosen_model, chosen_lookback)
-        if not runs:
-            raise UsageError(f"there is no estimate of {chosen_model} on {series!r} with that lookback.")
-        last = _run_at(con, later) if later else runs[-1]
-        before = [run for run in runs if run < last]
-        first = _run_at(con, earlier) if earlier else (before[-1] if before else runs[0])
-        one = _statement(con, series, chosen_model, chosen_lookback, first)
-        other = _statement(con, series, chosen_model, chosen_lookback, last)
-        left, came = _steps(con, series, one, other)
-        return Explanation(
-            series=series,
-            model=chosen_model,
-            lookback=chosen_lookback,
-            earlier=one,
-            later=other,
-            corrections=_corrections(con, series, one, other),
-            steps_that_left=left,
-            steps_that_came=came,
-            causes=_causes(con, series, first, last),
-        )
+        return explain_on(con, series, model=model, lookback=lookback, earlier=earlier, later=later)
+
+
+def explain_on(
+    con: duckdb.DuckDBPyConnection,
+    series: str,
+    *,
+    model: str | None = None,
+    lookback: int | None = None,
+    earlier: str | None = None,
+    later: str | None = None,
+) -> Explanation:
+    """As `explain`, on a book that is open."""
+    _check_series(con, series)
+    chosen_model, chosen_lookback = _chosen(con, series, model, lookback)
+    runs = _runs_of(con, series, chosen_model, chosen_lookback)
+    if not runs:
+        raise UsageError(f"there is no estimate of {chosen_model} on {series!r} with that lookback.")
+    last = _run_at(con, later) if later else runs[-1]
+    before = [run for run in runs if run < last]
+    first = _run_at(con, earlier) if earlier else (before[-1] if before else runs[0])
+    if first > last:
+        raise UsageError(f"--from is run {first} and --to is run {last}; the earlier comes first.")
+    one = _statement(con, series, chosen_model, chosen_lookback, first)
+    other = _statement(con, series, chosen_model, chosen_lookback, last)
+    left, came = _steps(con, series, one, other)
+    return Explanation(
+        series=series,
+        model=chosen_model,
+        lookback=chosen_lookback,
+        earlier=one,
+        later=other,
+        corrections=_corrections(con, series, one, other),
+        steps_that_left=left,
+        steps_that_came=came,
+        causes=_causes(con, series, first, last),
+    )
 
 
 def _runs_of(con: duckdb.DuckDBPyConnection, series: str, model: str, lookback: int) -> list[int]:
@@ -103,15 +118,18 @@ def _runs_of(con: duckdb.DuckDBPyConnection, series: str, model: str, lookback: 
 def _check_series(con: duckdb.DuckDBPyConnection, series: str) -> None:
     names = [name for (name,) in con.execute("select series from series").fetchall()]
     if series not in names:
-        raise UsageError(f"the book has no series {series!r}{near_name(series, names)}.")
+        raise UsageError(ended(f"the book has no series {series!r}{near_name(series, names)}"))
 
 
 def _chosen(con: duckdb.DuckDBPyConnection, series: str, model: str | None, lookback: int | None) -> tuple[str, int]:
     if model is not None and model not in MODELS:
-        raise UsageError(f"no model is called {model!r}{near_name(model, list(MODELS))}.")
+        near = near_name(model, list(MODELS)) or f"; there are {', '.join(MODELS)}"
+        raise UsageError(ended(f"no model is called {model!r}{near}"))
     row = first_row(con, query("headline_of"), {"series": series})
     if row is None:
         raise UsageError(f"{series!r} has not been estimated yet; put it into the plan and refresh.")
+    if model is None and row[0] is None:
+        raise UsageError(f"no model is in force for {series!r}; say which with --model.")
     return model or row[0], row[1] if lookback is None else lookback
 
 
@@ -150,7 +168,7 @@ def _corrections(con: duckdb.DuckDBPyConnection, series: str, one: Statement, ot
 
 
 def _steps(con: duckdb.DuckDBPyConnection, series: str, one: Statement, other: Statement) -> tuple[int, int]:
-    """Steps of the earlier window that are before the later one, and steps of the later that are after the earlier."""
+    """How many observations left between two windows, and how many came; late ones come too."""
     values = {"series": series, "first": one.run_id, "last": other.run_id}
     bounds = {"one_start": one.window_start, "other_start": other.window_start}
     ends = {"one_end": one.window_end, "other_end": other.window_end}

@@ -6,11 +6,10 @@ brings a new migration that makes them again.
 
 from __future__ import annotations
 
-from collections.abc import Callable
-
 from driftbook.estimators import MODELS, Model
 from driftbook.estimators.compare import AIC_SQL, BIC_SQL
-from driftbook.store.model_schema import IDENTITY, VERSIONED, column_comments
+from driftbook.store.model_schema import IDENTITY
+from driftbook.store.reader_schema import comments, readers, versions
 
 _FIT = (
     *IDENTITY[:4],
@@ -51,10 +50,10 @@ def migration_text() -> str:
         "\nunion all\n".join(_estimate_branch(model, one.name) for model in MODELS.values() for one in model.parameters)
         + ";",
         "",
-        *_readers("fit", _weighted),
+        *readers("fit", _weighted),
         *_fit_versions(),
-        *_readers("estimate", _plain),
-        *_versions("estimate"),
+        *readers("estimate"),
+        *versions("estimate"),
         *_versions_of(),
         *_comments("fit", "all models: one row per fit, with what compares models", _FIT),
         *_comments("estimate", "all models: one row per parameter of a fit", _ESTIMATE),
@@ -79,35 +78,12 @@ def _estimate_branch(model: Model, name: str) -> str:
     )
 
 
-def _readers(name: str, make: Callable[[str, str], str]) -> list[str]:
-    """The view in force, at a run and as of a moment."""
-    return [
-        f"create view main.{name} as",
-        f"{make(name, 'x.run_to is null')};",
-        "",
-        f"create macro main.{name}_at_run(run) as table",
-        f"{make(name, 'x.run_from <= run and (x.run_to is null or x.run_to > run)')};",
-        "",
-        f"create macro main.{name}_as_of(moment) as table",
-        "with k as (select base.run_at(base.moment_us(moment)) as run_id)",
-        make(
-            name,
-            "x.run_from <= (select k.run_id from k) and (x.run_to is null or x.run_to > (select k.run_id from k))",
-        )
-        + ";",
-        "",
-    ]
-
-
-def _plain(name: str, where: str) -> str:
-    return f"select x.* exclude (run_from, run_to), x.run_from as run_id from base.{name}_rows x where {where}"
-
-
 def _weighted(name: str, where: str) -> str:
     """Fits with their weights among the usable models of the same window."""
     return (
         "select y.series, y.lookback, y.window_start, y.window_end, y.model, y.n, y.k, y.loglik, y.aic, y.bic,\n"
-        "  y.ratio / sum(y.ratio) over (partition by y.series, y.lookback, y.window_end) as model_weight,\n"
+        "  y.ratio / sum(y.ratio) over (partition by y.series, y.lookback, y.window_end order by y.model\n"
+        "    rows between unbounded preceding and unbounded following) as model_weight,\n"
         "  y.models_compared, y.status, y.run_id\n"
         "from (\n"
         f"  select x.* exclude (run_from, run_to), x.run_from as run_id,\n"
@@ -130,21 +106,12 @@ def _fit_versions() -> list[str]:
     return [
         "create view versions.fit as",
         "select x.series, x.lookback, x.window_start, x.window_end, x.model, x.n, x.k, x.loglik, x.aic, x.bic,",
-        f"  case when {_USABLE} then 1 / (select sum(exp(-0.5 * (p.bic - x.bic))) from {peers}) end as model_weight,",
+        f"  case when {_USABLE} then 1 / (",
+        "    select sum(exp(-0.5 * (p.bic - x.bic)) order by p.model, p.run_from)",
+        f"    from {peers}) end as model_weight,",
         f"  (select count(*) from {peers}) as models_compared,",
         "  x.status, x.run_from, x.run_to, f.moment as in_force_from, t.moment as in_force_to",
         "from base.fit_rows x",
-        "join base.run f on f.run_id = x.run_from",
-        "left join base.run t on t.run_id = x.run_to;",
-        "",
-    ]
-
-
-def _versions(name: str) -> list[str]:
-    return [
-        f"create view versions.{name} as",
-        "select x.*, f.moment as in_force_from, t.moment as in_force_to",
-        f"from base.{name}_rows x",
         "join base.run f on f.run_id = x.run_from",
         "left join base.run t on t.run_id = x.run_to;",
         "",
@@ -163,16 +130,8 @@ def _versions_of() -> list[str]:
     ]
 
 
-def _comments(name: str, meaning: str, described: tuple[tuple[str, str], ...]) -> list[str]:
-    return [
-        f"comment on view main.{name} is '{meaning}';",
-        *column_comments(f"main.{name}", [*described, ("run_id", "run that wrote the row")]),
-        f"comment on view versions.{name} is 'every version of {name}';",
-        *column_comments(f"versions.{name}", [*described, *VERSIONED]),
-        f"comment on macro table main.{name}_at_run is 'the view {name} as it was after a run: {name}_at_run(41)';",
-        f"comment on macro table main.{name}_as_of is "
-        f"'the view {name} as it was known at a moment: {name}_as_of(''2026-01-31'')';",
-    ]
+def _comments(name: str, meaning: str, columns: tuple[tuple[str, str], ...]) -> list[str]:
+    return comments(name, in_force=meaning, every_version=f"every version of {name}", columns=columns)
 
 
 if __name__ == "__main__":

@@ -18,7 +18,7 @@ from __future__ import annotations
 from collections.abc import Callable, Iterator
 from concurrent.futures import Executor, Future
 from dataclasses import dataclass
-from functools import partial
+from functools import cache, partial
 from typing import Any
 
 import duckdb
@@ -30,13 +30,13 @@ from numpy.typing import NDArray
 from driftbook.estimators import MODELS, Fit, Model, Status, rolling
 from driftbook.estimators.realised import bipower_variation, realised_variance
 from driftbook.store.clocks import MICROSECONDS_PER_YEAR
+from driftbook.store.due import steps_over_all
 
 _BLOCK_VALUES = 1 << 18
 _PADDING = 1.25
 _SQL_TYPES = {"double": "DOUBLE", "boolean": "BOOLEAN"}
-_WORDS = pa.array([status.word for status in Status], pa.string())
-# What a list without a single step is asked for, so that it is told to be too short.
-_SOME_STEPS = 5
+# What DuckDB keeps for the times 'infinity' and '-infinity'; a NULL becomes a number below.
+_ENDLESS = np.iinfo(np.int64).max
 
 Values = NDArray[np.float64]
 
@@ -144,7 +144,7 @@ def _fit(fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, dt: An
 
 
 def _fit_at(fits: Callable[[list[_Asked]], list[_Rows]], t: pa.ChunkedArray, x: pa.ChunkedArray) -> pa.Array:
-    asked = [_whole(series, _years(times)) for times, series in zip(_lists(t), _lists(x), strict=True)]
+    asked = [_whole(series, _steps_at(times, series)) for times, series in zip(_lists(t), _lists(x), strict=True)]
     return _structs(fits(asked))
 
 
@@ -157,7 +157,7 @@ def _rolling_at(
     fits: Callable[[list[_Asked]], list[_Rows]], t: pa.ChunkedArray, x: pa.ChunkedArray, lookback: Any
 ) -> pa.Array:
     rows = zip(_lists(t), _lists(x), _integers(lookback), strict=True)
-    return _lists_of_structs(fits([_Asked(series, _years(times), steps) for times, series, steps in rows]))
+    return _lists_of_structs(fits([_Asked(series, _steps_at(times, series), steps) for times, series, steps in rows]))
 
 
 def _rolling_from(
@@ -168,33 +168,54 @@ def _rolling_from(
 
 
 def _loglik(model: Model, x: pa.ChunkedArray, dt: Any, parameters: pa.ChunkedArray) -> pa.Array:
-    rows = zip(_lists(x), _numbers(dt), _lists(parameters), strict=True)
-    return pa.array([_one_loglik(model, *row) for row in rows], pa.float64(), from_pandas=True)
-
-
-def _one_loglik(model: Model, x: Values, dt: float, parameters: Values) -> float:
-    if x.size < 2 or not dt > 0 or not np.isfinite(dt):
-        return float("nan")
-    return float(model.loglik(x, dt, *parameters))
+    """Lists of one length are worked on together, each with its own step and parameters."""
+    lists, given = list(_lists(x)), list(_lists(parameters))
+    steps = np.array(_numbers(dt))
+    found = np.full(len(lists), np.nan)
+    for rows in _alike([one.size for one in lists], padding=1.0):
+        usable = [row for row in rows if lists[row].size > 1 and steps[row] > 0 and np.isfinite(steps[row])]
+        if usable:
+            values = np.stack([lists[row] for row in usable])
+            found[usable] = model.loglik(values, steps[usable], *np.stack([given[row] for row in usable], axis=-1))
+    return pa.array(found, from_pandas=True)
 
 
 def _measure(measure: Callable[..., Values], r: pa.ChunkedArray) -> pa.Array:
     lists = list(_lists(r))
-    counts = np.array([one.size for one in lists])
-    together = np.zeros((len(lists), max(1, counts.max(initial=1))))
-    for row, one in enumerate(lists):
-        together[row, : one.size] = one
-    return pa.array(measure(together, counts=counts), from_pandas=True)
+    found = np.full(len(lists), np.nan)
+    for rows in _alike([one.size for one in lists], padding=_PADDING):
+        counts = [lists[row].size for row in rows]
+        together = np.zeros((len(rows), max(counts)))
+        for at, row in enumerate(rows):
+            together[at, : counts[at]] = lists[row]
+        found[rows] = measure(together, counts=np.array(counts))
+    return pa.array(found, from_pandas=True)
+
+
+def _alike(sizes: list[int], padding: float) -> Iterator[list[int]]:
+    """Rows by the size of their lists, as many at a time as fit together: the longest up to `padding` the shortest."""
+    group: list[int] = []
+    for row in sorted(range(len(sizes)), key=lambda row: sizes[row]):
+        size = sizes[row]
+        if group and (size > padding * sizes[group[0]] or (len(group) + 1) * size > _BLOCK_VALUES):
+            yield group
+            group = []
+        group.append(row)
+    if group:
+        yield group
 
 
 def _whole(x: Values, steps: Values) -> _Asked:
-    return _Asked(x, steps, max(x.size - 1, 0) or _SOME_STEPS)
+    return _Asked(x, steps, steps_over_all(x.size))
 
 
-def _years(times: Values) -> Values:
-    """Steps between times in years of 365 days."""
+def _steps_at(times: NDArray[Any], x: Values) -> Values:
+    """Steps between times in years of 365 days; NaN, which no model takes, where a time is missing or has no end."""
+    if times.size != x.size:
+        return np.array([np.nan])
     microseconds: NDArray[np.int64] = times.astype("datetime64[us]").astype(np.int64)
-    return np.asarray(np.diff(microseconds) / MICROSECONDS_PER_YEAR, np.float64)
+    known = (microseconds > -_ENDLESS) & (microseconds < _ENDLESS)
+    return np.where(known[1:] & known[:-1], np.diff(microseconds) / MICROSECONDS_PER_YEAR, np.nan)
 
 
 def _blocks(asked: list[_Asked], usable: list[int]) -> Iterator[tuple[list[int], tuple[Values, Values, int, int]]]:
@@ -271,8 +292,14 @@ def _structs(found: list[_Rows]) -> pa.Array:
         fields.append(_nullable(values, column.kind))
         names.append(column.name)
     codes = _joined([rows.cut(rows.fit.status) for rows in found])
-    fields.append(_WORDS.take(pa.array(codes.astype(np.int64))))
+    fields.append(_words().take(pa.array(codes.astype(np.int64))))
     return pa.StructArray.from_arrays(fields, [*names, "status"])
+
+
+@cache
+def _words() -> pa.Array:
+    # made when first needed: pyarrow looks for pandas at its first array, and loads it where it is installed
+    return pa.array([status.word for status in Status], pa.string())
 
 
 def _joined(parts: list[NDArray[Any]]) -> NDArray[Any]:

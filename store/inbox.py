@@ -40,28 +40,23 @@ def take_in_folder(run: Run, folder: Path, plan: Plan, *, yes: bool) -> Delivere
             run.con.commit()
         except IntakeError as error:
             run.con.rollback()
-            left.append(f"{file.name}: {error}")
+            left.append(str(error) if str(error).startswith(file.name) else f"{file.name}: {error}")
     return Delivered(tuple(outcomes), tuple(left))
 
 
 def _files(folder: Path) -> list[Path]:
+    try:
+        found = sorted(folder.iterdir())
+    except OSError as problem:
+        raise UsageError(f"the folder {folder} cannot be read: {problem.strerror}.") from problem
     return [
-        path
-        for path in sorted(folder.iterdir())
-        if path.is_file() and not path.name.startswith(".") and path.suffix not in _UNFINISHED
+        path for path in found if path.is_file() and not path.name.startswith(".") and path.suffix not in _UNFINISHED
     ]
 
 
 def _options(name: str, plan: Plan, *, yes: bool) -> intake.Options:
-    """The options of the first `[[intake]]` whose pattern the file's name matches."""
+    """The options of the first `[[intake]]` whose pattern the file's name matches; its keys are their names."""
     for planned in plan.intake:
         if fnmatchcase(name, planned.files):
-            return intake.Options(
-                series=planned.series,
-                columns=planned.columns,
-                dates=planned.dates,
-                zone=planned.zone,
-                layout=planned.layout,
-                yes=yes,
-            )
+            return intake.Options(**planned.model_dump(exclude={"files"}), yes=yes)
     return intake.Options(yes=yes)

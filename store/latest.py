@@ -3,10 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import astuple, dataclass, fields
+from dataclasses import dataclass, fields
 from datetime import datetime
 from itertools import groupby
-from typing import Any
 
 import duckdb
 import numpy as np
@@ -15,6 +14,7 @@ import pyarrow as pa
 from driftbook.estimators import MODELS, Model
 from driftbook.estimators.compare import bic, weights
 from driftbook.store.in_force import Candidate, Choice, choose
+from driftbook.store.local_sql import local_columns
 from driftbook.store.plan import Plan
 from driftbook.store.runs import Run
 from driftbook.store.series import Series
@@ -92,14 +92,24 @@ def write_latest(run: Run, plan: Plan, work: Work, last: int) -> None:
     con = run.con
     marks = _Marks(con, last)
     before = {row.series_id: row for row in (Row(*values) for values in con.execute(query("latest_rows")).fetchall())}
+    headline = _headlines(plan, work.series)
+    asked = sorted(_touched(work, before, headline) & headline.keys())
     rows = [
         _row(list(group), work.series[series_id], before.get(series_id), marks)
-        for series_id, group in groupby(_fits(con, plan, work), key=lambda fit: fit.series_id)
+        for series_id, group in groupby(_fits(con, asked, headline), key=lambda fit: fit.series_id)
     ]
     changed = [row for row in rows if row != before.get(row.series_id)]
-    planned = {work_series.series_id for work_series in work.series.values() if work_series.setting.planned}
-    gone = [series_id for series_id in before if series_id not in planned]
+    without = set(asked) - {row.series_id for row in rows}  # all its observations were withdrawn
+    gone = [series_id for series_id in before if series_id not in headline or series_id in without]
     _put_in_force(con, changed, gone, run.stamp.run_id)
+
+
+def _touched(work: Work, before: dict[int, Row], headline: dict[int, int]) -> set[int]:
+    """The series of which the book may say something else now: estimated, less estimated, or by another lookback."""
+    estimated = {one.series_id for model in work.models for one in model.spans}
+    less = {series_id for model in work.models for series_id, _ in model.leaving}
+    moved = {series_id for series_id, row in before.items() if row.lookback != headline.get(series_id)}
+    return estimated | less | moved
 
 
 class _Marks:
@@ -129,25 +139,22 @@ def _within(times: dict[int, list[datetime]], fit: _Fit) -> int:
     return sum(fit.window_start <= time <= fit.observed_at for time in times.get(fit.series_id, []))
 
 
-def _fits(con: duckdb.DuckDBPyConnection, plan: Plan, work: Work) -> Iterable[_Fit]:
-    touched = {one.series_id for model in work.models for one in model.spans}
-    headline = _headlines(plan, work.series)
-    chosen = sorted(touched & headline.keys())
+def _fits(con: duckdb.DuckDBPyConnection, asked: list[int], headline: dict[int, int]) -> Iterable[_Fit]:
+    """The fits of the latest window of some series, a series after the other, models in the registry's order."""
     con.register(
         "asked_headline",
         pa.table(
             {
-                "series_id": pa.array(chosen, pa.int32()),
-                "lookback": pa.array([headline[one] for one in chosen], pa.int32()),
+                "series_id": pa.array(asked, pa.int32()),
+                "lookback": pa.array([headline[one] for one in asked], pa.int32()),
             }
         ),
     )
     con.execute(query("find_headlines"))
     con.unregister("asked_headline")
-    union = " union all ".join(_local_sql(model) for model in MODELS.values())
-    found = con.execute(f"{union} order by series_id").fetchall()
+    found = [_Fit(*values) for model in MODELS.values() for values in con.execute(_local_sql(model)).fetchall()]
     con.execute("drop table headline")
-    return [_Fit(*values) for values in found]
+    return sorted(found, key=lambda fit: fit.series_id)
 
 
 def _headlines(plan: Plan, series: dict[int, Series]) -> dict[int, int]:
@@ -163,17 +170,18 @@ def _headlines(plan: Plan, series: dict[int, Series]) -> dict[int, int]:
 
 
 def _local_sql(model: Model) -> str:
-    """The latest fits of one model: volatility and drift at the last value, relative for positive series."""
+    """The latest fits of one model, with what it says at the last value."""
     there = {column.name: column.sql or column.name for column in model.columns}
     pull = ", ".join(f"({there[name]})" if name in there else "null" for name in _PULL)
-    per_level = "1" if model.is_relative else "case when h.sign = 'positive' then x else 1 end"
-    volatility = ", ".join(f"({sql}) / {per_level}" for sql in model.local_volatility)
     p_value = "no_reversion_p" if "no_reversion_p" in there else "null"
+    local = local_columns(model)
     return (
-        "select h.series_id, h.observed_at, h.x, h.lookback, m.window_start, "
-        f"'{model.name}', {len(model.parameters)}, n, loglik, status, {p_value}, {volatility}, "
-        f"({model.local_drift}) / {per_level}, {pull} "
-        f"from headline h join base.{model.name} m on m.series_id = h.series_id and m.lookback = h.lookback "
+        f"with there as (select h.*, {local['x']} as x from headline h), "
+        f"scaled as (select *, {local['scale']} as scale from there) "
+        "select h.series_id, h.observed_at, h.value, h.lookback, m.window_start, "
+        f"'{model.name}', {len(model.parameters)}, n, loglik, status, {p_value}, {local['volatility']}, "
+        f"{local['drift']}, {pull} "
+        f"from scaled h join base.{model.name} m on m.series_id = h.series_id and m.lookback = h.lookback "
         "and m.window_end = h.observed_at and m.run_to is null"
     )
 
@@ -213,15 +221,11 @@ def _row(fits: list[_Fit], series: Series, before: Row | None, marks: _Marks) ->
 
 def _candidate(fit: _Fit) -> Candidate:
     criterion = None if fit.loglik is None else fit.criterion
-    return Candidate(fit.model, fit.status, criterion, _has_pull(fit.model), fit.no_reversion_p)
+    return Candidate(fit.model, fit.status, criterion, MODELS[fit.model].has_pull, fit.no_reversion_p)
 
 
 def _choice(before: Row | None) -> Choice | None:
     return None if before is None else Choice(before.model, before.challenger)
-
-
-def _has_pull(model: str) -> bool:
-    return any(column.name == "half_life" for column in MODELS[model].columns)
 
 
 def _weights(fits: list[_Fit]) -> list[float | None]:
@@ -233,9 +237,9 @@ def _weights(fits: list[_Fit]) -> list[float | None]:
 
 def _pulled(fit: _Fit | None, fits: list[_Fit], weight: dict[str, float | None]) -> _Fit | None:
     """The fit that the half-life is told from: the model in force, or the heaviest that has a pull."""
-    if fit is not None and _has_pull(fit.model):
+    if fit is not None and MODELS[fit.model].has_pull:
         return fit
-    heaviest = sorted((one for one in fits if _has_pull(one.model)), key=lambda one: -(weight[one.model] or 0.0))
+    heaviest = sorted((one for one in fits if MODELS[one.model].has_pull), key=lambda one: -(weight[one.model] or 0.0))
     return heaviest[0] if heaviest else None
 
 
@@ -274,14 +278,10 @@ def _put_in_force(con: duckdb.DuckDBPyConnection, rows: list[Row], gone: list[in
     con.execute(query("close_latest"), {"run": run_id, "series": leaving})
     if rows:
         names = [field.name for field in fields(Row)]
-        columns = list(zip(*(astuple(row) for row in rows), strict=True))
-        con.register("latest_row", _table(names, columns))
+        columns = [[getattr(row, name) for row in rows] for name in names]
+        con.register("latest_row", pa.table(columns, names))
         con.execute(
             f"insert into base.latest ({', '.join(names)}, run_from) "
             f"select {', '.join(names)}, {run_id} from latest_row order by series_id"
         )
         con.unregister("latest_row")
-
-
-def _table(names: list[str], columns: list[tuple[Any, ...]]) -> pa.Table:
-    return pa.table({name: pa.array(list(values)) for name, values in zip(names, columns, strict=True)})

@@ -56,6 +56,7 @@ def writers_lock(book: Path, wait: float) -> Iterator[None]:
     except OSError as error:
         raise BookError(f"cannot write beside {book}: {error.strerror}; the folder must be writable.") from error
     try:
+        _narrow(book)
         before = last_look(book)
         _write(book, LastLook(_this_process(), _now(), before.looked_at, before.found))
         yield
@@ -86,6 +87,14 @@ def _write(book: Path, look: LastLook) -> None:
     path = lock_path(book)
     text = json.dumps({key: value for key, value in asdict(look).items() if value is not None})
     path.write_text(text + "\n", encoding="utf-8")
+
+
+def _narrow(book: Path) -> None:
+    """Takes rights from a lock file that the book has lost since the file was made."""
+    path = lock_path(book)
+    mode = path.stat().st_mode & 0o777
+    if mode & ~_mode_no_wider_than(book):
+        path.chmod(mode & _mode_no_wider_than(book))
 
 
 def _mode_no_wider_than(book: Path) -> int:

@@ -3,25 +3,29 @@
 from __future__ import annotations
 
 import hashlib
+import re
 import tomllib
 from collections import Counter
-from collections.abc import Iterator
+from collections.abc import Callable, Collection, Iterator
+from contextlib import suppress
 from dataclasses import dataclass
-from fnmatch import fnmatchcase
+from fnmatch import translate
 from pathlib import Path
-from typing import Annotated, Any, Literal, Self
+from typing import Annotated, Any, Literal, Self, TypeVar
 from zoneinfo import available_timezones
 
 from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, ValidationError, model_validator
 
 from driftbook.estimators import MODELS
 from driftbook.store.errors import PlanError
+from driftbook.store.intake.naming import why_no_name
 from driftbook.store.series import Setting, near_name
 
 # Keys of later plan files: named, so that a plan that uses them hears that this driftbook cannot do it yet.
-_NOT_YET = {"breaks", "formula", "group", "also", "horizons", "decimal", "blank"}
+_NOT_YET = {"breaks", "formula", "group", "also", "horizons"}
 ALL = 0
 BEST = "best"
+_LONGEST = 10_000_000
 
 
 def _known_zone(zone: str) -> str:
@@ -42,7 +46,18 @@ def _best_or_known_model(model: str) -> str:
 
 
 def _lookback(value: object) -> object:
-    return ALL if value == "all" else value if value != ALL else -1
+    if value == "all":
+        return ALL
+    if isinstance(value, int) and not isinstance(value, bool) and 1 <= value <= _LONGEST:
+        return value
+    raise ValueError(f'write a number of steps from 1 to {_LONGEST}, or "all"; there is {value!r}')
+
+
+def _possible_name(name: str) -> str:
+    reason = why_no_name(name)
+    if reason is not None or name != name.strip():
+        raise ValueError(f"{name!r} cannot be a name: {reason.sentence if reason else 'it has space around it.'}")
+    return name
 
 
 def _in_the_folder(pattern: str) -> str:
@@ -51,9 +66,10 @@ def _in_the_folder(pattern: str) -> str:
     return pattern
 
 
-Name = Annotated[str, Field(min_length=1, max_length=200)]
+Name = Annotated[str, AfterValidator(_possible_name)]
+Pattern = Annotated[str, Field(min_length=1)]
 ModelName = Annotated[str, AfterValidator(_known_model)]
-Lookback = Annotated[int, BeforeValidator(_lookback), Field(ge=0, le=10_000_000)]
+Lookback = Annotated[int, BeforeValidator(_lookback)]
 Positive = Annotated[float, Field(gt=0, allow_inf_nan=False, strict=False)]
 
 
@@ -99,7 +115,7 @@ class PlannedSeries(_Strict):
 class PlannedEstimate(_Strict):
     """One `[[estimate]]` of a plan."""
 
-    series: Annotated[list[Name], Field(min_length=1)]
+    series: Annotated[list[Pattern], Field(min_length=1)]
     models: Annotated[list[ModelName], Field(min_length=1)]
     lookbacks: Annotated[list[Lookback], Field(min_length=1)]
     every: Literal["observation", "day", "week", "month"] = "observation"
@@ -114,6 +130,8 @@ class PlannedIntake(_Strict):
     columns: dict[str, str] = {}
     dates: str | None = None
     zone: Annotated[str, AfterValidator(_known_zone)] | None = None
+    decimal: Literal[".", ","] = "."
+    blank: list[str] = []
 
 
 @dataclass(frozen=True)
@@ -142,13 +160,7 @@ class Plan(_Strict):
 
     @model_validator(mode="after")
     def _fits_together(self) -> Self:
-        mistakes = [
-            *self._repeated_names(),
-            *self._unmatched_patterns(),
-            *self._models_that_do_not_apply(),
-            *self._repeated_entries(),
-            *self._unknown_headline(),
-        ]
+        mistakes = list(_mistakes_between(_Parts.of(self)))
         if mistakes:
             raise ValueError("\n".join(mistakes))
         return self
@@ -159,54 +171,118 @@ class Plan(_Strict):
         return [
             Entry(series.name, model, lookback, estimate.every)
             for estimate in self.estimate
-            for series in self._matching(estimate.series)
+            for series in _matching(estimate.series, self.series)
             for model in estimate.models
             if series.admits(model)
             for lookback in estimate.lookbacks
         ]
 
-    def headline_of(self, series: str) -> int | None:
-        """The lookback that `latest` speaks of: the plan's if the series has it, else its first."""
-        lookbacks = [entry.lookback for entry in self.entries if entry.series == series]
-        if self.headline_lookback in lookbacks:
-            return self.headline_lookback
-        return lookbacks[0] if lookbacks else None
 
-    def _matching(self, patterns: list[str]) -> list[PlannedSeries]:
-        return [one for one in self.series if any(fnmatchcase(one.name, pattern) for pattern in patterns)]
+@dataclass(frozen=True)
+class _Parts:
+    """What of a plan can be read: all of it, or what is left where single keys are wrong."""
 
-    def _repeated_names(self) -> Iterator[str]:
-        names = Counter(name for one in self.series for name in (one.name, *one.also_called))
-        yield from (f"series: {name!r} stands there twice" for name, count in names.items() if count > 1)
+    series: list[PlannedSeries]
+    names: list[str]
+    estimates: dict[int, PlannedEstimate]
+    lookbacks: Collection[int] | None
+    headline: int | None
 
-    def _unmatched_patterns(self) -> Iterator[str]:
-        names = [one.name for one in self.series]
-        for position, estimate in enumerate(self.estimate, start=1):
-            for pattern in estimate.series:
-                if not self._matching([pattern]):
-                    yield f"estimate[{position}].series: no [[series]] is called {pattern!r}{near_name(pattern, names)}"
+    @classmethod
+    def of(cls, plan: Plan) -> _Parts:
+        """The parts of a plan in which every key is right."""
+        names = [name for one in plan.series for name in (one.name, *one.also_called)]
+        lookbacks = {lookback for estimate in plan.estimate for lookback in estimate.lookbacks}
+        return cls(plan.series, names, dict(enumerate(plan.estimate, 1)), lookbacks, plan.headline_lookback)
 
-    def _models_that_do_not_apply(self) -> Iterator[str]:
-        """A glob passes over series that a model is not for; a series named in full is meant."""
-        for position, estimate in enumerate(self.estimate, start=1):
-            named = [one for one in self.series if one.name in estimate.series]
-            for one in named:
-                for model in estimate.models:
-                    if not one.admits(model):
-                        yield (
-                            f"estimate[{position}].models: {model} is for series that stay above zero, and "
-                            f'{one.name!r} has sign = "any"; give it sign = "positive" or leave the model out'
-                        )
+    @classmethod
+    def left_in(cls, text: dict[str, Any]) -> _Parts:
+        """The tables that are right by themselves, and all names, so that no mistake hides another."""
+        series = _readable(PlannedSeries, text.get("series"))
+        given = [one for one in _tables(text.get("series")) if isinstance(one.get("name"), str)]
+        names = [name for one in given for name in (one["name"], *_texts(one.get("also_called")))]
+        estimates = _readable(PlannedEstimate, text.get("estimate"))
+        return cls(list(series.values()), names, estimates, None, None)
 
-    def _repeated_entries(self) -> Iterator[str]:
-        for (series, model, lookback), count in Counter(entry.target for entry in self.entries).items():
-            if count > 1:
-                yield f"estimate: {model} on {series!r} with lookback {lookback or 'all'} stands there twice"
 
-    def _unknown_headline(self) -> Iterator[str]:
-        known = {lookback for estimate in self.estimate for lookback in estimate.lookbacks}
-        if self.headline_lookback is not None and self.headline_lookback not in known:
-            yield f"headline_lookback: no [[estimate]] has lookback {self.headline_lookback or 'all'}"
+def _tables(value: Any) -> list[dict[str, Any]]:
+    return [one for one in value if isinstance(one, dict)] if isinstance(value, list) else []
+
+
+def _texts(value: Any) -> list[str]:
+    return [one for one in value if isinstance(one, str)] if isinstance(value, list) else []
+
+
+_Table = TypeVar("_Table", bound=BaseModel)
+
+
+def _readable(table: type[_Table], given: Any) -> dict[int, _Table]:
+    found = {}
+    for position, one in enumerate(_tables(given), start=1):
+        with suppress(ValidationError):
+            found[position] = table.model_validate(one)
+    return found
+
+
+def _mistakes_between(parts: _Parts) -> Iterator[str]:
+    """What is wrong between the tables of a plan, though each may be right."""
+    yield from _repeated_names(parts)
+    yield from _unmatched_patterns(parts)
+    yield from _models_that_do_not_apply(parts)
+    yield from _repeated_entries(parts)
+    if parts.lookbacks is not None and parts.headline not in (None, *parts.lookbacks):
+        yield f"headline_lookback: no [[estimate]] has lookback {parts.headline or 'all'}"
+
+
+def _matcher(patterns: list[str]) -> Callable[[str], bool]:
+    """Whether a name is one of some patterns, or fits one; a name may itself hold what is special in a pattern."""
+    exact = set(patterns)
+    globs = re.compile("|".join(f"(?:{translate(one)})" for one in patterns if set(one) & set("*?[")) or r"(?!)")
+    return lambda name: name in exact or globs.match(name) is not None
+
+
+def _matching(patterns: list[str], series: list[PlannedSeries]) -> list[PlannedSeries]:
+    matches = _matcher(patterns)
+    return [one for one in series if matches(one.name)]
+
+
+def _repeated_names(parts: _Parts) -> Iterator[str]:
+    yield from (f"series: {name!r} stands there twice" for name, count in Counter(parts.names).items() if count > 1)
+
+
+def _unmatched_patterns(parts: _Parts) -> Iterator[str]:
+    names = dict.fromkeys(parts.names)
+    for position, estimate in parts.estimates.items():
+        for pattern in estimate.series:
+            if pattern not in names and not any(map(_matcher([pattern]), names)):
+                yield f"estimate[{position}].series: no [[series]] is called {pattern!r}{near_name(pattern, names)}"
+
+
+def _models_that_do_not_apply(parts: _Parts) -> Iterator[str]:
+    """A glob passes over series that a model is not for; a series named in full is meant."""
+    for position, estimate in parts.estimates.items():
+        meant = set(estimate.series)
+        for one in parts.series:
+            for model in estimate.models if one.name in meant else ():
+                if not one.admits(model):
+                    yield (
+                        f"estimate[{position}].models: {model} is for series that stay above zero, and "
+                        f'{one.name!r} has sign = "any"; give it sign = "positive" or leave the model out'
+                    )
+
+
+def _repeated_entries(parts: _Parts) -> Iterator[str]:
+    targets = Counter(
+        (series.name, model, lookback)
+        for estimate in parts.estimates.values()
+        for series in _matching(estimate.series, parts.series)
+        for model in estimate.models
+        if series.admits(model)
+        for lookback in estimate.lookbacks
+    )
+    for (series, model, lookback), count in targets.items():
+        if count > 1:
+            yield f"estimate: {model} on {series!r} with lookback {lookback or 'all'} stands there twice"
 
 
 @dataclass(frozen=True)
@@ -235,12 +311,23 @@ def read_plan(path: Path) -> PlanText:
 def parse_plan(text: str, where: str) -> PlanText:
     """Checks a plan's text; `where` names it in messages."""
     try:
-        return PlanText(Plan.model_validate(tomllib.loads(text)), text)
+        given = tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
         raise PlanError(f"{where} is not TOML: {error}.") from error
+    try:
+        return PlanText(Plan.model_validate(given), text)
     except ValidationError as error:
         mistakes = [line for mistake in error.errors() for line in _in_words(mistake)]
+        if all(mistake["loc"] for mistake in error.errors()):  # else the tables were compared already
+            mistakes += _mistakes_between(_Parts.left_in(given))
         raise PlanError(f"{where} has {_count(mistakes)}:\n" + "\n".join(f"  {line}" for line in mistakes)) from error
+
+
+_TABLES: dict[str, type[BaseModel]] = {
+    "series": PlannedSeries,
+    "estimate": PlannedEstimate,
+    "intake": PlannedIntake,
+}
 
 
 def _count(mistakes: list[str]) -> str:
@@ -252,6 +339,8 @@ def _in_words(mistake: Any) -> list[str]:
     where = _key(mistake["loc"])
     if mistake["type"] == "extra_forbidden":
         return [f"{where}: {_unknown_key(mistake['loc'])}"]
+    if mistake["type"] == "list_type" and where in _TABLES:
+        return [f"{where}: write it as [[{where}]], in two brackets"]
     message: str = mistake["msg"].removeprefix("Value error, ")
     if not where:
         return message.split("\n")
@@ -270,10 +359,5 @@ def _unknown_key(location: tuple[int | str, ...]) -> str:
     key = str(location[-1])
     if key in _NOT_YET:
         return "this driftbook does not have this key yet; take it out"
-    tables: dict[str, type[BaseModel]] = {
-        "series": PlannedSeries,
-        "estimate": PlannedEstimate,
-        "intake": PlannedIntake,
-    }
-    fields = tables.get(str(location[0]), Plan).model_fields if len(location) > 1 else Plan.model_fields
+    fields = _TABLES.get(str(location[0]), Plan).model_fields if len(location) > 1 else Plan.model_fields
     return "no such key" + (near_name(key, list(fields)) or f"; there are {', '.join(fields)}")

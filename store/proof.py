@@ -5,7 +5,7 @@ from __future__ import annotations
 import os
 import re
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cache
 from itertools import groupby
 from pathlib import Path
@@ -23,6 +23,9 @@ from driftbook.store.tables import Tracked, columns_at, tracked_tables
 
 # DuckDB keeps the names behind EXCLUDE as a set and writes them in any order.
 _EXCLUDED = re.compile(r"EXCLUDE \(([^)]*)\)")
+
+
+_Stored = dict[tuple[str, int | None, int], digest.Leaf]
 
 
 @dataclass(frozen=True)
@@ -119,6 +122,7 @@ def _leaf_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
         (leaf.table_name, leaf.series_id, leaf.run_id): leaf
         for leaf in (digest.Leaf(*row) for row in con.execute(query("all_leaves")).fetchall())
     }
+    stored = _with_what_was_forgotten(con, stored)
     names = dict(con.execute("select series_id, series from base.series").fetchall())
     seen = set()
     for leaf in _leaves_again(con):
@@ -131,6 +135,20 @@ def _leaf_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
     for where in sorted(stored.keys() - seen, key=str):
         gone = stored[where]
         yield _finding(gone, names, f"has lost the {gone.rows_in} rows and {gone.rows_closed} closed of this run")
+
+
+def _with_what_was_forgotten(con: duckdb.DuckDBPyConnection, stored: _Stored) -> _Stored:
+    """The leaves as `forget` left them; the chain is over those that were there before."""
+    left = dict(stored)
+    for run_id, table_name, series_id, rows_in, rows_closed, sha256 in con.execute(
+        query("forgotten_leaves")
+    ).fetchall():
+        where = (table_name, series_id, run_id)
+        if where in stored and (rows_in or rows_closed):
+            left[where] = replace(stored[where], rows_in=rows_in, rows_closed=rows_closed, sha256=sha256)
+        else:
+            left.pop(where, None)
+    return left
 
 
 def _leaves_again(con: duckdb.DuckDBPyConnection) -> Iterator[digest.Leaf]:

@@ -37,6 +37,7 @@ class Refreshed:
     rows_to_close: int
     taken_up: int = 0
     plan_changed: bool = False
+    warnings: tuple[str, ...] = ()
     delivered: Delivered = field(default_factory=Delivered)
 
     @property
@@ -79,12 +80,22 @@ def refresh(
         if report is not None:
             report(Progress(run.windows.due, work.windows))
     write_latest(run, plan, work, last)
-    return Refreshed(run.windows.due, run.windows.fitted, work.rows_leaving)
+    return Refreshed(run.windows.due, run.windows.fitted, work.rows_leaving, warnings=_warnings(run.con))
 
 
 def last_refresh(con: duckdb.DuckDBPyConnection) -> int:
     """The number of the last run that estimated; 0 before the first."""
     return int(only_row(con, "select coalesce(max(run_id), 0) from base.run where kind = 'refresh'")[0])
+
+
+def _warnings(con: duckdb.DuckDBPyConnection) -> tuple[str, ...]:
+    """What the plan may not have meant: elapsed time for series that keep no weekends."""
+    names = [name for (name,) in con.execute(query("weekday_series_on_elapsed_time")).fetchall()]
+    return tuple(
+        f"{name} has no weekends and its clock counts them: its volatility comes out 7 to 9 % too high; "
+        'clock = "trading" counts steps instead.'
+        for name in names
+    )
 
 
 def _estimate(run: Run, work: Work, portion: list[int]) -> None:

@@ -35,8 +35,8 @@ class Deviation:
     lookback: int
     window_end: str
     column: str
-    stored: float | None
-    again: float | None
+    stored: float | str | None
+    again: float | str | None
     apart: float
 
 
@@ -125,9 +125,14 @@ def _reproduce_model(
 
 
 def _slices(rows: list[tuple[int, int, list[int]]], times: dict[int, np.ndarray]) -> Iterator[Slice]:
-    for series_id, lookback, ends in rows:
-        at = np.searchsorted(times[series_id], np.array(ends, np.int64))
-        yield slice_of(Asked(series_id, lookback, OBSERVATION, whole=False), at, times[series_id].size)
+    """What computes the written windows again; one whose observations are not there comes out different."""
+    for series_id, lookback, written in rows:
+        there, ends = times.get(series_id, np.empty(0, np.int64)), np.array(written, np.int64)
+        at = np.searchsorted(there, ends)
+        earliest = lookback if there.size > lookback else 0
+        found = at[np.isin(ends, there) & (at >= earliest)]
+        if found.size:
+            yield slice_of(Asked(series_id, lookback, OBSERVATION, whole=False), found, there.size)
 
 
 def _compare(con: duckdb.DuckDBPyConnection, table: EstimateTable, run_id: int, found: Reproduced) -> None:
@@ -138,8 +143,9 @@ def _compare(con: duckdb.DuckDBPyConnection, table: EstimateTable, run_id: int, 
     found.same += same
     found.different += different
     if different:
-        for column in table.stored:
-            worst = query("worst_again").format(table=name, column=column, same=table.same())
+        for column in ("status", *table.stored):
+            apart = "'infinity'::double" if column == "status" else query("apart").format(column=column)
+            worst = query("worst_again").format(table=name, column=column, apart=apart, same=table.same())
             rows = con.execute(worst, {**values, "most": _WORST}).fetchall()
             found.worst += [
                 Deviation(series, name, lookback, str(end), column, stored, again, apart)

@@ -51,6 +51,11 @@ def near_name(name: str, names: Collection[str]) -> str:
     return f"; did you mean {near[0]!r}?" if near else ""
 
 
+def ended(sentence: str) -> str:
+    """A sentence with its full stop, unless it ends with a question."""
+    return sentence if sentence.endswith("?") else f"{sentence}."
+
+
 def known_series(con: duckdb.DuckDBPyConnection) -> dict[str, Series]:
     """All series of the book by name."""
     rows = con.execute(query("known_series")).fetchall()
@@ -81,7 +86,7 @@ def put_aliases_in_force(con: duckdb.DuckDBPyConnection, wanted: dict[str, int],
 
 def add_series(con: duckdb.DuckDBPyConnection, names: dict[str, Setting], stamp: Stamp) -> None:
     """Adds series that the book does not have yet, in the order given."""
-    (first_free,) = only_row(con, "select coalesce(max(series_id), 0) + 1 from base.series")
+    (first_free,) = only_row(con, query("first_free_series"))
     for series_id, (name, setting) in enumerate(names.items(), start=first_free):
         con.execute("insert into base.series values (?, ?, ?, ?)", [series_id, name, stamp.time, stamp.run_id])
         _insert_setting(con, series_id, setting, stamp)

@@ -11,7 +11,7 @@ from typing import Any
 from driftbook.store.errors import UsageError
 from driftbook.store.moments import parse_moment
 from driftbook.store.reader import connect
-from driftbook.store.series import near_name
+from driftbook.store.series import ended, near_name
 from driftbook.store.sql import only_row, query
 
 
@@ -41,6 +41,6 @@ def latest_state(book: str | os.PathLike[str], series: list[str], as_of: str | N
     names = [row["series"] for row in rows]
     for name in series:
         if name not in names:
-            raise UsageError(f"the book says nothing of {name!r}{near_name(name, names)}.")
+            raise UsageError(ended(f"the book says nothing of {name!r}{near_name(name, names)}"))
     chosen = [row for row in rows if row["series"] in series] if series else rows
     return State(run_id or 0, run_moment, moment, columns, chosen)

@@ -16,6 +16,7 @@ import duckdb
 
 from driftbook.store import lock, migrate
 from driftbook.store.errors import BookError, BookLocked, UsageError
+from driftbook.store.sql import query
 
 _CHUNK = 64 << 20
 _ROOM_TO_WORK = 32 << 20
@@ -33,13 +34,15 @@ _SETTINGS = (
 class Draft:
     """A private copy of the book, open for writing.
 
-    `kept` says that it shall take the book's place when the block ends, `outcome` what the lock file notes of it.
+    `kept` says that it shall take the book's place when the block ends, `rewritten` that its rows shall be written into
+    a fresh file first, so that nothing of what was deleted is left, `outcome` what the lock file notes of it.
     """
 
     def __init__(self, con: duckdb.DuckDBPyConnection, migrated: bool) -> None:
         self.con = con
         self.migrated = migrated
         self.kept = False
+        self.rewritten = False
         self.outcome: str | None = None
 
 
@@ -97,6 +100,8 @@ def rewriting(book: Path, wait: float) -> Iterator[Draft]:
                 yield draft
                 if draft.kept:
                     con.execute("checkpoint")
+            if draft.kept and draft.rewritten:
+                _rewrite(draft_path)
             if draft.kept:
                 _swap_in(draft_path, book)
             if draft.outcome is not None:
@@ -254,6 +259,20 @@ def _swap_in(draft: Path, book: Path) -> None:
     _sync(book.parent)
     _remove(_aside(book))
     _remove(_identity_file(book))
+
+
+def _rewrite(draft: Path) -> None:
+    """Writes a draft's rows into a fresh file, in the order of the tables' keys, and puts it in the draft's place."""
+    fresh = draft.with_name(f"fresh-{draft.name}")
+    with _opened(fresh, {"storage_compatibility_version": "v1.2.0"}) as con:
+        migrate.apply_pending(con)
+        con.execute(f"attach '{str(draft).replace(chr(39), chr(39) * 2)}' as draft (read_only)")
+        for (table,) in con.execute(query("tables_of"), ["draft"]).fetchall():
+            con.execute(f"delete from base.{table}")
+            con.execute(f"insert into base.{table} from draft.base.{table} order by all")
+        con.execute("detach draft")
+        con.execute("checkpoint")
+    fresh.replace(draft)
 
 
 def _set_wal_aside(book: Path) -> None:

@@ -14,7 +14,12 @@ _GAP = "  "
 
 def harmless(text: str) -> str:
     """Text with control and direction characters made visible, so that names from files cannot drive a terminal."""
-    return "".join(_visible(character) for character in text)
+    return text if text.isprintable() else "".join(_visible(character) for character in text)
+
+
+def count_of(number: int, noun: str, nouns: str | None = None) -> str:
+    """`1 window`, `2 windows`; `nouns` where an s does not make the plural."""
+    return f"{number} {noun if number == 1 else nouns or noun + 's'}"
 
 
 def columns(header: Sequence[str], rows: Sequence[Sequence[Any]]) -> str:

@@ -35,6 +35,7 @@ BOOK_TABLES = (
     Tracked("setting", ("series_id",), also=("planned",)),
     Tracked("latest", ("series_id",)),
     Tracked("alias", ("name",), also=("series_id",)),
+    Tracked("forgotten_leaf", ("run_id", "table_name", "series_id"), by_series=False, closes=False),
     Tracked("intake", ("intake_id",), by_series=False, closes=False),
     Tracked("observation", ("series_id", "observed_at"), also=("take",)),
     Tracked("refused_row", ("intake_id", "line", "cell"), by_series=False, also=("reason",)),

@@ -15,13 +15,13 @@ from duckdb.func import FunctionNullHandling, PythonUDFType
 
 from driftbook.estimators import MODELS, Status, aligned_start, rolling
 from driftbook.store.clocks import equal_step, microseconds_per_unit
+from driftbook.store.due import steps_over_all
 from driftbook.store.errors import UsageError
-from driftbook.store.series import near_name
+from driftbook.store.series import ended, near_name
 from driftbook.store.sql import query
 
 _TAKES: list[Any] = ["VARCHAR", "DOUBLE[]", "BIGINT[]", "VARCHAR", "DOUBLE", "DOUBLE", "INTEGER"]
 _GIVES = "STRUCT(parameter VARCHAR, value DOUBLE, se DOUBLE, lower DOUBLE, upper DOUBLE, n INTEGER, status VARCHAR)[]"
-_FEWEST = 5
 _STATUSES = {int(status): status for status in Status}
 
 
@@ -64,10 +64,12 @@ def _parameters(
     """One entry a parameter of the last window of a list; a status alone where there is no such window."""
     if model is None or model not in MODELS:
         near = near_name(str(model), list(MODELS)) or f"; there are {', '.join(MODELS)}"
-        raise UsageError(f"no model is called {model!r}{near}.")
+        raise UsageError(ended(f"no model is called {model!r}{near}"))
     values = np.array([np.nan if value is None else value for value in x or []], np.float64)
-    steps_wanted = lookback or max(values.size - 1, _FEWEST)
+    steps_wanted = lookback or steps_over_all(values.size)
     names = [parameter.name for parameter in MODELS[model].parameters]
+    if steps_wanted < 1:
+        return [_entry(name, None, max(values.size - 1, 0), Status.OUT_OF_RANGE) for name in names]
     if values.size <= steps_wanted:
         return [_entry(name, None, max(values.size - 1, 0), Status.TOO_SHORT) for name in names]
     if MODELS[model].range == "positive":

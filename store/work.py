@@ -26,12 +26,16 @@ _LOCAL_DAY = "(timezone(t.time_zone, timezone('UTC', o.observed_at))::date - dat
 class ModelWork:
     """What is due for one model."""
 
-    name: str
     table: EstimateTable
     slices: list[Slice] = field(default_factory=list)
     spans: list[Span] = field(default_factory=list)
     in_force: int = 0
     leaving: dict[tuple[int, int], int] = field(default_factory=dict)
+
+    @property
+    def name(self) -> str:
+        """The model's name."""
+        return self.table.model.name
 
 
 @dataclass
@@ -41,7 +45,6 @@ class Work:
     models: list[ModelWork]
     series: dict[int, Series]
     times: dict[int, Microseconds]
-    changed: dict[int, Microseconds]
 
     @property
     def windows(self) -> int:
@@ -132,7 +135,7 @@ def find_work(con: duckdb.DuckDBPyConnection, plan: Plan, last: int, revised: se
     for name, wanted in asked.items():
         kept = {(one.series_id, one.lookback) for one in wanted}
         leaving = {key: count for key, count in in_force[name].items() if key not in kept}
-        models.append(ModelWork(name, tables[name], in_force=sum(in_force[name].values()), leaving=leaving))
+        models.append(ModelWork(tables[name], in_force=sum(in_force[name].values()), leaving=leaving))
     by_id = {one.series_id: one for one in series.values()}
     return _with_what_is_due(con, last, list(asked.values()), models, by_id)
 
@@ -153,25 +156,23 @@ def _with_what_is_due(
     models: list[ModelWork],
     series: dict[int, Series],
 ) -> Work:
-    changed = _by_series(con.sql(query("changed_since"), params={"last": last}), "us")
+    changed = split(con.sql(query("changed_since"), params={"last": last}).fetchnumpy(), "us")
     concerned = sorted({one.series_id for each in asked for one in each if one.whole or one.series_id in changed})
     thinned = any(one.every != OBSERVATION for each in asked for one in each)
     sql = query("times_in_force").format(local_day=_LOCAL_DAY if thinned else "0::bigint")
-    found = con.sql(sql, params={"series": concerned})
-    columns = found.fetchnumpy()
+    columns = con.sql(sql, params={"series": concerned}).fetchnumpy()
     times, days = split(columns, "us"), split(columns, "day")
     none = np.empty(0, np.int64)
+    found: dict[Asked, tuple[list[Slice], list[Span]]] = {}  # models mostly ask for the same
     for each, model in zip(asked, models, strict=True):
         for one in each:
-            key = one.series_id
-            slices, spans = due(one, times.get(key, none), changed.get(key, none), days.get(key, none))
+            if one not in found:
+                key = one.series_id
+                found[one] = due(one, times.get(key, none), changed.get(key, none), days.get(key, none))
+            slices, spans = found[one]
             model.slices += slices
             model.spans += spans
-    return Work(models, series, times, changed)
-
-
-def _by_series(relation: duckdb.DuckDBPyRelation, column: str) -> dict[int, Microseconds]:
-    return split(relation.fetchnumpy(), column)
+    return Work(models, series, times)
 
 
 def split(columns: dict[str, np.ndarray], column: str) -> dict[int, Days]:

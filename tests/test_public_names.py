@@ -8,6 +8,7 @@ import duckdb
 import pytest
 
 from driftbook import estimators, store
+from driftbook.estimators import MODELS
 from driftbook.store import migrate
 
 VIEWS = {
@@ -19,19 +20,32 @@ VIEWS = {
     "run": "run_id, kind, moment, told, started_at, finished_at, plan_sha256, package_version, windows_due, "
     "windows_fitted, windows_failed, rows_written, digest",
     "plan": "plan_sha256, name, text, run_id",
+    "fit": "series, lookback, window_start, window_end, model, n, k, loglik, aic, bic, model_weight, models_compared, "
+    "status, run_id",
+    "estimate": "series, lookback, window_end, model, parameter, value, se, lower, upper, status, run_id",
+    "latest": "series, unit, observed_at, value, stale, lookback, window_end, model, model_weight, volatility, "
+    "volatility_lower, volatility_upper, volatility_unit, realised_volatility, drift, half_life_days, "
+    "half_life_days_lower, half_life_days_upper, half_life_unbounded, can_reach_zero, wells, mean_exit_time_days, "
+    "backtest_zone, alarms, note, run_id",
+    "dictionary": "name, column_name, unit, meaning, example",
     "ou": "series, lookback, window_start, window_end, n, kappa, kappa_se, kappa_lower, kappa_upper, theta, theta_se, "
     "theta_lower, theta_upper, sigma, sigma_se, sigma_lower, sigma_upper, kappa_median_unbiased, no_reversion_p, "
     "half_life, half_life_lower, half_life_upper, half_life_mle, half_life_unbounded, stationary_sd, kurtosis, "
     "loglik, status, revision, run_id",
 }
-VERSIONED = ("series", "observation", "refused_row", "plan", "ou")
+VERSIONED = ("series", "observation", "refused_row", "plan", "latest", "fit", "estimate", *MODELS)
 COMMANDS = {
-    "refresh": "--plan --workers --all --dry-run --at --strict --yes --wait --quiet --json",
-    "sql": "--format --output --quiet --json",
+    "refresh": "--plan --inbox --workers --all --dry-run --at --strict --yes --wait --quiet --json",
+    "latest": "--as-of --full --quiet --json",
+    "explain": "--model --lookback --from --to --quiet --json",
+    "reproduce": "--run --all --quiet --json",
+    "forget": "--before --yes --quiet --json",
+    "sql": "--format --output --timeout --rows --quiet --json",
     "verify": "--quiet --json",
     "demo": "--quiet --json",
     "new": "--quiet --json",
-    "ingest": "--series --add-series --columns --dates --zone --dry-run --at --strict --yes --wait --quiet --json",
+    "ingest": "--series --add-series --wide --columns --dates --decimal --zone --blank --dry-run --at --strict --yes "
+    "--wait --quiet --json",
 }
 
 

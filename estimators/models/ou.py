@@ -1,8 +1,8 @@
-"""The Ornstein–Uhlenbeck process dX = kappa (theta − X) dt + sigma dW, at equal steps.
+"""The Ornstein–Uhlenbeck process dX = kappa (theta − X) dt + sigma dW, at any steps.
 
-The transition law is x_{i+1} | x_i ~ N(theta + (x_i − theta) b, sigma² (1 − b²)/(2 kappa)) with b = e^{−kappa Δ}, so
-that the maximum of the likelihood given x_0 is the AR(1) regression with intercept. With beta = b − 1 its slope on
-the level, s² the residual variance over n and s2 the one over n − 2, A the spread of the levels:
+The transition law is x_{i+1} | x_i ~ N(theta + (x_i − theta) b, sigma² (1 − b²)/(2 kappa)) with b = e^{−kappa Δ}. At
+equal steps the maximum of the likelihood given x_0 is the AR(1) regression with intercept. With beta = b − 1 its slope
+on the level, s² the residual variance over n and s2 the one over n − 2, A the spread of the levels:
 
     kappa = −ln(1 + beta)/Δ                             theta = mean level − mean increment/beta
     sigma² = (s²/Δ)·2 ln(1 + beta)/(beta (2 + beta))    loglik = −(n/2)(ln(2 π s²) + 1)
@@ -14,6 +14,11 @@ delta method: of kappa √(s2/A)/(b Δ), of theta √(s2 (1/n + (theta − mean 
 Intervals do not come from the standard errors: kappa's is the inversion of the slope's exact law, widened for uneven
 variance; theta's is of Fieller's type with critical values of its own; sigma's allows for fat tails; see
 `driftbook.estimators.intervals`.
+
+At unequal steps theta and sigma² are weighted least squares given kappa, and the likelihood is maximised over kappa
+alone, see `driftbook.estimators.profile`; intervals are those of the regression at equal steps that the window amounts
+to, see `driftbook.estimators.unequal`. The search goes up to a kappa Δ of 8 or more over the shortest step: where the
+likelihood still rises there, as where a slope b is at most 0, the window is `alternating`.
 
 References
 ----------
@@ -97,6 +102,7 @@ COLUMNS = (
 
 _IN_UNITS_OF_X = tuple(column.name for column in COLUMNS if column.unit.startswith("x"))
 _NEED_A_PULL = ("half_life", "half_life_mle", "stationary_sd")
+_NO_MEMORY = 1e-9  # a slope b below this cannot be told from none: rounding decides its sign
 _CANCELS = 1e-3  # below this pull per step a difference loses digits and its series does not
 
 
@@ -143,6 +149,12 @@ def _of_solution(solution: Solution) -> tuple[dict[str, Array], NDArray[np.int8]
     """Columns and status of windows of unequal steps, shape (m,)."""
     columns, status = _estimates(as_regression(solution), solution.duration / solution.n)
     columns["loglik"] = solution.loglik
+    for name in ("theta", "kappa_se", "theta_se", "sigma_se"):  # not by way of a slope that may be all but zero
+        if name in columns:
+            columns[name] = getattr(solution, name)
+    no_level = np.flatnonzero(solution.kappa == 0)
+    for name in {"theta", "theta_se"} & columns.keys():
+        columns[name][no_level] = np.nan
     status[np.isnan(solution.kappa)] = Status.NOT_CONVERGED
     status[solution.rising] = Status.ALTERNATING
     blank(columns, np.flatnonzero(np.isnan(solution.kappa)))
@@ -161,7 +173,7 @@ def _estimates(regression: Regression, dt: Array) -> tuple[dict[str, Array], NDA
             columns[name][no_pull] = np.nan
     status = np.zeros(regression.slope.shape, dtype=np.int8)
     status[no_pull] = Status.NO_REVERSION
-    alternating = np.flatnonzero(regression.slope <= -1)
+    alternating = np.flatnonzero((regression.slope <= -1 + _NO_MEMORY) & (regression.log_b is None))
     if alternating.size:
         status[alternating] = Status.ALTERNATING
         blank(columns, alternating)
@@ -171,7 +183,7 @@ def _estimates(regression: Regression, dt: Array) -> tuple[dict[str, Array], NDA
 def _point_estimates(regression: Regression, dt: Array, at_zero: NDArray[np.intp]) -> dict[str, Array]:
     """Parameters and log-likelihood; `at_zero` are the places of a slope of exactly zero."""
     n, beta, rss = regression.n, regression.slope, regression.rss
-    log_b = np.log1p(beta)
+    log_b = _log_b(regression)
     kappa = log_b / -dt
     theta = regression.level - regression.drift / beta
     per_step = log_b / (beta * (1 + 0.5 * beta))  # 2 ln b/(b² − 1)
@@ -193,13 +205,18 @@ def _standard_errors(regression: Regression, sigma: Array, dt: Array) -> dict[st
     away = regression.drift / beta
     theta_se = slope_se * np.sqrt(A / n * regression.evenness + np.square(away)) / np.abs(beta)
     theta_se[beta == 0] = np.nan
-    sigma_se = sigma * np.sqrt(1 / (2 * n) + np.square(0.5 * _gradient(beta) * h_se))
+    sigma_se = sigma * np.sqrt(1 / (2 * n) + np.square(0.5 * _gradient(regression) * h_se))
     return {"kappa_se": h_se / dt, "theta_se": theta_se, "sigma_se": sigma_se}
 
 
-def _gradient(beta: Array) -> Array:
-    """How ln(2h/(1 − e^{−2h})) grows with h = −ln(1 + beta): 1/h − 2/(e^{2h} − 1)."""
-    h = -np.log1p(beta)
+def _log_b(regression: Regression) -> Array:
+    """The logarithm of the slope b of the AR(1): −kappa Δ."""
+    return np.log1p(regression.slope) if regression.log_b is None else regression.log_b
+
+
+def _gradient(regression: Regression) -> Array:
+    """How ln(2h/(1 − e^{−2h})) grows with h = kappa Δ: 1/h − 2/(e^{2h} − 1)."""
+    h, beta = -_log_b(regression), regression.slope
     small = np.abs(h) < _CANCELS
     gradient = 1 / h + np.square(1 + beta) / (beta * (1 + 0.5 * beta))
     gradient[small] = 1 - h[small] / 3 + h[small] ** 3 / 45
@@ -225,7 +242,7 @@ def _interval_estimates(regression: Regression, robust: Array, fourth: Array, dt
         "theta_lower": regression.level + theta.lower,
         "theta_upper": regression.level + theta.upper,
         "sigma_lower": sigma.lower,
-        "sigma_upper": sigma.upper,
+        "sigma_upper": _finite(sigma.upper),
         "kappa_median_unbiased": _finite(pull.median / duration),
         "no_reversion_p": law.p_no_pull(b),
         "kurtosis": kurtosis,

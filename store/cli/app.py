@@ -12,7 +12,7 @@ from typing import Annotated
 
 import typer
 
-from driftbook.store.cli import asked, begin, morning
+from driftbook.store.cli import asked, begin, morning, page_command
 from driftbook.store.cli.output import say_error
 from driftbook.store.errors import BookError
 
@@ -46,6 +46,7 @@ def _about(
 
 morning.add_to(app)
 asked.add_to(app)
+page_command.add_to(app)
 begin.add_to(app)
 
 
@@ -63,6 +64,9 @@ def run(arguments: list[str]) -> int:
     except BookError as error:
         _complain(str(error), arguments)
         return error.exit_code
+    except BrokenPipeError:  # whoever read, as `head` does, has read enough
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return 0
     except (Exception, KeyboardInterrupt) as error:
         return _other(error, arguments, interrupted=interrupts.seen or isinstance(error, KeyboardInterrupt))
     if code == _INTERRUPTED:  # typer took the interrupt itself

@@ -11,8 +11,9 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from driftbook.store.cli import options as opt
-from driftbook.store.cli.output import count_of, say, say_json
+from driftbook.store.cli.output import say, say_json
 from driftbook.store.errors import DifferenceFound
+from driftbook.store.table import count_of
 
 if TYPE_CHECKING:
     from driftbook.store.proof import Verified
@@ -41,6 +42,10 @@ def sql(
     ],
     how: Annotated[Format, typer.Option("--format", help="How rows are written.")] = Format.TABLE,
     output: Annotated[Path | None, typer.Option("--output", help="A file instead of standard output.")] = None,
+    timeout: Annotated[
+        float | None, typer.Option("--timeout", metavar="SECONDS", min=0, help="Give up after this time.")
+    ] = None,
+    most: Annotated[int | None, typer.Option("--rows", metavar="N", min=0, help="At most so many rows.")] = None,
     quiet: opt.Quiet = False,
     as_json: opt.Json = False,
 ) -> None:
@@ -52,10 +57,9 @@ def sql(
     from driftbook.store.cli.rows import write_rows
 
     text = sys.stdin.read() if statement == "-" else statement
-    with ask(book, text) as rows:
+    with ask(book, text, timeout=timeout, rows=most) as rows:
         if as_json:
-            table = rows.to_arrow_table()
-            say_json({"columns": table.column_names, "rows": [list(row.values()) for row in table.to_pylist()]})
+            say_json({"columns": rows.columns, "rows": rows.fetchall()})
         else:
             write_rows(rows, how.value, output)
     if output is not None:
@@ -100,6 +104,8 @@ def reproduce(
 
 
 def _again(found: Reproduced) -> list[str]:
+    if not found.rows and not found.other_revision:
+        return [f"Run {found.run_id} wrote no estimates."]
     lines = [
         f"Run {found.run_id}: {count_of(found.rows, 'row')} computed again, {found.identical} identical to the bit, "
         f"{found.same} within rounding, {found.different} different."

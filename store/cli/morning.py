@@ -10,8 +10,9 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 
 from driftbook.store.cli import options as opt
-from driftbook.store.cli.output import count_of, outcome_text, say, say_json
+from driftbook.store.cli.output import outcome_text, say, say_json
 from driftbook.store.cli.tables import explanation_text, full_table, short_table
+from driftbook.store.table import count_of
 
 if TYPE_CHECKING:
     from driftbook.store.refresh import Progress, Refreshed
@@ -114,6 +115,7 @@ def _answer(done: Refreshed, finished: Finished | None) -> dict[str, Any]:
         "windows_fitted": done.windows_fitted,
         "windows_failed": done.windows_failed,
         "rows_to_close": done.rows_to_close,
+        "warnings": list(done.warnings),
         "rows_written": finished.rows_written if finished else 0,
         "digest": finished.digest if finished else None,
     }
@@ -128,6 +130,7 @@ def _summary(done: Refreshed, finished: Finished | None, *, dry_run: bool) -> li
     if dry_run:
         closing = f", {count_of(done.rows_to_close, 'row')} to close" if done.rows_to_close else ""
         return [*lines, f"Due: {count_of(done.windows_due, 'window')}{closing}; nothing was changed."]
+    lines += [f"warning: {warning}" for warning in done.warnings]
     if finished is None:
         return [*lines, "Nothing new; nothing was written."]
     failed = f", {done.windows_failed} without numbers" if done.windows_failed else ""

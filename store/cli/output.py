@@ -4,11 +4,13 @@ from __future__ import annotations
 
 import json
 from datetime import date
+from decimal import Decimal
+from math import isfinite
 from typing import TYPE_CHECKING, Any
 
 import typer
 
-from driftbook.store.table import harmless
+from driftbook.store.table import count_of, harmless
 
 if TYPE_CHECKING:
     from driftbook.store.intake import Outcome
@@ -25,18 +27,13 @@ def say_error(text: str) -> None:
     typer.echo("\n".join(harmless(line) for line in text.split("\n")), err=True)
 
 
-def count_of(number: int, noun: str) -> str:
-    """`1 window`, `2 windows`."""
-    return f"{number} {noun}" if number == 1 else f"{number} {noun}s"
-
-
 def outcome_text(outcome: Outcome, *, dry_run: bool = False) -> str:
     """What became of one file: counts, series added, the first refused rows."""
     if outcome.known_already:
         return f"{outcome.source}: these bytes are known already; nothing was done."
     counts = (
-        f"{outcome.source}: {outcome.rows_read} rows read, {outcome.rows_new} new, {outcome.rows_revised} revised, "
-        f"{outcome.rows_same} same, {outcome.rows_refused} refused."
+        f"{outcome.source}: {count_of(outcome.rows_read, 'row')} read, {outcome.rows_new} new, "
+        f"{outcome.rows_revised} revised, {outcome.rows_same} same, {outcome.rows_refused} refused."
     )
     added = f"\n  series added: {', '.join(outcome.series_added)}" if outcome.series_added else ""
     refused = "".join(f"\n  line {row.line}: {row.reason}: {row.text}" for row in outcome.refused)
@@ -47,7 +44,18 @@ def outcome_text(outcome: Outcome, *, dry_run: bool = False) -> str:
 
 def say_json(answer: dict[str, Any]) -> None:
     """One JSON object on standard output."""
-    typer.echo(json.dumps(answer, default=json_value))
+    typer.echo(json.dumps(plain(answer), default=json_value, allow_nan=False))
+
+
+def plain(value: Any) -> Any:
+    """A value of which JSON has all parts: a decimal is a number, and what is no number is null."""
+    if isinstance(value, dict):
+        return {str(key): plain(one) for key, one in value.items()}
+    if isinstance(value, list | tuple):
+        return [plain(one) for one in value]
+    if isinstance(value, Decimal):
+        return float(value)
+    return None if isinstance(value, float) and not isfinite(value) else value
 
 
 def json_value(value: Any) -> Any:

@@ -4,12 +4,13 @@ from __future__ import annotations
 
 import csv
 import json
+import os
 import sys
-from contextlib import nullcontext
+from io import StringIO
 from pathlib import Path
-from typing import TYPE_CHECKING, TextIO
+from typing import TYPE_CHECKING, Any
 
-from driftbook.store.cli.output import json_value
+from driftbook.store.cli.output import json_value, plain
 from driftbook.store.errors import UsageError
 from driftbook.store.table import columns, harmless
 
@@ -18,29 +19,39 @@ if TYPE_CHECKING:
 
 
 def write_rows(rows: duckdb.DuckDBPyRelation, how: str, output: Path | None) -> None:
-    """Writes the rows to a file or standard output."""
-    if how == "parquet":
-        _write_parquet(rows, output)
-        return
-    with output.open("w", encoding="utf-8", newline="") if output else nullcontext(sys.stdout) as stream:
-        {"table": _write_table, "csv": _write_csv, "json": _write_json}[how](rows, stream)
+    """Writes the rows to a file or standard output; a query that fails leaves the file as it was."""
+    try:
+        if how == "parquet":
+            _write_parquet(rows, output)
+            return
+        text = {"table": _as_table, "csv": _as_csv, "json": _as_json}[how](rows.columns, rows.fetchall())
+        if output is None:
+            sys.stdout.write(text)
+            sys.stdout.flush()
+        else:
+            output.write_text(text, encoding="utf-8", newline="")
+    except BrokenPipeError:
+        raise
+    except OSError as error:
+        reason = os.strerror(error.errno) if error.errno else str(error)
+        raise UsageError(f"cannot write {output}: {reason}.") from error
 
 
-def _write_table(rows: duckdb.DuckDBPyRelation, stream: TextIO) -> None:
-    found = rows.fetchall()
-    stream.write(columns([harmless(name) for name in rows.columns], found) + "\n")
+def _as_table(names: list[str], rows: list[tuple[Any, ...]]) -> str:
+    return columns([harmless(name) for name in names], rows) + "\n"
 
 
-def _write_csv(rows: duckdb.DuckDBPyRelation, stream: TextIO) -> None:
-    writer = csv.writer(stream, lineterminator="\n")
-    writer.writerow(rows.columns)
-    writer.writerows([json_value(value) for value in row] for row in rows.fetchall())
+def _as_csv(names: list[str], rows: list[tuple[Any, ...]]) -> str:
+    text = StringIO(newline="")
+    writer = csv.writer(text, lineterminator="\n")
+    writer.writerow(names)
+    writer.writerows([json_value(value) for value in row] for row in rows)
+    return text.getvalue()
 
 
-def _write_json(rows: duckdb.DuckDBPyRelation, stream: TextIO) -> None:
-    names = rows.columns
-    json.dump([dict(zip(names, row, strict=True)) for row in rows.fetchall()], stream, default=json_value)
-    stream.write("\n")
+def _as_json(names: list[str], rows: list[tuple[Any, ...]]) -> str:
+    objects = [dict(zip(names, map(plain, row), strict=True)) for row in rows]
+    return json.dumps(objects, default=json_value, allow_nan=False) + "\n"
 
 
 def _write_parquet(rows: duckdb.DuckDBPyRelation, output: Path | None) -> None:

@@ -3,27 +3,41 @@
 from __future__ import annotations
 
 from datetime import datetime
+from shutil import get_terminal_size
 from typing import TYPE_CHECKING, Any
 
-from driftbook.store.cli.output import count_of
+from rich.cells import cell_len
+
 from driftbook.store.digits import with_interval
-from driftbook.store.table import columns, word
+from driftbook.store.table import columns, count_of, word
 
 if TYPE_CHECKING:
-    from driftbook.store.explaining import Explanation
+    from driftbook.store.explaining import Explanation, Statement
     from driftbook.store.state import State
 
 _DAY = 86_400
 
 
 def short_table(state: State) -> str:
-    """One sentence and the table that fits a terminal."""
-    rows = [
-        (row["series"], _value(row), _volatility(row), _half_life(row), row["model"] or "–", note(row, state.as_of))
-        for row in state.rows
-    ]
-    table = columns(("series", "value", "volatility", "half-life", "model", "note"), rows)
-    return f"{_sentence(state)}\n\n{table}" if rows else _sentence(state)
+    """One sentence and the table that fits a terminal; a note that does not fit stands below its row."""
+    rows = [(row["series"], _value(row), _volatility(row), _half_life(row), row["model"] or "–") for row in state.rows]
+    if not rows:
+        return _sentence(state)
+    notes = [note(row, state.as_of) for row in state.rows]
+    header, *lines = columns(("series", "value", "volatility", "half-life", "model"), rows).split("\n")
+    longest = max(map(cell_len, [header, *lines]))
+    beside = longest + 2 + max(map(cell_len, notes)) <= get_terminal_size().columns
+    told = [_with_note(line, words, longest if beside else None) for line, words in zip(lines, notes, strict=True)]
+    if beside and any(notes):
+        header = _with_note(header, "note", longest)
+    return "\n".join([_sentence(state), "", header, *told])
+
+
+def _with_note(line: str, words: str, column: int | None) -> str:
+    """A row with its note beside it, from a column on, or below."""
+    if not words:
+        return line
+    return f"{line}\n  {words}" if column is None else line + " " * (column + 2 - cell_len(line)) + words
 
 
 def full_table(state: State) -> str:
@@ -50,8 +64,12 @@ def explanation_text(found: Explanation) -> str:
     rows.append(("window", f"{word(one.window_start)} – {word(one.window_end)}",
                  f"{word(other.window_start)} – {word(other.window_end)}"))  # fmt: skip
     rows.append(("status", one.status, other.status))
-    table = columns(("", f"run {one.run_id}, {word(one.moment)}", f"run {other.run_id}, {word(other.moment)}"), rows)
+    table = columns(("", _run(one), _run(other)), rows)
     return "\n".join([head, "", table, "", *_between(found)])
+
+
+def _run(statement: Statement) -> str:
+    return f"run {statement.run_id}, {statement.moment:%Y-%m-%d %H:%M}Z"
 
 
 def _between(found: Explanation) -> list[str]:

@@ -1,92 +1,102 @@
-"""Delimited text: a header and rows, one a line."""
+"""Delimited text: a header and rows, mostly one a line."""
 
 from __future__ import annotations
 
 import re
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 from pathlib import Path
-from typing import BinaryIO
+from typing import Any, BinaryIO
 
 import duckdb
+import pyarrow as pa
 
 from driftbook.store.errors import IntakeError
-from driftbook.store.intake.columns import has_bars, places
-from driftbook.store.intake.lines import line_batches
-from driftbook.store.intake.options import Options
+from driftbook.store.intake.lines import SCHEMA, line_batches
+from driftbook.store.intake.quoting import DELIMITERS, MOST_LINES, Broken, joined, split_line
 from driftbook.store.intake.reasons import Reason
-from driftbook.store.intake.source import WHITESPACE, Fields
+from driftbook.store.intake.scratch import unless_aborted
+from driftbook.store.intake.source import WHITESPACE
 from driftbook.store.sql import query
 
-_DELIMITERS = (",", ";", "\t", "|")
 _FIRST_BYTES = 1 << 16
-_QUOTED = re.compile(r'"((?:[^"]|"")*)"')
+_PADDED = re.compile(rb"[,;\t|\n] | [,;\t|\r\n]")
 
 
 @dataclass
 class DelimitedText:
-    """The rows of a delimited text file; the columns are found by the header."""
+    """A delimited text file; its columns are found by the header.
 
+    `has_quotes` and `has_padding` say how the first lines look: in other files a quote or a space beside a field is
+    rare enough for a careful look at its line.
+    """
+
+    name: str
+    columns: list[str]
     file: BinaryIO
-    options: Options
     delimiter: str
-    width: int
     header_line: int
-    place: dict[str, int | None]
-    has_bars: bool
     has_quotes: bool
+    has_padding: bool
 
-    def relation(self, con: duckdb.DuckDBPyConnection) -> tuple[str, dict[str, object]]:
+    def lines(self, con: duckdb.DuckDBPyConnection) -> tuple[str, dict[str, object]]:
         """One reading of the file; fields are split in bulk where quotes and width are plain."""
-        con.register("intake_line", line_batches(self.file))
-        sql_places = {f"{role}_at": None if at is None else at + 1 for role, at in self.place.items()}
-        return query("intake_delimited_rows"), {
-            **sql_places,
-            "series": self.options.series,
+        batches = joined(line_batches(self.file, self.name), self.delimiter, len(self.columns))
+        con.register("intake_line", pa.RecordBatchReader.from_batches(SCHEMA, batches))
+        return query("intake_delimited_lines"), {
             "delimiter": self.delimiter,
-            "width": self.width,
+            "width": len(self.columns),
             "header_line": self.header_line,
             "has_quotes": self.has_quotes,
             "simply_quoted": _simply_quoted(self.delimiter),
+            "whitespace": WHITESPACE,
         }
 
-    def fields_of(self, text: str, fields: Fields) -> Fields | Reason | None:
-        """Splits one line with its quotes."""
-        del fields
+    def field(self, place: int) -> str:
+        """The last column loses the line's end here: trimming every field would cost more than all the rest."""
+        part = self.number(place)
+        if place == len(self.columns) - 1:
+            part = f"rtrim({part}, e'\\r\\n')"
+        return f"trim({part})" if self.has_padding else part
+
+    def number(self, place: int) -> str:
+        """A part of the line."""
+        return f"part[{place + 1}]"
+
+    def numbers(self) -> str:
+        """All parts of the line."""
+        return "part"
+
+    def split(self, text: str) -> list[str] | Reason | None:
+        """Splits one row with its quotes."""
         if not text.strip(WHITESPACE):
             return None
         parts = split_line(text, self.delimiter)
-        if isinstance(parts, Reason):
-            return parts
-        if len(parts) != self.width:
-            return Reason.WRONG_FIELD_COUNT
-        found = {role: None if at is None else parts[at] for role, at in self.place.items()}
-        return found if self.options.series is None else {**found, "series": self.options.series}
+        if isinstance(parts, Broken):
+            return Reason.UNFINISHED_QUOTE
+        return parts if len(parts) == len(self.columns) else Reason.WRONG_FIELD_COUNT
 
     def close(self, con: duckdb.DuckDBPyConnection) -> None:
         """Closes the file."""
-        con.unregister("intake_line")
+        with unless_aborted():
+            con.unregister("intake_line")
         self.file.close()
 
 
-def open_delimited(path: Path, options: Options) -> DelimitedText:
+def open_delimited(path: Path, name: str) -> DelimitedText:
     """Opens a delimited text file and reads its header."""
     file = path.open("rb")
     try:
-        header_line, header = _header(file, path.name)
-        delimiter = max(_DELIMITERS, key=header.count)
-        columns = split_line(header, delimiter)
-        if isinstance(columns, Reason):
-            raise IntakeError(f"{path.name}, line {header_line}: the header has a quote that does not end.")
-        place = places(columns, options, path.name)
+        delimiter, header_line, columns = _header(file, name)
+        first = _first_bytes(file)
         return DelimitedText(
+            name=name,
+            columns=columns,
             file=file,
-            options=options,
             delimiter=delimiter,
-            width=len(columns),
             header_line=header_line,
-            place=place,
-            has_bars=has_bars(place),
-            has_quotes=_has_quotes(file),
+            has_quotes=b'"' in first,
+            has_padding=_PADDED.search(first) is not None,
         )
     except BaseException:
         file.close()
@@ -95,44 +105,42 @@ def open_delimited(path: Path, options: Options) -> DelimitedText:
 
 def _simply_quoted(delimiter: str) -> str:
     """The pattern of a line whose quotes wrap whole fields, with neither quote nor delimiter inside."""
-    field = f'(?:"[^"{delimiter}]*"|[^"{delimiter}]*)'
+    field = f'(?: *"[^"{delimiter}]*" *|[^"{delimiter}]*)'
     return rf"{field}(?:[{delimiter}]{field})*[\r\n]*"
 
 
-def _has_quotes(file: BinaryIO) -> bool:
-    """Whether the first lines have a quote; where they have none, a later one is rare enough for a careful look."""
+def _first_bytes(file: BinaryIO) -> bytes:
     file.seek(0)
-    return b'"' in file.read(_FIRST_BYTES)
+    return file.read(_FIRST_BYTES)
 
 
-def _header(file: BinaryIO, source: str) -> tuple[int, str]:
-    """The first line that is not blank, and its number."""
-    for batch in line_batches(file):
-        for row in batch.to_pylist():
-            if not row["is_utf8"] or "\0" in row["text"]:
-                raise IntakeError(f"{source} is no UTF-8 text with a header, nor Parquet; save it as CSV in UTF-8.")
-            if row["text"].strip(WHITESPACE):
-                return row["line"], row["text"]
-    raise IntakeError(f"{source} is empty; it needs a header line that names its columns.")
+def _header(file: BinaryIO, name: str) -> tuple[str, int, list[str]]:
+    """The delimiter, the header's last line and its columns; the header is the first line that is not blank."""
+    header = ""
+    first_line = 0
+    for row in _one_by_one(line_batches(file, name)):
+        if not row["is_utf8"] or "\0" in row["text"]:
+            raise IntakeError(
+                f"{name} begins with no line of UTF-8 text, and is no Parquet, Arrow or gzip file; save it as CSV in "
+                "UTF-8."
+            )
+        header += row["text"]
+        if not header.strip(WHITESPACE):
+            continue
+        first_line = first_line or row["line"]
+        delimiter = max(DELIMITERS, key=header.count)
+        columns = split_line(header.lstrip("\r\n"), delimiter)
+        if isinstance(columns, list):
+            return delimiter, row["line"], columns
+        if columns is Broken.MISPLACED or row["line"] - first_line >= MOST_LINES:
+            break
+    if first_line:
+        raise IntakeError(f"{name}, line {first_line}: the header has a quote that does not end its field.")
+    raise IntakeError(f"{name} is empty; it needs a header line that names its columns.")
 
 
-def split_line(text: str, delimiter: str) -> list[str] | Reason:
-    """The trimmed fields of one line; a quoted field has to end on its line, with nothing but space around it."""
-    outer = WHITESPACE.replace(delimiter, "")
-    fields = []
-    rest = text.strip("\r\n")
-    while True:
-        start = rest.lstrip(outer)
-        if start.startswith('"'):
-            match = _QUOTED.match(start)
-            after = start[match.end() :].lstrip(outer) if match else ""
-            if match is None or (after and not after.startswith(delimiter)):
-                return Reason.UNFINISHED_QUOTE
-            fields.append(match[1].replace('""', '"').strip(WHITESPACE))
-            found, rest = bool(after), after[1:]
-        else:
-            field, mark, rest = start.partition(delimiter)
-            fields.append(field.strip(WHITESPACE))
-            found = bool(mark)
-        if not found:
-            return fields
+def _one_by_one(batches: Iterable[pa.RecordBatch]) -> Iterator[dict[str, Any]]:
+    """The lines without making Python of a whole batch for the first few."""
+    for batch in batches:
+        for place in range(batch.num_rows):
+            yield from batch.slice(place, 1).to_pylist()

@@ -13,7 +13,7 @@ from driftbook.store.errors import IntakeError, UsageError
 from driftbook.store.intake.options import Options
 from driftbook.store.intake.reasons import Reason
 from driftbook.store.intake.source import WHITESPACE
-from driftbook.store.series import Setting, Stamp, add_series, known_series
+from driftbook.store.series import Setting, Stamp, add_series, series_by_name
 from driftbook.store.sql import query
 
 _LONGEST_NAME = 200
@@ -61,7 +61,7 @@ def check_named_series(con: duckdb.DuckDBPyConnection, options: Options) -> None
         raise UsageError(
             f"--series {name!r} can't be a name: {reason.sentence if reason else 'it has space around it.'}"
         )
-    known = known_series(con)
+    known = series_by_name(con)
     if name in known or options.add_series:
         return
     near = difflib.get_close_matches(name, known, n=3)

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import UTC, datetime
+from typing import Literal
 from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 
 from driftbook.store.errors import UsageError
@@ -13,7 +14,8 @@ from driftbook.store.errors import UsageError
 DAY_FIRST = "day-first"
 MONTH_FIRST = "month-first"
 BAR_ROLES = ("open", "high", "low", "volume")
-ROLES = ("series", "time", "value", *BAR_ROLES)
+NUMBER_ROLES = ("value", *BAR_ROLES)
+ROLES = ("series", "time", *NUMBER_ROLES)
 
 
 @dataclass(frozen=True)
@@ -21,14 +23,19 @@ class Options:
     """How to read a source.
 
     `series`: all rows are this series. `columns`: role to column name. `dates`: day-first, month-first or a
-    strptime form. `zone`: the zone of times without one, instead of the series' own. `add_series`: unknown names
-    become series. `yes`: more than a tenth of a series may be withdrawn at once.
+    strptime form. `zone`: the zone of times without one, instead of the series' own. `layout`: long, one row a line,
+    or wide, a column of times and a column for each series. `decimal`: the decimal mark of numbers that are written as
+    text. `blank`: texts that mean an empty value. `add_series`: unknown names become series. `yes`: more than a tenth
+    of a series may be withdrawn at once.
     """
 
     series: str | None = None
     columns: Mapping[str, str] = field(default_factory=dict)
     dates: str | None = None
     zone: str | None = None
+    layout: Literal["long", "wide"] = "long"
+    decimal: str = "."
+    blank: Sequence[str] = ()
     add_series: bool = False
     yes: bool = False
 
@@ -39,6 +46,9 @@ class Options:
             "columns": dict(self.columns),
             "dates": self.dates,
             "zone": self.zone,
+            "layout": self.layout,
+            "decimal": self.decimal,
+            "blank": sorted(self.blank),
         }
         return json.dumps(meaning, sort_keys=True, ensure_ascii=False)
 
@@ -58,10 +68,24 @@ def check(options: Options) -> None:
     for role in options.columns:
         if role not in ROLES:
             raise UsageError(f"--columns knows no {role!r}; say one of {', '.join(ROLES)}.")
+    if options.layout == "wide":
+        _check_wide(options)
+    if options.decimal not in (".", ","):
+        raise UsageError(f"--decimal {options.decimal!r} is no decimal mark; say . or , instead.")
     if options.zone is not None:
         _check_zone(options.zone)
     if options.dates is not None and options.has_date_form:
         _check_date_form(options.dates)
+
+
+def _check_wide(options: Options) -> None:
+    if options.series is not None:
+        raise UsageError("--series says that all rows are one series, but in the wide layout each column is its own.")
+    for role in options.columns:
+        if role != "time":
+            raise UsageError(
+                f"--columns {role}=… makes no sense in the wide layout: all columns but the time are series."
+            )
 
 
 def _check_zone(zone: str) -> None:

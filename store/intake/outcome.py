@@ -7,11 +7,12 @@ from dataclasses import dataclass
 
 @dataclass(frozen=True)
 class Refused:
-    """A row that was not taken."""
+    """A row that was not taken; in the wide layout `cell` is the number of its column."""
 
     line: int
     text: str
     reason: str
+    cell: int = 0
 
 
 @dataclass(frozen=True)

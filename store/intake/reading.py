@@ -8,24 +8,25 @@ from collections.abc import Iterable, Iterator, Mapping
 import duckdb
 import pyarrow as pa
 
+from driftbook.store.intake.forms import Form, plain_form
 from driftbook.store.intake.numerals import read_number
-from driftbook.store.intake.options import ROLES, Options
+from driftbook.store.intake.options import DAY_FIRST, MONTH_FIRST, NUMBER_ROLES, ROLES, Options
 from driftbook.store.intake.reasons import Reason
 from driftbook.store.intake.scratch import as_written, keep_rows
-from driftbook.store.intake.source import WHITESPACE, Fields, Rows
+from driftbook.store.intake.source import WHITESPACE, Fields, Rows, readable
 from driftbook.store.intake.times import read_time
 from driftbook.store.intake.zones import plain_days
 from driftbook.store.series import Series
 from driftbook.store.sql import query
 
-_NUMBERS = ("value", "open", "high", "low", "volume")
+_DAY_AND_MONTH = {DAY_FIRST: "%d/%m", MONTH_FIRST: "%m/%d"}
 _ODD = pa.schema(
     [
-        ("line", pa.int64()),
+        ("row_key", pa.int64()),
         ("series_id", pa.int32()),
         ("name", pa.string()),
         ("observed_at", pa.timestamp("us")),
-        *((role, pa.float64()) for role in _NUMBERS),
+        *((role, pa.float64()) for role in NUMBER_ROLES),
         ("reason", pa.string()),
         ("fields", pa.string()),
     ]
@@ -37,13 +38,27 @@ def read_rows(con: duckdb.DuckDBPyConnection, rows: Rows, options: Options, know
     """Fills intake_row with what is plain and intake_odd with the rest; gives the number of rows."""
     _prepare(con, options, known)
     sql, values = rows.relation(con)
-    meaning = {"reads_plain_times": not options.has_date_form, "zone": options.zone, "whitespace": WHITESPACE}
-    keep_rows(con, over("intake_read_plain", sql), {**values, **meaning}, has_bars=rows.has_bars)
+    with readable(rows.name):
+        keep_rows(con, over("intake_read_plain", sql), {**values, **_meaning(options)}, has_bars=rows.has_bars)
     plain, odd = con.execute("select count(observed_at), count(*) - count(observed_at) from intake_row").fetchall()[0]
     if odd == 0:
         return int(plain)
     looked_at = _insert_odd(con, _look_at_odd(con, rows, options, known))
     return int(plain) + looked_at
+
+
+def _meaning(options: Options) -> dict[str, object]:
+    """What the bulk reading has to know."""
+    form = plain_form(options.dates) if options.dates and options.has_date_form else Form()
+    return {
+        "reads_plain_times": not options.has_date_form,
+        "told_form": form.padded,
+        "told_form_unpadded": form.unpadded,
+        "told_form_has_clock": form.has_clock,
+        "day_and_month": _DAY_AND_MONTH.get(options.dates or ""),
+        "zone": options.zone,
+        "whitespace": WHITESPACE,
+    }
 
 
 def over(name: str, fields: str) -> str:
@@ -52,9 +67,16 @@ def over(name: str, fields: str) -> str:
 
 
 def _prepare(con: duckdb.DuckDBPyConnection, options: Options, known: Mapping[str, Series]) -> None:
-    con.execute(query("intake_number_checks"))
-    con.execute(query("intake_empty_checks"))
-    con.execute(query("intake_odd_table"))
+    for table_or_macro in (
+        "intake_point_numbers" if options.decimal == "." else "intake_comma_numbers",
+        "intake_number_checks",
+        "intake_empty_checks",
+        "intake_with_clock",
+        "intake_told_time",
+        "intake_row_key",
+        "intake_odd_table",
+    ):
+        con.execute(query(table_or_macro))
     name_known(con, known)
     zones = [options.zone] if options.zone else [series.setting.time_zone for series in known.values()]
     days = plain_days(zones)
@@ -82,19 +104,21 @@ def _look_at_odd(
     con: duckdb.DuckDBPyConnection, rows: Rows, options: Options, known: Mapping[str, Series]
 ) -> Iterator[dict[str, object]]:
     sql, values = rows.relation(con)
-    with as_written(con):
-        found = con.execute(over("intake_odd_lines", sql), values)
+    with as_written(con), readable(rows.name):
+        found = con.execute(over("intake_odd_rows", sql), values)
         while chunk := found.fetchmany(_BATCH):
-            for line, text, fault, *said in chunk:
-                fields = Reason(fault) if fault else rows.fields_of(text, dict(zip(ROLES, said, strict=True)))
+            for row_key, cell, text, is_plain, fault, *said in chunk:
+                fields: Fields | Reason | None = dict(zip(ROLES, said, strict=True))
+                if not is_plain:
+                    fields = Reason(fault) if fault else rows.fields_of(cell, text, dict(zip(ROLES, said, strict=True)))
                 if fields is not None:
-                    yield {"line": line, **_look(fields, options, known)}
+                    yield {"row_key": row_key, **_look(fields, options, known)}
 
 
 def _look(fields: Fields | Reason, options: Options, known: Mapping[str, Series]) -> dict[str, object]:
     if isinstance(fields, Reason):
         return {"reason": fields}
-    fields = {role: said and said.strip(WHITESPACE) for role, said in fields.items()}
+    fields = {role: _cleaned(role, fields[role], options) for role in ROLES}
     name = fields["series"]
     if not name:
         return {"reason": Reason.NO_SERIES}
@@ -104,19 +128,25 @@ def _look(fields: Fields | Reason, options: Options, known: Mapping[str, Series]
     else:
         told = {"series_id": series.series_id}
     zone = options.zone or (series.setting.time_zone if series else "UTC")
-    return {**told, **_read_fields(fields, zone, options.dates)}
+    return {**told, **_read_fields(fields, zone, options)}
 
 
-def _read_fields(fields: Fields, zone: str, dates: str | None) -> dict[str, object]:
+def _cleaned(role: str, said: str | None, options: Options) -> str | None:
+    """A field without the space around it; empty if its text means an empty value."""
+    trimmed = said and said.strip(WHITESPACE)
+    return "" if role in NUMBER_ROLES and trimmed in options.blank else trimmed
+
+
+def _read_fields(fields: Fields, zone: str, options: Options) -> dict[str, object]:
     if not fields["time"]:
         return {"reason": Reason.NO_TIME}
-    observed_at = read_time(fields["time"], zone, dates)
+    observed_at = read_time(fields["time"], zone, options.dates)
     if isinstance(observed_at, Reason):
         return {"reason": observed_at}
     found: dict[str, object] = {"observed_at": observed_at}
-    for role in _NUMBERS:
+    for role in NUMBER_ROLES:
         said = fields[role]
-        number = read_number(said) if said else None
+        number = read_number(said, options.decimal) if said else None
         if isinstance(number, Reason):
             return {"reason": number}
         found[role] = number

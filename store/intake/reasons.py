@@ -9,6 +9,7 @@ class Reason(StrEnum):
     """The word that a refused row carries; `sentence` says what it means and what to do."""
 
     NOT_UTF8 = "not_utf8"
+    BAD_JSON = "bad_json"
     UNFINISHED_QUOTE = "unfinished_quote"
     WRONG_FIELD_COUNT = "wrong_field_count"
     NO_SERIES = "no_series"
@@ -33,8 +34,9 @@ class Reason(StrEnum):
 
 _SENTENCES = {
     Reason.NOT_UTF8: "The line is not UTF-8 text; save the file as UTF-8.",
+    Reason.BAD_JSON: "The line is not one JSON object with each key once.",
     Reason.UNFINISHED_QUOTE: (
-        "A field begins with a quote that does not end the field on the same line; quote the whole field."
+        "A field begins with a quote that does not end it, or not in a row of the header's width; quote whole fields."
     ),
     Reason.WRONG_FIELD_COUNT: "The line has more or fewer fields than the header.",
     Reason.NO_SERIES: "The name of the series is empty.",
@@ -48,7 +50,7 @@ _SENTENCES = {
     Reason.AMBIGUOUS_DATE: "The date could be read two ways; say --dates day-first, month-first or the form itself.",
     Reason.TIME_SKIPPED: "The local time does not exist: the clock of the zone jumped over it; give it with an offset.",
     Reason.TIME_REPEATED: "The local time exists twice: the clock of the zone was set back; give it with an offset.",
-    Reason.NOT_A_NUMBER: "A value, price or volume is not a plain decimal number.",
+    Reason.NOT_A_NUMBER: "A value, price or volume is not a plain decimal number; see --decimal and --blank.",
     Reason.NOT_FINITE: "A value, price or volume is infinite, too large or not a number by its own word.",
     Reason.NO_VALUE: "The value is empty and there is no observation at this time that it could withdraw.",
     Reason.SEVERAL_VALUES: (

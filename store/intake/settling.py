@@ -22,7 +22,7 @@ class Counts:
     refused: int
 
 
-def settle(con: duckdb.DuckDBPyConnection, intake_id: int, stamp: Stamp, *, yes: bool) -> Counts:
+def settle(con: duckdb.DuckDBPyConnection, source: str, intake_id: int, stamp: Stamp, *, yes: bool) -> Counts:
     """Brings the rows of intake_ordered into the observations; rows it refuses go to intake_refusal."""
     run = {"run_id": stamp.run_id}
     con.execute(query("intake_contested"))
@@ -33,7 +33,7 @@ def settle(con: duckdb.DuckDBPyConnection, intake_id: int, stamp: Stamp, *, yes:
     con.execute(query("intake_median"))
     con.execute(query("intake_step"))
     if not yes:
-        _check_withdrawals(con)
+        _check_withdrawals(con, source)
     with as_written(con):
         fresh = _number(con, "intake_insert_fresh", {**run, "intake_id": intake_id})
     unchanged = _number(con, "intake_count_unchanged", {})
@@ -48,9 +48,9 @@ def _number(con: duckdb.DuckDBPyConnection, name: str, values: dict[str, object]
     return int(con.execute(query(name), values).fetchall()[0][0])
 
 
-def _check_withdrawals(con: duckdb.DuckDBPyConnection) -> None:
+def _check_withdrawals(con: duckdb.DuckDBPyConnection, source: str) -> None:
     for series, withdrawn, in_force in con.execute(query("intake_withdrawn_share")).fetchall():
         raise IntakeError(
-            f"The source withdraws {withdrawn} of the {in_force} observations of {series!r}, more than a tenth; "
+            f"{source} withdraws {withdrawn} of the {in_force} observations of {series!r}, more than a tenth; "
             "say --yes if that is meant."
         )

@@ -1,92 +1,143 @@
-"""Rows that come with typed columns: Parquet files and data frames."""
+"""Rows that come with typed columns: Parquet files, Arrow files and streams, data frames."""
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 
 import duckdb
 import polars as pl
+import pyarrow as pa
 
 from driftbook.store.errors import IntakeError
-from driftbook.store.intake.columns import has_bars, places
-from driftbook.store.intake.options import ROLES, Options
 from driftbook.store.intake.reasons import Reason
-from driftbook.store.intake.source import Fields
+from driftbook.store.intake.scratch import unless_aborted
+from driftbook.store.intake.source import readable
 from driftbook.store.sql import query
+
+_WITH_ZONE = ("TIMESTAMP WITH TIME ZONE", "TIMESTAMPTZ_NS")
+_FRACTIONAL = ("FLOAT", "DOUBLE", "DECIMAL")
 
 
 @dataclass
 class TypedTable:
-    """The rows of a table; each column is turned into the text that the rules of intake read."""
+    """A table; each column is turned into the text that the rules of intake read."""
 
+    name: str
+    columns: list[str]
+    kinds: list[str]
     sql: str
     values: Mapping[str, object]
     prepare: Callable[[duckdb.DuckDBPyConnection], object]
-    has_bars: bool
+    decimal: str
 
-    def relation(self, con: duckdb.DuckDBPyConnection) -> tuple[str, dict[str, object]]:
+    def lines(self, con: duckdb.DuckDBPyConnection) -> tuple[str, dict[str, object]]:
         """One reading of the table."""
         self.prepare(con)
         return self.sql, dict(self.values)
 
-    def fields_of(self, text: str, fields: Fields) -> Fields | Reason | None:
+    def field(self, place: int) -> str:
+        """A time with a zone as its instant in UTC, everything else as DuckDB shows it."""
+        return _as_text(f"column_{place}", self.kinds[place])
+
+    def number(self, place: int) -> str:
+        """A number by its type has a point, whatever `--decimal` says of texts."""
+        text = self.field(place)
+        is_fraction = self.decimal != "." and self.kinds[place].startswith(_FRACTIONAL)
+        return f"replace({text}, '.', ',')" if is_fraction else text
+
+    def numbers(self) -> str:
+        """All columns."""
+        return f"[{', '.join(self.number(place) for place in range(len(self.columns)))}]"
+
+    def split(self, text: str) -> list[str] | Reason | None:
         """A row of a table is split by nature."""
-        del text
-        return fields
+        raise AssertionError(text)
 
     def close(self, con: duckdb.DuckDBPyConnection) -> None:
         """Lets go of the frame."""
-        con.unregister("intake_frame")
+        with unless_aborted():
+            con.unregister("intake_frame")
 
 
-def open_frame(con: duckdb.DuckDBPyConnection, frame: pl.DataFrame, options: Options, source: str) -> TypedTable:
+def open_frame(con: duckdb.DuckDBPyConnection, frame: pl.DataFrame, name: str, decimal: str) -> TypedTable:
     """The rows of a frame, counted from 1."""
-
-    def prepare(con: duckdb.DuckDBPyConnection) -> object:
-        return con.register("intake_frame", frame)
-
-    prepare(con)
-    return _typed_table(con, "intake_frame", "row_number() over ()", {}, prepare, options, source)
+    return _streamed(con, lambda con: con.register("intake_frame", frame), name, decimal)
 
 
-def open_parquet(con: duckdb.DuckDBPyConnection, path: Path, options: Options) -> TypedTable:
+def open_parquet(con: duckdb.DuckDBPyConnection, path: Path, name: str, decimal: str) -> TypedTable:
     """The rows of a Parquet file, counted from 1."""
     table = "read_parquet($path, file_row_number = true)"
-    return _typed_table(con, table, "file_row_number + 1", {"path": str(path)}, lambda _: None, options, path.name)
+    return _described(con, table, "file_row_number + 1", {"path": str(path)}, lambda _: None, name, decimal)
 
 
-def _typed_table(
+def open_arrow(con: duckdb.DuckDBPyConnection, path: Path, name: str, decimal: str, *, is_stream: bool) -> TypedTable:
+    """The rows of an Arrow file or stream, counted from 1."""
+
+    def prepare(con: duckdb.DuckDBPyConnection) -> object:
+        schema, batches = _arrow_batches(path, is_stream=is_stream)
+        return con.register("intake_frame", pa.RecordBatchReader.from_batches(schema, batches))
+
+    try:
+        return _streamed(con, prepare, name, decimal)
+    except pa.ArrowException as problem:
+        raise IntakeError(f"{name} is a broken Arrow file: {problem}. Get it again.") from problem
+
+
+def _arrow_batches(path: Path, *, is_stream: bool) -> tuple[pa.Schema, Iterator[pa.RecordBatch]]:
+    """The batches of a file, each checked: DuckDB would trust the offsets in a broken one."""
+    reader = pa.ipc.open_stream(pa.OSFile(str(path))) if is_stream else pa.ipc.open_file(pa.OSFile(str(path)))
+    count = None if is_stream else reader.num_record_batches
+
+    def batches() -> Iterator[pa.RecordBatch]:
+        for batch in reader if count is None else map(reader.get_batch, range(count)):
+            batch.validate(full=True)
+            yield batch
+
+    return reader.schema, batches()
+
+
+def _streamed(
+    con: duckdb.DuckDBPyConnection, prepare: Callable[[duckdb.DuckDBPyConnection], object], name: str, decimal: str
+) -> TypedTable:
+    prepare(con)
+    return _described(con, "intake_frame", "row_number() over ()", {}, prepare, name, decimal)
+
+
+def _described(
     con: duckdb.DuckDBPyConnection,
     table: str,
     line: str,
     values: dict[str, object],
     prepare: Callable[[duckdb.DuckDBPyConnection], object],
-    options: Options,
-    source: str,
+    name: str,
+    decimal: str,
 ) -> TypedTable:
-    try:
+    with readable(name):
         described = con.execute(f"describe select * from {table}", values).fetchall()
-    except duckdb.Error as problem:
-        raise IntakeError(f"{source} cannot be read: {str(problem).splitlines()[0]}") from problem
-    columns = [(name, kind) for name, kind, *_ in described if name != "file_row_number"]
-    place = places([name for name, _ in columns], options, source)
-    texts = {role: "null::varchar" if at is None else _as_text(*columns[at]) for role, at in place.items()}
-    shown = ", ".join(f"coalesce({_as_text(*column)}, '')" for column in columns)
+    columns = {column: kind for column, kind, *_ in described if column != "file_row_number"}
+    if not columns:
+        raise IntakeError(f"{name} has no columns; it needs one for the time and one for the value.")
+    quoted = [_quoted(column) for column in columns]
+    shown = ", ".join(f"coalesce({_as_text(*one)}, '')" for one in zip(quoted, columns.values(), strict=True))
+    numbered = ", ".join(f"{column} as column_{place}" for place, column in enumerate(quoted))
     return TypedTable(
-        sql=query("intake_table_rows").format(
-            table=table, line=line, shown=shown, **{role: texts[role] for role in ROLES}
-        ),
-        values={**values, "series": options.series},
+        name=name,
+        columns=list(columns),
+        kinds=list(columns.values()),
+        sql=query("intake_table_lines").format(table=table, line=line, shown=shown, columns=numbered),
+        values=values,
         prepare=prepare,
-        has_bars=has_bars(place),
+        decimal=decimal,
     )
 
 
 def _as_text(column: str, kind: str) -> str:
-    """A column as text: a time with a zone as its instant in UTC, everything else as DuckDB shows it."""
-    quoted = '"' + column.replace('"', '""') + '"'
-    if kind in ("TIMESTAMP WITH TIME ZONE", "TIMESTAMPTZ_NS"):
-        return f"make_timestamp(epoch_us({quoted}::timestamptz))::varchar || 'Z'"
-    return f"{quoted}::varchar"
+    if kind in _WITH_ZONE:
+        return f"make_timestamp(epoch_us({column}::timestamptz))::varchar || 'Z'"
+    return f"{column}::varchar"
+
+
+def _quoted(column: str) -> str:
+    return '"' + column.replace('"', '""') + '"'

@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 from dataclasses import asdict, dataclass
+from os import PathLike
 from pathlib import Path
 
 import duckdb
-import polars as pl
 
 from driftbook.store.intake import naming
 from driftbook.store.intake.bringing_in import bring_in
@@ -17,7 +17,7 @@ from driftbook.store.intake.reading import read_rows
 from driftbook.store.intake.scratch import clear, scratch
 from driftbook.store.intake.source import Rows
 from driftbook.store.intake.taking_up import is_awaited, take_up
-from driftbook.store.series import Stamp, known_series
+from driftbook.store.series import Stamp, series_by_name
 from driftbook.store.sql import query
 
 
@@ -31,7 +31,7 @@ class _Arrival:
 
 def take_in(
     con: duckdb.DuckDBPyConnection,
-    source: str | Path | pl.DataFrame,
+    source: object,
     options: Options,
     stamp: Stamp,
     *,
@@ -39,13 +39,15 @@ def take_in(
 ) -> Outcome:
     """Takes in a file or a frame: each of its rows becomes an observation, is known already, or is refused.
 
+    `source` is a path, `-` for standard input, or a frame of polars, pandas, Arrow or anything that speaks Arrow.
+
     `con` writes to a private copy of the book, which is thrown away if this raises. The newest intake of the same
     source with the same bytes and options is known and taken as read.
     """
     check(options)
     naming.check_named_series(con, options)
-    origin = source if isinstance(source, pl.DataFrame) else Path(source)
-    called = name or ("frame" if isinstance(origin, pl.DataFrame) else origin.name)
+    origin = Path(source) if isinstance(source, str | PathLike) else source
+    called = name or (origin.name if isinstance(origin, Path) else "frame")
     with opened(con, origin, options, called) as (sha256, rows):
         arrival = _Arrival(called, sha256, options, stamp)
         known = _known_as(con, arrival)
@@ -69,20 +71,20 @@ def _known_already(con: duckdb.DuckDBPyConnection, intake_id: int, arrival: _Arr
     if arrival.options.add_series:
         waiting = con.execute(query("intake_waiting_names"), [intake_id]).fetchall()
         added = naming.add_new(con, [name for (name,) in waiting], arrival.stamp)
-        take_up(con, added, arrival.stamp)
+        take_up(con, added, arrival.stamp, yes=arrival.options.yes)
     return Outcome(arrival.source, intake_id, 0, 0, 0, 0, 0, known_already=True, series_added=added, refused=[])
 
 
 def _take(con: duckdb.DuckDBPyConnection, rows: Rows, arrival: _Arrival) -> Outcome:
     options, stamp = arrival.options, arrival.stamp
-    rows_read = read_rows(con, rows, options, known_series(con))
+    rows_read = read_rows(con, rows, options, series_by_name(con))
     added: tuple[str, ...] = ()
     if options.add_series:
         added = naming.add_new(con, naming.unknown_names(con), stamp)
         if is_awaited(con, added):
             clear(con)
-            take_up(con, added, stamp)
-            rows_read = read_rows(con, rows, options, known_series(con))
+            take_up(con, added, stamp, yes=options.yes)
+            rows_read = read_rows(con, rows, options, series_by_name(con))
     intake_id = _next_intake(con)
     counts = bring_in(con, rows, intake_id, stamp, rows_read=rows_read, yes=options.yes)
     con.execute(
@@ -118,4 +120,4 @@ def _next_intake(con: duckdb.DuckDBPyConnection) -> int:
 
 def _first_refused(con: duckdb.DuckDBPyConnection, intake_id: int, stamp: Stamp) -> list[Refused]:
     rows = con.execute(query("intake_first_refused"), [intake_id, stamp.run_id]).fetchall()
-    return [Refused(line, text, reason) for line, text, reason in rows]
+    return [Refused(*row) for row in rows]

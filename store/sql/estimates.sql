@@ -75,8 +75,9 @@ from (
 where b.run_to is null
   and b.series_id = gone.series_id and b.lookback = gone.lookback and b.window_end = gone.window_end
 
--- name: close_entry
--- All rows in force of one series and lookback end with this run.
+-- name: close_entries
+-- All rows in force of some series and lookbacks end with this run.
 update base.{table} b
-set run_to = ?
-where b.run_to is null and b.series_id = ? and b.lookback = ?
+set run_to = $run
+from (select unnest($series::integer[]) as series_id, unnest($lookbacks::integer[]) as lookback) gone
+where b.run_to is null and b.series_id = gone.series_id and b.lookback = gone.lookback

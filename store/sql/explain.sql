@@ -1,10 +1,12 @@
 -- name: headline_of
--- The model in force and the lookback that latest speaks of; without a model in force, the heaviest fit's.
+-- The model in force and the lookback that latest speaks of, or spoke of last; without a model in force, the heaviest
+-- fit's.
 select coalesce(l.model, (
     select f.model from fit f
     where f.series = l.series and f.lookback = l.lookback and f.window_end = l.window_end
     order by f.model_weight desc nulls last, f.model limit 1)), l.lookback
-from latest l where l.series = $series
+from versions.latest l where l.series = $series
+order by l.run_from desc limit 1
 
 -- name: runs_of
 -- The runs that wrote estimates of a series, model and lookback.
@@ -34,13 +36,19 @@ where b.series = $series and b.run_from <= $first and b.run_to > $first and b.ru
 order by b.observed_at
 
 -- name: steps_between
--- How many observations are in one window and before, or after, the other.
-select count(*) filter (where o.observed_at >= $one_start and o.observed_at < $other_start
-    and o.run_from <= $first and (o.run_to is null or o.run_to > $first)),
-  count(*) filter (where o.observed_at > $one_end and o.observed_at <= $other_end
-    and o.run_from <= $last and (o.run_to is null or o.run_to > $last))
-from versions.observation o
-where o.series = $series
+-- How many observations left the earlier window, though they are still known, and how many came into the later one.
+select count(*) filter (where k.was_in and not k.is_in and k.is_known), count(*) filter (where k.is_in and not k.was_in)
+from (
+  select o.observed_at,
+    bool_or(o.run_from <= $first and (o.run_to is null or o.run_to > $first)
+      and o.observed_at between $one_start and $one_end) as was_in,
+    bool_or(o.run_from <= $last and (o.run_to is null or o.run_to > $last)) as is_known,
+    bool_or(o.run_from <= $last and (o.run_to is null or o.run_to > $last)
+      and o.observed_at between $other_start and $other_end) as is_in
+  from versions.observation o
+  where o.series = $series
+  group by o.observed_at
+) k
 
 -- name: causes_between
 -- What else changed between two runs: the plan, the series' settings.

@@ -48,7 +48,7 @@ where (i.value, i.open, i.high, i.low, i.volume) is not distinct from (e.value, 
 -- All other rows, with what is in force at their times: `said` is what the row says, `stood` what stood before the
 -- intake; both are NULL where there is no value. was_known: the time has or had an observation.
 create temp table intake_undecided as
-select i.line, i.series_id, i.observed_at, k.same_time,
+select i.row_key, i.series_id, i.observed_at, k.same_time,
   case when i.value is not null then
     {'value': i.value, 'open': i.open, 'high': i.high, 'low': i.low, 'volume': i.volume}
   end as said,
@@ -58,7 +58,7 @@ select i.line, i.series_id, i.observed_at, k.same_time,
   e.value is not null or p.next_take is not null as was_known,
   coalesce(p.next_take, 0) as next_take
 from intake_ordered i
-join intake_known k on k.series_id = i.series_id
+join (select distinct series_id, same_time from intake_known) k on k.series_id = i.series_id
 left join intake_contested c on c.series_id = i.series_id and c.observed_at = i.observed_at
 left join intake_in_force e on e.series_id = i.series_id and e.observed_at = i.observed_at
 left join intake_past p on p.series_id = i.series_id and p.observed_at = i.observed_at
@@ -79,7 +79,7 @@ create or replace temp macro intake_middle(numbers) as
 -- name: intake_median
 -- One row for each time of which a series with same_time = 'median' is told different values.
 create temp table intake_median as
-select series_id, observed_at, min(line) as line, {
+select series_id, observed_at, min(row_key) as row_key, {
     'value': intake_middle(list(said.value)),
     'open': intake_middle(list(said.open) filter (said.open is not null)),
     'high': intake_middle(list(said.high) filter (said.high is not null)),
@@ -95,23 +95,23 @@ having count(distinct said) > 1
 -- What becomes of each undecided row, in the order of arrival at its time: each meets what the row before it left.
 create temp table intake_step as
 with told as (
-  select u.line, u.series_id, u.observed_at, u.same_time, u.stood, u.was_known, u.next_take,
-    case when m.line is null then u.said else m.said end as said,
-    m.line is not null as has_median,
-    m.line is not null and m.line != u.line as is_in_median
+  select u.row_key, u.series_id, u.observed_at, u.same_time, u.stood, u.was_known, u.next_take,
+    case when m.row_key is null then u.said else m.said end as said,
+    m.row_key is not null as has_median,
+    m.row_key is not null and m.row_key != u.row_key as is_in_median
   from intake_undecided u
   left join intake_median m on m.series_id = u.series_id and m.observed_at = u.observed_at
 ), met as (
-  select line, series_id, observed_at, said, stood, next_take, is_in_median,
+  select row_key, series_id, observed_at, said, stood, next_take, is_in_median,
     same_time = 'refuse' and count(distinct said) over here + bool_or(said is null) over here::int > 1 as is_refused,
     case when has_median or row_number() over arrival = 1 then stood else lag(said) over arrival end as before,
     was_known or (not has_median and count(said) over earlier > 0) as is_known
   from told
   window here as (partition by series_id, observed_at),
-    arrival as (partition by series_id, observed_at order by line),
-    earlier as (partition by series_id, observed_at order by line rows between unbounded preceding and 1 preceding)
+    arrival as (partition by series_id, observed_at order by row_key),
+    earlier as (partition by series_id, observed_at order by row_key rows between unbounded preceding and 1 preceding)
 ), decided as (
-  select line, series_id, observed_at, said, stood, next_take,
+  select row_key, series_id, observed_at, said, stood, next_take,
     case
       when is_refused then 'several_values'
       when is_in_median then 'same'
@@ -124,11 +124,11 @@ with told as (
     end as outcome
   from met
 )
-select line, series_id, observed_at, said, stood is not null as stood, outcome,
+select row_key, series_id, observed_at, said, stood is not null as stood, outcome,
   next_take + count(*) filter (outcome in ('new', 'revised'))
-    over (partition by series_id, observed_at order by line rows between unbounded preceding and current row)
+    over (partition by series_id, observed_at order by row_key rows between unbounded preceding and current row)
     - 1 as take,
-  line = max(line) filter (outcome in ('new', 'revised', 'withdrawn'))
+  row_key = max(row_key) filter (outcome in ('new', 'revised', 'withdrawn'))
     over (partition by series_id, observed_at) as is_last
 from decided
 
@@ -185,7 +185,7 @@ from intake_step
 -- name: intake_refuse_steps
 -- The rows that the settlement refuses join those that could not be read.
 insert into intake_refusal
-select line, outcome, null, null
+select row_key, outcome, null, null
 from intake_step
 where outcome in ('several_values', 'no_value')
 
@@ -207,10 +207,10 @@ limit 1
 
 -- name: intake_first_refused
 -- The first refused rows of an intake, to show.
-select line, text, reason
+select line, text, reason, cell
 from base.refused_row
 where intake_id = ? and run_from = ?
-order by line
+order by line, cell
 limit 20
 
 -- name: intake_late_intakes
@@ -228,7 +228,7 @@ select name
 from base.refused_row
 where intake_id = ? and reason = 'unknown_series' and run_to is null
 group by name
-order by min(line)
+order by min((line, cell))
 
 -- name: intake_close_late
 -- The rows of one intake that were taken up, or that are refused anew for another reason.

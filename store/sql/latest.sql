@@ -5,8 +5,8 @@ select l.* exclude (run_from, run_to) from base.latest l where l.run_to is null
 -- name: find_headlines
 -- The last observation of each asked series.
 create or replace temp table headline as
-select a.series_id, any_value(a.lookback) as lookback, any_value(t.sign) as sign, max(o.observed_at) as observed_at,
-  arg_max(o.value, o.observed_at) as x
+select a.series_id, any_value(a.lookback) as lookback, any_value(t.sign) as sign, any_value(t.shift) as shift,
+  max(o.observed_at) as observed_at, arg_max(o.value, o.observed_at) as value
 from asked_headline a
 join base.observation o on o.series_id = a.series_id and o.run_to is null
 join base.setting t on t.series_id = a.series_id and t.run_to is null

@@ -22,3 +22,19 @@ from base.observation o
 join base.setting t on t.series_id = o.series_id and t.run_to is null
 where o.run_to is null and o.series_id in (select unnest($series::integer[]))
 order by o.series_id, o.observed_at
+
+-- name: weekday_series_on_elapsed_time
+-- Planned series under act365 whose last 250 observations all fall on weekdays.
+select s.series
+from base.setting t
+join base.series s on s.series_id = t.series_id
+where t.run_to is null and t.planned and t.clock = 'act365' and (
+  select count(*) = 250 and max(isodow(q.observed_at)) <= 5
+  from (
+    select timezone(t.time_zone, timezone('UTC', o.observed_at)) as observed_at
+    from base.observation o
+    where o.series_id = t.series_id and o.run_to is null
+    order by o.observed_at desc
+    limit 250
+  ) q)
+order by s.series_id

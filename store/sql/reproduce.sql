@@ -32,10 +32,14 @@ from base.{table} b
 left join fresh f on f.series_id = b.series_id and f.lookback = b.lookback and f.window_end = b.window_end
 where b.run_from = $run and b.revision = $revision
 
+-- name: apart
+-- How far apart a number came out, as a share of what was stored.
+coalesce(abs(f.{column} - b.{column}) / nullif(abs(b.{column}), 0), 'infinity'::double)
+
 -- name: worst_again
 -- Where one column came out most differently.
 select s.series, b.lookback, b.window_end, b.{column}, f.{column},
-  coalesce(abs(f.{column} - b.{column}) / nullif(abs(b.{column}), 0), 'infinity'::double) as apart
+  {apart} as apart
 from base.{table} b
 join base.series s on s.series_id = b.series_id
 left join fresh f on f.series_id = b.series_id and f.lookback = b.lookback and f.window_end = b.window_end

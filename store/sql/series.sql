@@ -16,3 +16,8 @@ values (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)
 -- name: aliases
 -- The names in files that mean a series of another name.
 select a.name, a.series_id from base.alias a where a.run_to is null order by a.name
+
+-- name: first_free_series
+-- The next series' number; that of a forgotten series, which old digests name, is never given again.
+select 1 + greatest(
+  (select coalesce(max(s.series_id), 0) from base.series s), (select coalesce(max(l.series_id), 0) from base.leaf l))

@@ -36,6 +36,12 @@ where m.database_name = current_database() and not m.internal
 -- Every digest that was stored.
 select l.run_id, l.table_name, l.series_id, l.migration, l.rows_in, l.rows_closed, l.sha256 from base.leaf l
 
+-- name: forgotten_leaves
+-- What forget left of leaves, the last word last.
+select f.run_id, f.table_name, f.series_id, f.rows_in, f.rows_closed, f.sha256
+from base.forgotten_leaf f
+order by f.run_from
+
 -- name: runs_out_of_order
 -- Runs whose number is not one more, or whose moment is not later, than that of the run before.
 select q.run_id

@@ -458,3 +458,12 @@ def test_unit_of_time(x, factor):
     for column in OU.columns:
         expected = fit.columns[column.name] * factor ** powers[column.unit]
         np.testing.assert_allclose(slow.columns[column.name], expected, rtol=ROUNDING, err_msg=column.name)
+
+
+@pytest.mark.parametrize("front", [[], [1.0, 2.0, 3.0], [99.5, 100.25, 101.0], [4.0] * 5])
+def test_no_memory_at_all_is_alternating_wherever_the_window_lies_in_its_block(front):
+    """The covariance of neighbours is exactly zero here, and the sign of its rounding must not decide."""
+    window = [105.25, 103.25, 107.0, 104.0, 103.25, 101.5, 103.5]
+    fit = rolling("ou", np.array(front + window), 1 / 252, 6)
+    assert fit.status[-1] == Status.ALTERNATING
+    assert np.isnan(fit.kappa[-1])

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from scipy.signal import lfilter
 
-from driftbook.estimators import MODELS, Fit, Status, aligned_start, rolling
+from driftbook.estimators import MODELS, Fit, Status, aligned_start, rolling, unequal
 
 DT = 1 / 252
 
@@ -160,7 +160,6 @@ def test_steps_that_differ_by_rounding_count_as_equal():
         (np.zeros(20), np.inf, 5, "dt must be positive and finite"),
         (np.zeros((2, 20)), [1.0, 0.0], 5, "dt must be positive and finite"),
         (np.zeros((2, 20)), [1.0, 1.0, 1.0], 5, r"dt must have shape \(\), \(2,\) or \(2, 19\), got \(3,\)"),
-        (np.zeros(20), np.r_[np.ones(18), 2.0], 5, "unequal steps, which are not fitted by this model yet"),
         (np.zeros(20), 1.0, 0, "lookback must be 1 or more, got 0"),
         (np.float64(3), 1.0, 5, "x must have a time axis"),
     ],
@@ -187,7 +186,7 @@ def test_threads_below_one_raise():
 
 
 def test_unknown_model_names_those_there_are():
-    with pytest.raises(ValueError, match="no model is called 'uo'; there are ou"):
+    with pytest.raises(ValueError, match="no model is called 'uo'; there are abm, gbm, ou, exp_ou"):
         rolling("uo", np.zeros(20), 1.0, 5)
 
 
@@ -228,3 +227,97 @@ def test_columns_are_attributes():
 def test_a_fit_survives_a_trip_to_another_process():
     fit = rolling("ou", ar1(0.9, 60, seed=12), DT, 30)
     assert_same_bits(pickle.loads(pickle.dumps(fit)), fit)
+
+
+# Windows from some on, and unequal steps: of every model.
+
+STEPS = {
+    "equal": lambda n: np.full(n, DT),
+    "calendar": lambda n: np.random.default_rng(20).choice([1, 1, 1, 1, 3, 4], n) / 365,
+    "irregular": lambda n: np.random.default_rng(21).exponential(DT, n) + 1e-6,
+    "all in turn": lambda n: np.where(
+        np.arange(n) % 300 < 100,
+        1 / 365,
+        np.where(np.arange(n) % 300 < 200, STEPS["calendar"](n), STEPS["irregular"](n)),
+    ),
+}
+ALL = [(model, steps) for model in MODELS for steps in STEPS]
+
+
+def prices(n_obs, rows=None, *, seed=30):
+    shape = n_obs if rows is None else (rows, n_obs)
+    return 50 * np.exp(0.01 * np.random.default_rng(seed).standard_normal(shape).cumsum(axis=-1))
+
+
+@pytest.mark.parametrize("lookback", [6, 50, 333])
+@pytest.mark.parametrize(("model", "steps"), ALL)
+def test_windows_from_first_on_have_the_same_bits(model, steps, lookback):
+    x, dt = prices(701, 3), np.tile(STEPS[steps](700), (3, 1))
+    whole = rolling(model, x, dt, lookback)
+    for first in {0, 1, lookback - 1, lookback, 2 * lookback + 1, 700 - lookback}:
+        assert_same_bits(rolling(model, x, dt, lookback, first=first), part(whole, np.s_[:, first:]))
+
+
+def test_first_beyond_the_last_window_leaves_none():
+    for first in (51, 52, 1000):
+        fit = rolling("ou", prices(101), DT, 50, first=first)
+        assert fit.kappa.shape == fit.status.shape == (0,)
+    assert rolling("ou", prices(101), DT, 50, first=50).kappa.shape == (1,)
+    assert rolling("ou", prices(3), DT, 2, first=0).status.tolist() == [Status.TOO_SHORT]
+
+
+def test_first_below_zero_raises():
+    with pytest.raises(ValueError, match="first must be 0 or more, got -1"):
+        rolling("ou", prices(101), DT, 50, first=-1)
+    with pytest.raises(TypeError):
+        rolling("ou", prices(101), DT, 50, first=1.0)  # type: ignore[arg-type]
+
+
+@pytest.mark.parametrize("lookback", [7, 60, 250])
+@pytest.mark.parametrize(("model", "steps"), ALL)
+def test_bits_of_slices_and_of_longer_series(model, steps, lookback):
+    x, dt = prices(900), STEPS[steps](899)
+    whole = rolling(model, x, dt, lookback)
+    for first in {lookback, lookback + 1, 500}:
+        start = aligned_start(first, lookback)
+        assert_same_bits(rolling(model, x[start:], dt[start:], lookback), part(whole, slice(start, None)))
+    for end in {lookback + 3, 2 * lookback, 2 * lookback + 1, 700}:
+        assert_same_bits(rolling(model, x[:end], dt[: end - 1], lookback), part(whole, slice(0, end - lookback)))
+
+
+@pytest.mark.parametrize("lookback", [6, 60])
+@pytest.mark.parametrize("model", MODELS)
+def test_rows_of_other_steps_do_not_influence_each_other_by_a_bit(model, lookback, monkeypatch):
+    x = strange_rows()[:, :600] + 100
+    dt = np.array([STEPS[name](599) for name in (*STEPS, *STEPS)] + [np.full(599, 1.0)])
+    together = rolling(model, x, dt, lookback)
+    for row in range(len(x)):
+        assert_same_bits(rolling(model, x[row], dt[row], lookback), part(together, row))
+    assert_same_bits(rolling(model, x[::-1], dt[::-1], lookback), part(together, np.s_[::-1]))
+    assert_same_bits(rolling(model, x, dt, lookback, threads=3), together)
+    monkeypatch.setattr("driftbook.estimators.batches.PIECE", 500)
+    monkeypatch.setattr(unequal, "AT_ONCE", 1)
+    assert_same_bits(rolling(model, x, dt, lookback), together)
+
+
+@pytest.mark.parametrize(("model", "steps"), ALL)
+def test_a_missing_value_spoils_only_windows_that_hold_it_at_any_steps(model, steps):
+    x, dt = prices(500), STEPS[steps](499)
+    clean = rolling(model, x, dt, 60)
+    x[250] = np.nan
+    fit = rolling(model, x, dt, 60)
+    holds = np.zeros(440, dtype=bool)
+    holds[190:251] = True
+    assert np.array_equal(fit.status == Status.OUT_OF_RANGE, holds)
+    other_segments = np.r_[0:120, 300:440]
+    assert_same_bits(part(fit, other_segments), part(clean, other_segments))
+
+
+@pytest.mark.parametrize("model", MODELS)
+def test_equal_steps_as_arrays_are_one_step(model):
+    x = prices(400)
+    assert_same_bits(rolling(model, x, np.full(399, DT), 60), rolling(model, x, DT, 60))
+    mixed = np.full(399, DT)
+    mixed[300:] = 2 * DT  # windows of equal steps beside others
+    fit, equal = rolling(model, x, mixed, 60), rolling(model, x, DT, 60)
+    assert_same_bits(part(fit, slice(0, 240)), part(equal, slice(0, 240)))

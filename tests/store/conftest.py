@@ -17,11 +17,18 @@ sys.path.append(str(Path(__file__).parent))
 from made_series import days, plan_text, wave
 
 
-@pytest.fixture
-def book(tmp_path: Path) -> Path:
-    """An empty book."""
-    path = tmp_path / "desk.duckdb"
+@pytest.fixture(scope="session")
+def _empty(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    path = tmp_path_factory.mktemp("empty") / "desk.duckdb"
     create(path)
+    return path
+
+
+@pytest.fixture
+def book(tmp_path: Path, _empty: Path) -> Path:
+    """An empty book; a plain copy is a valid book."""
+    path = tmp_path / "desk.duckdb"
+    shutil.copyfile(_empty, path)
     return path
 
 
@@ -52,7 +59,8 @@ def _history(tmp_path_factory: pytest.TempPathFactory) -> Path:
         work.refresh()
     with store.writing(path, at="2026-01-09T08:00") as work:
         work.ingest(days("peg", wave(12, 1.0), 3), adding, name="fifth")
-        work.refresh(plan_text({"pellets_fob": [8], "peg": [6, 8]}, models=tuple(MODELS), also_called={"peg": "PEG FIX"}), yes=True)
+        second = plan_text({"pellets_fob": [8], "peg": [6, 8]}, models=tuple(MODELS), also_called={"peg": "PEG FIX"})
+        work.refresh(second, yes=True)
     with store.writing(path) as work:
         work.ingest(days("pellets_fob", wave(1, first=32), 32), name="sixth")
         work.refresh()

@@ -10,11 +10,46 @@ import json
 from collections import Counter
 from dataclasses import dataclass, field
 from datetime import UTC, datetime, timedelta
+from functools import cache
 from statistics import median
+from tempfile import TemporaryDirectory
 from zoneinfo import ZoneInfo
+
+import duckdb
+
+from driftbook.store import migrate
 
 SPACE = " \t\r\n\v\f"
 NUMBERS = ("value", "open", "high", "low", "volume")
+AFTER_ONE_LINE = 100  # the most lines of one row
+
+
+@cache
+def _template():
+    folder = TemporaryDirectory()
+    with duckdb.connect(f"{folder.name}/empty.duckdb") as con:
+        migrate.apply_pending(con)
+    return folder
+
+
+def empty_book() -> duckdb.DuckDBPyConnection:
+    """An empty book in memory, copied: migrating anew would take most of a test's time."""
+    con = duckdb.connect()
+    con.execute(f"attach '{_template().name}/empty.duckdb' as template (read_only)")
+    con.execute("copy from database template to memory")
+    con.execute("detach template")
+    return con
+
+
+@dataclass
+class NaiveOptions:
+    """How a delivery is read."""
+
+    zone: str | None = None
+    dates: str | None = None
+    layout: str = "long"
+    decimal: str = "."
+    blank: tuple[str, ...] = ()
 
 
 @dataclass
@@ -31,9 +66,10 @@ class NaiveBook:
         self.zones[name] = zone
         self.same_time[name] = same_time
 
-    def take_in(self, data: bytes, run: int, *, zone=None, dates=None, add_series=False):
+    def take_in(self, data: bytes, run: int, *, add_series=False, **options):
+        told = NaiveOptions(**options)
         intake = len(self.intakes) + 1
-        rows = list(read_lines(data))
+        rows = list(read_rows(data, told))
         if add_series:
             new = []
             for row in rows:
@@ -43,8 +79,8 @@ class NaiveBook:
             for name in new:
                 self.add(name)
             self.take_up(new, run)
-        counts = self._bring_in(rows, intake, run, zone, dates)
-        self.intakes.append({"read": len(rows), **counts, "zone": zone, "dates": dates})
+        counts = self._bring_in(rows, intake, run, told)
+        self.intakes.append({"read": len(rows), **counts, "told": told})
 
     def take_up(self, names, run):
         taken = 0
@@ -58,29 +94,34 @@ class NaiveBook:
                 and row["name"] in names
             ]
             rows = [
-                {"line": row["line"], "text": row["text"], "fields": {"series": row["name"], **row["said"]}}
-                for row in sorted(waiting, key=lambda row: row["line"])
+                {
+                    "line": row["line"],
+                    "cell": row["cell"],
+                    "text": row["text"],
+                    "fields": {"series": row["name"], **row["said"]},
+                }
+                for row in sorted(waiting, key=lambda row: (row["line"], row["cell"]))
             ]
             for row in waiting:
                 row["run_to"] = run
-            counts = self._bring_in(rows, number, run, intake["zone"], intake["dates"])
+            counts = self._bring_in(rows, number, run, intake["told"])
             taken += len(rows) - counts["refused"]
         return taken
 
-    def _bring_in(self, rows, intake, run, zone, dates):
+    def _bring_in(self, rows, intake, run, told):
         groups: dict[tuple, list] = {}
         before = len(self.refused)
         for row in rows:
             reason, said = row.get("reason"), None
             if reason is None:
-                reason, said = self._judge(row["fields"], zone, dates)
+                reason, said = self._judge(row["fields"], told)
             if reason is None:
                 groups.setdefault((row["fields"]["series"], said["at"]), []).append((row, said["numbers"]))
             else:
                 self._refuse(row, reason, intake, run)
         outcomes: Counter = Counter()
-        for (name, at), told in groups.items():
-            self._settle(name, at, told, intake, run, outcomes)
+        for (name, at), arrived in groups.items():
+            self._settle(name, at, arrived, intake, run, outcomes)
         return {
             "new": outcomes["new"],
             "revised": outcomes["revised"],
@@ -88,7 +129,7 @@ class NaiveBook:
             "refused": len(self.refused) - before,
         }
 
-    def _judge(self, fields, zone, dates):
+    def _judge(self, fields, told):
         name = fields["series"]
         if not name:
             return "no_series", None
@@ -96,12 +137,12 @@ class NaiveBook:
             return name_fault(name) or "unknown_series", None
         if not fields["time"]:
             return "no_time", None
-        at = read_time(fields["time"], zone or self.zones[name], dates)
+        at = read_time(fields["time"], told.zone or self.zones[name], told.dates)
         if isinstance(at, str):
             return at, None
         numbers = []
         for role in NUMBERS:
-            number = read_number(fields[role]) if fields[role] else None
+            number = read_number(fields[role], told.decimal) if fields[role] else None
             if isinstance(number, str):
                 return number, None
             numbers.append(number)
@@ -114,6 +155,7 @@ class NaiveBook:
             {
                 "intake": intake,
                 "line": row["line"],
+                "cell": row["cell"],
                 "text": row["text"],
                 "reason": reason,
                 "name": row["fields"]["series"] if waits else None,
@@ -179,36 +221,94 @@ def name_fault(name):
     return "bad_name" if any(ord(letter) < 32 or 127 <= ord(letter) < 160 for letter in name) else None
 
 
-def read_lines(data: bytes):
-    """The rows after the header as {line, text, fields} or {line, text, reason}."""
-    header = None
-    for line, raw in enumerate(data.split(b"\n"), start=1):
-        try:
-            text, is_utf8 = raw.decode(), True
-        except UnicodeDecodeError:
-            text, is_utf8 = raw.decode(errors="backslashreplace"), False
-        text = text.rstrip("\r\n")
-        if is_utf8 and not text.strip(SPACE):
+def read_rows(data: bytes, told: NaiveOptions):
+    """The rows after the header as {line, cell, text, fields} or {line, cell, text, reason}."""
+    lines = physical_lines(data)
+    header_at, delimiter, header = read_header(lines)
+    skipped = 0
+    for at in range(header_at + 1, len(lines)):
+        if skipped:
+            skipped -= 1
             continue
-        parts = split(text)
-        if header is None:
-            header = parts
-        elif not is_utf8:
-            yield {"line": line, "text": text, "reason": "not_utf8"}
-        elif parts is None:
-            yield {"line": line, "text": text, "reason": "unfinished_quote"}
+        text, is_utf8 = lines[at]
+        here = {"line": at + 1, "cell": 0, "text": text.rstrip("\r\n")}
+        if not is_utf8:
+            yield {**here, "reason": "not_utf8"}
+            continue
+        if not text.strip(SPACE):
+            continue
+        parts = split(text, delimiter)
+        if parts == "open" and text.count('"') % 2:
+            text, skipped = whole_row(lines[at : at + AFTER_ONE_LINE], delimiter, len(header))
+            here["text"] = text.rstrip("\r\n")
+            parts = split(text, delimiter)
+        if isinstance(parts, str):
+            yield {**here, "reason": "unfinished_quote"}
         elif len(parts) != len(header):
-            yield {"line": line, "text": text, "reason": "wrong_field_count"}
+            yield {**here, "reason": "wrong_field_count"}
         else:
-            fields = dict.fromkeys(("series", "time", *NUMBERS)) | dict(zip(header, parts, strict=True))
-            yield {"line": line, "text": text, "fields": fields}
+            yield from cells(header, parts, here, told)
 
 
-def split(text):
-    """The fields of a line by walking over it; None where a quote does not end its field."""
+def physical_lines(data: bytes):
+    """(text with its end, whether it is UTF-8) of each line."""
+    if data[:2] in (b"\xff\xfe", b"\xfe\xff"):
+        whole = len(data) - len(data) % 2
+        text = data[:whole].decode("utf-16", "surrogatepass")
+        data = text.encode("utf-8", "surrogatepass") + (b"\xff" if whole < len(data) else b"")
+    found = []
+    for raw in data.removeprefix(b"\xef\xbb\xbf").splitlines(keepends=True):
+        try:
+            found.append((raw.decode(), True))
+        except UnicodeDecodeError:
+            found.append((raw.decode(errors="backslashreplace"), False))
+    return found
+
+
+def read_header(lines):
+    """The place of the header's line, the delimiter and the columns."""
+    at = next(at for at, (text, _) in enumerate(lines) if text.strip(SPACE))
+    text = lines[at][0]
+    delimiter = max(",;\t|", key=text.count)
+    return at, delimiter, split(text, delimiter)
+
+
+def whole_row(lines, delimiter, width):
+    """The text of a row whose first line ends inside a quoted field, and how many lines more it takes."""
+    text = ""
+    for more, (line, is_utf8) in enumerate(lines):
+        text += line
+        parts = split(text, delimiter)
+        if not is_utf8 or parts == "misplaced":
+            break
+        if parts != "open":
+            return (text, more) if len(parts) == width else (lines[0][0], 0)
+    return lines[0][0], 0
+
+
+def cells(header, parts, here, told):
+    """One row of a long line, one for each cell of a wide one."""
+    if told.layout == "long":
+        fields = dict.fromkeys(("series", "time", *NUMBERS)) | dict(zip(header, parts, strict=True))
+        for role in NUMBERS:
+            if fields[role] in told.blank:
+                fields[role] = ""
+        yield {**here, "fields": fields}
+        return
+    time = parts[header.index("time")]
+    for cell, (name, said) in enumerate(zip(header, parts, strict=True), start=1):
+        if name != "time" and said and said not in told.blank:
+            fields = dict.fromkeys(NUMBERS) | {"series": name, "time": time, "value": said}
+            text = here["text"] if len(here["text"]) <= 200 else here["text"][:200] + "…"
+            yield {**here, "cell": cell, "text": text, "fields": fields}
+
+
+def split(text, delimiter):
+    """The fields of a row by walking over it; `open` where a quote is open at its end, `misplaced` where one ends
+    before its field does."""
     fields, field_text, state = [], "", "start"
-    for letter in text + ",":
-        if state == "start" and letter in SPACE:
+    for letter in text.strip("\r\n") + delimiter:
+        if state == "start" and letter in SPACE and letter != delimiter:
             continue
         if state == "start" and letter == '"':
             state = "quoted"
@@ -216,19 +316,21 @@ def split(text):
             state, field_text = ("maybe", field_text) if letter == '"' else ("quoted", field_text + letter)
         elif state == "maybe" and letter == '"':
             state, field_text = "quoted", field_text + '"'
-        elif letter == ",":
+        elif letter == delimiter:
             fields.append(field_text.strip(SPACE))
             field_text, state = "", "start"
         elif state in ("maybe", "after"):
             if letter not in SPACE:
-                return None
+                return "misplaced"
             state = "after"
         else:
             state, field_text = "plain", field_text + letter
-    return fields if state == "start" else None
+    return fields if state == "start" else "open"
 
 
-def read_number(text):
+def read_number(text, decimal="."):
+    if decimal == ",":
+        text = "not a number" if "." in text else text.replace(",", ".")
     if text.lstrip("+-").lower() in ("inf", "infinity", "nan") and len(text) - len(text.lstrip("+-")) <= 1:
         return "not_finite"
     if not text.isascii() or set(text) - set("0123456789+-.eE"):
@@ -336,7 +438,7 @@ def as_book_shows(book: NaiveBook):
         (o["series"], o["at"], *o["numbers"], o["intake"], o["take"], o["run_from"], o["run_to"] or 0)
         for o in book.observations
     ]
-    keys = ("intake", "run_from", "line", "text", "reason")
+    keys = ("intake", "run_from", "line", "cell", "text", "reason")
     refused = [
         (*(r[key] for key in keys), r["name"] or "", json.dumps(r["said"]), r["run_to"] or 0) for r in book.refused
     ]
@@ -351,11 +453,11 @@ def of_book(con):
         " from base.observation o join base.series s using (series_id)"
     ).fetchall()
     refused = con.execute(
-        "select intake_id, run_from, line, text, reason, coalesce(name, ''), fields, coalesce(run_to, 0)"
+        "select intake_id, run_from, line, cell, text, reason, coalesce(name, ''), fields, coalesce(run_to, 0)"
         " from base.refused_row"
     ).fetchall()
     counts = con.execute(
         "select rows_read, rows_new, rows_revised, rows_same, rows_refused from base.intake order by intake_id"
     ).fetchall()
-    refused = [(*row[:6], json.dumps(json.loads(row[6]) if row[6] else None), row[7]) for row in refused]
+    refused = [(*row[:7], json.dumps(json.loads(row[7]) if row[7] else None), row[8]) for row in refused]
     return sorted(observations, key=str), sorted(refused, key=str), counts

@@ -29,7 +29,7 @@ KEYS = {
     "model_revision": ["model", "run_from"],
     "alias": ["name", "run_from", "series_id"],
     "latest": ["series_id", "run_from"],
-    **dict.fromkeys(MODELS, ["series_id", "lookback", "window_end", "run_from"]),
+    **{model: ["series_id", "lookback", "window_end", "run_from"] for model in MODELS},
 }
 WITHOUT_SERIES = {"intake", "refused_row", "plan", "model_revision"}
 NEVER_CLOSED = {"series", "intake"}

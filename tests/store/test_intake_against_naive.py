@@ -3,14 +3,14 @@
 from contextlib import closing
 from datetime import UTC, datetime, timedelta
 
-import duckdb
 import pytest
 from hypothesis import HealthCheck, example, given, settings
 from hypothesis import strategies as st
-from naive_intake import NaiveBook, as_book_shows, of_book
+from naive_intake import NaiveBook, as_book_shows, empty_book, of_book
 
-from driftbook.store import intake, migrate
+from driftbook.store import intake
 from driftbook.store.intake import reading
+from driftbook.store.intake.delimited import DelimitedText
 from driftbook.store.series import Setting, Stamp, add_series
 
 KNOWN = {
@@ -33,6 +33,8 @@ NAMES = (
     "\x07bell",
     "x" * 201,
     '"gas',
+    '"gas\n"',
+    '5" gas',
 )
 TIMES = (
     "2024-01-02",
@@ -47,6 +49,10 @@ TIMES = (
     "2024-06-01 12:00:00.123456789",
     "1960-06-01 12:00",
     "2/1/2024",
+    "02.01.2024 9:05",
+    "2-1-24 09:05:07",
+    "31/2/2024",
+    "2024/01/02 25:00",
     "13/1/2024",
     "1/13/2024 09:30",
     "2/1/85",
@@ -81,7 +87,9 @@ NUMBERS = (
     "0x1f",
     "+-1",
     "1,5",
+    '"1,5"',
     "n/a",
+    " NA ",
     '"2"',
     "١",
 )
@@ -101,31 +109,60 @@ def line(draw, width):
 
 
 DIRT = st.sampled_from(
-    (b"", b"  \t", b",,", b"gas", b"gas,2024-01-02", b"gas,2024-01-02,1,2,3,4", b"g\xe4s,2024-01-02,1", b"\x00")
+    (
+        b"",
+        b"  \t",
+        b",,",
+        b'gas,"2024-01-02',
+        b'1"',
+        b'"\r"',
+        b"1,\r2,",
+        b"gas",
+        b"gas,2024-01-02",
+        b"gas,2024-01-02,1,2,3,4",
+        b"g\xe4s,2024-01-02,1",
+        b"\x00",
+    )
 )
+
+
+@st.composite
+def wide_line(draw, width):
+    """One line of a wide file."""
+    times = st.sampled_from(TIMES[:4]) | st.sampled_from(TIMES)
+    cells = st.sampled_from(NUMBERS[:4]) | st.sampled_from(NUMBERS)
+    return ",".join([draw(times), *(draw(cells) for _ in range(width - 1))]).encode()
 
 
 @st.composite
 def delivery(draw):
     """A whole file with its options."""
+    layout = draw(st.sampled_from(("long", "long", "wide")))
     width = draw(st.sampled_from((3, 3, 5)))
     header = ("series", "time", "value", "open", "volume")[:width]
+    if layout == "wide":
+        header = ("time", "gas", "new", "mid", "")[:width]
     if draw(st.booleans()):  # a quote early on changes how the bulk reading splits
-        header = ('"series"', *header[1:])
-    lines = draw(st.lists(st.one_of(line(width), line(width), line(width), line(width), DIRT), max_size=14))
-    end = draw(st.sampled_from((b"\n", b"\r\n")))
+        header = (f'"{header[0]}"', *header[1:])
+    if draw(st.booleans()):  # and so does a space
+        header = (*header[:-1], f" {header[-1]} ")
+    one = line(width) if layout == "long" else wide_line(width)
+    lines = draw(st.lists(st.one_of(one, one, one, one, DIRT), max_size=14))
+    end = draw(st.sampled_from((b"\n", b"\r\n", b"\r")))
     data = end.join([",".join(header).encode(), *lines]) + draw(st.sampled_from((b"", end)))
     return data, {
+        "layout": layout,
         "zone": draw(st.sampled_from((None, None, "Europe/Berlin", "UTC"))),
         "dates": draw(st.sampled_from((None, None, "day-first", "month-first"))),
+        "decimal": draw(st.sampled_from((".", ".", ","))),
+        "blank": draw(st.sampled_from(((), (), ("NA", "n/a", "1")))),
         "add_series": draw(st.booleans()),
     }
 
 
 def take_all(deliveries, folder):
     """A book that took the deliveries, one a run; the name that is unknown at first is made known at the end."""
-    con = duckdb.connect()
-    migrate.apply_pending(con)
+    con = empty_book()
     add_series(con, dict(KNOWN), stamp(1))
     path = folder / "delivery.csv"
     for run, (data, options) in enumerate(deliveries, start=1):
@@ -155,7 +192,7 @@ def stamp(run):
     return Stamp(run, datetime(2026, 1, 1, tzinfo=UTC) + timedelta(days=run))
 
 
-@settings(max_examples=60, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@settings(max_examples=50, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(deliveries=st.lists(delivery(), min_size=1, max_size=3))
 @example(deliveries=[(b"series,time,value\ngas,2024-01-02,1\ngas,2024-01-02,\n", {"add_series": False})])
 def test_the_book_after_any_deliveries_is_what_a_naive_reading_gives(deliveries, tmp_path):
@@ -163,25 +200,59 @@ def test_the_book_after_any_deliveries_is_what_a_naive_reading_gives(deliveries,
         assert of_book(con) == as_book_shows(take_naively(deliveries))
 
 
-@settings(max_examples=25, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@settings(max_examples=20, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(deliveries=st.lists(delivery(), min_size=1, max_size=2))
 def test_the_careful_path_alone_gives_the_same(deliveries, tmp_path):
-    bulk = reading.over
+    in_bulk = DelimitedText.lines
+
+    def with_care(self, con):
+        sql, values = in_bulk(self, con)
+        return f"select * replace (false as is_plain) from ({sql})", values
+
     with pytest.MonkeyPatch.context() as patch:
-        patch.setattr(
-            reading, "over", lambda name, sql: bulk(name, f"select * replace (false as is_plain) from ({sql})")
-        )
+        patch.setattr(DelimitedText, "lines", with_care)
         with closing(take_all(deliveries, tmp_path)) as con:
             assert con.execute("select count(*) from base.intake").fetchall() == [(len(deliveries),)]
             assert of_book(con) == as_book_shows(take_naively(deliveries))
 
 
-def test_a_plain_file_is_read_in_bulk_without_a_careful_look(tmp_path, monkeypatch):
+@pytest.fixture
+def only_in_bulk(monkeypatch):
     """The other tests would not notice if everything went the slow way."""
     monkeypatch.setattr(reading, "_look_at_odd", lambda *_: pytest.fail("a plain row was looked at one by one"))
-    times = ("2024-01-02", "20240103", "2024-01-04T10:00", "2024-01-05T10:00:00.5Z", "2024-01-06 10:00+01:00")
-    lines = [f"{name},{time},-1.5e3,,2" for name in KNOWN for time in times]
-    data = "\r\n".join(["series,time,value,open,volume", *lines, ""]).encode()
-    deliveries = [(data, {})]
+
+
+PLAIN = {
+    "usual": ({}, ("2024-01-02", "20240103", "2024-01-04T10:00", "2024-01-05T10:00:00.5Z", "2024-01-06 10:00+01:00")),
+    "slashes": ({}, ("2024/01/02", "2024/1/3", "2024/1/4 9:30", "2024/01/05 09:30:15")),
+    "day first": (
+        {"dates": "day-first"},
+        ("2/1/2024", "03/01/24", "4.1.2024 9:30", "05-01-2024 09:30:15", "6/1/69", "7/1/68", "2024-01-08"),
+    ),
+    "month first": ({"dates": "month-first"}, ("1/2/2024", "01/03/24", "1.4.2024 9:30", "1-13-2024 23:59:59")),
+    "padded": ({}, (" 2024-01-02 ", "2024-01-03 09:30  ", "2024-01-04T10:00Z ")),
+}
+
+
+@pytest.mark.parametrize("kind", PLAIN)
+@pytest.mark.parametrize("layout", ["long", "wide"])
+def test_a_plain_file_is_read_in_bulk_without_a_careful_look(tmp_path, only_in_bulk, kind, layout):
+    options, times = PLAIN[kind]
+    if layout == "long":
+        lines = ["series,time,value,open,volume", *(f"{name},{time},-1.5e3,,2" for name in KNOWN for time in times)]
+    else:
+        lines = [f"time,{','.join(KNOWN)},new", *(f"{time},1,,-1.5e3," for time in times)]
+    deliveries = [("\r\n".join([*lines, "", ""]).encode(), {**options, "layout": layout})]
+    with closing(take_all(deliveries, tmp_path)) as con:
+        assert con.execute("select rows_new from base.intake").fetchall() == [
+            (len(times) * (3 if layout == "long" else 2),)
+        ]
+        assert of_book(con) == as_book_shows(take_naively(deliveries))
+
+
+def test_commas_blanks_and_withdrawals_are_read_in_bulk(tmp_path, only_in_bulk):
+    first = b"series;time;value;open\ngas;2024-01-01;1,5;NA\ngas;2024-01-02;-2,5e1;\nmid;2024-01-02; NA;2\n"
+    second = b"series;time;value;open\ngas;2024-01-01;;1\ngas;2024-01-02;NA;"
+    deliveries = [(data, {"decimal": ",", "blank": ("NA",)}) for data in (first, second)]
     with closing(take_all(deliveries, tmp_path)) as con:
         assert of_book(con) == as_book_shows(take_naively(deliveries))

@@ -1,5 +1,6 @@
 """How one row is read: the accepted forms of times, numbers and lines, and the reason for each refusal."""
 
+import re
 from contextlib import closing
 from datetime import UTC, datetime, time, timedelta
 from zoneinfo import ZoneInfo
@@ -8,11 +9,13 @@ import duckdb
 import pytest
 from hypothesis import example, given, settings
 from hypothesis import strategies as st
+from naive_intake import empty_book
 
-from driftbook.store import intake, migrate
+from driftbook.store import intake
 from driftbook.store.errors import UsageError
-from driftbook.store.intake.delimited import split_line
+from driftbook.store.intake.forms import Form, plain_form
 from driftbook.store.intake.numerals import read_number
+from driftbook.store.intake.quoting import Broken, split_line
 from driftbook.store.intake.reasons import Reason
 from driftbook.store.intake.times import read_time
 from driftbook.store.intake.zones import plain_days
@@ -24,8 +27,7 @@ STAMP = Stamp(1, datetime(2026, 1, 1, tzinfo=UTC))
 
 @pytest.fixture
 def con():
-    with closing(duckdb.connect()) as con:
-        migrate.apply_pending(con)
+    with closing(empty_book()) as con:
         zones = {"gas": "UTC", "spot": "Europe/Berlin"}
         add_series(con, {name: Setting(time_zone=zone) for name, zone in zones.items()}, STAMP)
         yield con
@@ -133,6 +135,57 @@ def test_dates_are_read_as_told(take, con, text, dates, meant):
     assert con.execute("select observed_at from base.observation").fetchall() == [(meant,)]
 
 
+FORMS = ("%d.%m.%Y", "%d/%m/%y %H:%M", "%Y%m%d", "%d%b%Y", "%H:%M:%S %B %d, %Y", "%y%m%d", "%Y-%m", "%m/%d/%Y %H:%M:%S")
+LETTERS = "0123456789./: ,JanMrchAug-"
+
+
+@pytest.fixture(scope="module")
+def told_time():
+    with closing(duckdb.connect()) as con:
+        con.execute(query("intake_told_time"))
+        yield lambda text, form: con.execute(
+            "select intake_told_time($1, $2, $3)", [text, form, plain_form(form).unpadded]
+        ).fetchall()[0][0]
+
+
+@settings(max_examples=300, deadline=None)
+@given(
+    form=st.sampled_from(FORMS),
+    moment=st.datetimes(datetime(1, 1, 1), datetime(9999, 12, 31)),
+    changes=st.lists(st.tuples(st.integers(0, 20), st.sampled_from(["", *LETTERS])), max_size=2),
+    unpadded=st.booleans(),
+)
+@example(form="%y%m%d", moment=datetime(1969, 1, 1), changes=[], unpadded=False)
+@example(form="%y%m%d", moment=datetime(2068, 1, 1), changes=[], unpadded=False)
+@example(form="%Y-%m", moment=datetime(1, 2, 1), changes=[], unpadded=False)
+def test_a_told_form_is_read_in_bulk_only_as_the_careful_reading_reads_it(told_time, form, moment, changes, unpadded):
+    text = moment.strftime(form)
+    if unpadded:
+        text = re.sub(r"\b0(?=\d)", "", text)
+    for place, letter in changes:
+        text = text[:place] + letter + text[place + 1 :]
+    found = told_time(text, form)
+    assert found is None or found == read_time(text, "UTC", form)
+
+
+@pytest.mark.parametrize("form", FORMS)
+def test_a_told_form_written_as_it_says_is_read_in_bulk(told_time, form):
+    for moment in (datetime(2024, 1, 2), datetime(1999, 12, 31)):
+        text = moment.strftime(form)
+        assert told_time(text, form) == datetime.strptime(text, form)
+    assert plain_form(form).has_clock == (":" in form)
+    if plain_form(form).unpadded:
+        text = datetime(2024, 1, 1).strftime(plain_form(form).unpadded)
+        assert told_time(text, form) == datetime(2024, 1, 1)
+
+
+@pytest.mark.parametrize(
+    "form", ["%d.%m.%Y %z", "%Y-%j", "%I %p %d.%m.%Y", "%%%Y-%m-%d", "%Y-%m-%d %f", "%d.%m.%Y Jänner"]
+)
+def test_a_form_that_the_two_might_read_differently_is_not_read_in_bulk(form):
+    assert plain_form(form) == Form()
+
+
 def test_a_told_form_is_the_only_accepted_one(take):
     assert refusals(take("series,time,value\ngas,2024-01-02,1\n", dates="%y%m%d")) == [(2, "bad_time")]
 
@@ -220,6 +273,18 @@ def test_the_bulk_check_takes_no_number_that_the_careful_reading_refuses(checks,
     assert not is_plain or number == read_number(text.strip())
 
 
+@settings(max_examples=200, deadline=None)
+@given(text=st.text("0123456789+-.,eE_infa \t", max_size=8))
+@example(text="1,5")
+@example(text="1.5")
+@example(text="1,5,5")
+def test_the_bulk_check_of_decimal_commas_takes_no_number_that_the_careful_reading_refuses(checks, text):
+    checks.execute(query("intake_comma_numbers"))
+    sql = "select intake_is_plain_number($1, intake_number($1)), intake_number($1)"
+    is_plain, number = checks.execute(sql, [text]).fetchall()[0]
+    assert not is_plain or number == read_number(text.strip(), ",")
+
+
 def test_a_bad_bar_refuses_the_row_and_an_empty_one_is_no_harm(take, con):
     data = "series,time,value,open,high,low,volume\ngas,2024-01-02,1,,2,.5,\ngas,2024-01-03,1,x,2,.5,1\n"
     assert refusals(take(data)) == [(3, "not_a_number")]
@@ -271,8 +336,9 @@ def test_every_reason_has_a_sentence():
         ('"say ""x""" , c', ['say "x"', "c"]),
         ('5" pipe,c', ['5" pipe', "c"]),
         ('"",', ["", ""]),
-        ('"a', Reason.UNFINISHED_QUOTE),
-        ('"a"b,c', Reason.UNFINISHED_QUOTE),
+        ('"a\nb",c', ["a\nb", "c"]),
+        ('"a', Broken.OPEN),
+        ('"a"b,c', Broken.MISPLACED),
     ],
 )
 def test_a_line_is_split_by_its_quotes(text, fields):

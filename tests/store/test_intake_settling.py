@@ -3,11 +3,11 @@
 from contextlib import closing
 from datetime import UTC, datetime, timedelta
 
-import duckdb
 import polars as pl
 import pytest
+from naive_intake import empty_book
 
-from driftbook.store import intake, migrate
+from driftbook.store import intake
 from driftbook.store.errors import IntakeError
 from driftbook.store.series import Setting, Stamp, add_series
 
@@ -20,8 +20,7 @@ def stamp(run):
 
 @pytest.fixture
 def con():
-    with closing(duckdb.connect()) as con:
-        migrate.apply_pending(con)
+    with closing(empty_book()) as con:
         add_series(con, {rule: Setting(same_time=rule) for rule in RULES}, stamp(1))
         yield con
 
@@ -182,3 +181,13 @@ def test_an_intake_leaves_no_temporary_table_and_no_setting_behind(take, con):
     assert not con.execute("select * from duckdb_tables() where temporary").fetchall()
     assert not con.execute("select * from duckdb_views() where temporary and not internal").fetchall()
     assert con.execute("select current_setting('disabled_optimizers')").fetchall() == before
+
+
+def test_rows_taken_up_need_a_yes_to_withdraw_more_than_a_tenth(con, take, history):
+    take(1, MANY)
+    take(2, [("waiting", day, None) for day in range(1, 5)])
+    con.execute("insert into base.alias (series_id, name, run_from) values (1, 'waiting', 3)")
+    with pytest.raises(IntakeError, match=r"what waits of intake 2 withdraws 4 of the 30 observations of 'refuse'"):
+        intake.take_up(con, ["waiting"], stamp(3))
+    assert intake.take_up(con, ["waiting"], stamp(3), yes=True) == 4
+    assert len([version for version in history("refuse") if version[-1] is None]) == 26

@@ -4,11 +4,11 @@ import json
 from contextlib import closing
 from datetime import UTC, date, datetime, timedelta
 
-import duckdb
 import polars as pl
 import pytest
+from naive_intake import empty_book
 
-from driftbook.store import intake, migrate
+from driftbook.store import intake
 from driftbook.store.errors import IntakeError, UsageError
 from driftbook.store.intake import delimited, reading
 from driftbook.store.series import Setting, Stamp, add_series, known_series
@@ -26,8 +26,7 @@ def stamp(run):
 
 @pytest.fixture
 def con():
-    with closing(duckdb.connect()) as con:
-        migrate.apply_pending(con)
+    with closing(empty_book()) as con:
         add_series(con, {"gas": Setting(), "oil": Setting()}, stamp(1))
         yield con
 
@@ -140,7 +139,7 @@ def test_columns_can_be_told_and_then_others_of_a_usual_name_do_not_matter(take,
         ("time,value\n", {}, r"no column for the series.*--series NAME"),
         ("series,time,value\n", {"columns": {"value": "px"}}, r"no column 'px', which --columns value=px names"),
         ("", {}, "is empty; it needs a header line"),
-        ("\xff\xfes\0e\0", {}, "no UTF-8 text"),
+        ("s\0e\0", {}, "no line of UTF-8 text"),
         ('"series,time,value\n', {}, "line 1: the header has a quote that does not end"),
         ("PAR1 and no more", {}, "cannot be read"),
     ],
@@ -158,10 +157,10 @@ def test_a_missing_file_is_named(con, tmp_path):
 def test_a_file_that_is_written_to_meanwhile_is_not_taken_in(take, tmp_path, monkeypatch):
     first_lines = delimited.line_batches
 
-    def and_somebody_writes(file):
+    def and_somebody_writes(file, name):
         with (tmp_path / "delivery.csv").open("a") as other:
             other.write("gas,2024-01-02,2\n")
-        return first_lines(file)
+        return first_lines(file, name)
 
     monkeypatch.setattr(delimited, "line_batches", and_somebody_writes)
     with pytest.raises(IntakeError, match="changed while it was read"):
@@ -277,3 +276,45 @@ def test_the_outcome_shows_the_first_twenty_refused_rows_and_the_book_has_all(ta
     outcome = take(1, "series,time,value\n" + "gas,2024-01-01,x\n" * 30)
     assert [row.line for row in outcome.refused] == list(range(2, 22))
     assert con.execute("select count(*) from base.refused_row").fetchall() == [(30,)]
+
+
+def called_also(con, name, series_id, run):
+    con.execute("insert into base.alias (series_id, name, run_from) values (?, ?, ?)", [series_id, name, run])
+
+
+def test_another_name_of_a_series_means_that_series(take, con):
+    called_also(con, "GAS TTF", 1, 1)
+    data = "series,time,value\nGAS TTF,2024-01-01,1\n gas ,2024-01-02,2\n GAS TTF ,13/1/2024,3\n"
+    outcome = take(1, data, add_series=True)
+    assert (outcome.rows_new, outcome.series_added) == (3, ())
+    assert [row[0] for row in observations(con)] == ["gas"] * 3
+
+
+def test_two_names_of_one_series_are_held_to_its_rule_for_one_time(take, con):
+    called_also(con, "GAS TTF", 1, 1)
+    outcome = take(
+        1, "series,time,value\nGAS TTF,2024-01-01,1\ngas,2024-01-01,2\ngas,2024-01-02,1\nGAS TTF,2024-01-02,1\n"
+    )
+    assert (outcome.rows_new, outcome.rows_same, outcome.rows_refused) == (1, 1, 2)
+
+
+def test_all_rows_can_be_the_series_that_another_name_means(take, con):
+    called_also(con, "GAS TTF", 1, 1)
+    assert take(1, "date,close\n2024-01-01,1\n", series="GAS TTF").rows_new == 1
+    assert observations(con)[0][0] == "gas"
+    with pytest.raises(IntakeError, match="did you mean 'GAS TTF'"):
+        take(2, "date,close\n2024-01-01,1\n", series="GAS TTFF")
+
+
+def test_rows_that_waited_are_taken_up_once_their_name_means_a_series(take, con):
+    take(1, "series,time,value\nGAS TTF,2024-01-01,1\ngas,2024-01-01,1\nGAS TTF,2024-01-02,2\n")
+    called_also(con, "GAS TTF", 1, 2)
+    assert intake.take_up(con, ["GAS TTF"], stamp(2)) == 2
+    assert observations(con) == [("gas", datetime(2024, 1, 1), 1.0), ("gas", datetime(2024, 1, 2), 2.0)]
+    assert con.execute("select run_to from base.refused_row").fetchall() == [(2,), (2,)]
+
+
+def test_a_name_that_no_longer_means_a_series_is_unknown(take, con):
+    called_also(con, "GAS TTF", 1, 1)
+    con.execute("update base.alias set run_to = 2")
+    assert [row.reason for row in take(2, "series,time,value\nGAS TTF,2024-01-01,1\n").refused] == ["unknown_series"]

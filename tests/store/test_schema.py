@@ -9,7 +9,7 @@ import pytest
 from schema_dump import dump
 
 from driftbook.estimators import MODELS
-from driftbook.store import migrate, model_schema
+from driftbook.store import dictionary_schema, fit_schema, migrate, model_schema
 from driftbook.store.errors import BookError
 
 GOLDEN = Path(__file__).with_name("schema.sql")
@@ -30,6 +30,14 @@ def test_migrations_are_numbered_from_one_without_a_gap():
 def test_a_models_migration_is_what_the_model_says_of_itself(name):
     (migration,) = [step for step in migrate.all_migrations() if step.name == name]
     assert migration.text == model_schema.migration_text(MODELS[name])
+
+
+@pytest.mark.parametrize(
+    ("name", "printed"), [("fit", fit_schema.migration_text), ("dictionary", dictionary_schema.migration_text)]
+)
+def test_a_migration_over_all_models_is_what_the_registry_says(name, printed):
+    (migration,) = [step for step in migrate.all_migrations() if step.name == name]
+    assert migration.text == printed()
 
 
 def test_a_failing_migration_leaves_nothing_behind():

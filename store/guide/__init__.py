@@ -1,0 +1,1 @@
+"""Pages for users, as package data."""

@@ -1,0 +1,182 @@
+"""The first sheet: what the book says of all series, in the plan's order, and what has to be looked at."""
+
+from __future__ import annotations
+
+import tomllib
+from dataclasses import dataclass
+from typing import Any
+
+from driftbook.store.page import words
+from driftbook.store.page.known import Known
+from driftbook.store.page.scale import Scale
+from driftbook.store.page.small_year import SmallYear, periods_for, small_year
+from driftbook.store.page.whiskers import Whisker, shared_axis, whisker
+from driftbook.store.sql import first_row, query
+
+
+@dataclass(frozen=True)
+class Line:
+    """One series on the first sheet."""
+
+    series: str
+    name: str
+    unit: str
+    value: str
+    observed: str
+    year: SmallYear | None
+    volatility: str
+    volatility_mark: Whisker | None
+    volatility_moved: bool
+    in_own_unit: bool
+    half_life: str
+    half_life_mark: Whisker | None
+    half_life_moved: bool
+    model: str
+    model_name: str
+    weight: str
+    model_moved: bool
+    note: str
+    needs_a_look: bool
+    is_late: bool
+
+
+@dataclass(frozen=True)
+class Cause:
+    """A series that has to be explained: why, and what it said before and says now."""
+
+    series: str
+    name: str
+    note: str
+    changes: list[tuple[str, str, str]]
+    since_run: int
+
+
+@dataclass(frozen=True)
+class Overview:
+    """All that the first sheet shows."""
+
+    lines: list[Line]
+    causes: list[Cause]
+    late: list[tuple[str, str, int]]
+    volatility_axis: Scale
+    half_life_axis: Scale
+
+
+def overview(book: Known) -> Overview:
+    """Reads the first sheet from the book."""
+    source, told = book.latest()
+    sql = query("page_rows").format(latest=source, chosen="true")
+    rows = in_plan_order(book.rows(sql, run=book.run_id, **told), _planned(book))
+    for row in rows:
+        row["changes"] = changes(row)
+    years = years_of(book, len(rows))
+    volatility_axis = shared_axis((*_volatility(row), _volatility_before(row)) for row in rows)
+    half_life_axis = shared_axis((*_half_life(row), _half_life_before(row)) for row in rows)
+    lines = [_line(row, book, years.get(row["series"]), volatility_axis, half_life_axis) for row in rows]
+    return Overview(
+        lines=lines,
+        causes=[_cause(row) for row in rows if row["note"]],
+        late=[(row["series"], words.clean(row["series"]), words.age(row, book.moment)) for row in rows if row["stale"]],
+        volatility_axis=volatility_axis,
+        half_life_axis=half_life_axis,
+    )
+
+
+def one_row(book: Known, series: str) -> dict[str, Any] | None:
+    """What the book says of one series; None if it was not known."""
+    source, told = book.latest()
+    sql = query("page_rows").format(latest=source, chosen="s.series = $series")
+    found = book.rows(sql, run=book.run_id, series=series, **told)
+    return found[0] if found else None
+
+
+def years_of(book: Known, series: int) -> dict[str, SmallYear]:
+    """The small years by series."""
+    periods = periods_for(series)
+    rows = book.rows(query("page_years"), run=book.run_id, periods=periods)
+    return {row["series"]: small_year(row, periods) for row in rows}
+
+
+def in_plan_order(rows: list[dict[str, Any]], planned: list[str]) -> list[dict[str, Any]]:
+    """Rows as the plan names their series, then the others as they were added."""
+    place = {name: at for at, name in enumerate(planned)}
+    return sorted(rows, key=lambda row: place.get(row["series"], len(place)))
+
+
+def _planned(book: Known) -> list[str]:
+    row = first_row(book.con, query("page_plan"), {"run": book.run_id})
+    named = tomllib.loads(row[0]).get("series", []) if row else []
+    return [one["name"] for one in named]
+
+
+def _volatility(row: dict[str, Any]) -> tuple[float | None, float | None, float | None]:
+    unit = row["volatility_unit"]
+    number, lower, upper = (row[f"volatility{end}"] for end in ("", "_lower", "_upper"))
+    return words.scaled(number, unit), words.scaled(lower, unit), words.scaled(upper, unit)
+
+
+def _volatility_before(row: dict[str, Any]) -> float | None:
+    """Where it was at the run before, if that is another figure than now."""
+    moved = "volatility" in _moved(row)
+    return words.scaled(row["before_volatility"], row["before_volatility_unit"]) if moved else None
+
+
+def _half_life_before(row: dict[str, Any]) -> float | None:
+    return row["before_half_life"] if "half-life" in _moved(row) else None
+
+
+def _half_life(row: dict[str, Any]) -> tuple[float | None, float | None, float | None]:
+    return row["half_life_days"], row["half_life_days_lower"], row["half_life_days_upper"]
+
+
+def _line(
+    row: dict[str, Any], book: Known, year: SmallYear | None, volatility_axis: Scale, half_life_axis: Scale
+) -> Line:
+    moved = _moved(row)
+    return Line(
+        series=row["series"],
+        name=words.clean(row["series"]),
+        unit=words.clean(row["unit"]),
+        value=f"{row['value']:.6g}" if row["value"] is not None else "",
+        observed=words.day(row["observed_at"]),
+        year=year,
+        volatility=words.volatility(row),
+        volatility_mark=whisker(volatility_axis, _volatility(row), _volatility_before(row)),
+        volatility_moved="volatility" in moved,
+        in_own_unit=row["estimated"] and not words.is_relative(row["volatility_unit"]),
+        half_life=words.half_life_now(row),
+        half_life_mark=whisker(half_life_axis, _half_life(row), _half_life_before(row)),
+        half_life_moved="half-life" in moved,
+        model=words.model(row["model"]) if row["estimated"] else "not estimated",
+        model_name=row["model"] or "",
+        weight="" if row["model_weight"] is None else f"{row['model_weight']:.2f}",
+        model_moved="model" in moved,
+        note=_note(row, book),
+        needs_a_look=bool(row["note"]),
+        is_late=row["stale"],
+    )
+
+
+def changes(row: dict[str, Any]) -> list[tuple[str, str, str]]:
+    """What is said otherwise than at the run before, in the digits shown: what, from, to."""
+    if not row["said_before"] or not row["estimated"]:
+        return []
+    pairs = [
+        ("volatility", words.volatility(row, "before_"), words.volatility(row)),
+        ("half-life", words.half_life_before(row), words.half_life_now(row)),
+        ("model", words.model(row["before_model"]), words.model(row["model"])),
+    ]
+    return [(what, one, other) for what, one, other in pairs if one != other]
+
+
+def _moved(row: dict[str, Any]) -> set[str]:
+    return {what for what, _, _ in row["changes"]}
+
+
+def _cause(row: dict[str, Any]) -> Cause:
+    return Cause(row["series"], words.clean(row["series"]), row["note"], row["changes"], row["run_id"])
+
+
+def _note(row: dict[str, Any], book: Known) -> str:
+    late = [f"late {words.age(row, book.moment)} d"] if row["stale"] else []
+    return "; ".join([row["note"], *late] if row["note"] else late)
