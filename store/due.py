@@ -106,22 +106,6 @@ def slice_of(asked: Asked, ends: Indexes, size: int) -> Slice:
     return _windows_ending(asked, int(ends[0]), int(ends[-1]), ends)
 
 
-def slice_table(slices: list[Slice], shifts: dict[int, float]) -> pa.Table:
-    """The slices as a table for SQL; shifts: what is added to the values of a series, 0 where it is not named."""
-    return pa.table(
-        {
-            "series_id": pa.array([one.series_id for one in slices], pa.int32()),
-            "lookback": pa.array([one.lookback for one in slices], pa.int32()),
-            "steps": pa.array([one.steps for one in slices], pa.int32()),
-            "start": pa.array([one.start for one in slices], pa.int64()),
-            "first": pa.array([one.first for one in slices], pa.int64()),
-            "stop": pa.array([one.stop for one in slices], pa.int64()),
-            "shift": pa.array([shifts.get(one.series_id, 0.0) for one in slices], pa.float64()),
-            "ends": pa.array([one.ends for one in slices], pa.list_(pa.int64())),
-        }
-    )
-
-
 def span_table(spans: list[Span]) -> pa.Table:
     """The spans as a table for SQL."""
     return pa.table(

@@ -4,10 +4,14 @@ For each model there are, with x a list of values in time order and steps in yea
 
     fit_<model>(x, dt), fit_<model>_at(t, x)                       one STRUCT: the fit of the whole list
     rolling_<model>(x, dt, lookback), rolling_<model>_at(t, x, lookback)    STRUCT[]: one a window
-    rolling_<model>_from(x, steps, lookback, first)                the same, from window `first` on; a refresh calls it
-    loglik_<model>(x, dt, <parameters>)                            the log-likelihood at given parameters
+    rolling_<model>_from(x, steps, lookback, first, settings, on_logs)     the same, from window `first` on, by the
+                                                                   series' settings; a refresh calls it
+    loglik_<model>(x, dt, <settings>, <parameters>)                the log-likelihood at given parameters
 
 and for a list of returns: realised_variance(r), bipower_variation(r).
+
+A model with settings (quartic: centre and scale) takes them from the first window of a list. A model that is fitted to
+the level of some series and the logarithm of others (ou_noise, inertial) fits the values of a list as they are.
 
 The forms with _at take times and count Act/365. A list that is too short for its lookback, or a NULL where a value
 must be, gives one STRUCT whose status says so; a query is never killed by its data.
@@ -27,14 +31,15 @@ import pyarrow as pa
 from duckdb.func import FunctionNullHandling, PythonUDFType
 from numpy.typing import NDArray
 
-from driftbook.estimators import MODELS, Fit, Model, Status, rolling
+from driftbook.estimators import MODELS, Fit, Model, Status
+from driftbook.estimators.model import Column
 from driftbook.estimators.realised import bipower_variation, realised_variance
 from driftbook.store.clocks import MICROSECONDS_PER_YEAR
 from driftbook.store.due import steps_over_all
 
 _BLOCK_VALUES = 1 << 18
 _PADDING = 1.25
-_SQL_TYPES = {"double": "DOUBLE", "boolean": "BOOLEAN"}
+_SQL_TYPES = {"double": "DOUBLE", "boolean": "BOOLEAN", "word": "VARCHAR"}
 # What DuckDB keeps for the times 'infinity' and '-infinity'; a NULL becomes a number below.
 _ENDLESS = np.iinfo(np.int64).max
 
@@ -61,14 +66,14 @@ def register(con: duckdb.DuckDBPyConnection, executor: Executor) -> None:
         _add(con, f"fit_{name}_at", partial(_fit_at, fits), ["TIMESTAMP[]", "DOUBLE[]"], one)
         _add(con, f"rolling_{name}", partial(_rolling, fits), ["DOUBLE[]", "DOUBLE", "INTEGER"], many)
         _add(con, f"rolling_{name}_at", partial(_rolling_at, fits), ["TIMESTAMP[]", "DOUBLE[]", "INTEGER"], many)
-        types = ["DOUBLE[]", "DOUBLE[]", "INTEGER", "BIGINT"]
+        types = ["DOUBLE[]", "DOUBLE[]", "INTEGER", "BIGINT", "DOUBLE[]", "BOOLEAN"]
         _add(con, f"rolling_{name}_from", partial(_rolling_from, fits), types, many)
 
 
 def register_likelihoods(con: duckdb.DuckDBPyConnection) -> None:
     """Registers the log-likelihood of every model: a macro that names its parameters, over one function."""
     for model in MODELS.values():
-        parameters = ", ".join(parameter.name for parameter in model.parameters)
+        parameters = ", ".join(one.name for one in (*model.settings, *model.parameters))
         _add(con, f"loglik_of_{model.name}", partial(_loglik, model), ["DOUBLE[]", "DOUBLE", "DOUBLE[]"], "DOUBLE")
         con.execute(
             f"create macro main.loglik_{model.name}(x, dt, {parameters}) as "
@@ -88,9 +93,18 @@ def struct_type(model: Model) -> str:
     return f"STRUCT(n INTEGER, {columns}, status VARCHAR)"
 
 
-def roll_block(name: str, x: Values, steps: Values, lookback: int, first: int) -> Fit:
+def roll_block(
+    name: str, x: Values, steps: Values, lookback: int, first: int, settings: Values | None, on_logs: bool
+) -> Fit:
     """What a worker does with one block of series: arrays in, arrays out."""
-    return rolling(name, x, steps, lookback, first=first)
+    model = MODELS[name].of_logs if on_logs else MODELS[name]
+    if model is None:
+        raise ValueError(f"{name} is not fitted to logarithms")
+    if settings is None:
+        return model.rolling(x, steps, lookback, first=first)
+    if settings.shape[-1] != len(model.settings):
+        raise ValueError(f"{name} has {len(model.settings)} settings, got {settings.shape[-1]} numbers")
+    return model.rolling_by(list(settings.T), x, steps, lookback, first=first)
 
 
 def _add(con: duckdb.DuckDBPyConnection, name: str, function: Callable[..., Any], takes: list[Any], gives: str) -> None:
@@ -107,6 +121,8 @@ class _Asked:
     steps: Values
     lookback: int
     first: int = 0
+    settings: Values | None = None
+    on_logs: bool = False
 
     @property
     def is_readable(self) -> bool:
@@ -123,7 +139,8 @@ class _Asked:
     def shape(self) -> tuple[object, ...]:
         """What series must share to be worked on in one block."""
         step = float(self.steps[0]) if self.steps.size == 1 else None
-        return (self.steps.size == 1, step or 0.0, self.lookback, self.first)
+        settings = 0 if self.settings is None else self.settings.size
+        return (self.steps.size == 1, step or 0.0, self.lookback, self.first, settings, self.on_logs)
 
 
 def _fits(model: Model, executor: Executor, asked: list[_Asked]) -> list[_Rows]:
@@ -161,10 +178,21 @@ def _rolling_at(
 
 
 def _rolling_from(
-    fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, steps: pa.ChunkedArray, lookback: Any, first: Any
+    fits: Callable[[list[_Asked]], list[_Rows]],
+    x: pa.ChunkedArray,
+    steps: pa.ChunkedArray,
+    lookback: Any,
+    first: Any,
+    settings: pa.ChunkedArray,
+    on_logs: Any,
 ) -> pa.Array:
-    rows = zip(_lists(x), _lists(steps), _integers(lookback), _integers(first), strict=True)
-    return _lists_of_structs(fits([_Asked(*row) for row in rows]))
+    lists = zip(_lists(x), _lists(steps), _lists(settings), strict=True)
+    numbers = zip(_integers(lookback), _integers(first), on_logs.to_pylist(), strict=True)
+    asked = [
+        _Asked(series, each, window, begin, given if given.size else None, bool(log))
+        for (series, each, given), (window, begin, log) in zip(lists, numbers, strict=True)
+    ]
+    return _lists_of_structs(fits(asked))
 
 
 def _loglik(model: Model, x: pa.ChunkedArray, dt: Any, parameters: pa.ChunkedArray) -> pa.Array:
@@ -218,7 +246,10 @@ def _steps_at(times: NDArray[Any], x: Values) -> Values:
     return np.where(known[1:] & known[:-1], np.diff(microseconds) / MICROSECONDS_PER_YEAR, np.nan)
 
 
-def _blocks(asked: list[_Asked], usable: list[int]) -> Iterator[tuple[list[int], tuple[Values, Values, int, int]]]:
+_Block = tuple[Values, Values, int, int, Values | None, bool]
+
+
+def _blocks(asked: list[_Asked], usable: list[int]) -> Iterator[tuple[list[int], _Block]]:
     """Rows of one shape and of about the same length, filled up with NaN at their ends.
 
     What stands behind a series does not touch its windows, so padding moves no bit of them.
@@ -238,7 +269,7 @@ def _belongs(first: _Asked, other: _Asked, size: int) -> bool:
     return alike and (size + 1) * other.x.size <= _BLOCK_VALUES
 
 
-def _padded(series: list[_Asked]) -> tuple[Values, Values, int, int]:
+def _padded(series: list[_Asked]) -> _Block:
     first = series[0]
     longest = max(one.x.size for one in series)
     x = np.full((len(series), longest), np.nan)
@@ -247,7 +278,9 @@ def _padded(series: list[_Asked]) -> tuple[Values, Values, int, int]:
         x[row, : one.x.size] = one.x
         if first.steps.size > 1:
             steps[row, : one.steps.size] = one.steps
-    return x, steps, first.lookback, first.first
+    given = [one.settings for one in series if one.settings is not None]
+    settings = np.stack(given) if given else None
+    return x, steps, first.lookback, first.first, settings, first.on_logs
 
 
 @dataclass(frozen=True)
@@ -289,7 +322,7 @@ def _structs(found: list[_Rows]) -> pa.Array:
     names = ["n"]
     for column in model.columns:
         values = _joined([rows.cut(rows.fit.columns[column.name]) for rows in found])
-        fields.append(_nullable(values, column.kind))
+        fields.append(_nullable(values, column))
         names.append(column.name)
     codes = _joined([rows.cut(rows.fit.status) for rows in found])
     fields.append(_words().take(pa.array(codes.astype(np.int64))))
@@ -306,10 +339,13 @@ def _joined(parts: list[NDArray[Any]]) -> NDArray[Any]:
     return np.concatenate(parts)
 
 
-def _nullable(values: Values, kind: str) -> pa.Array:
-    if kind == "boolean":
+def _nullable(values: Values, column: Column) -> pa.Array:
+    if column.kind == "boolean":
         return pa.array(values == 1.0, mask=np.isnan(values))
-    return pa.array(values, from_pandas=True)
+    numbers = pa.array(values, from_pandas=True)
+    if column.kind == "word":
+        return pa.array(column.words, pa.string()).take(numbers.cast(pa.int64()))
+    return numbers
 
 
 def _lists(column: pa.ChunkedArray) -> Iterator[NDArray[Any]]:

@@ -9,15 +9,16 @@ import duckdb
 
 from driftbook.estimators import MODELS
 from driftbook.store import intake
-from driftbook.store.due import slice_table, span_table
+from driftbook.store.due import span_table
 from driftbook.store.errors import PlanError, UsageError
+from driftbook.store.for_model import Settings, fix_settings, slice_table
 from driftbook.store.inbox import Delivered
 from driftbook.store.latest import write_latest
 from driftbook.store.plan import Plan, PlanText, parse_plan
 from driftbook.store.runs import Run
 from driftbook.store.series import Series, add_series, change_setting, known_series, put_aliases_in_force
 from driftbook.store.sql import first_row, only_row, query
-from driftbook.store.work import Work, find_work, needed, shifts
+from driftbook.store.work import Work, find_work, needed
 
 
 @dataclass(frozen=True)
@@ -75,8 +76,9 @@ def refresh(
     run.kind = "refresh"
     for model in work.models:
         model.table.close_entries(run.con, list(model.leaving), run.stamp.run_id)
+    settings = {model.name: fix_settings(run, model.table.model, model.slices) for model in work.models}
     for portion in work.portions():
-        _estimate(run, work, portion)
+        _estimate(run, work, portion, settings)
         if report is not None:
             report(Progress(run.windows.due, work.windows))
     write_latest(run, plan, work, last)
@@ -98,7 +100,7 @@ def _warnings(con: duckdb.DuckDBPyConnection) -> tuple[str, ...]:
     )
 
 
-def _estimate(run: Run, work: Work, portion: list[int]) -> None:
+def _estimate(run: Run, work: Work, portion: list[int], settings: dict[str, Settings]) -> None:
     """Computes and writes what is due for some series."""
     con, chosen = run.con, set(portion)
     con.register("needed", needed(work.slices(portion), work.series, work.times))
@@ -108,7 +110,8 @@ def _estimate(run: Run, work: Work, portion: list[int]) -> None:
         spans = [one for one in model.spans if one.series_id in chosen]
         if spans:
             slices = [one for one in model.slices if one.series_id in chosen]
-            due, fitted = model.table.estimate(con, slice_table(slices, shifts(model.name, work.series)))
+            table = slice_table(model.table.model, slices, work.series, settings[model.name])
+            due, fitted = model.table.estimate(con, table)
             model.table.write(con, span_table(spans), run.stamp.run_id)
             run.windows.due += due
             run.windows.fitted += fitted

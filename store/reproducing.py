@@ -15,13 +15,14 @@ import numpy as np
 
 from driftbook.estimators import MODELS
 from driftbook.store import functions
-from driftbook.store.due import OBSERVATION, Asked, Slice, slice_of, slice_table
+from driftbook.store.due import OBSERVATION, Asked, Slice, slice_of
 from driftbook.store.errors import UsageError
 from driftbook.store.estimates import EstimateTable
+from driftbook.store.for_model import settings_at, slice_table
 from driftbook.store.reader import attached
 from driftbook.store.series import Series, Setting
 from driftbook.store.sql import only_row, query
-from driftbook.store.work import needed, shifts, split
+from driftbook.store.work import needed, split
 
 _WORST = 20
 
@@ -120,7 +121,8 @@ def _reproduce_model(
     con.register("needed", needed(slices, series, times))
     con.execute(query("list_observations").format(in_force=at_run))
     con.unregister("needed")
-    table.estimate(con, slice_table(slices, shifts(name, series)))
+    settings = settings_at(con, table.model, run_id)
+    table.estimate(con, slice_table(table.model, slices, series, settings))
     _compare(con, table, run_id, found)
 
 

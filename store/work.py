@@ -106,13 +106,6 @@ def needed(slices: list[Slice], series: dict[int, Series], times: dict[int, Micr
     )
 
 
-def shifts(model: str, series: dict[int, Series]) -> dict[int, float]:
-    """What is added to the values of each series for a model: models for X > 0 alone take a shift."""
-    if MODELS[model].range == "real":
-        return {}
-    return {series_id: one.setting.shift for series_id, one in series.items() if one.setting.shift}
-
-
 def find_work(con: duckdb.DuckDBPyConnection, plan: Plan, last: int, revised: set[str], *, everything: bool) -> Work:
     """What is due under a plan since run `last`; `revised` models are due as a whole."""
     series = known_series(con)

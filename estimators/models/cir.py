@@ -487,6 +487,7 @@ MODEL = Model(
     revision=1,
     equation="dX = kappa (theta - X) dt + sigma sqrt(X) dW, kappa theta > 0",
     range="positive",
+    has_pull=True,
     is_relative=False,
     local_volatility=("sigma * sqrt(x)", "sigma_lower * sqrt(x)", "sigma_upper * sqrt(x)"),
     local_drift="kappa * (theta - x)",

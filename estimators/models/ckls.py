@@ -559,6 +559,7 @@ MODEL = Model(
     revision=1,
     equation="dX = kappa (theta - X) dt + sigma X^gamma dW",
     range="positive",
+    has_pull=True,
     is_relative=False,
     local_volatility=(
         _RELATIVE,

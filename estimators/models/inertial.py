@@ -36,6 +36,7 @@ from driftbook.estimators.filtered import filtered_sums
 from driftbook.estimators.filtering import Filtered, standardised
 from driftbook.estimators.hidden_pull import hidden_pull, pull_ends
 from driftbook.estimators.jets import Jet, constant, covariance, inverse, logarithm, surface, times, variables
+from driftbook.estimators.level_or_log import also_of_logs
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
 from driftbook.estimators.models import ou
 from driftbook.estimators.noisy import centred
@@ -45,6 +46,7 @@ from driftbook.estimators.repair import Columns, Places, Statuses, blank, repair
 from driftbook.estimators.solve import Limits, Maximum, Surface, maximise
 from driftbook.estimators.solve import inverse as inverse_of
 from driftbook.estimators.status import Status
+from driftbook.estimators.step_volatility import STEP_VOLATILITY
 from driftbook.estimators.stepping import by_steps
 from driftbook.estimators.swings import (
     COARSEST,
@@ -482,19 +484,23 @@ def log_density(x: Array, steps: Array, damping: Array, omega: Array, theta: Arr
     return np.where((damping > 0) & (eta > 0), total, np.nan)
 
 
-MODEL = Model(
-    name="inertial",
-    revision=1,
-    equation="dX = V dt, dV = -damping V dt - omega^2 (X - theta) dt + eta dW",
-    range="real",
-    is_relative=False,
-    local_volatility=("sigma_s", "sigma_s_lower", "sigma_s_upper"),
-    local_drift="kappa_s * (theta - x)",
-    reaches_zero=True,
-    steps="any",
-    shortest=SHORTEST,
-    parameters=PARAMETERS,
-    columns=COLUMNS,
-    kernel=by_steps(fit_equal, fit_unequal),
-    log_density=log_density,
+MODEL = also_of_logs(
+    Model(
+        name="inertial",
+        revision=1,
+        equation="dX = V dt, dV = -damping V dt - omega^2 (X - theta) dt + eta dW",
+        range="real",
+        has_pull=True,
+        is_relative=False,
+        local_volatility=STEP_VOLATILITY,
+        local_drift="kappa_s * (theta - x)",
+        reaches_zero=True,
+        steps="any",
+        shortest=SHORTEST,
+        parameters=PARAMETERS,
+        columns=COLUMNS,
+        kernel=by_steps(fit_equal, fit_unequal),
+        log_density=log_density,
+    ),
+    drift_of_logs="kappa_s * (theta - ln(x)) + sigma_s * sigma_s / 2",
 )

@@ -379,6 +379,7 @@ MODEL = Model(
     revision=1,
     equation="dX = (mu - jump_rate E[e^J - 1]) X dt + sigma X dW + (e^J - 1) X dN, J normal",
     range="positive",
+    has_pull=False,
     is_relative=True,
     local_volatility=("total_volatility", "total_volatility_lower", "total_volatility_upper"),
     local_drift="mu",

@@ -37,6 +37,7 @@ from driftbook.estimators.filtering import Filtered, standardised
 from driftbook.estimators.hidden_pull import HiddenPull, finite, hidden_pull, pull_ends
 from driftbook.estimators.intervals import COARSEST
 from driftbook.estimators.jets import covariance, inverse, logarithm, times
+from driftbook.estimators.level_or_log import also_of_logs
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
 from driftbook.estimators.models import ou
 from driftbook.estimators.noisy import MORE_POINTS, Candidates, Exact, candidates, centred, determinant_slope, exact
@@ -436,19 +437,23 @@ def log_density(x: Array, steps: Array, kappa: Array, theta: Array, sigma: Array
     return np.where((sigma >= 0) & (noise >= 0) & (sigma + noise > 0), total, np.nan)
 
 
-MODEL = Model(
-    name="ou_noise",
-    revision=1,
-    equation="Y = X + noise * epsilon, dX = kappa (theta - X) dt + sigma dW",
-    range="real",
-    is_relative=False,
-    local_volatility=("sigma", "sigma_lower", "sigma_upper"),
-    local_drift="kappa * (theta - x)",
-    reaches_zero=True,
-    steps="any",
-    shortest=SHORTEST,
-    parameters=PARAMETERS,
-    columns=COLUMNS,
-    kernel=by_steps(fit_equal, fit_unequal),
-    log_density=log_density,
+MODEL = also_of_logs(
+    Model(
+        name="ou_noise",
+        revision=1,
+        equation="Y = X + noise * epsilon, dX = kappa (theta - X) dt + sigma dW",
+        range="real",
+        has_pull=True,
+        is_relative=False,
+        local_volatility=("sigma", "sigma_lower", "sigma_upper"),
+        local_drift="kappa * (theta - x)",
+        reaches_zero=True,
+        steps="any",
+        shortest=SHORTEST,
+        parameters=PARAMETERS,
+        columns=COLUMNS,
+        kernel=by_steps(fit_equal, fit_unequal),
+        log_density=log_density,
+    ),
+    drift_of_logs="kappa * (theta - ln(x)) + sigma * sigma / 2",
 )

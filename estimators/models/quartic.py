@@ -450,9 +450,16 @@ class Quartic(Model):
         found = _in_units_of_x(fit, at[..., None], size[..., None], intervals=intervals)
         return _without_rounding(found, values, float(np.max(dt, initial=0.0)), lookback, first)
 
-    def loglik(self, x: ArrayLike, dt: ArrayLike, *parameters: ArrayLike) -> Array:
-        """`Model.loglik` of centre, scale, and the parameters."""
-        return Model.loglik(replace(self, parameters=(*SETTINGS, *self.parameters)), x, dt, *parameters)
+    def settings_of(self, x: ArrayLike, lookback: int) -> tuple[Array, ...]:
+        """Centre and scale: mean and standard deviation of the first lookback + 1 finite values."""
+        return _first_window(np.asarray(x, dtype=np.float64), lookback)
+
+    def rolling_by(
+        self, settings: Sequence[ArrayLike], x: ArrayLike, dt: ArrayLike, lookback: int, *, first: int = 0
+    ) -> Fit:
+        """`rolling` by a centre and a scale."""
+        centre, scale = settings
+        return self.rolling(x, dt, lookback, first=first, centre=centre, scale=scale)
 
 
 def _setting(name: str, given: ArrayLike, shape: tuple[int, ...]) -> Array:
@@ -520,6 +527,7 @@ MODEL = Quartic(
     revision=1,
     equation="dX = (a0 + a1 z + a2 z² + a3 z³) dt + sigma dW, z = (X - centre)/scale",
     range="real",
+    has_pull=True,
     is_relative=False,
     local_volatility=("sigma", "sigma_lower", "sigma_upper"),
     local_drift="a0 + (x - centre) / scale * (a1 + (x - centre) / scale * (a2 + (x - centre) / scale * a3))",

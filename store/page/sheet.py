@@ -258,7 +258,7 @@ def _said(book: Known, row: dict[str, Any], corrections: list[dict[str, Any]]) -
     there = [dict(zip(columns, one, strict=True)) for one in rows]
     if not there:
         return [], "", []
-    pulled = there if MODELS[row["model"]].has_pull else _heaviest_with_pull(book, row)
+    pulled = there if MODELS[row["model"]].has_half_life else _heaviest_with_pull(book, row)
     ends = [one["window_end"] for one in there if one["run_to"] is None] or [one["window_end"] for one in there]
     clock = Clock(min(ends), max(ends))
     unit, time = words.volatility_unit(row["volatility_unit"]), words.volatility_time(row["volatility_unit"])
@@ -296,7 +296,7 @@ def _heaviest_with_pull(book: Known, row: dict[str, Any]) -> list[dict[str, Any]
     """The statements of the model from which the half-life is told when the one in force has none."""
     columns, rows = models_table(book, row)
     weights = [dict(zip(columns, one, strict=True)) for one in rows if one[0] == row["window_end"]]
-    with_pull = [one for one in weights if one["model"] in MODELS and MODELS[one["model"]].has_pull]
+    with_pull = [one for one in weights if one["model"] in MODELS and MODELS[one["model"]].has_half_life]
     if not with_pull:
         return []
     heaviest = max(with_pull, key=lambda one: one["model_weight"] or 0.0)

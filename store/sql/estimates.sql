@@ -26,7 +26,7 @@ with sliced as (
       case when d.shift = 0 then l.x[d.start - l.skipped + 1:d.stop - l.skipped + 1]
         else [v + d.shift for v in l.x[d.start - l.skipped + 1:d.stop - l.skipped + 1]] end,
       case when len(l.steps) = 1 then l.steps else l.steps[d.start - l.skipped + 1:d.stop - l.skipped] end,
-      d.steps, d.first - d.start) as fits
+      d.steps, d.first - d.start, d.settings, d.on_logs) as fits
   from due_slice d
   join listed l using (series_id)
 ), opened as (

@@ -104,7 +104,7 @@ with said as (
   where v.series = $series and v.lookback = $lookback and v.run_from <= $run
     and (v.run_to is null or v.run_to > v.run_from)
 ), beside as (
-  select m.*, o.value, s.sign, s.shift, case s.clock when 'seconds' then 1 / 86400.0 else 365.0 end as days
+  select m.*, o.value, s.sign, s.shift, {step} as step, case s.clock when 'seconds' then 1 / 86400.0 else 365.0 end as days
   from said m
   join series_at_run($run) s on s.series = m.series
   left join versions.observation o

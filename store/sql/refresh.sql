@@ -23,6 +23,13 @@ join base.setting t on t.series_id = o.series_id and t.run_to is null
 where o.run_to is null and o.series_id in (select unnest($series::integer[]))
 order by o.series_id, o.observed_at
 
+-- name: values_in_force
+-- The values in force of some series, in time order.
+select o.series_id, o.value
+from base.observation o
+where o.run_to is null and o.series_id in (select unnest($series::integer[]))
+order by o.series_id, o.observed_at
+
 -- name: weekday_series_on_elapsed_time
 -- Planned series under act365 whose last 250 observations all fall on weekdays.
 select s.series
