@@ -6,7 +6,7 @@ import json
 import os
 import socket
 from collections.abc import Iterator
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from dataclasses import asdict, dataclass
 from datetime import UTC, datetime
 from pathlib import Path
@@ -37,7 +37,8 @@ def lock_path(book: Path) -> Path:
 def last_look(book: Path) -> LastLook:
     """What the lock file says; empty where there is none or it cannot be read."""
     try:
-        return LastLook(**json.loads(lock_path(book).read_text(encoding="utf-8")))
+        with lock_path(book).open(encoding="utf-8") as file:
+            return LastLook(**json.loads(file.readline()))
     except (OSError, ValueError, TypeError):
         return LastLook()
 
@@ -84,9 +85,13 @@ def _forget_holder(book: Path) -> None:
 
 
 def _write(book: Path, look: LastLook) -> None:
-    path = lock_path(book)
-    text = json.dumps({key: value for key, value in asdict(look).items() if value is not None})
-    path.write_text(text + "\n", encoding="utf-8")
+    """Overwrites the note in one step and then cuts the rest off: who reads meanwhile, or after a crash, reads a note.
+
+    It is a courtesy, and a disk that is too full for it is no reason to fail.
+    """
+    text = json.dumps({key: value for key, value in asdict(look).items() if value is not None}) + "\n"
+    with suppress(OSError), lock_path(book).open("r+b", buffering=0) as file:
+        file.truncate(file.write(text.encode()))
 
 
 def _narrow(book: Path) -> None:
@@ -94,7 +99,8 @@ def _narrow(book: Path) -> None:
     path = lock_path(book)
     mode = path.stat().st_mode & 0o777
     if mode & ~_mode_no_wider_than(book):
-        path.chmod(mode & _mode_no_wider_than(book))
+        with suppress(PermissionError):  # it may belong to another writer of the same book
+            path.chmod(mode & _mode_no_wider_than(book))
 
 
 def _mode_no_wider_than(book: Path) -> int:

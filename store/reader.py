@@ -70,7 +70,7 @@ def _attach(con: duckdb.DuckDBPyConnection, path: Path) -> None:
         con.execute(f"attach '{quoted}' as {_BOOK} (read_only)")
     except duckdb.Error as error:
         message = str(error).splitlines()[0]
-        if "lock" in message:
+        if "Could not set lock on file" in message:
             raise BookLocked(
                 f"{path} is open for writing outside driftbook; close it there, then try again."
             ) from error

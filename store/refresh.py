@@ -54,7 +54,7 @@ def put_plan_in_force(run: Run, given: PlanText | None, *, yes: bool) -> tuple[P
     PlanError for a plan that does not fit the book, UsageError where there is none.
     """
     plan, changed = _replace_plan(run, given, yes)
-    return plan, changed, _put_settings_in_force(run, plan)
+    return plan, changed, _put_settings_in_force(run, plan, yes=yes)
 
 
 def refresh(
@@ -139,7 +139,7 @@ def _replace_plan(run: Run, given: PlanText | None, yes: bool) -> tuple[Plan, bo
     return given.plan, True
 
 
-def _put_settings_in_force(run: Run, plan: Plan) -> int:
+def _put_settings_in_force(run: Run, plan: Plan, *, yes: bool) -> int:
     """Adds the plan's series, puts their settings in force, takes up the rows that waited for a name."""
     known = known_series(run.con)
     planned = {series.name: series.setting for series in plan.series}
@@ -153,7 +153,7 @@ def _put_settings_in_force(run: Run, plan: Plan) -> int:
     new = {name: setting for name, setting in planned.items() if name not in known}
     add_series(run.con, new, run.stamp)
     awaited = [*new, *_put_aliases_in_force(run, plan)]
-    return intake.take_up(run.con, awaited, run.stamp) if awaited else 0
+    return intake.take_up(run.con, awaited, run.stamp, yes=yes) if awaited else 0
 
 
 def _put_aliases_in_force(run: Run, plan: Plan) -> list[str]:
@@ -174,7 +174,8 @@ def _check_time_zone(con: duckdb.DuckDBPyConnection, series: Series, zone: str) 
     if first_row(con, "select 1 from base.observation where series_id = ? limit 1", [series.series_id]):
         raise PlanError(
             f"series {series.name!r}: time_zone cannot change from {series.setting.time_zone} to {zone}, "
-            "since there are observations; add a series of another name."
+            f'since there are observations; leave it and say zone = "{zone}" where its files are read, or begin a '
+            "series of another name: the plan first, its files second."
         )
 
 

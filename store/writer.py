@@ -4,14 +4,11 @@ from __future__ import annotations
 
 import os
 from collections.abc import Callable, Iterator
-from concurrent.futures import Executor, ProcessPoolExecutor
+from concurrent.futures import Executor
 from contextlib import ExitStack, contextmanager
 from dataclasses import replace
 from datetime import datetime
-from multiprocessing import get_context
 from pathlib import Path
-
-import polars as pl
 
 from driftbook.store import functions, intake, runs
 from driftbook.store.errors import UsageError
@@ -19,6 +16,7 @@ from driftbook.store.inbox import Delivered, take_in_folder
 from driftbook.store.plan import PlanText, read_plan
 from driftbook.store.refresh import Progress, Refreshed, put_plan_in_force, refresh
 from driftbook.store.swap import Draft, rewriting
+from driftbook.store.workers import worker_processes
 
 
 class Writing:
@@ -34,17 +32,16 @@ class Writing:
 
     def ingest(
         self,
-        source: str | os.PathLike[str] | pl.DataFrame,
+        source: object,
         options: intake.Options | None = None,
         *,
         name: str | None = None,
     ) -> intake.Outcome:
-        """Takes in a file or a frame; raises IntakeError for what cannot be read at all."""
+        """Takes in a file, or a frame of polars, pandas or Arrow; raises IntakeError for what cannot be read at all."""
         if self._refreshed:
             raise UsageError("take in first and refresh last: estimates are made of what was taken in before.")
         chosen = options or intake.Options()
-        read_from = source if isinstance(source, pl.DataFrame) else Path(source)
-        return intake.take_in(self._run.con, read_from, chosen, self._run.stamp, name=name)
+        return intake.take_in(self._run.con, source, chosen, self._run.stamp, name=name)
 
     def refresh(
         self,
@@ -143,6 +140,8 @@ def _executor(workers: int) -> Iterator[Executor]:
     if workers == 1:
         yield functions.InlineExecutor()
         return
-    # spawned, never forked: a fork would copy DuckDB's threads and locks in mid-air
-    with ProcessPoolExecutor(workers, mp_context=get_context("spawn")) as pool:
+    pool = worker_processes(workers)
+    try:
         yield pool
+    finally:
+        pool.shutdown(cancel_futures=True)

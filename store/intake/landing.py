@@ -12,7 +12,7 @@ import zlib
 from collections.abc import Iterator
 from contextlib import ExitStack, contextmanager
 from pathlib import Path
-from tempfile import NamedTemporaryFile
+from tempfile import TemporaryFile
 from typing import BinaryIO
 
 from driftbook.store.errors import IntakeError
@@ -54,7 +54,12 @@ def _begins_with(path: Path, mark: bytes) -> bool:
 
 
 def _temporary(stack: ExitStack) -> BinaryIO:
-    return stack.enter_context(NamedTemporaryFile(prefix="driftbook-"))  # type: ignore[return-value] # it is one
+    return stack.enter_context(TemporaryFile())
+
+
+def _path_of(temporary: BinaryIO) -> Path:
+    """A temporary file has no name of its own, so that not even a kill leaves it behind."""
+    return Path(f"/proc/self/fd/{temporary.fileno()}")
 
 
 def _copied(stack: ExitStack, path: Path) -> Path:
@@ -63,7 +68,7 @@ def _copied(stack: ExitStack, path: Path) -> Path:
         source = sys.stdin.buffer if path == STANDARD_INPUT else reading.enter_context(path.open("rb"))
         shutil.copyfileobj(source, target, _CHUNK)
     target.flush()
-    return Path(target.name)
+    return _path_of(target)
 
 
 def _unpacked(stack: ExitStack, path: Path, name: str) -> Path:
@@ -77,7 +82,7 @@ def _unpacked(stack: ExitStack, path: Path, name: str) -> Path:
     except (EOFError, gzip.BadGzipFile, zlib.error) as problem:
         raise IntakeError(f"{name} is a broken gzip file: {problem}. Get it again.") from problem
     target.flush()
-    return Path(target.name)
+    return _path_of(target)
 
 
 def _check_growth(size: int, bound: int, name: str) -> None:
@@ -101,4 +106,4 @@ def _decoded(stack: ExitStack, path: Path, encoding: str) -> Path:
         target.write(b"\xff")
     target.seek(0, io.SEEK_END)
     target.flush()
-    return Path(target.name)
+    return _path_of(target)

@@ -76,13 +76,13 @@ def open_arrow(con: duckdb.DuckDBPyConnection, path: Path, name: str, decimal: s
     """The rows of an Arrow file or stream, counted from 1."""
 
     def prepare(con: duckdb.DuckDBPyConnection) -> object:
-        schema, batches = _arrow_batches(path, is_stream=is_stream)
+        try:
+            schema, batches = _arrow_batches(path, is_stream=is_stream)
+        except pa.ArrowException as problem:
+            raise IntakeError(f"{name} is a broken Arrow file: {str(problem).rstrip('.')}. Get it again.") from problem
         return con.register("intake_frame", pa.RecordBatchReader.from_batches(schema, batches))
 
-    try:
-        return _streamed(con, prepare, name, decimal)
-    except pa.ArrowException as problem:
-        raise IntakeError(f"{name} is a broken Arrow file: {problem}. Get it again.") from problem
+    return _streamed(con, prepare, name, decimal)
 
 
 def _arrow_batches(path: Path, *, is_stream: bool) -> tuple[pa.Schema, Iterator[pa.RecordBatch]]:
@@ -101,7 +101,8 @@ def _arrow_batches(path: Path, *, is_stream: bool) -> tuple[pa.Schema, Iterator[
 def _streamed(
     con: duckdb.DuckDBPyConnection, prepare: Callable[[duckdb.DuckDBPyConnection], object], name: str, decimal: str
 ) -> TypedTable:
-    prepare(con)
+    with readable(name):
+        prepare(con)
     return _described(con, "intake_frame", "row_number() over ()", {}, prepare, name, decimal)
 
 

@@ -11,6 +11,7 @@ from driftbook.store.page.scale import Scale, number_text, time_ticks
 
 WIDTH = 1000
 _MOST_POINTS = 700
+_LETTERS = 14  # pixels that a tick's number needs above its line
 Point = tuple[datetime, float | None]
 
 
@@ -61,7 +62,8 @@ class Clock:
 
 def heights(scale: Scale, about: int = 4) -> list[Place]:
     """Marks at round numbers, from the top of the chart."""
-    return [Place(f"{scale.length - scale.at(number):.1f}", number_text(number)) for number in scale.ticks(about)]
+    tops = [(scale.length - scale.at(number), number) for number in scale.ticks(about)]
+    return [Place(f"{top:.1f}", number_text(number)) for top, number in tops if top >= _LETTERS]
 
 
 def line(clock: Clock, scale: Scale, points: Sequence[Point]) -> str:

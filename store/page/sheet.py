@@ -284,7 +284,10 @@ def _drift_title(row: dict[str, Any], unit: str) -> str:
 
 
 def _drift(row: dict[str, Any], factor: float) -> str:
-    return words.NOTHING if row["drift"] is None else f"{row['drift'] * factor:.3g}, without an interval so far"
+    if row["drift"] is None:
+        return words.NOTHING
+    three_digits = float(f"{row['drift'] * factor:.3g}")
+    return f"{three_digits:.10g}, without an interval so far"
 
 
 def _rail(clock: Clock, corrections: list[dict[str, Any]]) -> list[Place]:

@@ -14,6 +14,7 @@ import pyarrow as pa
 import pytest
 from naive_intake import empty_book
 
+from driftbook import store
 from driftbook.store import intake
 from driftbook.store.errors import IntakeError, UsageError
 from driftbook.store.intake import landing
@@ -221,6 +222,14 @@ def test_a_damaged_arrow_file_is_named(take, con, how):
     assert observations(con) == []
 
 
+def test_an_arrow_file_without_columns_is_named(take):
+    sink = io.BytesIO()
+    with pa.ipc.new_stream(sink, pa.schema([])):
+        pass
+    with pytest.raises(IntakeError, match=r"^delivery cannot be read: .*at least one column"):
+        take(sink.getvalue())
+
+
 def test_arrow_times_with_a_zone_and_dictionaries_are_read(take, con):
     table = pa.table(
         {
@@ -253,6 +262,19 @@ def test_arrow_times_with_a_zone_and_dictionaries_are_read(take, con):
 def test_frames_of_other_makes_are_read(take, con, frame):
     assert take(frame).rows_new == 2
     assert observations(con) == EXPECTED
+
+
+def test_a_book_under_change_takes_frames_of_any_make_and_paths(book, tmp_path):
+    path = tmp_path / "delivery.csv"
+    FRAME.write_csv(path)
+    options = intake.Options(add_series=True)
+    with store.writing(book) as work:
+        found = [work.ingest(source, options) for source in (FRAME.to_pandas(), path, FRAME.to_arrow(), str(path))]
+        with pytest.raises(UsageError, match="neither a path nor"):
+            work.ingest([1, 2])
+    assert [(one.rows_new, one.rows_same, one.known_already) for one in found] == [
+        (2, 0, False), (0, 2, False), (0, 0, True), (0, 0, True),
+    ]  # fmt: skip
 
 
 def test_anything_that_hands_itself_over_as_an_arrow_stream_is_a_frame(take, con):

@@ -1,5 +1,6 @@
 """Copy, work, swap: the book is never half written, never lost, and there is one writer at a time."""
 
+import errno
 import os
 import shutil
 import signal
@@ -149,10 +150,10 @@ def test_a_failure_to_take_the_books_place_leaves_the_bytes_as_they_were(book, m
     before = book.read_bytes()
 
     def fail(self, target):
-        raise OSError
+        raise OSError(errno.EIO, "Input/output error")
 
     monkeypatch.setattr(Path, "replace", fail)
-    with pytest.raises(OSError):  # noqa: PT011
+    with pytest.raises(BookError, match=r"the run cannot take the place of .*: Input/output error; it is unchanged"):
         write(book, "desk")
     assert book.read_bytes() == before
     assert beside(book) == []
