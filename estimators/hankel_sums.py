@@ -26,7 +26,7 @@ from numpy.typing import NDArray
 
 from driftbook.estimators.batches import Piece
 from driftbook.estimators.bessel import hankel, log_bessel_jet
-from driftbook.estimators.solve import Places, Surface
+from driftbook.estimators.maximise import Places, Surface
 from driftbook.estimators.square_root import by_alpha, is_still, log_quotient, order
 from driftbook.estimators.windows import Array, PairedTerms, window_maxima
 

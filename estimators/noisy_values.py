@@ -11,8 +11,8 @@ from collections.abc import Callable
 import numpy as np
 from numpy.typing import NDArray
 
+from driftbook.estimators.maximise import Limits, Surface, maximise
 from driftbook.estimators.pull import Pull
-from driftbook.estimators.solve import Limits, Surface, maximise
 from driftbook.estimators.windows import Array
 
 Places = NDArray[np.intp]

@@ -14,8 +14,8 @@ from numpy.typing import NDArray
 
 from driftbook.estimators.filtering import Filtered, Steps, Transition, by_length, filtered
 from driftbook.estimators.jets import Jet, exponential, inverse, relative, surface, times, variables
+from driftbook.estimators.maximise import Limits, Maximum, Surface, maximise
 from driftbook.estimators.oscillator import motion
-from driftbook.estimators.solve import Limits, Maximum, Surface, maximise
 from driftbook.estimators.swings import chart
 from driftbook.estimators.windows import Array
 

@@ -48,11 +48,11 @@ from driftbook.estimators import square_root
 from driftbook.estimators.batches import Answer, Piece
 from driftbook.estimators.hankel_sums import FAR_TERMS, MORE_TERMS, STALE, Roots, Summing, Sums, far_start
 from driftbook.estimators.intervals import COARSEST, PullInterval, exact_over_euler, widened_pull
+from driftbook.estimators.maximise import Limits, Maximum, Places, inverse, maximise
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
 from driftbook.estimators.regression import EPS, Mask, from_sums, from_windows
 from driftbook.estimators.repair import GATHERED, blank, repair
 from driftbook.estimators.slope_law import slope_law
-from driftbook.estimators.solve import Limits, Maximum, Places, inverse, maximise
 from driftbook.estimators.square_root import FASTEST, Windows, is_still, log_ratio, log_ratio_slope, order
 from driftbook.estimators.status import Status
 from driftbook.estimators.stepping import by_steps

@@ -36,14 +36,14 @@ from driftbook.estimators.filtered import filtered_sums
 from driftbook.estimators.filtering import Filtered, standardised
 from driftbook.estimators.hidden_pull import hidden_pull, pull_ends
 from driftbook.estimators.jets import Jet, constant, covariance, inverse, logarithm, surface, times, variables
+from driftbook.estimators.maximise import Limits, Maximum, Surface, maximise
+from driftbook.estimators.maximise import inverse as inverse_of
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
 from driftbook.estimators.models import ou
 from driftbook.estimators.noisy import centred
 from driftbook.estimators.oscillator import motion
 from driftbook.estimators.regression import ROUNDING, Mask
 from driftbook.estimators.repair import Columns, Places, Statuses, blank, repair
-from driftbook.estimators.solve import Limits, Maximum, Surface, maximise
-from driftbook.estimators.solve import inverse as inverse_of
 from driftbook.estimators.status import Status
 from driftbook.estimators.stepping import by_steps
 from driftbook.estimators.swings import (

@@ -41,10 +41,10 @@ from numpy.typing import NDArray
 from driftbook.estimators.batches import Answer, Piece
 from driftbook.estimators.jump_mixture import Increments, limits, standardised
 from driftbook.estimators.logs import logarithm
+from driftbook.estimators.maximise import Maximum, Places, inverse, maximise, maximise_from_each
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
 from driftbook.estimators.regression import EPS
 from driftbook.estimators.repair import blank
-from driftbook.estimators.solve import Maximum, Places, inverse, maximise, maximise_from_each
 from driftbook.estimators.status import Status
 from driftbook.estimators.stepping import by_steps
 from driftbook.estimators.windows import Array

@@ -37,6 +37,8 @@ from driftbook.estimators.filtering import Filtered, standardised
 from driftbook.estimators.hidden_pull import HiddenPull, finite, hidden_pull, pull_ends
 from driftbook.estimators.intervals import COARSEST
 from driftbook.estimators.jets import covariance, inverse, logarithm, times
+from driftbook.estimators.maximise import Limits, Maximum
+from driftbook.estimators.maximise import inverse as inverse_of
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
 from driftbook.estimators.models import ou
 from driftbook.estimators.noisy import MORE_POINTS, Candidates, Exact, candidates, centred, determinant_slope, exact
@@ -44,8 +46,6 @@ from driftbook.estimators.noisy_values import first_search
 from driftbook.estimators.pull import Pull
 from driftbook.estimators.regression import Mask
 from driftbook.estimators.repair import Columns, Places, Statuses, blank, repair
-from driftbook.estimators.solve import Limits, Maximum
-from driftbook.estimators.solve import inverse as inverse_of
 from driftbook.estimators.status import Status
 from driftbook.estimators.stepping import by_steps
 from driftbook.estimators.uneven_hidden import noisy_parameters, noisy_steps, search, total
