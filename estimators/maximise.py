@@ -20,6 +20,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from driftbook.estimators.symmetric import Factor, factor
 from driftbook.estimators.windows import Array
 
 Places = NDArray[np.intp]
@@ -71,8 +72,10 @@ class Maximum:
     ----------
     point : array, shape (p, m)
         Where a window did not converge, the best that was found.
-    value, gradient, hessian : array, shape (m,), (p, m), (p, p, m)
-        At the last point that was computed, which one step of Newton's leads from to `point`.
+    value : array, shape (m,)
+        At `point`: that of the last point that was computed, and what a last step of Newton's promises.
+    gradient, hessian : array, shape (p, m), (p, p, m)
+        At the last point that was computed.
     converged : array of bool, shape (m,)
     at_bound : array of bool, shape (p, m)
         Whether a parameter ended on one of its bounds.
@@ -87,6 +90,19 @@ class Maximum:
     converged: Mask
     at_bound: Mask
     rounds: NDArray[np.int64]
+
+    def covariance(self) -> Array:
+        """Inverse of the information, shape (p, p, m), given what is on a bound, whose own entries are NaN."""
+        information, held = -self.hessian, self.at_bound
+        some = np.flatnonzero(held.any(axis=0))
+        on_bound = held[:, some]
+        either = on_bound[:, None] | on_bound[None, :]
+        information[:, :, some] = np.where(either, 0.0, information[:, :, some])
+        for i, each in enumerate(held):
+            information[i, i, each] = 1.0
+        found = inverse(information)
+        found[:, :, some] = np.where(either, np.nan, found[:, :, some])
+        return found
 
     def take(self, places: Places) -> Maximum:
         """The same for some of the windows."""
@@ -128,11 +144,10 @@ def _climb(objective: Objective, start: Array, limits: Limits, most_rounds: int)
     best, converged, rounds = np.clip(start, lower, upper), np.zeros(m, dtype=np.bool_), np.zeros(m, dtype=np.int64)
     last = Surface(np.full(m, -np.inf), np.full((p, m), np.nan), np.full((p, p, m), np.nan))
     at, trial, here, top, damping = np.arange(m), best, best, last, np.zeros(m)
-    for _ in range(most_rounds):
+    for number in range(1, most_rounds + 1):
         if not at.size:
             break
         found = objective(trial, at)
-        rounds[at] += 1
         better = _is_finite(found) & (found.value >= top.value - FALL - SHARE * np.abs(top.value))
         if better.all():
             here, top, damping = trial, found, _eased(damping)
@@ -141,17 +156,19 @@ def _climb(objective: Objective, start: Array, limits: Limits, most_rounds: int)
             damping = np.where(better, _eased(damping), _raised(damping))
         step, damped, held = _step(here, top, damping, limits)
         whole = _shorten(step, held, limits.longest(here))
-        gain = _gain(step, top)
+        gain = 0.5 * (top.gradient * step).sum(axis=0)
         done = better & whole & (np.abs(gain) < CLOSE) & (damped <= _DAMPED)
         trial = np.clip(here + step, lower, upper)
         damping = np.where(damped > _DAMPED, damped, damping)
         ended = done | ~np.isfinite(top.value + gain) | (damping > _MOST_DAMPING)
         if ended.any():
-            _write(best, last, at, np.where(done, trial, here), top)
-            converged[at] = done
-            on = np.flatnonzero(~ended)
+            out, on = np.flatnonzero(ended), np.flatnonzero(~ended)
+            _write(best, last, at[out], np.where(done[out], trial[:, out], here[:, out]), top.take(out))
+            last.value[at[done]] += gain[done]
+            converged[at[done]], rounds[at[out]] = True, number
             at, trial, here, top, damping = at[on], trial[:, on], here[:, on], top.take(on), damping[on]
     _write(best, last, at, here, top)
+    rounds[at] = most_rounds
     at_bound = (best <= lower) | (best >= upper)
     return Maximum(best, last.value, last.gradient, last.hessian, converged, at_bound, rounds)
 
@@ -203,11 +220,26 @@ def maximise_from_each(
 def inverse(matrix: Array) -> Array:
     """Inverses of symmetric positive definite matrices, shape (p, p, m); NaN where one is not positive definite."""
     with np.errstate(all="ignore"):
-        scale = np.sqrt(np.einsum("iim->im", matrix))
-        factor, sound = _factor(matrix / (scale[:, None] * scale[None, :]))
-        unit = np.eye(len(matrix))
-        columns = [_solved(factor, np.broadcast_to(row[:, None], scale.shape)) / scale for row in unit]
-        return np.where(sound, np.stack(columns, axis=1) / scale[None, :], np.nan)
+        factors, sound = _factored(matrix, 1.0)
+        found = np.zeros(matrix.shape)
+        for pivot, row in zip(factors.pivots, _unit_inverse(factors.rows), strict=True):
+            weight = np.where(sound, 1 / pivot, np.nan)
+            for i, left in enumerate(row):
+                scaled = left * weight
+                for j, right in enumerate(row[: i + 1]):
+                    found[i, j] += scaled * right
+        for i in range(len(found)):
+            found[:i, i] = found[i, :i]
+        return found
+
+
+def _unit_inverse(rows: list[list[Array]]) -> list[list[Array]]:
+    """Inverse of a lower triangle with a diagonal of ones, given below it, row by row; with its diagonal."""
+    found: list[list[Array]] = []
+    for i, row in enumerate(rows):
+        products = ((row[k] * found[k][j] for k in range(j, i)) for j in range(i))
+        found.append([*(-sum(each, np.zeros(1)) for each in products), np.ones(1)])
+    return found
 
 
 def _column(values: tuple[float, ...]) -> Array:
@@ -215,9 +247,10 @@ def _column(values: tuple[float, ...]) -> Array:
 
 
 def _is_finite(surface: Surface) -> Mask:
-    total = surface.value.copy()
-    for row in (*surface.gradient, *(each for line in surface.hessian for each in line)):
-        total += row
+    total = surface.value + surface.gradient.sum(axis=0)
+    for i, row in enumerate(surface.hessian):
+        for entry in row[: i + 1]:
+            total += entry
     finite: Mask = np.isfinite(total)
     return finite
 
@@ -228,18 +261,6 @@ def _eased(damping: Array) -> Array:
 
 def _raised(damping: Array) -> Array:
     return np.maximum(damping * 8, 10 * _FIRST_DAMPING)
-
-
-def _gain(step: Array, top: Surface) -> Array:
-    """What the quadratic through the last point promises of a step."""
-    gain = np.zeros(step.shape[1])
-    for i, row in enumerate(top.hessian):
-        along = 0.5 * row[i] * step[i]
-        along += top.gradient[i]
-        for j in range(i):
-            along += row[j] * step[j]
-        gain += step[i] * along
-    return gain
 
 
 def _step(here: Array, top: Surface, damping: Array, limits: Limits) -> tuple[Array, Array, Mask]:
@@ -255,86 +276,56 @@ def _step(here: Array, top: Surface, damping: Array, limits: Limits) -> tuple[Ar
             break
         held[:, some] |= crosses[:, some]
         move = np.where(held, np.clip(to, lower, upper) - here, 0.0)[:, some]
-        step[:, some], damped[some] = _newton(top.take(some), damping[some], held[:, some], move)
+        step[:, some], damped[some] = _newton(top.take(some), damped[some], held[:, some], move)
     return step, damped, held
 
 
 def _newton(top: Surface, damping: Array, held: Mask, move: Array) -> tuple[Array, Array]:
     """The step to the top of the damped quadratic with some parameters moved as told, and the damping it took."""
-    size = np.sqrt(np.abs(np.einsum("iim->im", top.hessian)) + np.finfo(np.float64).tiny)
-    matrix = top.hessian / -(size[:, None] * size[None, :])
-    pull = top.gradient / size
-    if held.any():
-        _hold(matrix, pull, held, move * size)
-    step, damped = _solved_damped(matrix, pull, damping, held)
+    bend, pull = top.hessian, top.gradient
+    some = np.flatnonzero(held.any(axis=0))
+    if some.size:
+        bend, pull = bend.copy(), pull.copy()
+        bend[:, :, some], pull[:, some] = _holding(top.take(some), held[:, some], move[:, some])
+    damped = damping.copy()
+    step = _solved(bend, pull, damping, held)
     left = np.flatnonzero(np.isnan(step[0]))
     for _ in range(_MOST_TRIES):
         if not left.size:
             break
         damped[left] = np.maximum(damped[left] * 4, _FIRST_DAMPING)
-        again = matrix[:, :, left], pull[:, left], damped[left], held[:, left]
-        step[:, left] = _solved_damped(*again)[0]
+        step[:, left] = _solved(bend[:, :, left], pull[:, left], damped[left], held[:, left])
         left = left[np.isnan(step[0, left])]
-    return step / size, damped
+    return step, damped
 
 
-def _hold(matrix: Array, pull: Array, held: Mask, move: Array) -> None:
-    """Make the parameters that are held move as told, and the others answer to it; in place."""
-    for i, row in enumerate(matrix):
+def _holding(top: Surface, held: Mask, move: Array) -> tuple[Array, Array]:
+    """Hessian and gradient that make the parameters that are held move as told, and the others answer to it."""
+    bend = np.where(held[:, None] | held[None, :], 0.0, top.hessian)
+    pull = top.gradient.copy()
+    for i, row in enumerate(top.hessian):
         for j, entry in enumerate(row):
-            pull[i] -= np.where(held[j], entry * move[j], 0.0)
-    matrix[held[:, None] | held[None, :]] = 0.0
-    pull[held] = move[held]
+            pull[i] += np.where(held[j], entry * move[j], 0.0)
     for i, each in enumerate(held):
-        matrix[i, i, each] = 1.0
+        bend[i, i, each] = -1.0
+    return bend, np.where(held, move, pull)
 
 
-def _solved_damped(matrix: Array, pull: Array, damping: Array, held: Mask) -> tuple[Array, Array]:
-    """The solution, NaN where the damped matrix is not positive definite, and a copy of the damping."""
+def _solved(bend: Array, pull: Array, damping: Array, held: Mask) -> Array:
+    """The step, NaN where the damped hessian does not bend down in every direction."""
     if damping.any():
-        matrix = matrix.copy()
+        bend = bend.copy()
         for i, each in enumerate(held):
-            matrix[i, i] += np.where(each, 0.0, damping)
-    factor, sound = _factor(matrix)
-    step = _solved(factor, pull)
+            bend[i, i] -= np.where(each, 0.0, damping * np.abs(bend[i, i]))
+    factors, sound = _factored(bend, -1.0)
+    step = np.stack(factors.solve(list(-pull)))
     if not sound.all():
         step[:, ~sound] = np.nan
-    return step, damping.copy()
+    return step
 
 
-Factor = list[list[Array]]
-"""Of the lower triangle, row by row; the pivots are the last of each row."""
-
-
-def _factor(matrix: Array) -> tuple[Factor, Mask]:
-    """L D L' of symmetric matrices, shape (p, p, m), and whether all pivots are positive."""
-    rows: Factor = []
-    sound = np.ones(matrix.shape[-1], dtype=np.bool_)
-    for i in range(len(matrix)):
-        row: list[Array] = []
-        for j in range(i):
-            entry = matrix[i, j].copy()
-            for k in range(j):
-                entry -= row[k] * rows[j][k] * rows[k][k]
-            row.append(entry / rows[j][j])
-        pivot = matrix[i, i].copy()
-        for k in range(i):
-            pivot -= row[k] * row[k] * rows[k][k]
-        sound &= pivot > _LEAST_PIVOT
-        rows.append([*row, pivot])
-    return rows, sound
-
-
-def _solved(factor: Factor, right: Array) -> Array:
-    """The solution of L D L' s = right, shape (p, m)."""
-    p = len(factor)
-    s = [each.copy() for each in right]
-    for i in range(p):
-        for k in range(i):
-            s[i] -= factor[i][k] * s[k]
-    for i in range(p):
-        s[i] /= factor[i][i]
-    for i in range(p - 1, -1, -1):
-        for k in range(i + 1, p):
-            s[i] -= factor[k][i] * s[k]
-    return np.stack(s)
+def _factored(matrix: Array, sign: float) -> tuple[Factor, Mask]:
+    """L D L′ of symmetric matrices, and whether all pivots have the sign."""
+    factors = factor(lambda i, j: matrix[i, j], len(matrix))
+    sound: Mask = (factors.share > _LEAST_PIVOT) & (sign * np.einsum("iim->im", matrix) > 0).all(axis=0)
+    return factors, sound
