@@ -27,6 +27,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from driftbook.estimators.jets import Jet, constant, inverse, inverse_and_logarithm, logarithm, moved, square, times
+from driftbook.estimators.step_lengths import StepLengths
 from driftbook.estimators.windows import Array
 
 Places = NDArray[np.intp]
@@ -173,19 +174,12 @@ def standardised(z: Array, variance: Array, step: Steps, flow: Array) -> tuple[A
     return squares, fourth
 
 
-FEW = 16  # lengths of step of which each is worked out once
-
-
-def by_length(steps: Array, transition: Callable[[Array], Transition]) -> Steps:
-    """Transitions of windows whose steps, shape (n, m), may have few lengths.
-
-    `transition` makes them from lengths, shape (m,).
-    """
-    lengths, kinds = np.unique(steps, return_inverse=True)
-    if lengths.size > FEW:
-        return lambda k: transition(steps[k])
-    m = steps.shape[1]
-    made = [transition(np.full(m, length)) for length in lengths]
+def by_length(steps: StepLengths, transition: Callable[[Array], Transition]) -> Steps:
+    """Transitions of windows; `transition` makes them from lengths, shape (m,)."""
+    if steps.kinds is None:
+        return lambda k: transition(steps.steps[k])
+    m = steps.duration.size
+    made = [transition(np.full(m, length)) for length in steps.lengths]
     if len(made) == 1:
         return lambda _: made[0]
     slots: dict[int, int] = {}  # jets that several names share are looked up once
@@ -195,7 +189,7 @@ def by_length(steps: Array, transition: Callable[[Array], Transition]) -> Steps:
     first = {slots[key]: name for name, key in reversed(names.items())}
     table = np.stack([[getattr(each, first[slot]) for each in made] for slot in range(len(slots))])
     table = np.ascontiguousarray(table.transpose(0, 2, 1, 3)).reshape(len(slots) * 6, -1)
-    places = kinds.reshape(steps.shape) * m + np.arange(m)
+    places = steps.places()
 
     def chosen(k: int) -> Transition:
         found = table.take(places[k], axis=1).reshape(len(slots), 6, m)

@@ -26,18 +26,21 @@ from numpy.typing import NDArray
 
 from driftbook.estimators.batches import Piece
 from driftbook.estimators.bessel import hankel, log_bessel_jet
-from driftbook.estimators.solve import Places, Surface
-from driftbook.estimators.square_root import by_alpha, is_still, log_quotient, order
+from driftbook.estimators.maximise import Places, Surface
+from driftbook.estimators.square_root import FASTEST, by_alpha, is_still, log_quotient, log_ratio, order
 from driftbook.estimators.windows import Array, PairedTerms, window_maxima
 
 Integers = NDArray[np.int64]
 Mask = NDArray[np.bool_]
 
-FAR, FAR_TERMS, MORE_TERMS = 36.0, 10, 24  # least A g of windows that need no step by itself, and the expansion's terms
-NEAR, NEAR_TERMS = 12.0, 16  # the same of the steps that enter the sums of the others
+TRUNCATED = 1e-10  # size, in a log-likelihood, of the last term of an expansion; what it leaves out is less
+NEAR = 12.0  # least A g of the steps that enter sums
 STALE = 0.75  # share of unchanged values above which a window is taken for no diffusion
 MOST_NEAR = 0.6  # share of steps by themselves above which sums save nothing
-_HEDGE = 1.2  # by how much A may turn out smaller than at the start
+_HEDGE = 1.2  # by how much A may turn out smaller than at the start,
+_ROOM = 2.0  # and the last term larger
+_TERMS, _NEAR_TERMS = (8, 12, 24), 16  # of expansions: windows without steps by themselves take the fewest that do
+_LONGEST = 0.25  # step of a starting point
 _LEVELS = 4  # of what counts as near zero, from one power of two to the next
 
 
@@ -244,8 +247,6 @@ class Summing:
     ----------
     stale : array of bool, shape (m,)
         Windows with most values unchanged, which are left out.
-    far, near : array of int
-        Places of the others: those without steps near zero, and those with some.
     """
 
     def __init__(self, piece: Piece, roots: Roots) -> None:
@@ -255,20 +256,28 @@ class Summing:
         self.stale = unchanged > STALE * piece.lookback
         moving = ~(self.stale | is_still(D0 / piece.lookback, D2))
         least = -window_maxima(-roots.g, piece.lookback, piece.skip).reshape(-1)
-        smallest_far = FAR / piece.lookback * self._common[0]  # as 1/A is about D2/n
-        self.far = np.flatnonzero(moving & (least >= smallest_far))
-        self.near = np.flatnonzero(moving & (least < smallest_far))
+        self._near_below = _HEDGE * NEAR / piece.lookback * D2  # as 1/A is about D2/n
+        self._far = np.flatnonzero(moving & (least >= self._near_below))
+        self._near = np.flatnonzero(moving & (least < self._near_below))
 
-    def far_sums(self, places: Places, terms: int = FAR_TERMS) -> Sums:
-        """Of windows without steps near zero."""
-        return _far_sums(self._piece, self._roots, self._common, places, terms)
-
-    def near_groups(self) -> Iterator[tuple[Places, Sums]]:
-        """Places and sums of windows with some steps near zero; not those with most."""
-        variance = self._common[0][self.near] / self._piece.lookback
-        level = np.ceil(_LEVELS * np.log2(_HEDGE * NEAR * variance)).astype(np.int64)
+    def groups(self) -> Iterator[tuple[Places, Sums, Array]]:
+        """Places of windows, their sums, and points to start from, shape (3, m); not of those with most steps near."""
+        yield from self._far_groups()
+        level = np.ceil(_LEVELS * np.log2(self._near_below[self._near])).astype(np.int64)
         for each in np.unique(level):
-            yield _near_sums(self._piece, self._roots, self._common, self.near[level == each], 2 ** (each / _LEVELS))
+            yield _near_sums(self._piece, self._roots, self._common, self._near[level == each], 2 ** (each / _LEVELS))
+
+    def _far_groups(self) -> Iterator[tuple[Places, Sums, Array]]:
+        places = self._far
+        for terms in _TERMS:
+            if not places.size:
+                return
+            sums = _far_sums(self._piece, self._roots, self._common, places, terms)
+            start = _far_start(sums)
+            enough = sums.rest(start) <= TRUNCATED / _ROOM
+            some = np.flatnonzero(enough)
+            yield (places, sums, start) if enough.all() else (places[some], sums.take(some), start[:, some])
+            places = places[~enough]
 
 
 Common = tuple[Array, Array, Array, Array]
@@ -314,36 +323,88 @@ def _expansion_terms(share: Array, terms: int, far: Mask | None = None) -> Paire
     return room
 
 
-def _near_sums(piece: Piece, roots: Roots, common: Common, places: Places, unit: float) -> tuple[Places, Sums]:
+def _near_sums(piece: Piece, roots: Roots, common: Common, places: Places, unit: float) -> tuple[Places, Sums, Array]:
     """Of windows whose steps count as near zero below `unit`, those with not too many of them."""
     n, m, width = piece.lookback, piece.shape[-1], roots.g.shape[-1]
     segments, row = np.unique(places // m, return_inverse=True)
-    g = roots.g.reshape(-1, width)[segments]
+    a, d, g = (each.reshape(-1, width)[segments] for each in (roots.a, roots.d, roots.g))
     far = g >= unit
     small = np.flatnonzero(~far)
     begin = row * width + places % m
     near = Near(np.log(g.reshape(-1)[small]), np.searchsorted(small, begin), np.searchsorted(small, begin + n))
     count = (near.end - near.begin).astype(np.float64)
     keep = np.flatnonzero(count <= MOST_NEAR * n)
-    log_g, *inverse = _expansion_terms(unit / g, NEAR_TERMS, far).sums(n, piece.skip)
     at = row[keep], places[keep] % m
+    log_g, *inverse = (each[at] for each in _expansion_terms(unit / g, _NEAR_TERMS, far).sums(n, piece.skip))
     D2, D1, D0, log_growth = (each[places[keep]] for each in common)
-    powers, units = np.stack([each[at] for each in inverse]), np.full(keep.size, unit)
-    sums = Sums(n, D2, D1, D0, log_growth, units, n - count[keep], log_g[at], powers, near.take(keep))
-    return places[keep], sums
+    units, far_count = np.full(keep.size, unit), n - count[keep]
+    sums = Sums(n, D2, D1, D0, log_growth, units, far_count, log_g, np.stack(inverse), near.take(keep))
+    weighted = [each[at] for each in _weighted_terms(a, d, unit).sums(n, piece.skip)]
+    return places[keep], sums, _near_start(sums, *weighted)
 
 
-def far_start(sums: Sums) -> Array:
-    """Weighted least squares of increments on values, with weights 1/g, for windows without steps near zero; (3, m).
+def _weighted_terms(a: Array, d: Array, unit: float) -> PairedTerms:
+    """w, w y and w y² of increments y, in units of `unit`, with weights w = 1/(1 + x) that stay bounded at zero."""
+    room = PairedTerms(a.shape, 3)
+    w, wy, wyy = room.parts
+    np.divide(unit, unit + np.square(a), out=w)
+    y = d * (2 * a + d) / unit
+    np.multiply(w, y, out=wy)
+    np.multiply(wy, y, out=wyy)
+    return room
+
+
+def _near_start(sums: Sums, S: Array, Sy: Array, Syy: Array) -> Array:
+    """Weighted least squares of increments y on values x, in units of `Sums.unit`, with weights 1/(1 + x)."""
+    unit, n = sums.unit, sums.n
+    Sx = n - S
+    Sxx, Sxy = sums.D0 / unit - Sx, (sums.D2 + 2 * sums.D1) / unit - Sy
+    det = S * Sxx - Sx * Sx
+    alpha, slope = (Sxx * Sy - Sx * Sxy) / det, (Sx * Sy - S * Sxy) / det
+    variance = (Syy - alpha * Sy + slope * Sxy) / Sx
+    h = np.clip(-np.log1p(-np.minimum(slope, 0.9)), -1.0, 0.5 * FASTEST)
+    ratio = np.exp(log_ratio(h))
+    c = 2 * ratio / (variance * unit)
+    return np.stack([np.log(c), -0.5 * h, unit * np.maximum(alpha, 0.25 * variance) / ratio])
+
+
+def _far_start(sums: Sums) -> Array:
+    """Where the likelihood with two terms of the expansion is largest, nearly, for windows without steps near zero.
+
+    With S = Σ 1/g + Σ 1/g²/(2 A), the best q is u A/S with u = ½ ln(x_n/x_0) − n rho, and the best c is n/(2 R) with
+    R = Q − r u²/S, Q = Σ (b − r a)²; what is left is to minimise ln R + rho: one step of Newton's from weighted least
+    squares.
+    """
+    n, half = sums.n, 0.5 * sums.log_growth
+    S = sums.inverse[0] / sums.unit
+    variance, h = _weighted_squares(sums, S)
+    S_both = S + 0.125 * variance * (sums.inverse[1] / np.square(sums.unit))
+    rho = -0.5 * h
+    less, u, r = np.expm1(rho), half - n * rho, np.exp(rho)
+    lean = r / S_both
+    Q, Q_1 = sums.D2 - less * (2 * sums.D1 - less * sums.D0), 2 * r * (less * sums.D0 - sums.D1)
+    R, R_1 = Q - lean * u * u, Q_1 - lean * u * (u - 2 * n)
+    R_2 = Q_1 + 2 * np.square(r) * sums.D0 - lean * (u * (u - 4 * n) + 2 * n * n)
+    share = R_1 / R
+    move = -(share + 1) / (R_2 / R - np.square(share))
+    rho = rho + np.where(np.abs(move) < _LONGEST, move, 0.0)
+    less, u, r = np.expm1(rho), half - n * rho, np.exp(rho)
+    R = sums.D2 - less * (2 * sums.D1 - less * sums.D0) - r / S_both * u * u
+    c = n / (2 * np.fmax(R, 0.25 * sums.D2))
+    c = c * (1 - S / (8 * n * c * r))
+    q = 2 * c * r * u / S_both
+    return np.stack([np.log(c), rho, np.fmax((q + 1) / c, 0.25 / c)])
+
+
+def _weighted_squares(sums: Sums, S: Array) -> tuple[Array, Array]:
+    """Variance sigma² Δ and pull h by weighted least squares of increments on values, with weights 1/g; S = Σ 1/g.
 
     Σ dx/x is about ln(x_n/x_0) + ½ sigma² Δ Σ 1/x, and Σ dx²/x about 4 D2.
     """
     n, squares = sums.n, 4 * sums.D2
-    S = sums.inverse[0] / sums.unit
     rise = sums.D2 + 2 * sums.D1
     pull = sums.log_growth + squares * S / (2 * n)
     det = S * sums.D0 - n * n
     alpha, slope = (sums.D0 * pull - n * rise) / det, (n * pull - S * rise) / det
     variance = np.fmax(squares - alpha * pull + slope * rise, 0.25 * squares) / n
-    h = -np.log1p(-np.clip(np.where(np.isfinite(slope), slope, 0.0), -0.5, 0.8))
-    return np.stack([np.log(2 / variance) - 0.5 * h, -0.5 * h, np.fmax(alpha, 0.25 * variance)])
+    return variance, -np.log1p(-np.clip(np.where(np.isfinite(slope), slope, 0.0), -0.5, 0.8))

@@ -13,7 +13,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from driftbook.estimators.solve import Surface
+from driftbook.estimators.maximise import Surface
 from driftbook.estimators.windows import Array
 
 Jet = Array
@@ -172,5 +172,5 @@ def covariance(a: Jet, b: Jet, of_parameters: Array) -> Array:
 
 
 def surface(jet: Jet) -> Surface:
-    """Value, gradient and Hessian, as `driftbook.estimators.solve.maximise` takes them."""
+    """Value, gradient and Hessian, as `driftbook.estimators.maximise.maximise` takes them."""
     return Surface(jet[0], jet[1:3], np.stack([jet[3:5], jet[4:6]]))

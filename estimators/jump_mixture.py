@@ -30,7 +30,7 @@ from functools import lru_cache
 
 import numpy as np
 
-from driftbook.estimators.solve import Limits, Places, Surface
+from driftbook.estimators.maximise import Limits, Places, Surface
 from driftbook.estimators.windows import Array
 
 REST = 1e-12  # Poisson mass that is left out

@@ -9,20 +9,22 @@ of squares and G = Σ_{k ≤ n} a^{2k} the likelihood is largest where
 
 is least. Noise has a variance where a ≥ 0, and X one of its own where 1 − 1/a ≤ b ≤ 1 − a; at either end only noise is
 left, about a curve that is given. The search is over t = −ln(1 − a) at Chebyshev points, where f, f at the two ends, b
-and c are known exactly; in between they are polynomials.
+and the means that give c are known exactly; in between they are polynomials. One run through each window then gives the
+likelihood at what was found, to all digits.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass, fields
+from itertools import pairwise
 
 import numpy as np
-from numpy.typing import NDArray
 
 from driftbook.estimators import chebyshev
-from driftbook.estimators.chebyshev import Panels, Places, least
+from driftbook.estimators.chebyshev import Least, Panels, Places, least
 from driftbook.estimators.filtered import FilteredSums, filtered_sums
 from driftbook.estimators.innovations import standardised_moments
+from driftbook.estimators.noisy_profile import powers, profile, weight_of_one
 from driftbook.estimators.regression import ROUNDING, Mask
 from driftbook.estimators.windows import Array
 
@@ -42,81 +44,6 @@ def panels_of(n: int, points: int) -> Panels:
 
 
 @dataclass(frozen=True)
-class Profile:
-    """Generalised least squares at given a; arrays of one shape, windows by nodes by segments.
-
-    Attributes
-    ----------
-    n : int
-        Steps in a window.
-    spread, weight : array
-        Sum of squares of the filtered levels about the filtered constant, and that of the latter.
-    level, drift : array
-        Weighted means of levels and increments.
-    slope : array
-        b.
-    increments, products : array
-        Sum of squares of the filtered increments about the filtered constant, and of their products with levels.
-    log_det : array
-        ½ ln(1 + G).
-    """
-
-    n: int
-    spread: Array
-    weight: Array
-    level: Array
-    drift: Array
-    increments: Array
-    products: Array
-    log_det: Array
-
-    @property
-    def slope(self) -> Array:
-        """The best b."""
-        return np.asarray(-self.products / self.spread)
-
-    def rss(self, slope: Array) -> Array:
-        """R at a given b."""
-        return np.asarray(self.increments + slope * (2 * self.products + slope * self.spread))
-
-    def value(self, slope: Array) -> Array:
-        """f at a given b."""
-        return np.asarray(0.5 * self.n * np.log(self.rss(slope)) + self.log_det)
-
-
-def profile(sums: FilteredSums, a: Array, n: int) -> Profile:
-    """Least squares from the sums of filtered increments and levels.
-
-    Parameters
-    ----------
-    sums : FilteredSums
-        Of increments and levels, in this order.
-    a : array, shape (nodes, 1 or segments)
-    n : int
-        Steps in a window.
-    """
-    all_faded = n * np.log(a)
-    G1, G2 = -a * np.expm1(all_faded) / (1 - a), -a * a * np.expm1(2 * all_faded) / (1 - a * a)
-    gain, share = 1 / (1 - a), 1 / (1 + G2)
-    h1 = gain * (G1 - G2)
-    weight = np.square(gain) * (n - 2 * G1 + G2) - share * h1 * h1
-    (total_d, total_x), (h_d, h_x) = np.moveaxis(sums.total, 1, 0), np.moveaxis(sums.fading, 1, 0)
-    drift = (gain * (total_d - h_d) - share * h1 * h_d) / weight
-    level = (gain * (total_x - h_x) - share * h1 * h_x) / weight
-    dd = sums.gram(0, 0) - share * h_d * h_d - weight * drift * drift
-    dx = sums.gram(0, 1) - share * h_d * h_x - weight * drift * level
-    xx = sums.gram(1, 1) - share * h_x * h_x - weight * level * level
-    log_det = 0.5 * np.log1p(G2)
-    return Profile(n, xx, np.broadcast_to(weight, xx.shape), level, drift, dd, dx, np.broadcast_to(log_det, xx.shape))
-
-
-def determinant_slope(a: Array, n: int) -> Array:
-    """The derivative of ½ ln(1 + G) = ½ ln((1 − a^{2n+2})/(1 − a²)) by a."""
-    last = np.exp(2 * (n + 1) * np.log(a))
-    return np.asarray(a / (1 - a * a) - (n + 1) * last / (a * (1 - last)))
-
-
-@dataclass(frozen=True)
 class Candidates:
     """What the search found, arrays of shape (m,).
 
@@ -133,6 +60,10 @@ class Candidates:
         half the 95 % point of χ² with one degree of freedom.
     value : array
         f there.
+    level, drift : array
+        Weighted means of levels and of increments.
+    spread : array
+        As in `Profile`.
     curvature, slope_t, lean : array
         By t: the second derivative of f, the derivative of b, and that of c less theta times that of b, which is b
         times that of theta.
@@ -143,25 +74,44 @@ class Candidates:
     pure: Mask
     swings: Mask
     value: Array
+    level: Array
+    drift: Array
+    spread: Array
     curvature: Array
     slope_t: Array
     lean: Array
 
-    def take(self, places: NDArray[np.intp]) -> Candidates:
+    def take(self, places: Places) -> Candidates:
         """Some of them."""
         return Candidates(*(getattr(self, each.name)[places] for each in fields(self)))
 
 
-def candidates(
-    sequences: Array, usual: Array, n: int, pivot: int, windows: int, tail: int, points: int = POINTS
-) -> Candidates:
+@dataclass(frozen=True)
+class Segments:
+    """What is searched.
+
+    Attributes
+    ----------
+    sequences : array, shape (steps, 2, segments)
+        Increments less `usual`, and levels before them less `origin`.
+    usual, origin : array, shape (segments,)
+    """
+
+    sequences: Array
+    usual: Array
+    origin: Array
+
+    def take(self, part: slice) -> Segments:
+        """Some of them."""
+        return Segments(np.ascontiguousarray(self.sequences[..., part]), self.usual[part], self.origin[part])
+
+
+def candidates(segments: Segments, n: int, pivot: int, windows: int, tail: int, points: int = POINTS) -> Candidates:
     """Search in every window of segments.
 
     Parameters
     ----------
-    sequences : array, shape (steps, 2, segments)
-        Increments less `usual`, and levels before them from an origin of each segment.
-    usual : array, shape (segments,)
+    segments : Segments
     n : int
         Steps in a window.
     pivot, windows, tail : int
@@ -176,27 +126,74 @@ def candidates(
     """
     panels = panels_of(n, points)
     at_once = max(1, (LANES if windows > FEW else FEW_LANES) // panels.nodes.size)
-    found = []
-    for start in range(0, sequences.shape[2], at_once):
-        part = slice(start, start + at_once)
-        found.append(_search(panels, np.ascontiguousarray(sequences[..., part]), usual[part], n, pivot, windows, tail))
+    starts = range(0, segments.usual.size, at_once)
+    found = [_search(panels, segments.take(slice(k, k + at_once)), n, pivot, windows, tail) for k in starts]
     return Candidates(*(np.concatenate([getattr(each, f.name) for each in found]) for f in fields(Candidates)))
 
 
-def _search(panels: Panels, sequences: Array, usual: Array, n: int, pivot: int, windows: int, tail: int) -> Candidates:
+def _search(panels: Panels, segments: Segments, n: int, pivot: int, windows: int, tail: int) -> Candidates:
     a = -np.expm1(-panels.nodes)[:, None]
-    sums = filtered_sums(sequences, a, pivot, windows, tail, lead=0)
-    free, falling, rising, slopes, constants = _tables(sums, a, n)
-    constants += np.repeat(usual, windows)
-    above, below = slopes > 1 - a, slopes < 1 - 1 / a
-    best = _best(np.where(above, falling, np.where(below, rising, free)))
-    found = _free(panels, free, slopes, constants, best)
-    found.pure[(above | below)[best, np.arange(best.size)]] = True
+    tables = _tables(filtered_sums(segments.sequences, a, pivot, windows, tail, lead=0), a, n)
+    for table, pivots in ((tables.drift, segments.usual), (tables.level, segments.origin)):
+        table += np.tile(pivots, windows)
+    best = _best(tables.free)
+    outside = _outside(tables.slope[best, np.arange(best.size)], a[best, 0])
+    doubtful = np.flatnonzero(outside)
+    if doubtful.size:
+        best[doubtful] = _best_inside(tables.take(doubtful), a, n)
+        outside[doubtful] = _outside(tables.slope[best[doubtful], doubtful], a[best[doubtful], 0])
+    found = _free(panels, tables, best)
+    found.pure[outside] = True
     pure = np.flatnonzero(found.pure)
     if pure.size:
-        _only_noise(panels, falling[:, pure], rising[:, pure], pure, found)
-        found.swings[pure] = (slopes[0, pure] > 1) & (found.value[pure] - free[0, pure] > HALF_POINT)
-    return found
+        _only_noise(panels, tables.take(pure), a, n, pure, found)
+        swings = (tables.slope[0, pure] > 1) & (found.value[pure] - tables.free[0, pure] > HALF_POINT)
+        found.swings[pure] = swings
+    by_segment = np.arange(best.size).reshape(windows, -1).T.ravel()
+    return found.take(by_segment)
+
+
+@dataclass(frozen=True)
+class Tables:
+    """At every point of the panels, arrays of shape (nodes, windows * segments), window after window.
+
+    Attributes
+    ----------
+    free : array
+        f.
+    slope, level, drift, spread : array
+        As in `Profile`.
+    """
+
+    free: Array
+    slope: Array
+    level: Array
+    drift: Array
+    spread: Array
+
+    def at_ends(self, a: Array, n: int) -> tuple[Array, Array]:
+        """f with b = 1 − a, and with b = 1 − 1/a."""
+        log_det = 0.5 * np.log1p(powers(a, n)[1])
+        rss = np.exp((self.free - log_det) * (2 / n))
+        ends = (rss + self.spread * np.square(b - self.slope) for b in (1 - a, 1 - 1 / a))
+        falling, rising = (0.5 * n * np.log(each) + log_det for each in ends)
+        return falling, rising
+
+    def take(self, places: Places) -> Tables:
+        """For some of the windows."""
+        return Tables(*(getattr(self, each.name)[:, places] for each in fields(self)))
+
+
+def _tables(sums: FilteredSums, a: Array, n: int) -> Tables:
+    windows, _, nodes, segments = sums.total.shape
+    tables = np.empty((len(fields(Tables)), nodes, windows, segments))
+    for start in range(0, windows, SLICE):
+        part = slice(start, start + SLICE)
+        fit = profile(FilteredSums(sums.half_gram[part], sums.total[part], sums.fading[part]), a, n)
+        values = fit.value, fit.slope, fit.level, fit.drift, fit.spread
+        for table, each in zip(tables, values, strict=True):
+            table[:, part] = each.transpose(1, 0, 2)
+    return Tables(*tables.reshape(len(tables), nodes, -1))
 
 
 def _best(values: Array) -> Places:
@@ -204,58 +201,66 @@ def _best(values: Array) -> Places:
     return np.asarray(np.nan_to_num(values, nan=np.inf).argmin(axis=0), dtype=np.intp)
 
 
-def _only_noise(panels: Panels, falling: Array, rising: Array, places: Places, found: Candidates) -> None:
-    """Where f is least at the ends of b."""
-    at, other = (least(panels, values, _best(values)) for values in (falling, rising))
-    t, t_other = panels.at(at.panel, at.z), panels.at(other.panel, other.z)
-    grows = other.value < at.value
-    t = np.where(grows, t_other, t)
-    found.a[places] = a = -np.expm1(-t)
-    found.slope[places] = np.where(grows, -np.exp(-t) / a, np.exp(-t))
-    found.value[places] = np.where(grows, other.value, at.value)
+def _outside(b: Array, a: Array) -> Mask:
+    """Whether X would have a variance below zero."""
+    found: Mask = (b > 1 - a) | (b < 1 - 1 / a)
+    return found
 
 
-def _free(panels: Panels, values: Array, slopes: Array, constants: Array, best: Places) -> Candidates:
+def _best_inside(tables: Tables, a: Array, n: int) -> Places:
+    """The places of the least values where X has a variance or none."""
+    falling, rising = tables.at_ends(a, n)
+    return _best(np.where(tables.slope > 1 - a, falling, np.where(tables.slope < 1 - 1 / a, rising, tables.free)))
+
+
+def _free(panels: Panels, tables: Tables, best: Places) -> Candidates:
     """Where f is least near the best points; only noise is left where it falls on beyond the points next to them."""
-    at = least(panels, values, best)
+    at = least(panels, tables.free, best)
     t = panels.at(at.panel, at.z)
-    of_slope, of_constant = panels.series(slopes, at.panel), panels.series(constants, at.panel)
-    b, c = chebyshev.value(of_slope, at.z), chebyshev.value(of_constant, at.z)
-    b_t = chebyshev.value(chebyshev.derivative(of_slope), at.z) / panels.half
-    c_t = chebyshev.value(chebyshev.derivative(of_constant), at.z) / panels.half
+    (b, b_t), (level, level_t), (drift, drift_t) = (
+        _with_slope(panels, table, at) for table in (tables.slope, tables.level, tables.drift)
+    )
+    spread = chebyshev.value(panels.series(tables.spread, at.panel), at.z)
     a = -np.expm1(-t)
     a[t < NOTHING] = 0.0
-    pure = (b > 1 - a) | (b < 1 - 1 / a) | ((at.falls < 0) & (t > 0))
-    return Candidates(a, b, pure, np.zeros_like(pure), at.value, at.curvature / panels.half**2, b_t, c_t - c / b * b_t)
+    pure = _outside(b, a) | ((at.falls < 0) & (t > 0))
+    lean = drift_t + b * level_t - drift / b * b_t
+    curvature = at.curvature / panels.half**2
+    return Candidates(a, b, pure, np.zeros_like(pure), at.value, level, drift, spread, curvature, b_t, lean)
 
 
-def _tables(sums: FilteredSums, a: Array, n: int) -> Array:
-    """f, f with b = 1 − a and b = 1 − 1/a, b and c, shape (5, nodes, all windows), segment after segment."""
-    windows, _, nodes, segments = sums.total.shape
-    tables = np.empty((5, nodes, segments, windows))
-    for start in range(0, windows, SLICE):
-        part = slice(start, start + SLICE)
-        fit = profile(FilteredSums(sums.half_gram[part], sums.total[part], sums.fading[part]), a, n)
-        slope = fit.slope
-        values = fit.value(slope), fit.value(1 - a), fit.value(1 - 1 / a), slope, fit.drift + slope * fit.level
-        for table, each in zip(tables, values, strict=True):
-            table[..., part] = np.moveaxis(each, 0, -1)
-    return tables.reshape(5, nodes, -1)
+def _with_slope(panels: Panels, table: Array, at: Least) -> tuple[Array, Array]:
+    """Values and derivatives by t of what is known at all points."""
+    series = panels.series(table, at.panel)
+    return chebyshev.value(series, at.z), chebyshev.value(chebyshev.derivative(series), at.z) / panels.half
+
+
+def _only_noise(panels: Panels, tables: Tables, a: Array, n: int, places: Places, found: Candidates) -> None:
+    """Where f is least at the ends of b."""
+    at, other = (least(panels, values, _best(values)) for values in tables.at_ends(a, n))
+    grows = other.value < at.value
+    panel, z = np.where(grows, other.panel, at.panel), np.where(grows, other.z, at.z)
+    t = panels.at(panel, z)
+    found.a[places] = root = -np.expm1(-t)
+    found.slope[places] = np.where(grows, -np.exp(-t) / root, np.exp(-t))
+    found.value[places] = np.where(grows, other.value, at.value)
+    for name in ("level", "drift", "spread"):
+        getattr(found, name)[places] = chebyshev.value(panels.series(getattr(tables, name), panel), z)
 
 
 @dataclass(frozen=True)
 class Exact:
-    """Least squares at what was found, by one more run through each window; arrays of shape (m,).
+    """The likelihood at what was found, by a run through each window; arrays of shape (m,).
 
     Attributes
     ----------
     n : int
         Steps in a window.
-    slope, theta : array
-        b, and the level at which c − b y vanishes.
+    theta : array
+        The level at which c − b y vanishes.
     away : array
         Distance from the weighted mean of levels to theta.
-    spread, weight : array
+    weight : array
         As in `Profile`.
     rss, fourth : array
         Sums of squares and of fourth powers of the standardised innovations.
@@ -266,10 +271,8 @@ class Exact:
     """
 
     n: int
-    slope: Array
     theta: Array
     away: Array
-    spread: Array
     weight: Array
     rss: Array
     fourth: Array
@@ -288,33 +291,22 @@ class Exact:
 
 
 def exact(windows: Array, found: Candidates) -> Exact:
-    """Least squares in windows given one by one, shape (m, n + 1), with means taken off first."""
-    n = windows.shape[1] - 1
-    sequences, drift, level = centred(windows)
-    a = found.a
-    fit = profile(filtered_sums(sequences, a[None], -1, 1, n, lead=0), a[None], n)
-    slope = np.where(found.pure, found.slope, fit.slope[0, 0])
-    about, rest = fit.level[0, 0], fit.drift[0, 0]
-    residuals = (d - rest + slope * (x - about) for d, x in sequences)
+    """The likelihood of windows given one by one, shape (m, n + 1)."""
+    n, a, b = windows.shape[1] - 1, found.a, found.slope
+    x = np.ascontiguousarray(windows.T)
+    about = x[0] - found.level
+    x -= x[0]
+    residuals = (after - before - found.drift + b * (before + about) for before, after in pairwise(x))
     rss, fourth = standardised_moments(residuals, a, a, np.ones_like(a))
-    away = (drift + rest) / slope
+    away = found.drift / b
+    G1, G2 = powers(a, n)
     flat = ~(rss > n * np.square(ROUNDING * np.abs(windows).max(axis=1)))
-    return Exact(
-        n,
-        slope,
-        level + about + away,
-        away,
-        fit.spread[0, 0],
-        fit.weight[0, 0],
-        rss,
-        fourth,
-        fit.log_det[0, 0],
-        flat,
-    )
+    weight = weight_of_one(a, n, G1, G2)
+    return Exact(n, found.level + away, away, weight, rss, fourth, 0.5 * np.log1p(G2), flat)
 
 
-def centred(windows: Array) -> tuple[Array, Array, Array]:
-    """Increments and levels of windows less their means, shape (n, 2, m), and these means."""
+def centred(windows: Array) -> Segments:
+    """Windows, shape (m, n + 1), as segments of their own, with their means taken off."""
     n = windows.shape[1] - 1
     x = np.ascontiguousarray(windows.T)
     sequences = np.empty((n, 2, len(windows)))
@@ -325,4 +317,4 @@ def centred(windows: Array) -> tuple[Array, Array, Array]:
         means += row
     means /= n
     sequences -= means
-    return sequences, means[0], x[0] + means[1]
+    return Segments(sequences, means[0], x[0] + means[1])

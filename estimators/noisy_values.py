@@ -11,25 +11,25 @@ from collections.abc import Callable
 import numpy as np
 from numpy.typing import NDArray
 
+from driftbook.estimators.maximise import Limits, Surface, maximise
 from driftbook.estimators.pull import Pull
-from driftbook.estimators.solve import Limits, Surface, maximise
+from driftbook.estimators.step_lengths import StepLengths
 from driftbook.estimators.windows import Array
 
 Places = NDArray[np.intp]
 
 ROUNDS = 6  # after which nearly all are within some 1e-7 of a standard error
 LANES = 1 << 9  # windows that go through the filter at one time, each at six points
-FEW = 16  # lengths of step of which each is worked out once
 SHARE = 2e-4  # of a standard error, by which parameters are moved
 _MOVES = ((0, 0), (1, 0), (-1, 0), (0, 1), (0, -1), (1, 1))
 
 
-def first_search(start: Array, z: Array, steps: Array, limits: Limits) -> Array:
+def first_search(start: Array, z: Array, steps: StepLengths, limits: Limits) -> Array:
     """Parameters near the best, shape (2, m); arguments as of `driftbook.estimators.uneven_hidden.search`."""
 
     def objective(point: Array, at: Places) -> Surface:
         parts = [slice(begin, begin + LANES) for begin in range(0, at.size, LANES)]
-        found = [_by_differences(point[:, part], z[:, at[part]], steps[:, at[part]]) for part in parts]
+        found = [_by_differences(point[:, part], z[:, at[part]], steps.take(at[part])) for part in parts]
         return Surface(
             np.concatenate([each.value for each in found]),
             np.concatenate([each.gradient for each in found], axis=1),
@@ -39,7 +39,7 @@ def first_search(start: Array, z: Array, steps: Array, limits: Limits) -> Array:
     return maximise(objective, start, limits, most_rounds=ROUNDS).point
 
 
-def _by_differences(point: Array, z: Array, steps: Array) -> Surface:
+def _by_differences(point: Array, z: Array, steps: StepLengths) -> Surface:
     u, v = point
     move_u = SHARE * np.sqrt(2 * np.abs(u) + 6)
     move_v = SHARE * (v + 0.1)
@@ -51,19 +51,18 @@ def _by_differences(point: Array, z: Array, steps: Array) -> Surface:
     return Surface(here, gradient, np.array([[bend_u, cross], [cross, bend_v]]))
 
 
-def noisy_loglik(u: Array, v: Array, z: Array, steps: Array) -> Array:
+def noisy_loglik(u: Array, v: Array, z: Array, steps: StepLengths) -> Array:
     """The likelihood, largest over theta and sigma, at several u = kappa T and v = noise²/(sigma² Δ) of each window.
 
     Parameters
     ----------
     u, v : array, shape (points, m)
-    z, steps : array, shape (n + 1, m) and (n, m)
-        Observations less the first, and steps; time first.
+    z : array, shape (n + 1, m)
+        Observations less the first; time first.
+    steps : StepLengths
     """
-    n, duration = len(steps), np.zeros(steps.shape[1])
-    for each in steps:
-        duration += each
-    kappa, noise = u / duration, v * (duration / n)
+    n = steps.n
+    kappa, noise = u / steps.duration, v * (steps.duration / n)
     mean, response, ee, eg, gg, log_F = np.zeros((6, *u.shape))
     product, p = np.ones_like(u), noise
     look_up = _laws(kappa, steps)
@@ -98,17 +97,16 @@ def noisy_loglik(u: Array, v: Array, z: Array, steps: Array) -> Array:
     return np.asarray(-0.5 * (n * (np.log(2 * np.pi / n * rss) + 1) + log_F))
 
 
-def _laws(kappa: Array, steps: Array) -> Callable[[int], Array]:
+def _laws(kappa: Array, steps: StepLengths) -> Callable[[int], Array]:
     """The decay over a step, what a flow of one adds, and the variance for sigma = 1: shape (3, points, m), by step."""
 
     def law(length: Array) -> Array:
         pull = Pull(kappa * length)
         return np.stack([pull.decay, length * pull.phi, length / pull.q])
 
-    lengths, kinds = np.unique(steps, return_inverse=True)
-    if lengths.size > FEW:
-        return lambda k: law(steps[k])
+    if steps.kinds is None:
+        return lambda k: law(steps.steps[k])
     points, m = kappa.shape
-    table = np.stack([law(np.full(m, length)) for length in lengths], axis=2).reshape(3 * points, -1)
-    places = kinds.reshape(steps.shape) * m + np.arange(m)
+    table = np.stack([law(np.full(m, length)) for length in steps.lengths], axis=2).reshape(3 * points, -1)
+    places = steps.places()
     return lambda k: table.take(places[k], axis=1).reshape(3, points, m)

@@ -31,8 +31,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from driftbook.estimators.bessel import log_bessel, log_bessel_jet
+from driftbook.estimators.maximise import Limits, Places, Surface
 from driftbook.estimators.pull import Pull
-from driftbook.estimators.solve import Limits, Places, Surface
 from driftbook.estimators.windows import Array
 
 FASTEST = 8.0

@@ -14,8 +14,9 @@ from numpy.typing import NDArray
 
 from driftbook.estimators.filtering import Filtered, Steps, Transition, by_length, filtered
 from driftbook.estimators.jets import Jet, exponential, inverse, relative, surface, times, variables
+from driftbook.estimators.maximise import Limits, Maximum, Surface, maximise
 from driftbook.estimators.oscillator import motion
-from driftbook.estimators.solve import Limits, Maximum, Surface, maximise
+from driftbook.estimators.step_lengths import StepLengths
 from driftbook.estimators.swings import chart
 from driftbook.estimators.windows import Array
 
@@ -30,11 +31,11 @@ class Hidden:
     variance: Jet
 
 
-Process = Callable[[Array, Array, Array], Hidden]
-"""Of two parameters, shape (m,), and steps, (n, m)."""
+Process = Callable[[Array, Array, StepLengths], Hidden]
+"""Of two parameters, shape (m,), and steps."""
 
 
-def noisy_steps(u: Array, v: Array, steps: Array) -> Hidden:
+def noisy_steps(u: Array, v: Array, steps: StepLengths) -> Hidden:
     """The Ornstein–Uhlenbeck process with noise, for sigma = 1; the hidden number is X less the first observation."""
     kappa, noise = noisy_parameters(u, v, steps)
 
@@ -46,14 +47,13 @@ def noisy_steps(u: Array, v: Array, steps: Array) -> Hidden:
     return Hidden(by_length(steps, transition), noise)
 
 
-def noisy_parameters(u: Array, v: Array, steps: Array) -> tuple[Jet, Jet]:
+def noisy_parameters(u: Array, v: Array, steps: StepLengths) -> tuple[Jet, Jet]:
     """Kappa, and noise²/sigma²."""
-    duration = total(steps)
     kappa, noise = variables(u, v)
-    return kappa / duration, noise * (duration / len(steps))
+    return kappa / steps.duration, noise * (steps.duration / steps.n)
 
 
-def inertial_steps(s: Array, b: Array, steps: Array) -> Hidden:
+def inertial_steps(s: Array, b: Array, steps: StepLengths) -> Hidden:
     """The damped oscillator, for eta = 1; the hidden number is its velocity."""
     damping, stiffness = inertial_parameters(s, b, steps)
 
@@ -75,22 +75,23 @@ def inertial_steps(s: Array, b: Array, steps: Array) -> Hidden:
     return Hidden(by_length(steps, transition), 0.5 * inverse(damping))
 
 
-def inertial_parameters(s: Array, b: Array, steps: Array) -> tuple[Jet, Jet]:
+def inertial_parameters(s: Array, b: Array, steps: StepLengths) -> tuple[Jet, Jet]:
     """Damping and omega²."""
-    step = total(steps) / len(steps)
+    step = steps.duration / steps.n
     g, w = chart(s, b)
     return g / step, w / step**2
 
 
-def search(process: Process, start: Array, z: Array, steps: Array, limits: Limits) -> tuple[Maximum, Filtered]:
+def search(process: Process, start: Array, z: Array, steps: StepLengths, limits: Limits) -> tuple[Maximum, Filtered]:
     """The best two parameters of each window, and what the filter finds there.
 
     Parameters
     ----------
     process : callable
     start : array, shape (2, m)
-    z, steps : array, shape (n + 1, m) and (n, m)
-        Observations less the first, and steps; time first.
+    z : array, shape (n + 1, m)
+        Observations less the first; time first.
+    steps : StepLengths
     limits : Limits
     """
     m = z.shape[1]
@@ -102,9 +103,8 @@ def search(process: Process, start: Array, z: Array, steps: Array, limits: Limit
         loglik = np.empty((6, at.size))
         for start in range(0, at.size, LANES):
             part = slice(start, start + LANES)
-            x, own = (values[:, at[part]] for values in (z, steps))
-            hidden = process(point[0, part], point[1, part], own)
-            found = filtered(x, hidden.variance, hidden.steps)
+            hidden = process(point[0, part], point[1, part], steps.take(at[part]))
+            found = filtered(z[:, at[part]], hidden.variance, hidden.steps)
             last.put(at[part], found)
             loglik[:, part] = found.loglik
         where[:, at] = point
@@ -117,11 +117,3 @@ def search(process: Process, start: Array, z: Array, steps: Array, limits: Limit
 
 MOST_ROUNDS = 40
 LANES = 1 << 12  # windows that go through the filter at one time
-
-
-def total(steps: Array) -> Array:
-    """The time of windows, shape (m,); added one by one, so that bits do not depend on how many there are."""
-    duration = np.zeros(steps.shape[1])
-    for each in steps:
-        duration += each
-    return duration

@@ -37,7 +37,6 @@ heteroskedasticity-consistent covariance matrix estimator, Econometrica 48, 817â
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from dataclasses import dataclass, replace
 from functools import partial
 
@@ -46,13 +45,13 @@ from numpy.typing import NDArray
 
 from driftbook.estimators import square_root
 from driftbook.estimators.batches import Answer, Piece
-from driftbook.estimators.hankel_sums import FAR_TERMS, MORE_TERMS, STALE, Roots, Summing, Sums, far_start
+from driftbook.estimators.hankel_sums import STALE, TRUNCATED, Roots, Summing, Sums
 from driftbook.estimators.intervals import COARSEST, PullInterval, exact_over_euler, widened_pull
+from driftbook.estimators.maximise import Limits, Places, maximise
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
 from driftbook.estimators.regression import EPS, Mask, from_sums, from_windows
-from driftbook.estimators.repair import GATHERED, blank, repair
+from driftbook.estimators.repair import blank, repair
 from driftbook.estimators.slope_law import slope_law
-from driftbook.estimators.solve import Limits, Maximum, Places, inverse, maximise
 from driftbook.estimators.square_root import FASTEST, Windows, is_still, log_ratio, log_ratio_slope, order
 from driftbook.estimators.status import Status
 from driftbook.estimators.stepping import by_steps
@@ -60,7 +59,6 @@ from driftbook.estimators.windows import Array
 
 SHORTEST = 5
 LN2 = float(np.log(2.0))
-TRUNCATED = 1e-10  # of a log-likelihood, that an expansion may leave out
 LOST = 1e-7  # of a log-likelihood, that rounding may take
 ROUNDS = 20  # after which a window that sums did not settle is taken transition by transition
 TWO_SIDED = 1.959963984540054
@@ -197,7 +195,8 @@ def fit_equal(piece: Piece) -> Answer:
     status, done = np.zeros(m, dtype=np.int8), np.zeros(m, dtype=np.bool_)
     summing = Summing(piece, Roots.of(piece, roots))
     status[summing.stale], done[summing.stale] = Status.DISCRETE, True
-    for places, optimum, kept in _from_sums(piece, summing):
+    for places, sums, start in summing.groups():
+        optimum, kept = _climbed(piece, places, sums, start)
         found, became = _estimates(optimum, None if residuals is None else residuals.take(places))
         _put(columns, places, found)
         status[places], done[places] = became, kept
@@ -238,21 +237,8 @@ def _names(n: int, intervals: bool) -> list[str]:
     return list(_estimates(nothing, Residuals(none, none) if intervals else None)[0])
 
 
-def _from_sums(piece: Piece, summing: Summing) -> Iterator[tuple[Places, Optimum, Mask]]:
-    """Places of windows, their optimum, and whether the sums can vouch for it; the last word on a place counts."""
-    places = summing.far
-    for terms in (FAR_TERMS, MORE_TERMS):
-        if places.size:
-            sums = summing.far_sums(places, terms)
-            optimum, kept = _climbed(piece, places, sums, far_start(sums))
-            yield places, optimum, kept
-            places = places[~kept]
-    for places, sums in summing.near_groups():
-        if places.size:
-            yield places, *_climbed(piece, places, sums, _near_start(piece, places))
-
-
 def _climbed(piece: Piece, places: Places, sums: Sums, start: Array) -> tuple[Optimum, Mask]:
+    """The optimum of some windows, and whether their sums can vouch for it."""
     top = maximise(sums.surface, start, _LIMITS, most_rounds=ROUNDS)
     psi, rho, scaled = top.point
     h = -2 * rho
@@ -260,21 +246,8 @@ def _climbed(piece: Piece, places: Places, sums: Sums, start: Array) -> tuple[Op
     alpha = scaled * np.exp(f)
     kept: Mask = top.converged & (sums.rest(top.point) <= TRUNCATED)
     dt = piece.of_windows(piece.dt)[places]
-    covariance = _of_level_h_and_alpha(_covariance(top), h, alpha, np.exp(f)) if piece.intervals else top.hessian
+    covariance = _of_level_h_and_alpha(top.covariance(), h, alpha, np.exp(f)) if piece.intervals else top.hessian
     return Optimum(piece.lookback, dt, psi - f, h, alpha, covariance, top.value, top.converged), kept
-
-
-def _near_start(piece: Piece, places: Places) -> Array:
-    """Starting points from the windows themselves, as psi, rho and alpha/e^f."""
-    windows = piece.windows
-    at_once = max(1, GATHERED // (piece.lookback + 1))
-    found = []
-    for start in range(0, places.size, at_once):
-        x = windows[np.unravel_index(places[start : start + at_once], piece.shape)]
-        found.append(Windows.of(x, np.ones((len(x), piece.lookback))).start())
-    level, h, alpha = np.concatenate(found, axis=1)
-    f = log_ratio(h)
-    return np.stack([level + f, -0.5 * h, alpha * np.exp(-f)])
 
 
 def _from_windows(intervals: bool, x: Array, steps: Array) -> tuple[dict[str, Array], NDArray[np.int8]]:
@@ -291,7 +264,7 @@ def _from_windows(intervals: bool, x: Array, steps: Array) -> tuple[dict[str, Ar
         top = maximise(windows.surface, windows.start(), square_root.LIMITS)
         level, h, alpha = top.point
         dt = steps[usable].mean(axis=1)
-        optimum = Optimum(n, dt, level, h, alpha, _covariance(top), top.value, top.converged)
+        optimum = Optimum(n, dt, level, h, alpha, top.covariance(), top.value, top.converged)
         found, status[usable] = _estimates(optimum, _residuals(windows) if intervals else None)
         _put(columns, usable, found)
     return columns, status
@@ -312,16 +285,6 @@ def _residuals(windows: Windows) -> Residuals:
     rss, n = squares.sum(axis=1), e.shape[1]
     widening = np.sqrt(n * (u * u * squares).sum(axis=1) / (spread * rss))
     return Residuals(n * (squares * squares).sum(axis=1) / np.square(rss), widening)
-
-
-def _covariance(top: Maximum) -> Array:
-    """Of the estimates, shape (3, 3, m); where a parameter is on its bound, of the others."""
-    held = top.at_bound
-    information = np.where(held[:, None] | held[None, :], 0.0, -top.hessian)
-    for i in range(3):
-        information[i, i] = np.where(held[i], 1.0, information[i, i])
-    covariance = inverse(information)
-    return np.where(held[:, None] | held[None, :], np.nan, covariance)
 
 
 def _of_level_h_and_alpha(covariance: Array, h: Array, alpha: Array, ratio: Array) -> Array:

@@ -11,8 +11,8 @@ those of `ou`, damping, omega and eta empty. Where motion is so fast for the ste
 is `Status.TOO_COARSE`.
 
 Standard errors are those of the observed information. The interval of damping is on the scale of its logarithm, or
-beyond `STRONG` a step of 1/damping, and eta's is then that of damping times sigma_s; those of kappa_s and theta, and
-through them omega's, come from the exact law of the AR(1) slope, widened (`driftbook.estimators.hidden_pull`), but
+beyond a damping of 8 a step on that of 1/damping, and so is eta's; those of kappa_s and theta, and through them
+omega's, come from the exact law of the AR(1) slope, widened (`driftbook.estimators.hidden_pull`), but
 where damping is below omega, so that motion swings for long, from normal theory. In 1000 windows of 250 steps of each
 of five kinds of motion, 92 to 98 % of them held the truth.
 
@@ -25,53 +25,42 @@ Chandrasekhar, S. (1943), Stochastic problems in physics and astronomy, Reviews 
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
 from functools import partial
-from statistics import NormalDist
 
 import numpy as np
 
 from driftbook.estimators.batches import Answer, Piece
 from driftbook.estimators.filtered import filtered_sums
-from driftbook.estimators.filtering import Filtered, standardised
-from driftbook.estimators.hidden_pull import hidden_pull, pull_ends
-from driftbook.estimators.jets import Jet, constant, covariance, inverse, logarithm, surface, times, variables
+from driftbook.estimators.jets import surface, variables
 from driftbook.estimators.level_or_log import also_of_logs
+from driftbook.estimators.maximise import Limits, Maximum, Surface, maximise
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
 from driftbook.estimators.models import ou
 from driftbook.estimators.noisy import centred
 from driftbook.estimators.oscillator import motion
-from driftbook.estimators.regression import ROUNDING, Mask
 from driftbook.estimators.repair import Columns, Places, Statuses, blank, repair
-from driftbook.estimators.solve import Limits, Maximum, Surface, maximise
-from driftbook.estimators.solve import inverse as inverse_of
 from driftbook.estimators.status import Status
+from driftbook.estimators.step_lengths import StepLengths
 from driftbook.estimators.step_volatility import STEP_VOLATILITY
 from driftbook.estimators.stepping import by_steps
+from driftbook.estimators.swing_columns import swing_columns
+from driftbook.estimators.swing_estimate import Estimate, by_filter, by_sums
 from driftbook.estimators.swings import (
-    COARSEST,
     PANEL,
     SwingSums,
-    chart,
-    sampled,
     swing_fit,
-    swing_moments,
     swing_start,
     swing_sums,
 )
-from driftbook.estimators.uneven_hidden import inertial_parameters, inertial_steps, search, total
+from driftbook.estimators.uneven_hidden import inertial_steps, search
 from driftbook.estimators.windows import Array
 
 SHORTEST = 10
-TWO_SIDED = NormalDist().inv_cdf(0.975)
-STRONG = 8.0  # damping times a step from which on 1/damping is what the data tell
 LANES = 1 << 9  # nodes by segments that are worked on at one time
 FEW, FEW_LANES = 16, 1 << 13  # windows in a segment, up to which more lanes fit in the processor's cache
 AT_ONCE = 1 << 11  # windows that are searched at one time
-NEARLY = 0.98  # of the coarsest psi: a search that has run against it stops a little before
 FILTERED = 1 << 13  # windows of unequal steps that are searched at one time
 SOMEWHERE, LEAST_START = (0.4, 0.1), (0.02, 1e-4)  # s and b to start from without a fit by index, and at least
-AGREED = 1e-9  # per step, by how much the log-likelihood of a window may differ from what sums over windows said
 
 PARAMETERS = (
     Parameter("damping", "1/t", "Rate at which the velocity is lost."),
@@ -172,8 +161,8 @@ def _from_windows(intervals: bool, windows: Array, steps: Array) -> tuple[Column
     exponent = np.frexp(np.abs(windows).max(axis=1))[1] - 1
     piece = Piece(np.ldexp(windows, -exponent[:, None]), steps[:, -1:], None, n, 1, 0, intervals)
     columns, status = _plain(piece)
-    sequences, drift, _ = centred(piece.x)
-    sums = _one_by_one(sequences[:, 0] + drift, sequences[:, 1], n)
+    segments = centred(piece.x)
+    sums = _one_by_one(segments.sequences[:, 0] + segments.usual, segments.sequences[:, 1], n)
     lost = _fit(piece, np.arange(len(windows)), sums, columns, status)
     status[lost] = Status.NOT_CONVERGED
     blank(columns, lost)
@@ -207,7 +196,7 @@ def _fit(piece: Piece, places: Places, sums: SwingSums, columns: Columns, status
     inside = np.flatnonzero(~overdamped)
     windows = piece.windows[np.unravel_index(places[inside], piece.shape)]
     dt = piece.dt.reshape(-1)[places[inside] // piece.shape[-1]]
-    estimate = _settled(sums.take(inside), found.take(inside), windows, dt)
+    estimate = by_sums(sums.take(inside), found.take(inside), windows, dt)
     return _write(estimate, places[inside], columns, status)
 
 
@@ -225,175 +214,17 @@ def _overdamped(status: Statuses, places: Places) -> None:
     status[places[status[places] != Status.ALTERNATING]] = Status.AT_BOUND
 
 
-@dataclass(frozen=True)
-class Estimate:
-    """What a search found in m windows, for equal steps or not; jets by its two parameters, of shape (6, m).
-
-    Attributes
-    ----------
-    n : int
-        Steps in a window.
-    duration : array, shape (m,)
-        Their time.
-    damping, stiffness : jet
-        The latter is omega².
-    log_eta2 : jet
-        Of the best eta² at each damping and omega.
-    theta : jet
-        The best level, from the first value.
-    first : array, shape (m,)
-        The first value.
-    theta_weight : array, shape (m,)
-        One over the variance of theta at given damping and omega, times n/(n − 2).
-    found : Maximum
-    loglik, kurtosis : array, shape (m,)
-    coarse, sound, flat : array of bool, shape (m,)
-        Whether motion is too fast for the steps, the search and its sums can be relied on, values do not vary.
-    """
-
-    n: int
-    duration: Array
-    damping: Jet
-    stiffness: Jet
-    log_eta2: Jet
-    theta: Jet
-    first: Array
-    theta_weight: Array
-    found: Maximum
-    loglik: Array
-    kurtosis: Array
-    coarse: Mask
-    sound: Mask
-    flat: Mask
-
-
-def _settled(sums: SwingSums, found: Maximum, windows: Array, dt: Array) -> Estimate:
-    """The estimate at the best point, with the likelihood of one more run through each window."""
-    n, fit = sums.n, swing_fit(sums, *found.point)
-    g, w = chart(*found.point)
-    x = np.ascontiguousarray(windows.T)
-    first = x[0].copy()
-    x -= first
-    squares, fourth = swing_moments(fit, sums, x)
-    value = 0.5 * n * (np.log(n / (2 * np.pi)) - 1 - np.log(squares)) - fit.log_det
-    log_eta2 = logarithm(fit.rss)
-    log_eta2[0] -= np.log(n * dt**3)
-    theta = times(fit.level, inverse(fit.coefficients.pulled))
-    theta[0] -= sums.level
-    return Estimate(
-        n=n,
-        duration=n * dt,
-        damping=g / dt,
-        stiffness=w / dt**2,
-        log_eta2=log_eta2,
-        theta=theta,
-        first=first,
-        theta_weight=fit.weight[0] * np.square(fit.coefficients.pulled[0]) * (n / fit.rss[0]),
-        found=found,
-        loglik=value,
-        kurtosis=n * fourth / np.square(squares),
-        coarse=~(fit.coefficients.psi[0] < NEARLY * COARSEST) | (found.at_bound[1] & (found.point[1] > 0)),
-        sound=found.converged & (np.abs(value - fit.loglik[0]) <= AGREED * n),
-        flat=~(squares > n * np.square(ROUNDING * np.abs(windows).max(axis=1))),
-    )
-
-
 def _write(estimate: Estimate, places: Places, columns: Columns, status: Statuses) -> Places:
     """Put an estimate into its places, and tell where it is not sound."""
     for name in columns:
         columns[name][places] = np.nan
-    for name, values in _columns(estimate, intervals="kurtosis" in columns).items():
+    for name, values in swing_columns(estimate, intervals="kurtosis" in columns).items():
         columns[name][places] = values
     status[places] = np.where(estimate.stiffness[0] > 0, np.int8(Status.OK), np.int8(Status.NO_REVERSION))
     status[places[estimate.coarse]] = Status.TOO_COARSE
     status[places[estimate.flat]] = Status.FLAT
     blank(columns, places[estimate.flat])
     return places[~estimate.sound & ~estimate.coarse & ~estimate.flat]
-
-
-def _columns(estimate: Estimate, *, intervals: bool) -> Columns:
-    damping, stiffness, eta = estimate.damping[0], estimate.stiffness[0], np.exp(0.5 * estimate.log_eta2[0])
-    omega = np.sqrt(np.where(stiffness > 0, stiffness, np.nan))
-    columns = {
-        "damping": damping,
-        "omega": omega,
-        "theta": estimate.first + estimate.theta[0],
-        "eta": eta,
-        "loglik": estimate.loglik,
-    }
-    if intervals:
-        columns |= {"kappa_s": stiffness / damping, "sigma_s": eta / damping, "kurtosis": estimate.kurtosis}
-        swings = stiffness > 0.25 * damping**2
-        turn = np.sqrt(np.where(swings, stiffness - 0.25 * damping**2, np.nan))
-        columns |= {"period": 2 * np.pi / turn, "damping_ratio": damping / (2 * omega)}
-        columns |= _uncertainty(estimate, columns, damping < omega)
-    return columns
-
-
-def _uncertainty(estimate: Estimate, columns: Columns, swings: Mask) -> Columns:
-    """Standard errors and intervals, by the delta method from the curvature of the likelihood.
-
-    `swings` tells where motion swings for long, so that normal theory serves for omega, kappa_s and theta.
-    """
-    n, of_parameters = estimate.n, inverse_of(-estimate.found.hessian) * (estimate.n / (estimate.n - 2))
-    own = np.maximum(1 / (2 * n), (estimate.kurtosis - 1) / (4 * n))  # of ln eta
-    log_damping = logarithm(estimate.damping)
-    kappa = times(estimate.stiffness, inverse(estimate.damping))
-    log_sigma = 0.5 * estimate.log_eta2 - log_damping
-
-    def se(jet: Jet, more: Array | float = 0.0) -> Array:
-        return np.sqrt(covariance(jet, jet, of_parameters) + more)
-
-    given = n / ((n - 2) * estimate.theta_weight)
-    damping_se, eta_se, sigma_se = se(log_damping), se(0.5 * estimate.log_eta2, own), se(log_sigma, own)
-    omega_se = se(0.5 * times(estimate.stiffness, constant(1 / estimate.stiffness[0], own.shape)))
-    found = {
-        "damping_se": columns["damping"] * damping_se,
-        "omega_se": columns["omega"] * omega_se,
-        "theta_se": se(estimate.theta, given),
-        "eta_se": columns["eta"] * eta_se,
-        "kappa_s_se": se(kappa),
-        "sigma_s_se": columns["sigma_s"] * sigma_se,
-    }
-    found |= _on_logs("sigma_s", columns["sigma_s"], sigma_se)
-    strong = estimate.damping[0] * estimate.duration / n > STRONG
-    damping, eta = _on_logs("damping", columns["damping"], damping_se), _on_logs("eta", columns["eta"], eta_se)
-    far, near = 1 - TWO_SIDED * damping_se, 1 + TWO_SIDED * damping_se
-    for name, ends in (("damping", damping), ("eta", eta)):
-        ends[f"{name}_lower"] = np.where(strong, columns[name] / near, ends[f"{name}_lower"])
-        with_end = np.where(far > 0, columns[name] / far, np.nan)
-        ends[f"{name}_upper"] = np.where(strong, with_end, ends[f"{name}_upper"])
-    pull = pull_ends(hidden_pull(n, estimate.duration, kappa, estimate.theta, estimate.first, given, of_parameters))
-    found |= damping | eta
-    found |= {
-        "kappa_s_lower": pull.lower,
-        "kappa_s_upper": pull.upper,
-        "theta_lower": pull.theta_lower,
-        "theta_upper": pull.theta_upper,
-        "no_reversion_p": pull.p_no_pull,
-    }
-    found |= _of_swing(columns, found, omega_se, swings)
-    return found
-
-
-def _on_logs(name: str, value: Array, se: Array) -> Columns:
-    """The interval on the scale of the logarithm."""
-    reach = np.exp(TWO_SIDED * se)
-    return {f"{name}_lower": value / reach, f"{name}_upper": value * reach}
-
-
-def _of_swing(columns: Columns, found: Columns, omega_se: Array, swings: Mask) -> Columns:
-    """Normal theory where motion swings for long; else the ends of omega from those of kappa_s and damping."""
-    by_theory = _on_logs("omega", columns["omega"], omega_se)
-    by_theory |= _on_logs("kappa_s", columns["kappa_s"], found["kappa_s_se"] / columns["kappa_s"])
-    reach = TWO_SIDED * found["theta_se"]
-    by_theory |= {"theta_lower": columns["theta"] - reach, "theta_upper": columns["theta"] + reach}
-    log_damping_reach = TWO_SIDED * found["damping_se"] / columns["damping"]
-    other = dict(found)
-    for end, sign in (("lower", -1.0), ("upper", 1.0)):
-        of_kappa = np.abs(np.log(found[f"kappa_s_{end}"] / columns["kappa_s"]))
-        other[f"omega_{end}"] = columns["omega"] * np.exp(0.5 * sign * np.hypot(of_kappa, log_damping_reach))
-    return {name: np.where(swings, values, other[name]) for name, values in by_theory.items()}
 
 
 def fit_unequal(piece: Piece) -> Answer:
@@ -418,8 +249,8 @@ def _fit_unequal(
     n = steps.shape[1]
     exponent = np.frexp(np.abs(windows).max(axis=1))[1] - 1
     unit = np.ldexp(1.0, exponent)
-    x, steps = np.ascontiguousarray(np.ldexp(windows, -exponent[:, None]).T), np.ascontiguousarray(steps.T)
-    found, fit = search(inertial_steps, start, x - x[0], steps, limits(n))
+    x, lengths = np.ascontiguousarray(np.ldexp(windows, -exponent[:, None]).T), StepLengths.of(steps.T)
+    found, fit = search(inertial_steps, start, x - x[0], lengths, limits(n))
     without = columns["loglik"][places] + n * np.log(unit)
     overdamped = (found.converged & found.at_bound[0] & (found.point[0] < 1)) | (found.value <= without)
     _overdamped(status, places[overdamped])
@@ -427,40 +258,13 @@ def _fit_unequal(
     if not some.size:
         return
     part, unit = places[some], unit[some]
-    lost = _write(_by_filter(found.take(some), fit.take(some), x[:, some], steps[:, some]), part, columns, status)
+    lost = _write(by_filter(found.take(some), fit.take(some), x[:, some], lengths.take(some)), part, columns, status)
     for name in _IN_UNITS_OF_X:
         if name in columns:
             columns[name][part] *= unit
     columns["loglik"][part] -= n * np.log(unit)
     status[lost] = Status.NOT_CONVERGED
     blank(columns, lost)
-
-
-def _by_filter(found: Maximum, fit: Filtered, x: Array, steps: Array) -> Estimate:
-    """From the best parameters at unequal steps; time first."""
-    n, z = len(steps), x - x[0]
-    s, b = found.point
-    hidden, (damping, stiffness) = inertial_steps(s, b, steps), inertial_parameters(s, b, steps)
-    squares, fourth = standardised(z, hidden.variance[0], hidden.steps, fit.flow[0])
-    log_eta2 = logarithm(fit.rss)
-    log_eta2[0] -= np.log(n)
-    psi = sampled(*chart(s, b)).psi[0]
-    return Estimate(
-        n=n,
-        duration=total(steps),
-        damping=damping,
-        stiffness=stiffness,
-        log_eta2=log_eta2,
-        theta=times(fit.flow, inverse(stiffness)),
-        first=x[0],
-        theta_weight=fit.weight * np.square(stiffness[0]) * (n / fit.rss[0]),
-        found=found,
-        loglik=fit.loglik[0],
-        kurtosis=n * fourth / np.square(squares),
-        coarse=~(psi < NEARLY * COARSEST) | (found.at_bound[1] & (found.point[1] > 0)),
-        sound=found.converged,
-        flat=~(squares > 0),
-    )
 
 
 def log_density(x: Array, steps: Array, damping: Array, omega: Array, theta: Array, eta: Array) -> Array:

@@ -41,10 +41,10 @@ from numpy.typing import NDArray
 from driftbook.estimators.batches import Answer, Piece
 from driftbook.estimators.jump_mixture import Increments, limits, standardised
 from driftbook.estimators.logs import logarithm
+from driftbook.estimators.maximise import Maximum, Places, maximise, maximise_from_each
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
 from driftbook.estimators.regression import EPS
 from driftbook.estimators.repair import blank
-from driftbook.estimators.solve import Maximum, Places, inverse, maximise, maximise_from_each
 from driftbook.estimators.status import Status
 from driftbook.estimators.stepping import by_steps
 from driftbook.estimators.windows import Array
@@ -305,7 +305,7 @@ def _interval_estimates(batch: Batch, top: Maximum, columns: dict[str, Array]) -
     """Standard errors, Wald's intervals, and what follows from the fit."""
     n = batch.increments.z.shape[1]
     sigma, rate, mean, sd = (columns[name] for name in ("sigma", "jump_rate", "jump_mean", "jump_sd"))
-    C, zero = _covariance(top), np.zeros_like(sigma)
+    C, zero = top.covariance(), np.zeros_like(sigma)
     spread, dt = batch.spread, batch.dt
     total = np.square(sigma) + rate * (np.square(mean) + np.square(sd))
     factor = np.exp(mean + np.square(sd) / 2)
@@ -329,16 +329,6 @@ def _interval_estimates(batch: Batch, top: Maximum, columns: dict[str, Array]) -
 def _log_ends(name: str, value: Array, error: Array) -> dict[str, Array]:
     reach = np.exp(TWO_SIDED * error)
     return {f"{name}_lower": value / reach, f"{name}_upper": value * reach}
-
-
-def _covariance(top: Maximum) -> Array:
-    """Of the estimates, shape (5, 5, m), given those that are on a bound, whose own rows are not numbers."""
-    held = top.at_bound
-    either = held[:, None] | held[None, :]
-    information = np.where(either, 0.0, -top.hessian)
-    for i, each in enumerate(held):
-        information[i, i, each] = 1.0
-    return np.where(either, np.nan, inverse(information))
 
 
 def _error(covariance: Array, gradient: tuple[Array, ...]) -> Array:

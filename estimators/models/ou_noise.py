@@ -26,35 +26,28 @@ ratio tests under nonstandard conditions, J. American Statistical Association 82
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from functools import partial
-from statistics import NormalDist
 
 import numpy as np
 
 from driftbook.estimators.batches import Answer, Piece
-from driftbook.estimators.filtering import Filtered, standardised
-from driftbook.estimators.hidden_pull import HiddenPull, finite, hidden_pull, pull_ends
-from driftbook.estimators.intervals import COARSEST
-from driftbook.estimators.jets import covariance, inverse, logarithm, times
 from driftbook.estimators.level_or_log import also_of_logs
+from driftbook.estimators.maximise import Limits
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
 from driftbook.estimators.models import ou
-from driftbook.estimators.noisy import MORE_POINTS, Candidates, Exact, candidates, centred, determinant_slope, exact
+from driftbook.estimators.noisy import MORE_POINTS, Candidates, Segments, candidates, centred, exact
+from driftbook.estimators.noisy_columns import point, with_intervals
+from driftbook.estimators.noisy_estimate import Estimate, by_filter, by_regression
 from driftbook.estimators.noisy_values import first_search
 from driftbook.estimators.pull import Pull
-from driftbook.estimators.regression import Mask
 from driftbook.estimators.repair import Columns, Places, Statuses, blank, repair
-from driftbook.estimators.solve import Limits, Maximum
-from driftbook.estimators.solve import inverse as inverse_of
 from driftbook.estimators.status import Status
+from driftbook.estimators.step_lengths import StepLengths
 from driftbook.estimators.stepping import by_steps
-from driftbook.estimators.uneven_hidden import noisy_parameters, noisy_steps, search, total
+from driftbook.estimators.uneven_hidden import noisy_steps, search
 from driftbook.estimators.windows import Array
 
 SHORTEST = 10
-LN2 = float(np.log(2.0))
-TWO_SIDED = NormalDist().inv_cdf(0.975)
 AT_ONCE = 1 << 18  # observations in the windows that are settled at one time
 FILTERED = 1 << 13  # windows of unequal steps that are searched at one time
 START_NOISE = 0.02, 30.0  # least and largest noise²/(sigma² Δ) to start a search from
@@ -90,7 +83,6 @@ _NAMES = {
     False: (*(parameter.name for parameter in PARAMETERS), "loglik"),
 }
 _IN_UNITS_OF_X = tuple(column.name for column in COLUMNS if column.unit.startswith("x"))
-_NEED_A_PULL = ("half_life", "half_life_mle", "stationary_sd")
 
 
 def fit_equal(piece: Piece) -> Answer:
@@ -108,7 +100,9 @@ def _search_by_index(piece: Piece) -> Candidates:
     usual, origin = steps[..., piece.pivot], levels[..., piece.pivot]
     sequences = np.stack([steps - usual[..., None], levels - origin[..., None]])
     sequences = sequences.reshape(2, -1, sequences.shape[-1]).transpose(2, 0, 1)
-    return candidates(sequences, usual.ravel(), piece.lookback, piece.pivot, piece.shape[-1], piece.skip)
+    return candidates(
+        Segments(sequences, usual.ravel(), origin.ravel()), piece.lookback, piece.pivot, piece.shape[-1], piece.skip
+    )
 
 
 def _plain(piece: Piece) -> tuple[Columns, Statuses]:
@@ -126,8 +120,7 @@ def _from_windows(intervals: bool, windows: Array, steps: Array) -> tuple[Column
     exponent = np.frexp(np.abs(windows).max(axis=1))[1] - 1
     piece = Piece(np.ldexp(windows, -exponent[:, None]), steps[:, -1:], None, n, 1, 0, intervals)
     columns, status = _plain(piece)
-    sequences, drift, _ = centred(piece.x)
-    lost = _settle(piece, candidates(sequences, drift, n, -1, 1, n, MORE_POINTS), columns, status)
+    lost = _settle(piece, candidates(centred(piece.x), n, -1, 1, n, MORE_POINTS), columns, status)
     status[lost] = Status.NOT_CONVERGED
     blank(columns, lost)
     unit = np.ldexp(1.0, exponent)
@@ -154,7 +147,7 @@ def _settle(piece: Piece, found: Candidates, columns: Columns, status: Statuses)
         dt, some = piece.dt.reshape(-1)[part // piece.shape[-1]], found.take(part)
         fit = exact(windows, some)
         lost[part] = ~(np.abs(fit.value - some.value) <= AGREED * piece.lookback)
-        _write(_by_regression(fit, some, dt), part, columns, status)
+        _write(by_regression(fit, some, dt), part, columns, status)
     return np.flatnonzero(lost)
 
 
@@ -166,171 +159,18 @@ def _without_noise(columns: Columns, status: Statuses, places: Places) -> None:
         columns["noise_share"][places], columns["no_noise_p"][places] = 0.0, 1.0
 
 
-@dataclass(frozen=True)
-class Estimate:
-    """What was found for m windows with noise, at equal steps or not; arrays of shape (m,).
-
-    Attributes
-    ----------
-    n : int
-        Steps in a window.
-    duration : array
-        Their time.
-    kappa, theta, sigma, noise, loglik, kurtosis : array
-    theta_se : array
-    log_sigma_variance, log_noise_variance : array
-        Without the error that all share, that of the scale of innovations.
-    pull : HiddenPull
-    pure, flat : array of bool
-        Whether only noise is left, and whether there is no variation.
-    """
-
-    n: int
-    duration: Array
-    kappa: Array
-    theta: Array
-    sigma: Array
-    noise: Array
-    loglik: Array
-    kurtosis: Array
-    theta_se: Array
-    log_sigma_variance: Array
-    log_noise_variance: Array
-    pull: HiddenPull
-    pure: Mask
-    flat: Mask
-
-
-def _by_regression(fit: Exact, found: Candidates, dt: Array) -> Estimate:
-    """From a regression at equal steps.
-
-    With the variance v of t = −ln(1 − a) from the curvature of f, b has the variance F/spread + b_t² v, and functions
-    of a and b theirs by the delta method.
-    """
-    n, a, b, rho = fit.n, found.a, fit.slope, 1 - fit.slope
-    kappa = np.log1p(-b) / -dt
-    pull = Pull(kappa * dt)
-    scale = fit.rss / n
-    of_x = scale * ((rho - a) / rho) * (1 - a * rho)  # variance of X a step
-    variance = fit.rss / (n - 2)
-    v, b_t, per_a = np.where(found.curvature > 0, n / ((n - 2) * found.curvature), np.nan), found.slope_t, 1 - a
-    given_a, given_b = variance / fit.spread, variance / fit.weight
-    slope_variance = given_a + b_t * b_t * v
-    intercept_t = found.lean + fit.away * b_t  # of the intercept at the weighted mean
-    centre = intercept_t * b_t * v / slope_variance
-    intercept_variance = given_b + intercept_t * v * (intercept_t - centre * b_t)
-    scale_t = -per_a * determinant_slope(a, n) * (2 / n)  # of ln R
-    by_t = scale_t + per_a * (-1 / (rho - a) - rho / (1 - a * rho))
-    by_b = -a / (rho * (rho - a)) + a / (1 - a * rho) + pull.log_q_slope / rho
-    of_theta = given_b + given_a * np.square(fit.away) + np.square(found.lean) * v
-    return Estimate(
-        n=n,
-        duration=n * dt,
-        kappa=kappa,
-        theta=fit.theta,
-        sigma=np.sqrt(of_x * pull.q / dt),
-        noise=np.sqrt(scale * np.where(rho == a, 1.0, a / rho)),
-        loglik=fit.loglik,
-        kurtosis=n * fit.fourth / np.square(fit.rss),
-        theta_se=np.sqrt(of_theta) / np.abs(b),
-        log_sigma_variance=0.25 * (np.square(by_t + by_b * b_t) * v + np.square(by_b) * given_a),
-        log_noise_variance=0.25 * (np.square(scale_t + per_a / a + b_t / rho) * v + given_a / np.square(rho)),
-        pull=HiddenPull(
-            n,
-            n * dt,
-            rho,
-            np.sqrt(slope_variance),
-            fit.theta - fit.away + centre,
-            fit.away - centre,
-            intercept_variance,
-        ),
-        pure=found.pure,
-        flat=fit.flat,
-    )
-
-
 def _write(estimate: Estimate, places: Places, columns: Columns, status: Statuses) -> None:
     """Put an estimate into its places."""
     without = np.where(status[places] == Status.ALTERNATING, np.nan, columns["loglik"][places])
-    found = _point(estimate)
+    found = point(estimate)
     if "kurtosis" in columns:
-        found |= _with_intervals(estimate, without)
+        found |= with_intervals(estimate, without)
     for name, values in found.items():
         columns[name][places] = values
     with_pull = np.where(estimate.kappa > 0, np.int8(Status.OK), np.int8(Status.NO_REVERSION))
     status[places] = np.where(estimate.pure, np.int8(Status.AT_BOUND), with_pull)
     status[places[estimate.flat]] = Status.FLAT
     blank(columns, places[estimate.flat])
-
-
-def _point(estimate: Estimate) -> Columns:
-    """Parameters and log-likelihood."""
-    return {
-        "kappa": np.where(estimate.pure, np.nan, estimate.kappa),
-        "theta": estimate.theta,
-        "sigma": np.where(estimate.pure, 0.0, estimate.sigma),
-        "noise": estimate.noise,
-        "loglik": estimate.loglik,
-    }
-
-
-def _with_intervals(estimate: Estimate, without: Array) -> Columns:
-    """The other columns; `without` is the log-likelihood of `ou`."""
-    n, sigma, noise = estimate.n, estimate.sigma, estimate.noise
-    own = np.maximum(1 / (2 * n), (estimate.kurtosis - 1) / (4 * n))  # of the logarithm of the innovations' scale
-    sigma_se = np.sqrt(own + estimate.log_sigma_variance)
-    noise_se = np.sqrt(np.where(estimate.pure, own, own + estimate.log_noise_variance))
-    h = estimate.kappa * (estimate.duration / n)
-    fine, reach = ~(h > COARSEST), np.exp(TWO_SIDED * sigma_se)
-    ends = pull_ends(estimate.pull)
-    of_pull = {
-        "kappa_se": estimate.pull.slope_se / (estimate.pull.slope * (estimate.duration / n)),
-        "kappa_lower": ends.lower,
-        "kappa_upper": ends.upper,
-        "theta_se": estimate.theta_se,
-        "theta_lower": ends.theta_lower,
-        "theta_upper": ends.theta_upper,
-        "sigma_se": sigma * sigma_se,
-        "sigma_lower": np.where(fine, sigma / reach, np.nan),
-        "sigma_upper": np.where(fine, sigma * reach, np.nan),
-        "kappa_median_unbiased": ends.median,
-        "no_reversion_p": ends.p_no_pull,
-    }
-    of_pull |= _formulas({**of_pull, "kappa": estimate.kappa, "sigma": sigma})
-    of_step = np.square(sigma) * (estimate.duration / n) * Pull(h).phi  # variance of an increment of X
-    share = 2 * np.square(noise) / (2 * np.square(noise) + of_step)
-    return {
-        **{name: np.where(estimate.pure, np.nan, values) for name, values in of_pull.items()},
-        "noise_se": noise * noise_se,
-        "noise_lower": noise * np.sqrt(np.maximum(1 - 2 * TWO_SIDED * noise_se, 0.0)),
-        "noise_upper": noise * np.sqrt(1 + 2 * TWO_SIDED * noise_se),
-        "noise_share": np.where(estimate.pure, 1.0, share),
-        "no_noise_p": _half_chi_square(2 * (estimate.loglik - without)),
-        "kurtosis": estimate.kurtosis,
-    }
-
-
-def _half_chi_square(gain: Array) -> Array:
-    """Probability of at least this gain, twice that of the log-likelihood, without noise."""
-    from scipy.special import erfc
-
-    return np.asarray(0.5 * erfc(np.sqrt(0.5 * np.maximum(gain, 0.0))))
-
-
-def _formulas(columns: Columns) -> Columns:
-    """The columns that are formulas of others, as their SQL has them."""
-    kappa, lower = columns["kappa"], columns["kappa_lower"]
-    found = {
-        "half_life": finite(LN2 / columns["kappa_median_unbiased"]),
-        "half_life_lower": finite(LN2 / columns["kappa_upper"]),
-        "half_life_upper": finite(LN2 / lower),
-        "half_life_mle": LN2 / kappa,
-        "half_life_unbounded": np.where(np.isnan(lower), np.nan, lower == 0),
-        "stationary_sd": columns["sigma"] / np.sqrt(2 * kappa),
-    }
-    for name in _NEED_A_PULL:
-        found[name] = np.where(kappa > 0, found[name], np.nan)
-    return found
 
 
 def fit_unequal(piece: Piece) -> Answer:
@@ -363,10 +203,10 @@ def _fit_unequal(
     n = steps.shape[1]
     exponent = np.frexp(np.abs(windows).max(axis=1))[1] - 1
     unit = np.ldexp(1.0, exponent)
-    x, steps = np.ascontiguousarray(np.ldexp(windows, -exponent[:, None]).T), np.ascontiguousarray(steps.T)
+    x, lengths = np.ascontiguousarray(np.ldexp(windows, -exponent[:, None]).T), StepLengths.of(steps.T)
     limits = Limits(lower=(-60.0, 0.0), upper=(8.0 * n, float(n * n)), step=(3.0, 0.2), growth=(0.5, 0.5))
-    start = first_search(start, x - x[0], steps, limits)
-    found, fit = search(noisy_steps, start, x - x[0], steps, limits)
+    start = first_search(start, x - x[0], lengths, limits)
+    found, fit = search(noisy_steps, start, x - x[0], lengths, limits)
     without = columns["loglik"][places] + n * np.log(unit)
     none = (found.at_bound[1] & (found.point[1] == 0)) | (found.value <= without)
     none &= found.converged | np.isfinite(without)
@@ -374,7 +214,7 @@ def _fit_unequal(
     some = np.flatnonzero(~none)
     if not some.size:
         return
-    estimate = _by_filter(found.take(some), fit.take(some), x[:, some], steps[:, some])
+    estimate = by_filter(found.take(some), fit.take(some), x[:, some], lengths.take(some))
     part, unit = places[some], unit[some]
     columns["loglik"][part] += n * np.log(unit)  # as if values had been divided by it
     _write(estimate, part, columns, status)
@@ -385,38 +225,6 @@ def _fit_unequal(
     lost = part[~found.converged[some] & ~estimate.pure]
     status[lost] = Status.NOT_CONVERGED
     blank(columns, lost)
-
-
-def _by_filter(found: Maximum, fit: Filtered, x: Array, steps: Array) -> Estimate:
-    """From the best parameters at unequal steps; time first."""
-    n, duration, z = len(steps), total(steps), x - x[0]
-    u, v = found.point
-    hidden, (kappa, ratio) = noisy_steps(u, v, steps), noisy_parameters(u, v, steps)
-    squares, fourth = standardised(z, hidden.variance[0], hidden.steps, fit.flow[0])
-    of_parameters = inverse_of(-found.hessian) * (n / (n - 2))
-    log_scale = logarithm(fit.rss)
-    theta = times(fit.flow, inverse(kappa))
-    sigma2 = squares / n
-    given = sigma2 * (n / (n - 2)) / (fit.weight * np.square(kappa[0]))
-    log_noise = log_scale + logarithm(ratio)
-    pure = found.at_bound[1] | found.at_bound[0]
-    noise2 = np.where(found.at_bound[0], squares / n * (ratio[0] + 0.5 / kappa[0]), sigma2 * ratio[0])
-    return Estimate(
-        n=n,
-        duration=duration,
-        kappa=kappa[0],
-        theta=x[0] + theta[0],
-        sigma=np.sqrt(sigma2),
-        noise=np.sqrt(noise2),
-        loglik=fit.loglik[0],
-        kurtosis=n * fourth / np.square(squares),
-        theta_se=np.sqrt(covariance(theta, theta, of_parameters) + given),
-        log_sigma_variance=0.25 * covariance(log_scale, log_scale, of_parameters),
-        log_noise_variance=0.25 * covariance(log_noise, log_noise, of_parameters),
-        pull=hidden_pull(n, duration, kappa, theta, x[0], given, of_parameters),
-        pure=pure,
-        flat=~(squares > 0),
-    )
 
 
 def log_density(x: Array, steps: Array, kappa: Array, theta: Array, sigma: Array, noise: Array) -> Array:

@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from driftbook.estimators.solve import Limits, Surface, inverse, maximise, maximise_from_each
+from driftbook.estimators.maximise import Limits, Surface, inverse, maximise, maximise_from_each
 
 FREE = Limits((-np.inf,) * 2, (np.inf,) * 2, (1.0, 1.0), (1.0, 1.0))
 
