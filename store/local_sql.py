@@ -29,11 +29,11 @@ def local_columns(model: Model) -> dict[str, str]:
         "model": model.name,
         "step": _STEP,
         "x": _by_fit(model, _SHIFTED if model.range == "positive" else "value", _SHIFTED),
-        "scale": f"case when sign <> 'positive' then 1.0 when value > 0 then {of_value} / value end",
+        "per_value": f"case when sign <> 'positive' then 1.0 when value > 0 then {of_value} / value end",
         "volatility": ", ".join(
-            f"({sql}) * scale as {name}" for sql, name in zip(model.local_volatility, names, strict=True)
+            f"({sql}) * per_value as {name}" for sql, name in zip(model.local_volatility, names, strict=True)
         ),
-        "drift": f"({drift}) * scale as drift",
+        "drift": f"({drift}) * per_value as drift",
         "pull": ", ".join(
             f"{name} * days as {name}_days" if name in there else f"null::double as {name}_days" for name in _PULL
         ),
@@ -50,7 +50,10 @@ def _reaches_zero(model: Model) -> str:
     """Whether X reaches zero: what stays above zero is X + shift, which is shift when X is zero."""
     columns = {column.name: column.sql or column.name for column in model.columns}
     by_itself = f"({columns['can_reach_zero']})" if model.reaches_zero is None else str(model.reaches_zero).lower()
-    bounded = f"(case when shift > 0 then true when shift < 0 then false else {by_itself} end)"
     if model.of_logs is not None:
-        return _by_fit(model, by_itself, bounded.replace(by_itself, "false"))
-    return bounded if model.range == "positive" else by_itself
+        return _by_fit(model, by_itself, _of_shifted(str(model.of_logs.reaches_zero).lower()))
+    return _of_shifted(by_itself) if model.range == "positive" else by_itself
+
+
+def _of_shifted(by_itself: str) -> str:
+    return f"(case when shift > 0 then true when shift < 0 then false else {by_itself} end)"

@@ -23,7 +23,7 @@ with beside as (
 ), there as (
   select *, {x} as x from beside
 ), scaled as (
-  select *, {scale} as scale from there
+  select *, {per_value} as per_value from there
 )
 select series_id, observed_at, value, lookback, window_start, '{model}', {k}, n, loglik, status, {no_reversion_p},
   {volatility}, {drift}, {pull}, {reaches_zero}, {noise_share}

@@ -114,7 +114,7 @@ with said as (
 ), there as (
   select b.*, {x} as x from beside b
 ), scaled as (
-  select *, {scale} as scale from there
+  select *, {per_value} as per_value from there
 )
 select window_end, {volatility}, {drift}, {pull}, status, run_from,
   case when run_to <= $run then run_to end as run_to
