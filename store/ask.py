@@ -18,7 +18,6 @@ if TYPE_CHECKING:
 _FOR_THE_QUERY = 0.8
 # The book itself is open already; after these no other file can be, and no setting can be changed back.
 _LOCKED = (
-    "set temp_directory = ''",
     "set enable_external_access = false",
     "set disabled_filesystems = 'LocalFileSystem'",
     "set lock_configuration = true",

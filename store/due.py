@@ -7,12 +7,14 @@ last observation of each day, week or month ends a window.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 import pyarrow as pa
 from numpy.typing import NDArray
 
 from driftbook.estimators import aligned_start
+from driftbook.store.observed import Days, Microseconds
 
 _EARLIEST = np.iinfo(np.int64).min
 _LATEST = np.iinfo(np.int64).max
@@ -22,13 +24,10 @@ _THURSDAY_TO_MONDAY = 3  # 1 January 1970 was a Thursday
 # The fewest steps that a window over all observations is asked for; a shorter series is too short.
 _FEWEST = 5
 
-Microseconds = NDArray[np.int64]
-Days = NDArray[np.int64]
 Indexes = NDArray[np.int64]
 
 
-@dataclass(frozen=True)
-class Asked:
+class Asked(NamedTuple):
     """One series and lookback of a model; lookback 0 has one window, from the first to the latest observation."""
 
     series_id: int
@@ -51,6 +50,11 @@ class Slice:
     first: int
     stop: int
     ends: Indexes | None = None
+
+    @property
+    def entry(self) -> tuple[int, int]:
+        """Series and lookback."""
+        return self.series_id, self.lookback
 
     @property
     def windows(self) -> int:
@@ -89,8 +93,10 @@ def due(asked: Asked, times: Microseconds, changed: Microseconds, days: Days) ->
     opens = changed if asked.every == OBSERVATION else np.minimum(changed, times[np.minimum(first, times.size - 1)])
     until = np.where(last < times.size, times[np.minimum(last, times.size - 1)], _LATEST)
     ends = _merged(np.maximum(first, asked.lookback), np.minimum(last, times.size - 1))
-    spans = [_span(asked, int(one), int(other)) for one, other in zip(opens, until, strict=True)]
-    spans.append(_span(asked, _EARLIEST, int(times[asked.lookback]) - 1))
+    may_lose = np.flatnonzero(~still_there | (asked.every != OBSERVATION))
+    spans = [_span(asked, int(opens[one]), int(until[one])) for one in may_lose]
+    if at[0] <= asked.lookback:
+        spans.append(_span(asked, _EARLIEST, int(times[asked.lookback]) - 1))
     return _slices(asked, ends, times.size, days), spans
 
 

@@ -4,8 +4,6 @@ For each model there are, with x a list of values in time order and steps in yea
 
     fit_<model>(x, dt), fit_<model>_at(t, x)                       one STRUCT: the fit of the whole list
     rolling_<model>(x, dt, lookback), rolling_<model>_at(t, x, lookback)    STRUCT[]: one a window
-    rolling_<model>_from(x, steps, lookback, first, settings, on_logs)     the same, from window `first` on, by the
-                                                                   series' settings; a refresh calls it
     loglik_<model>(x, dt, <settings>, <parameters>)                the log-likelihood at given parameters
 
 and for a list of returns: realised_variance(r), bipower_variation(r).
@@ -19,7 +17,7 @@ must be, gives one STRUCT whose status says so; a query is never killed by its d
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from concurrent.futures import Executor, Future
 from dataclasses import dataclass
 from functools import cache, partial
@@ -66,8 +64,6 @@ def register(con: duckdb.DuckDBPyConnection, executor: Executor) -> None:
         _add(con, f"fit_{name}_at", partial(_fit_at, fits), ["TIMESTAMP[]", "DOUBLE[]"], one)
         _add(con, f"rolling_{name}", partial(_rolling, fits), ["DOUBLE[]", "DOUBLE", "INTEGER"], many)
         _add(con, f"rolling_{name}_at", partial(_rolling_at, fits), ["TIMESTAMP[]", "DOUBLE[]", "INTEGER"], many)
-        types = ["DOUBLE[]", "DOUBLE[]", "INTEGER", "BIGINT", "DOUBLE[]", "BOOLEAN"]
-        _add(con, f"rolling_{name}_from", partial(_rolling_from, fits), types, many)
 
 
 def register_likelihoods(con: duckdb.DuckDBPyConnection) -> None:
@@ -87,41 +83,19 @@ def register_measures(con: duckdb.DuckDBPyConnection) -> None:
         _add(con, measure.__name__, partial(_measure, measure), ["DOUBLE[]"], "DOUBLE")
 
 
-def struct_type(model: Model) -> str:
-    """The SQL type of one fit: n, the model's columns, status."""
-    columns = ", ".join(f"{column.name} {_SQL_TYPES[column.kind]}" for column in model.columns)
-    return f"STRUCT(n INTEGER, {columns}, status VARCHAR)"
-
-
-def roll_block(
-    name: str, x: Values, steps: Values, lookback: int, first: int, settings: Values | None, on_logs: bool
-) -> Fit:
-    """What a worker does with one block of series: arrays in, arrays out."""
-    model = MODELS[name].of_logs if on_logs else MODELS[name]
-    if model is None:
-        raise ValueError(f"{name} is not fitted to logarithms")
-    if settings is None:
-        return model.rolling(x, steps, lookback, first=first)
-    if settings.shape[-1] != len(model.settings):
-        raise ValueError(f"{name} has {len(model.settings)} settings, got {settings.shape[-1]} numbers")
-    return model.rolling_by(list(settings.T), x, steps, lookback, first=first)
-
-
-def _add(con: duckdb.DuckDBPyConnection, name: str, function: Callable[..., Any], takes: list[Any], gives: str) -> None:
-    con.create_function(
-        name, function, takes, gives, type=PythonUDFType.ARROW, null_handling=FunctionNullHandling.SPECIAL
-    )
-
-
 @dataclass(frozen=True)
-class _Asked:
-    """One row of a chunk: a series, its steps (one number, or one a step), and the windows that are wanted."""
+class Stretch:
+    """A series, its steps (one number, or one a step), and the windows that are wanted.
+
+    `settings` are those of a model that has any; without, they are found in the stretch. `on_logs` asks for the model
+    of the logarithm.
+    """
 
     x: Values
     steps: Values
     lookback: int
     first: int = 0
-    settings: Values | None = None
+    settings: tuple[float, ...] = ()
     on_logs: bool = False
 
     @property
@@ -139,60 +113,75 @@ class _Asked:
     def shape(self) -> tuple[object, ...]:
         """What series must share to be worked on in one block."""
         step = float(self.steps[0]) if self.steps.size == 1 else None
-        settings = 0 if self.settings is None else self.settings.size
-        return (self.steps.size == 1, step or 0.0, self.lookback, self.first, settings, self.on_logs)
+        told = len(self.settings)
+        return (self.steps.size == 1, step or 0.0, self.lookback, self.first, told, self.on_logs)
 
 
-def _fits(model: Model, executor: Executor, asked: list[_Asked]) -> list[_Rows]:
+def rolled(model: Model, executor: Executor, stretches: Iterable[Stretch]) -> tuple[NDArray[np.int64], pa.StructArray]:
+    """What rolling_<model> gives for stretches of series.
+
+    How many windows each has, and the fits of all, one after the other.
+    """
+    found = _fits(model, executor, list(stretches))
+    if not found:
+        return np.empty(0, np.int64), _structs([_without_numbers(model, Stretch(np.empty(0), np.empty(0), 1))])[:0]
+    return np.array([rows.windows for rows in found], np.int64), _structs(found)
+
+
+def struct_type(model: Model) -> str:
+    """The SQL type of one fit: n, the model's columns, status."""
+    columns = ", ".join(f"{column.name} {_SQL_TYPES[column.kind]}" for column in model.columns)
+    return f"STRUCT(n INTEGER, {columns}, status VARCHAR)"
+
+
+def roll_block(name: str, x: Values, steps: Values, lookback: int, first: int, settings: Values, on_logs: bool) -> Fit:
+    """What a worker does with one block of series: arrays in, arrays out."""
+    model = MODELS[name].of_logs if on_logs else MODELS[name]
+    if model is None:
+        raise ValueError(f"{name} is not fitted to logarithms")
+    if not settings.size:
+        return model.rolling(x, steps, lookback, first=first)
+    return model.rolling_by(list(settings.T), x, steps, lookback, first=first)
+
+
+def _add(con: duckdb.DuckDBPyConnection, name: str, function: Callable[..., Any], takes: list[Any], gives: str) -> None:
+    con.create_function(
+        name, function, takes, gives, type=PythonUDFType.ARROW, null_handling=FunctionNullHandling.SPECIAL
+    )
+
+
+def _fits(model: Model, executor: Executor, asked: list[Stretch]) -> list[_Rows]:
     """The wanted windows of each row; blocks of similar rows are worked on together."""
     usable = [row for row, one in enumerate(asked) if one.is_readable and one.windows]
-    found = [_without_numbers(model, one) for one in asked]
     futures = [(rows, executor.submit(roll_block, model.name, *block)) for rows, block in _blocks(asked, usable)]
+    found = {}
     for rows, future in futures:
         fit = future.result()
         for position, row in enumerate(rows):
             found[row] = _Rows(fit, position, asked[row].windows)
-    return found
+    return [found[row] if row in found else _without_numbers(model, one) for row, one in enumerate(asked)]
 
 
-def _fit(fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, dt: Any) -> pa.Array:
+def _fit(fits: Callable[[list[Stretch]], list[_Rows]], x: pa.ChunkedArray, dt: Any) -> pa.Array:
     asked = [_whole(series, np.array([step])) for series, step in zip(_lists(x), _numbers(dt), strict=True)]
     return _structs(fits(asked))
 
 
-def _fit_at(fits: Callable[[list[_Asked]], list[_Rows]], t: pa.ChunkedArray, x: pa.ChunkedArray) -> pa.Array:
+def _fit_at(fits: Callable[[list[Stretch]], list[_Rows]], t: pa.ChunkedArray, x: pa.ChunkedArray) -> pa.Array:
     asked = [_whole(series, _steps_at(times, series)) for times, series in zip(_lists(t), _lists(x), strict=True)]
     return _structs(fits(asked))
 
 
-def _rolling(fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, dt: Any, lookback: Any) -> pa.Array:
+def _rolling(fits: Callable[[list[Stretch]], list[_Rows]], x: pa.ChunkedArray, dt: Any, lookback: Any) -> pa.Array:
     rows = zip(_lists(x), _numbers(dt), _integers(lookback), strict=True)
-    return _lists_of_structs(fits([_Asked(series, np.array([step]), steps) for series, step, steps in rows]))
+    return _lists_of_structs(fits([Stretch(series, np.array([step]), steps) for series, step, steps in rows]))
 
 
 def _rolling_at(
-    fits: Callable[[list[_Asked]], list[_Rows]], t: pa.ChunkedArray, x: pa.ChunkedArray, lookback: Any
+    fits: Callable[[list[Stretch]], list[_Rows]], t: pa.ChunkedArray, x: pa.ChunkedArray, lookback: Any
 ) -> pa.Array:
     rows = zip(_lists(t), _lists(x), _integers(lookback), strict=True)
-    return _lists_of_structs(fits([_Asked(series, _steps_at(times, series), steps) for times, series, steps in rows]))
-
-
-def _rolling_from(
-    fits: Callable[[list[_Asked]], list[_Rows]],
-    x: pa.ChunkedArray,
-    steps: pa.ChunkedArray,
-    lookback: Any,
-    first: Any,
-    settings: pa.ChunkedArray,
-    on_logs: Any,
-) -> pa.Array:
-    lists = zip(_lists(x), _lists(steps), _lists(settings), strict=True)
-    numbers = zip(_integers(lookback), _integers(first), on_logs.to_pylist(), strict=True)
-    asked = [
-        _Asked(series, each, window, begin, given if given.size else None, bool(log))
-        for (series, each, given), (window, begin, log) in zip(lists, numbers, strict=True)
-    ]
-    return _lists_of_structs(fits(asked))
+    return _lists_of_structs(fits([Stretch(series, _steps_at(times, series), steps) for times, series, steps in rows]))
 
 
 def _loglik(model: Model, x: pa.ChunkedArray, dt: Any, parameters: pa.ChunkedArray) -> pa.Array:
@@ -233,8 +222,8 @@ def _alike(sizes: list[int], padding: float) -> Iterator[list[int]]:
         yield group
 
 
-def _whole(x: Values, steps: Values) -> _Asked:
-    return _Asked(x, steps, steps_over_all(x.size))
+def _whole(x: Values, steps: Values) -> Stretch:
+    return Stretch(x, steps, steps_over_all(x.size))
 
 
 def _steps_at(times: NDArray[Any], x: Values) -> Values:
@@ -246,10 +235,10 @@ def _steps_at(times: NDArray[Any], x: Values) -> Values:
     return np.where(known[1:] & known[:-1], np.diff(microseconds) / MICROSECONDS_PER_YEAR, np.nan)
 
 
-_Block = tuple[Values, Values, int, int, Values | None, bool]
+_Block = tuple[Values, Values, int, int, Values, bool]
 
 
-def _blocks(asked: list[_Asked], usable: list[int]) -> Iterator[tuple[list[int], _Block]]:
+def _blocks(asked: list[Stretch], usable: list[int]) -> Iterator[tuple[list[int], _Block]]:
     """Rows of one shape and of about the same length, filled up with NaN at their ends.
 
     What stands behind a series does not touch its windows, so padding moves no bit of them.
@@ -264,12 +253,12 @@ def _blocks(asked: list[_Asked], usable: list[int]) -> Iterator[tuple[list[int],
         yield block, _padded([asked[one] for one in block])
 
 
-def _belongs(first: _Asked, other: _Asked, size: int) -> bool:
+def _belongs(first: Stretch, other: Stretch, size: int) -> bool:
     alike = first.shape == other.shape and other.x.size <= _PADDING * first.x.size
     return alike and (size + 1) * other.x.size <= _BLOCK_VALUES
 
 
-def _padded(series: list[_Asked]) -> _Block:
+def _padded(series: list[Stretch]) -> _Block:
     first = series[0]
     longest = max(one.x.size for one in series)
     x = np.full((len(series), longest), np.nan)
@@ -278,26 +267,19 @@ def _padded(series: list[_Asked]) -> _Block:
         x[row, : one.x.size] = one.x
         if first.steps.size > 1:
             steps[row, : one.steps.size] = one.steps
-    given = [one.settings for one in series if one.settings is not None]
-    settings = np.stack(given) if given else None
-    return x, steps, first.lookback, first.first, settings, first.on_logs
+    return x, steps, first.lookback, first.first, np.array([one.settings for one in series]), first.on_logs
 
 
 @dataclass(frozen=True)
 class _Rows:
-    """The windows of one series: a row of a fit, cut to its own length."""
+    """The windows of one series: the first of a row of a fit, as many as its own length gives."""
 
     fit: Fit
     position: int
     windows: int
 
-    def cut(self, values: NDArray[Any]) -> NDArray[Any]:
-        """This series' part of one of the fit's arrays."""
-        part: NDArray[Any] = values[self.position, : self.windows]
-        return part
 
-
-def _without_numbers(model: Model, asked: _Asked) -> _Rows:
+def _without_numbers(model: Model, asked: Stretch) -> _Rows:
     """One fit without numbers, for a series that has no whole window or that cannot be read."""
     nothing = np.full((1, 1), np.nan)
     status = Status.TOO_SHORT if asked.is_readable or asked.x.size < 2 else Status.OUT_OF_RANGE
@@ -318,25 +300,35 @@ def _lists_of_structs(found: list[_Rows]) -> pa.Array:
 def _structs(found: list[_Rows]) -> pa.Array:
     """The fits of all rows, one after the other."""
     model = MODELS[found[0].fit.model]
-    fields = [pa.array(_joined([rows.cut(rows.fit.n) for rows in found]), pa.int32())]
-    names = ["n"]
+    together = list({id(rows.fit): rows.fit for rows in found}.values())
+    wanted = _places(found, together)
+
+    def values_of(parts: list[NDArray[Any]]) -> NDArray[Any]:
+        values: NDArray[Any] = np.concatenate([part.reshape(-1) for part in parts])[wanted]
+        return values
+
+    fields = [pa.array(values_of([fit.n for fit in together]), pa.int32())]
     for column in model.columns:
-        values = _joined([rows.cut(rows.fit.columns[column.name]) for rows in found])
+        values = values_of([fit.columns[column.name] for fit in together])
         fields.append(_nullable(values, column))
-        names.append(column.name)
-    codes = _joined([rows.cut(rows.fit.status) for rows in found])
-    fields.append(_words().take(pa.array(codes.astype(np.int64))))
-    return pa.StructArray.from_arrays(fields, [*names, "status"])
+    fields.append(_words().take(pa.array(values_of([fit.status for fit in together]).astype(np.int64))))
+    return pa.StructArray.from_arrays(fields, ["n", *(column.name for column in model.columns), "status"])
+
+
+def _places(found: list[_Rows], together: list[Fit]) -> NDArray[np.int64]:
+    """Where the windows of each row stand in the arrays of all fits, put end to end."""
+    ends = np.cumsum([fit.status.size for fit in together]).tolist()
+    starts = dict(zip(map(id, together), [0, *ends], strict=False))
+    places = [
+        np.arange(rows.windows) + (starts[id(rows.fit)] + rows.position * rows.fit.status.shape[1]) for rows in found
+    ]
+    return np.concatenate(places)
 
 
 @cache
 def _words() -> pa.Array:
     # made when first needed: pyarrow looks for pandas at its first array, and loads it where it is installed
     return pa.array([status.word for status in Status], pa.string())
-
-
-def _joined(parts: list[NDArray[Any]]) -> NDArray[Any]:
-    return np.concatenate(parts)
 
 
 def _nullable(values: Values, column: Column) -> pa.Array:

@@ -8,10 +8,11 @@ import tomllib
 from collections import Counter
 from collections.abc import Callable, Collection, Iterator
 from contextlib import suppress
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from fnmatch import translate
+from functools import cached_property
 from pathlib import Path
-from typing import Annotated, Any, Literal, Self, TypeVar
+from typing import Annotated, Any, Literal, NamedTuple, Self, TypeVar
 from zoneinfo import available_timezones
 
 from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, ValidationError, model_validator
@@ -27,6 +28,8 @@ _NOT_YET = {"breaks", "formula", "group", "also", "horizons"}
 ALL = 0
 BEST = "best"
 _LONGEST = 10_000_000
+# Those of a series' settings that a plan tells as they are.
+_SETTINGS = {field.name for field in fields(Setting)} - {"periods_per_year", "planned"}
 
 
 def _known_zone(zone: str) -> str:
@@ -122,7 +125,7 @@ class PlannedSeries(_Strict):
     def setting(self) -> Setting:
         """The setting that the book keeps for this series."""
         periods = self.periods_per_year if self.clock == "trading" else None
-        told = self.model_dump(exclude={"name", "also_called", "periods_per_year"})
+        told = {name: getattr(self, name) for name in _SETTINGS}
         return Setting(**told, periods_per_year=periods, planned=True)
 
 
@@ -156,8 +159,7 @@ class PlannedIntake(_Strict):
         return self
 
 
-@dataclass(frozen=True)
-class Entry:
+class Entry(NamedTuple):
     """One thing to keep estimated: a model on the windows of one lookback of one series; lookback 0 is "all"."""
 
     series: str
@@ -187,7 +189,7 @@ class Plan(_Strict):
             raise ValueError("\n".join(mistakes))
         return self
 
-    @property
+    @cached_property
     def entries(self) -> list[Entry]:
         """Every series, model and lookback to keep estimated, in the plan's order."""
         return [

@@ -14,6 +14,7 @@ from tempfile import TemporaryDirectory
 import duckdb
 
 from driftbook.store import digest, lock, migrate
+from driftbook.store.damage import THE_WAY_BACK, find_damage
 from driftbook.store.errors import BookError
 from driftbook.store.reader import attached
 from driftbook.store.runs import NO_DIGEST, chain
@@ -25,6 +26,8 @@ from driftbook.store.tables import Tracked, columns_at, tracked_tables
 _EXCLUDED = re.compile(r"EXCLUDE \(([^)]*)\)")
 
 
+_Catalog = dict[str, tuple[str, str | None]]
+_Constants = dict[str, list[tuple[object, ...]]]
 _Stored = dict[tuple[str, int | None, int], digest.Leaf]
 
 
@@ -53,7 +56,8 @@ class Verified:
 def verify(book: str | os.PathLike[str]) -> Verified:
     """Checks a book against its digests; changes nothing.
 
-    Every row that was changed, added, removed, closed or reopened outside driftbook is found, by table, series and run.
+    Every row that was changed, added, removed, closed or reopened outside driftbook is found, by table, series and run;
+    of a file that is damaged, what can still be read. Raises BookError for one that cannot be opened.
     """
     path = Path(book)
     with attached(path) as con:
@@ -64,9 +68,13 @@ def verify(book: str | os.PathLike[str]) -> Verified:
 
 
 def _verified(con: duckdb.DuckDBPyConnection, look: lock.LastLook) -> Verified:
-    schema = [*_schema_findings(con), *_migration_findings(con)]
-    if schema:
-        return Verified(0, 0, 0, NO_DIGEST, look, schema)
+    fundamental = [*_damage_findings(con)] or [
+        *_schema_findings(con),
+        *_migration_findings(con),
+        *_constant_findings(con),
+    ]
+    if fundamental:
+        return Verified(0, 0, 0, NO_DIGEST, look, fundamental)
     findings = [
         *_leaf_findings(con),
         *_chain_findings(con),
@@ -79,9 +87,17 @@ def _verified(con: duckdb.DuckDBPyConnection, look: lock.LastLook) -> Verified:
     return Verified(runs, leaves, int(rows), last or NO_DIGEST, look, findings)
 
 
+def _damage_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
+    damaged = find_damage(con)
+    for one in damaged:
+        yield Finding(one.sentence, one.table_name)
+    if damaged:
+        yield Finding(f"All other columns and tables can be read. To be whole again, {THE_WAY_BACK}.")
+
+
 def _schema_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
     """The catalog against that of a fresh book."""
-    expected = _fresh_catalog()
+    expected, _ = _fresh()
     found = _catalog(con)
     for name in sorted(expected.keys() | found.keys()):
         if name not in found:
@@ -98,16 +114,31 @@ def _migration_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
         yield Finding("base.migration does not list the migrations of this driftbook, each once.")
 
 
+def _constant_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
+    """Tables that only migrations write, against those of a fresh book."""
+    _, expected = _fresh()
+    found = _constants(con)
+    for table in sorted(expected.keys() | found.keys()):
+        if expected.get(table) != found.get(table):
+            yield Finding(f"{table} does not hold what the migrations put there.", table)
+
+
 @cache
-def _fresh_catalog() -> dict[str, tuple[str, str | None]]:
+def _fresh() -> tuple[_Catalog, _Constants]:
     # read back from a file, since definitions come back from one in another wording than they were given in
     with TemporaryDirectory() as folder:
         create(Path(folder) / "fresh.duckdb")
         with attached(Path(folder) / "fresh.duckdb") as fresh:
-            return _catalog(fresh)
+            return _catalog(fresh), _constants(fresh)
 
 
-def _catalog(con: duckdb.DuckDBPyConnection) -> dict[str, tuple[str, str | None]]:
+def _constants(con: duckdb.DuckDBPyConnection) -> _Constants:
+    written = ["run", "leaf", "migration", *(table.name for table in tracked_tables())]
+    tables = con.execute(query("tables_of_migrations"), [written]).fetchall()
+    return {table: con.execute(f"from base.{table} order by all").fetchall() for (table,) in tables}
+
+
+def _catalog(con: duckdb.DuckDBPyConnection) -> _Catalog:
     rows = con.execute(query("catalog_of_book")).fetchall()
     return {f"{kind} {name}": (_EXCLUDED.sub(_in_order, sql), comment) for kind, name, sql, comment in rows}
 
@@ -190,7 +221,8 @@ def _finding(leaf: digest.Leaf, names: dict[int, str], what: str) -> Finding:
 def _chain_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
     runs = con.execute("select run_id, migration, digest from base.run order by run_id").fetchall()
     for run_id, migration, stored in runs:
-        if not 1 <= migration <= migrate.newest() or chain(con, run_id) != stored:
+        is_known = 1 <= migration <= migrate.newest()
+        if not is_known or chain(con, run_id, columns_at(migration)["run"]) != stored:
             yield Finding(
                 f"run {run_id}: its row, its leaves or the digest before it are not those that it was written with.",
                 "run",
@@ -206,7 +238,8 @@ def _run_findings(con: duckdb.DuckDBPyConnection, look: lock.LastLook) -> Iterat
     noted = re.fullmatch(r"run (\d+)", look.found or "")
     if noted and int(noted[1]) > last:
         sentence = (
-            f"run {noted[1]}: the lock file notes it, but the book ends with run {last}: an older one stands here."
+            f"run {noted[1]}: the lock file notes that it was made, and the book ends with run {last}: an older copy "
+            f"was put here. Take in again what came after run {last}; once a new run is made, this is said no more."
         )
         yield Finding(sentence, "run", run_id=int(noted[1]))
 

@@ -11,6 +11,7 @@ from pathlib import Path
 import duckdb
 
 from driftbook.store import functions, migrate
+from driftbook.store.damage import THE_WAY_BACK, is_damage
 from driftbook.store.errors import BookError, BookLocked
 from driftbook.store.sql import query
 from driftbook.store.swap import require_book
@@ -56,6 +57,8 @@ def _opened(path: Path) -> duckdb.DuckDBPyConnection:
     con = duckdb.connect(":memory:")
     try:
         con.execute("set TimeZone = 'UTC'")
+        # what does not fit into memory would be written where we happen to be, for anyone to read
+        con.execute("set temp_directory = ''")
         _attach(con, path)
         _check_schema(con, path)
     except BaseException:
@@ -74,11 +77,15 @@ def _attach(con: duckdb.DuckDBPyConnection, path: Path) -> None:
             raise BookLocked(
                 f"{path} is open for writing outside driftbook; close it there, then try again."
             ) from error
-        raise BookError(f"{path} cannot be opened as a book: {message}") from error
+        hint = f"; {THE_WAY_BACK}." if is_damage(error) else ""
+        raise BookError(f"{path} cannot be opened as a book: {message}{hint}") from error
 
 
 def _check_schema(con: duckdb.DuckDBPyConnection, path: Path) -> None:
-    done = migrate.applied(con, _BOOK)
+    try:
+        done = migrate.applied(con, _BOOK)
+    except duckdb.Error as error:
+        raise BookError(f"{path} cannot be read: {str(error).splitlines()[0]}; {THE_WAY_BACK}.") from error
     migrate.check_known(done, str(path))
     if done[-1][0] < migrate.newest():
         raise BookError(

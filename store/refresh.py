@@ -3,22 +3,23 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from concurrent.futures import Executor
 from dataclasses import dataclass, field, replace
 
 import duckdb
 
 from driftbook.estimators import MODELS
 from driftbook.store import intake
-from driftbook.store.due import span_table
+from driftbook.store.computing import computed
 from driftbook.store.errors import PlanError, UsageError
-from driftbook.store.for_model import Settings, fix_settings, slice_table
+from driftbook.store.for_model import Settings, fix_settings
 from driftbook.store.inbox import Delivered
 from driftbook.store.latest import write_latest
 from driftbook.store.plan import Plan, PlanText, parse_plan
 from driftbook.store.runs import Run
 from driftbook.store.series import Series, add_series, change_setting, known_series, put_aliases_in_force
 from driftbook.store.sql import first_row, only_row, query
-from driftbook.store.work import Work, find_work, needed
+from driftbook.store.work import Work, find_work
 
 
 @dataclass(frozen=True)
@@ -60,13 +61,17 @@ def put_plan_in_force(run: Run, given: PlanText | None, *, yes: bool) -> tuple[P
 def refresh(
     run: Run,
     plan: Plan,
+    executor: Executor,
     *,
     everything: bool = False,
     yes: bool = False,
     dry_run: bool = False,
     report: Callable[[Progress], None] | None = None,
 ) -> Refreshed:
-    """Estimates what is due in the draft of a run; raises UsageError where a person has to say yes."""
+    """Estimates what is due in the draft of a run, in blocks that go to the executor.
+
+    Raises UsageError where a person has to say yes.
+    """
     last = last_refresh(run.con)
     revised = {name for name in MODELS if _put_revision_in_force(run, name)}
     work = find_work(run.con, plan, last, revised, everything=everything)
@@ -76,9 +81,9 @@ def refresh(
     run.kind = "refresh"
     for model in work.models:
         model.table.close_entries(run.con, list(model.leaving), run.stamp.run_id)
-    settings = {model.name: fix_settings(run, model.table.model, model.slices) for model in work.models}
+    fixed = {model.name: fix_settings(run, model.table.model, model.slices, work.known) for model in work.models}
     for portion in work.portions():
-        _estimate(run, work, portion, settings)
+        _estimate(run, work, portion, fixed, executor)
         if report is not None:
             report(Progress(run.windows.due, work.windows))
     write_latest(run, plan, work, last)
@@ -100,22 +105,17 @@ def _warnings(con: duckdb.DuckDBPyConnection) -> tuple[str, ...]:
     )
 
 
-def _estimate(run: Run, work: Work, portion: list[int], settings: dict[str, Settings]) -> None:
+def _estimate(run: Run, work: Work, portion: list[int], fixed: dict[str, Settings], executor: Executor) -> None:
     """Computes and writes what is due for some series."""
-    con, chosen = run.con, set(portion)
-    con.register("needed", needed(work.slices(portion), work.series, work.times))
-    con.execute(query("list_observations").format(in_force="o.run_to is null"))
-    con.unregister("needed")
+    chosen = set(portion)
     for model in work.models:
+        slices = [one for one in model.slices if one.series_id in chosen]
         spans = [one for one in model.spans if one.series_id in chosen]
-        if spans:
-            slices = [one for one in model.slices if one.series_id in chosen]
-            table = slice_table(model.table.model, slices, work.series, settings[model.name])
-            due, fitted = model.table.estimate(con, table)
-            model.table.write(con, span_table(spans), run.stamp.run_id)
-            run.windows.due += due
-            run.windows.fitted += fitted
-    con.execute("drop table listed")
+        if slices or spans:
+            fresh = computed(model.table.model, slices, work.known, work.series, fixed[model.name], executor)
+            model.table.write(run.con, fresh, spans, run.stamp.run_id)
+            run.windows.due += len(fresh)
+            run.windows.fitted += len(fresh) - fresh.column("loglik").null_count
 
 
 def _replace_plan(run: Run, given: PlanText | None, yes: bool) -> tuple[Plan, bool]:

@@ -6,13 +6,14 @@ import errno
 import os
 import shutil
 from collections.abc import Iterator
-from contextlib import contextmanager, suppress
+from contextlib import contextmanager
 from pathlib import Path
 from typing import BinaryIO
 
 import duckdb
 
-from driftbook.store import interrupts, lock, migrate
+from driftbook.store import compaction, interrupts, lock, migrate
+from driftbook.store.damage import is_damage
 from driftbook.store.errors import BookError, UsageError
 from driftbook.store.foreign import (
     drop_wal_set_aside,
@@ -39,7 +40,8 @@ class Draft:
     """A private copy of the book, open for writing.
 
     `kept` says that it shall take the book's place when the block ends, `rewritten` that its rows shall be written into
-    a fresh file first, so that nothing of what was deleted is left, `outcome` what the lock file notes of it.
+    a fresh file first, so that nothing of what was deleted is left, `outcome` what the lock file notes of it. A draft
+    is also rewritten when that is worth it (`compaction`) and there is room.
     """
 
     def __init__(self, con: duckdb.DuckDBPyConnection, migrated: bool) -> None:
@@ -111,8 +113,9 @@ def rewriting(book: Path, wait: float) -> Iterator[Draft]:
                     yield draft
                     if draft.kept:
                         con.execute("checkpoint")
-                if draft.kept and draft.rewritten:
-                    _rewrite(draft_path)
+                        worth_it = compaction.worth_it(con) and _room_for(draft_path)
+                if draft.kept and (draft.rewritten or worth_it):
+                    _rewrite(draft_path, asked_for=draft.rewritten)
             if draft.kept:
                 _swap_in(draft_path, book)
             if draft.outcome is not None:
@@ -146,6 +149,11 @@ def _refusals_told(draft: Path) -> Iterator[None]:
     except duckdb.OutOfMemoryException as error:
         raise BookError(f"the run needs more memory than there is: {_first_line(error)}") from error
     except duckdb.Error as error:
+        if is_damage(error):
+            raise BookError(
+                f"the book's file is damaged: {_first_line(error)}; "
+                "`driftbook verify` says what can still be read, and the way back."
+            ) from error
         if draft.parent.name not in str(error):
             raise
         reason = _first_line(error).rpartition('": ')[2].rstrip(".")
@@ -195,13 +203,21 @@ def _remove(path: Path) -> None:
 
 
 def _require_room(book: Path) -> None:
-    size = book.stat().st_size
-    needed = size + size // 4 + _ROOM_TO_WORK
     free = shutil.disk_usage(book.parent).free
-    if free < needed:
+    if free < _room_to_write(book):
         raise BookError(
-            f"too little room beside {book}: a run needs {needed >> 20} MiB and {free >> 20} MiB are free; make room."
+            f"too little room beside {book}: a run needs {_room_to_write(book) >> 20} MiB and {free >> 20} MiB are "
+            "free; make room."
         )
+
+
+def _room_for(draft: Path) -> bool:
+    return shutil.disk_usage(draft.parent).free >= _room_to_write(draft)
+
+
+def _room_to_write(like: Path) -> int:
+    size = like.stat().st_size
+    return size + size // 4 + _ROOM_TO_WORK
 
 
 def _copy(book: Path, draft: Path) -> None:
@@ -258,18 +274,32 @@ def _swap_in(draft: Path, book: Path) -> None:
 
 
 def _make_alike(draft: Path, before: os.stat_result) -> None:
-    """Gives a draft the rights of the book, and its owner where we may."""
-    draft.chmod(before.st_mode & 0o7777)
-    with suppress(PermissionError):
+    """Gives a draft the rights and owners of the book; a group that we may not give it gets no rights in its place."""
+    rights = before.st_mode & 0o7777
+    try:
         os.chown(draft, before.st_uid, before.st_gid)
+    except PermissionError:  # only root may give a file away; its group can be any that we are in
+        try:
+            os.chown(draft, -1, before.st_gid)
+        except PermissionError:
+            rights &= ~0o070
+    draft.chmod(rights)
 
 
-def _rewrite(draft: Path) -> None:
-    """Writes a draft's rows into a fresh file, in the order of the tables' keys, and puts it in the draft's place."""
+def _rewrite(draft: Path, *, asked_for: bool) -> None:
+    """Writes a draft's rows into a fresh file, in the order of the tables' keys, and puts it in the draft's place.
+
+    What somebody else made in the book would not be in the fresh file: then it is not written, unless it was asked for.
+    """
     fresh = draft.with_name(f"fresh-{draft.name}")
     with _opened(fresh, {"storage_compatibility_version": "v1.2.0"}) as con:
         migrate.apply_pending(con)
         con.execute(f"attach '{str(draft).replace(chr(39), chr(39) * 2)}' as draft (read_only)")
+        foreign = con.execute(query("only_in_draft")).fetchall()
+        if foreign and asked_for:
+            raise BookError(f"driftbook did not make {foreign[0][0]} in the book; drop it first, or it would be lost.")
+        if foreign:
+            return
         for (table,) in con.execute(query("tables_of"), ["draft"]).fetchall():
             con.execute(f"delete from base.{table}")
             con.execute(f"insert into base.{table} from draft.base.{table} order by all")

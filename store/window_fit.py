@@ -101,7 +101,7 @@ def _parameters(
     start = aligned_start(first, steps_wanted)
     step = equal_step(clock, periods_per_year)
     steps: Any = step or np.diff(np.array(times, np.int64))[None, start:] / microseconds_per_unit(clock)
-    by = np.array([taken.settings]) if taken.settings else None
+    by = np.array([taken.settings])
     fit = roll_block(name, values[None, start:], steps, steps_wanted, first - start, by, taken.on_logs)
     status = _STATUSES[int(fit.status[0, 0])]
     ends = ("", "_se", "_lower", "_upper")

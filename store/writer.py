@@ -93,8 +93,7 @@ class Writing:
         text = plan if plan is None or isinstance(plan, PlanText) else read_plan(Path(plan))
         chosen, changed, taken_up = put_plan_in_force(self._run, text, yes=yes)
         delivered = take_in_folder(self._run, Path(inbox), chosen, yes=yes) if inbox is not None else Delivered()
-        functions.register(self._run.con, executor)
-        done = refresh(self._run, chosen, everything=everything, yes=yes, dry_run=dry_run, report=report)
+        done = refresh(self._run, chosen, executor, everything=everything, yes=yes, dry_run=dry_run, report=report)
         return replace(done, delivered=delivered, taken_up=taken_up, plan_changed=changed)
 
     def finish(self) -> None:

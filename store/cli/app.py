@@ -119,6 +119,8 @@ def _ended_by(error: Exception | KeyboardInterrupt, before: int) -> tuple[int, s
     if isinstance(error, OSError) and error.strerror:
         where = f" ({error.filename})" if error.filename else ""
         return 1, f"the system refuses: {error.strerror}{where}; {_what_of_the_book(before)}."
+    if "Corrupt database file" in str(error):
+        return 1, "the book's file is damaged; `driftbook verify` says what can still be read, and the way back."
     first_line = (str(error).splitlines() or [""])[0]
     return 1, (
         f"this should not have happened, {type(error).__name__}: {first_line.rstrip('.')}; "

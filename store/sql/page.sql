@@ -116,7 +116,7 @@ with said as (
 ), scaled as (
   select *, {per_value} as per_value from there
 )
-select window_end, {volatility}, {drift}, {pull}, status, run_from,
+select '{model}' as model, window_end, {volatility}, {drift}, {pull}, status, run_from,
   case when run_to <= $run then run_to end as run_to
 from scaled order by window_end, run_from
 

@@ -18,6 +18,33 @@ from base.leaf l
 where l.run_id = ?
 order by l.table_name, l.series_id nulls first
 
+-- name: columns_of_base
+-- The columns of the tables in the schema base.
+select c.table_name, c.column_name
+from duckdb_columns() c
+where c.database_name = current_database() and c.schema_name = 'base' and not c.internal
+order by c.table_name, c.column_index
+
 -- name: tables_of
 -- The base tables of an attached book.
 select t.table_name from duckdb_tables() t where t.database_name = ? and t.schema_name = 'base'
+
+-- name: rows_written
+-- The rows that runs have written before the last one, and those of the last one.
+select
+  coalesce(sum(r.rows_written) filter (r.run_id < l.last), 0)::bigint,
+  coalesce(sum(r.rows_written) filter (r.run_id = l.last), 0)::bigint
+from base.run r, (select max(m.run_id) as last from base.run m) l
+
+-- name: only_in_draft
+-- Tables and views of the attached draft that a fresh book does not have.
+with found as (
+  select t.database_name, t.schema_name || '.' || t.table_name as name from duckdb_tables() t where not t.internal
+  union all
+  select v.database_name, v.schema_name || '.' || v.view_name from duckdb_views() v where not v.internal
+)
+select d.name
+from found d
+where d.database_name = 'draft'
+  and d.name not in (select f.name from found f where f.database_name = current_database())
+order by d.name

@@ -4,19 +4,19 @@ import csv
 import io
 import time
 from html.parser import HTMLParser
+from pathlib import Path
 
 import duckdb
+import httpx2
 import pytest
 from page_books import HOSTILE, correct, small_book
 from starlette.testclient import TestClient
 
 from driftbook import store
 from driftbook.store.cli.app import run as run_command
-from driftbook.store.demo import run_demo
 from driftbook.store.page import create_app
 from driftbook.store.page.csv_text import csv_text
 from driftbook.store.page.guard import HEADERS
-from driftbook.store.page.words import half_life
 
 ADDRESSES = ["/", "/series?name=power_da", "/newest.json", "/csv/latest.csv", "/static/page.css", "/no"]
 MEGABYTE = 1_000_000
@@ -34,13 +34,6 @@ def small(tmp_path_factory):
 @pytest.fixture(scope="module")
 def client(small):
     return client_of(small)
-
-
-@pytest.fixture(scope="module")
-def island(tmp_path_factory):
-    folder = tmp_path_factory.mktemp("demo") / "island"
-    run_demo(folder, lambda _: None, lambda _: "", lambda _: "")
-    return folder / "island.duckdb"
 
 
 class _Words(HTMLParser):
@@ -174,9 +167,9 @@ def test_the_data_of_the_values_are_the_view(client, small):
 
 def test_what_is_said_of_each_window_is_what_latest_said_of_the_last(client, small):
     header, *rows = rows_of(client.get("/csv/statements.csv?name=power_da"))
-    in_force = [row for row in rows if not row[header.index("run_to")]]
     with store.connect(small) as con:
-        (volatility,) = con.execute("select volatility from latest where series = 'power_da'").fetchone()
+        model, volatility = con.execute("select model, volatility from latest where series = 'power_da'").fetchone()
+    in_force = [row for row in rows if not row[header.index("run_to")] and row[0] == model]
     assert float(in_force[-1][header.index("volatility")]) == pytest.approx(volatility, rel=1e-12)
 
 
@@ -259,18 +252,13 @@ def test_why_compares_the_runs_that_are_asked_for(client):
     assert "corrected to 99 in run 2" in words
 
 
-def test_without_evidence_of_a_pull_a_half_life_has_a_lower_end_only():
-    assert half_life(None, 78.1, None, unbounded=True) == "over 78.1 d"
-    assert half_life(28, 12, None, unbounded=True) == "28 d (12 d – no end)"
-    assert half_life(None, None, None, unbounded=True) == "no pull seen"
-
-
 def test_the_demo_is_shown_as_the_tour_tells_it(island):
-    client = client_of(island)
+    book = island / "island.duckdb"
+    client = client_of(book)
     first = words_of(client.get("/"))
     assert ": 9 series," in first
     assert "no advice and no forecast of returns" in first
-    with store.connect(island) as con:
+    with store.connect(book) as con:
         names = [name for (name,) in con.execute("select series from series").fetchall()]
         models = con.execute("select series, model from latest order by series").fetchall()
     assert all(f"{name} " in first for name in names)
@@ -285,6 +273,23 @@ def test_what_is_not_there_is_not_found_in_a_sentence(client, path):
     answer = client.get(path)
     assert answer.status_code == 404
     assert "Traceback" not in answer.text
+
+
+def test_the_guide_is_served_and_its_links_lead_to_pages(client):
+    assert 'href="/guide"' in client.get("/").text
+    listed = [a["href"] for tag, a in _Words(client.get("/guide").text).tags if tag == "a" and "/guide/" in a["href"]]
+    there = {f"/guide/{file.name}" for file in (Path(store.__file__).parent / "guide").glob("*.md")}
+    assert set(listed) == there
+    for address in listed:
+        answer = client.get(address)
+        assert answer.status_code == 200
+        found = _Words(answer.text)
+        assert [tag for tag, _ in found.tags].count("h1") == 1
+        links = [a["href"] for tag, a in found.tags if tag == "a"]
+        for link in links:
+            if not link.startswith("http"):
+                assert client.get(str(httpx2.URL(f"http://127.0.0.1{address}").join(link))).status_code == 200
+    assert client.get("/guide/no.md").status_code == 404
 
 
 def test_a_thousand_series_are_a_light_page_in_little_time(many):

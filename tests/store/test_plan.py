@@ -167,8 +167,10 @@ def test_a_series_needs_only_a_name():
     ('name = "desk"', 'name = "desk"\nzzz = 30',
      "zzz: no such key; there are name, headline_lookback, series, intake, estimate"),
     ('name = "desk"', 'name = "desk"\ngroup = []', "group: this driftbook does not have this key yet; take it out"),
-    ("lookbacks = [20]", 'lookbacks = [20]\n[[intake]]\nfiles = "../a.csv"',
-     "intake[1].files: '../a.csv' leaves the inbox; name files in it, such as power_*.csv"),
+    *((
+        "lookbacks = [20]", f"lookbacks = [20]\n[[intake]]\nfiles = '{files}'",
+        f"intake[1].files: {files!r} leaves the inbox; name files in it, such as power_*.csv",
+    ) for files in ("../a.csv", "/etc/passwd", "..", "a/../../b.csv", ".hidden", "..\\a.csv", "C:\\a.csv", "*/a.csv")),
     *((
         "lookbacks = [20]", f'lookbacks = [20]\n[[intake]]\nfiles = "a.csv"\n{keys}', told
     ) for keys, told in (
