@@ -2,24 +2,20 @@
 
 In units of a window's own mean and spread, with w_i the length of a step over the mean step, increments are
 
-    z_i | k jumps ~ N(a w_i + k m, v w_i + k s),    k ~ Poisson(L w_i),
+    z_i | k jumps ~ N((b − L m) w_i + k m, v w_i + k s),    k ~ Poisson(L w_i),
 
-and the parameters are a, ln v, ln L, m, ln s. The sum over k ends where the remaining Poisson mass is below `REST`.
+and the parameters are b, the mean of an increment, which the others hardly move, ln v, ln L, m, ln s. The sum over k
+ends where the remaining Poisson mass is below `REST`.
 
 The likelihood has no upper end as v → 0 and L → 1: one jump more or less then explains every increment but one (Honoré
 1998, Pitfalls in estimating jump-diffusion models). The unit of spread is therefore a jump-robust one, the
 interquartile range over 1.349, which a few jumps do not move, and √v is kept above `LEAST_SPREAD` of it, √s above
 `LEAST_JUMP`, L below `MOST_JUMPS`, and above `FEWEST` jumps in a window.
 
-The likelihood has several maxima. Starting points come from the EM algorithm (Dempster, Laird & Rubin 1977), which is
-quick to find a basin and slow to find its bottom: a few of its steps from each of some constellations, of rare large
-jumps up to frequent small ones.
-
 References
 ----------
 Merton, R. C. (1976), Option pricing when underlying stock returns are discontinuous, J. Financial Economics 3,
-125–144. Dempster, A. P., Laird, N. M. & Rubin, D. B. (1977), Maximum likelihood from incomplete data via the EM
-algorithm, J. Royal Statistical Society B 39, 1–38.
+125–144.
 """
 
 from __future__ import annotations
@@ -37,12 +33,10 @@ REST = 1e-12  # Poisson mass that is left out
 LEAST_SPREAD, LEAST_JUMP = 0.25, 0.1  # of the jump-robust spread of a step, for the diffusion and for a jump
 MOST_JUMPS, FEWEST = 1.0, 0.1  # jumps a step at most, and jumps a window at least
 LARGEST = 1e3  # largest spread, likewise
-EM_STEPS, EM_TERMS = 6, 7
 
 _VANISHES = -600.0  # exponents below this are measured from the largest
 _TERMS = (5, 7, 9, 11, 13, 16, 20)  # numbers of terms that sums may have
 _AT_ONCE = 1 << 15  # elements (steps times terms) that are computed at one time: their arrays stay in cache
-_STARTS = ((0.5, 0.1, 0.0, 3.0), (0.4, 0.3, 0.0, 1.5), (0.95, 0.008, -3.0, 0.1), (0.95, 0.008, 3.0, 0.1))  # v, L, m, s
 
 
 @dataclass(frozen=True)
@@ -55,14 +49,17 @@ class Increments:
         Increments, less their mean by time, over their standard deviation.
     weight : array, shape (m, n), or None
         Length of each step over the mean step; None where all are 1.
+    count : array, shape (n,), or None
+        Number of increments that each stands for; None where it is 1.
     """
 
     z: Array
-    weight: Array | None
+    weight: Array | None = None
+    count: Array | None = None
 
     def take(self, places: Places) -> Increments:
         """Some of the windows."""
-        return Increments(self.z[places], None if self.weight is None else self.weight[places])
+        return Increments(self.z[places], None if self.weight is None else self.weight[places], self.count)
 
     def surface(self, point: Array, places: Places) -> Surface:
         """The log-likelihood, one point a window, with its derivatives."""
@@ -72,8 +69,9 @@ class Increments:
         for part, terms in self._parts(point, places):
             mixture = _Mixture.at(self.take(places[part]), point[:, part], terms)
             sums[:, :, part, :terms], score = mixture.derivatives()
-            value[part], slope[part] = mixture.loglik, score.sum(axis=2)
-            square[part] = score @ score.transpose(0, 2, 1)
+            counted = score if self.count is None else score * self.count
+            value[part], slope[part] = mixture.loglik, counted.sum(axis=2)
+            square[part] = counted @ score.transpose(0, 2, 1)
         return _assembled(value, slope, square, sums, point)
 
     def loglik(self, point: Array) -> Array:
@@ -91,26 +89,6 @@ class Increments:
         last = Increments(self.z[:, -1:], None if self.weight is None else self.weight[:, -1:])
         for part, terms in self._parts(point, places):
             found[part] = 1 - _Mixture.at(last.take(part), point[:, part], terms).p[:, 0, 0]
-        return found
-
-    def starts(self) -> Array:
-        """A point from each constellation, after a few steps of the EM algorithm, shape (starts, 5, m)."""
-        m, n = self.z.shape
-        bounds = limits(n)
-        lower, upper = (np.array(each)[:, None] for each in (bounds.lower, bounds.upper))
-        square = np.square(self.z) if self.weight is None else np.square(self.z) / self.weight
-        size = np.log(square.mean(axis=1))
-        found = np.empty((len(_STARTS), 5, m))
-        at_once = max(1, _AT_ONCE // (n * EM_TERMS))
-        for number, (spread, jumps, mean, of_jump) in enumerate(_STARTS):
-            log_v, log_s = np.log(spread) + size, np.log(of_jump) + size
-            point = np.stack([0 * size, log_v, np.full(m, np.log(jumps)), mean * np.exp(0.5 * size), log_s])
-            for begin in range(0, m, at_once):
-                part = np.arange(begin, min(begin + at_once, m))
-                some, moved = self.take(part), point[:, part]
-                for _ in range(EM_STEPS):
-                    moved = np.clip(_Mixture.at(some, moved, EM_TERMS).em_step(), lower, upper)
-                found[number, :, part] = moved.T
         return found
 
     def _parts(self, point: Array, places: Places) -> Iterator[tuple[Places, int]]:
@@ -141,7 +119,7 @@ def standardised(increments: Array, steps: Array | None) -> tuple[Increments, Ar
 
 @lru_cache(maxsize=16)
 def limits(n: int) -> Limits:
-    """Bounds of a, ln v, ln L, m and ln s in windows of n steps, and how far they may go in one round."""
+    """Bounds of b, ln v, ln L, m and ln s in windows of n steps, and how far they may go in one round."""
     free = np.inf
     most = 2 * np.log(LARGEST)
     return Limits(
@@ -168,46 +146,46 @@ class _Mixture:
     ----------
     p : array
         Probability of each number of jumps given the increment.
-    lean : array
-        (z − mean)/variance.
+    e : array
+        z − mean.
     inverse : array
         1/variance.
     loglik : array, shape (m,)
     """
 
     p: Array
-    lean: Array
+    e: Array
     inverse: Array
     loglik: Array
     point: Array
-    weight: Array | None
+    increments: Increments
 
     @classmethod
     def at(cls, increments: Increments, point: Array, terms: int) -> _Mixture:
-        a, log_v, log_L, mean, log_s = (each[:, None, None] for each in point)
+        b, log_v, log_L, mean, log_s = (each[:, None, None] for each in point)
         v, L, s = np.exp(log_v), np.exp(log_L), np.exp(log_s)
+        a = b - L * mean
         k = np.arange(terms, dtype=np.float64)[:, None]
         w = 1.0 if increments.weight is None else increments.weight[:, None, :]
         inverse = 1 / (v * w + k * s)
         e = increments.z[:, None, :] - (a * w + k * mean)
-        lean = e * inverse
-        e *= lean
-        e *= -0.5
-        e += k * (log_L + np.log(w)) - L * w - _log_factorial(terms)[:, None] + 0.5 * np.log(inverse / (2 * np.pi))
-        top = _highest(e)
+        p = np.square(e)
+        p *= -0.5 * inverse
+        p += k * (log_L + np.log(w)) - L * w - _log_factorial(terms)[:, None] + 0.5 * np.log(inverse / (2 * np.pi))
+        top = _highest(p)
         if top is not None:
-            e -= top
-        p = np.exp(e, out=e)
+            p -= top
+        np.exp(p, out=p)
         total = p.sum(axis=1, keepdims=True)
-        p /= total
-        loglik = np.log(total).sum(axis=(1, 2))
+        p *= 1 / total
+        logs = np.log(total)[:, 0]
         if top is not None:
-            loglik += top.sum(axis=(1, 2))
-        weight = None if increments.weight is None else increments.weight
-        return cls(p, lean, inverse, loglik, point, weight)
+            logs += top[:, 0]
+        loglik = (logs if increments.count is None else logs * increments.count).sum(axis=1)
+        return cls(p, e, inverse, loglik, point, increments)
 
     def derivatives(self) -> tuple[Array, Array]:
-        """Sums over increments, and the scores.
+        """Sums over increments, and the scores; `p` is lost.
 
         Returns
         -------
@@ -215,70 +193,64 @@ class _Mixture:
             Of p; p times ∂ ln N by the mean μ and by the variance σ²; and p times (∂∂ + ∂ ∂) ln N by μ and σ², and by
             σ² twice: with weight 1, w and w². That by μ twice is 2 p ∂ ln N by σ².
         score : array, shape (m, 5, n)
-            Derivatives of each increment's log-density by a, v, L, m, s.
+            Derivatives of each increment's log-density by b, v, L, m, s.
         """
-        inverse = self.inverse
-        bend = np.square(self.lean)
-        bend -= inverse
-        bend *= 0.5  # of ln N by its variance
-        by_mean, by_variance = self.p * self.lean, self.p * bend
-        score = self._scores(by_mean, by_variance)
-        parts = [self._by_weight(each) for each in (self.p, by_mean, by_variance)]
-        bend -= inverse
-        by_mean *= bend
-        parts.append(self._by_weight(by_mean))
-        bend -= inverse
-        by_variance *= bend
-        by_variance -= self.p * (0.5 * np.square(inverse))
-        parts.append(self._by_weight(by_variance))
-        return np.stack(parts), score
-
-    def _scores(self, by_mean: Array, by_variance: Array) -> Array:
         m, terms, n = self.p.shape
-        k, L = np.arange(terms, dtype=np.float64), np.exp(self.point[2])[:, None]
-        w = 1.0 if self.weight is None else self.weight
-        score, weights = np.empty((m, 5, n)), np.stack([np.ones(terms), k])
-        score[:, 0::3] = weights @ by_mean
-        score[:, 1::3] = weights @ by_variance
-        score[:, 2] = (k @ self.p) / L - w
-        if self.weight is not None:
-            score[:, 0] *= w
-            score[:, 1] *= w
-        return score
+        L, weight = np.exp(self.point[2])[:, None], self.increments.weight
+        score = np.empty((m, 5, n))
+        score[:, 2] = (np.arange(terms, dtype=np.float64) @ self.p) / L
+        sums = self._of_equal(score) if weight is None else self._of_unequal(score)
+        if weight is None:
+            score[:, 2] -= 1
+        else:
+            score[:, 2] -= weight
+            score[:, :2] *= weight[:, None]
+        score[:, 2] -= self.point[3][:, None] * score[:, 0]
+        score[:, 3] -= L * score[:, 0]
+        return sums, score
+
+    def _of_equal(self, score: Array) -> Array:
+        """Sums, and the scores by a, v, m and s, which are put in place.
+
+        All are made of p e^j, as the variance is the same for all increments.
+        """
+        _, terms, n = self.p.shape
+        count = np.ones(n) if self.increments.count is None else self.increments.count
+        i, k, power = self.inverse[:, :, 0], np.arange(terms, dtype=np.float64), self.p
+        once = np.stack([i, k * i], axis=1)
+        twice = 0.5 * i[:, None] * once
+        P, score[:, 1::3] = power @ count, (-0.5 * once) @ power
+        power *= self.e
+        E, score[:, 0::3] = power @ count, once @ power
+        power *= self.e
+        S = power @ count
+        score[:, 1::3] += twice @ power
+        power *= self.e
+        T = power @ count
+        power *= self.e
+        Q = power @ count
+        A, B = i * E, 0.5 * i * (i * S - P)
+        M, V = i * i * (0.5 * i * T - 1.5 * E), i * i * (i * (0.25 * i * Q - 1.5 * S) + 0.75 * P)
+        return np.stack([P, A, B, M, V])[:, None]
+
+    def _of_unequal(self, score: Array) -> Array:
+        """The same, term by term."""
+        inverse = self.inverse
+        lean = self.e * inverse
+        bend = 0.5 * (np.square(lean) - inverse)  # of ln N by its variance
+        by_mean, by_variance = self.p * lean, self.p * bend
+        weights = np.stack([np.ones(self.p.shape[1]), np.arange(self.p.shape[1], dtype=np.float64)])
+        score[:, 0::3], score[:, 1::3] = weights @ by_mean, weights @ by_variance
+        parts = [self._by_weight(each) for each in (self.p, by_mean, by_variance)]
+        parts.append(self._by_weight(by_mean * (bend - inverse)))
+        parts.append(self._by_weight(by_variance * (bend - 2 * inverse) - self.p * (0.5 * np.square(inverse))))
+        return np.stack(parts)
 
     def _by_weight(self, values: Array) -> Array:
-        """Sums over increments of values times 1, w and w², shape (3, m, terms); the first alone if all w are 1."""
-        if self.weight is None:
-            return np.asarray(values.sum(axis=2)[None])
-        w = self.weight[:, None, :]
+        """Sums over increments of values times 1, w and w², shape (3, m, terms)."""
+        w = np.asarray(self.increments.weight)[:, None, :]
         weighted = values * w
         return np.stack([values.sum(axis=2), weighted.sum(axis=2), (weighted * w).sum(axis=2)])
-
-    def em_step(self) -> Array:
-        """The parameters after one step of the EM algorithm."""
-        v, s = np.exp(self.point[1])[:, None, None], np.exp(self.point[4])[:, None, None]
-        terms, n = self.p.shape[1:]
-        k = np.arange(terms, dtype=np.float64)[:, None]
-        w = 1.0 if self.weight is None else self.weight[:, None, :]
-        own, jump = v * w * self.lean, s * self.lean  # what of z − mean falls to the diffusion, and to each jump
-        by_jumps = self.p * k
-        jumps = by_jumps.sum(axis=(1, 2))
-        moved = (self.p * own).sum(axis=(1, 2)) / n
-        rest = own - moved[:, None, None] * w
-        rest *= rest
-        rest += k * s * self.inverse * (v * w)
-        rest *= self.p
-        if self.weight is not None:
-            rest /= w
-        drift = (by_jumps * jump).sum(axis=(1, 2)) / jumps
-        jump -= drift[:, None, None]
-        jump *= jump
-        jump += s - s * s * self.inverse
-        jump *= by_jumps
-        variance, of_jump = rest.sum(axis=(1, 2)) / n, jump.sum(axis=(1, 2)) / jumps
-        return np.stack(
-            [self.point[0] + moved, np.log(variance), np.log(jumps / n), self.point[3] + drift, np.log(of_jump)]
-        )
 
 
 def _highest(exponents: Array) -> Array | None:
@@ -297,9 +269,9 @@ def _log_factorial(terms: int) -> Array:
 
 
 def _assembled(value: Array, slope: Array, square: Array, sums: Array, point: Array) -> Surface:
-    """The surface in a, ln v, ln L, m, ln s from sums over increments, shape (5, 1 or 3, m, terms)."""
+    """The surface in b, ln v, ln L, m, ln s from sums over increments, shape (5, 1 or 3, m, terms)."""
     P, A, B, M, V = ([group[0], group[len(group) // 2], group[-1]] for group in sums)
-    k, L = np.arange(sums.shape[-1], dtype=np.float64), np.exp(point[2])
+    k, L, m = np.arange(sums.shape[-1], dtype=np.float64), np.exp(point[2]), point[3]
     ones, kk = np.ones_like(k), k * k
     upper = {
         (0, 0): 2 * _dot(B[2], ones),
@@ -318,6 +290,7 @@ def _assembled(value: Array, slope: Array, square: Array, sums: Array, point: Ar
         (3, 4): _dot(M[0], kk),
         (4, 4): _dot(V[0], kk),
     }
+    _from_drift_to_mean(upper, slope[:, 0], L, m)
     scale = np.ones_like(point)
     for i in (1, 2, 4):
         scale[i] = np.exp(point[i])
@@ -327,6 +300,18 @@ def _assembled(value: Array, slope: Array, square: Array, sums: Array, point: Ar
     for i in (1, 2, 4):
         hessian[i, i] += gradient[i]
     return Surface(value, gradient, hessian)
+
+
+def _from_drift_to_mean(upper: dict[tuple[int, int], Array], slope: Array, L: Array, m: Array) -> None:
+    """Second derivatives by a, … made those by b = a + L m, …, in place; `slope` is the first derivative by a."""
+    of_drift = [upper[0, i] for i in range(5)]
+    upper[2, 3] -= L * of_drift[2] + m * of_drift[3] - L * m * of_drift[0] + slope
+    upper[2, 2] -= m * (2 * of_drift[2] - m * of_drift[0])
+    upper[3, 3] -= L * (2 * of_drift[3] - L * of_drift[0])
+    for i, factor in ((2, m), (3, L)):
+        upper[0, i] = of_drift[i] - factor * of_drift[0]
+        upper[1, i] -= factor * of_drift[1]
+        upper[i, 4] -= factor * of_drift[4]
 
 
 def _dot(values: Array, weights: Array) -> Array:

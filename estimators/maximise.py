@@ -117,7 +117,9 @@ class Maximum:
         )
 
 
-def maximise(objective: Objective, start: Array, limits: Limits, *, most_rounds: int = MOST_ROUNDS) -> Maximum:
+def maximise(
+    objective: Objective, start: Array, limits: Limits, *, most_rounds: int = MOST_ROUNDS, close: float = CLOSE
+) -> Maximum:
     """The maximum of each window's function near its start.
 
     Parameters
@@ -129,16 +131,18 @@ def maximise(objective: Objective, start: Array, limits: Limits, *, most_rounds:
     limits : Limits
     most_rounds : int
         Rounds after which a window is given up.
+    close : float
+        Gain that a last step may still promise.
 
     Returns
     -------
     Maximum
     """
     with np.errstate(all="ignore"):
-        return _climb(objective, start, limits, most_rounds)
+        return _climb(objective, start, limits, most_rounds, close)
 
 
-def _climb(objective: Objective, start: Array, limits: Limits, most_rounds: int) -> Maximum:
+def _climb(objective: Objective, start: Array, limits: Limits, most_rounds: int, close: float) -> Maximum:
     lower, upper = _column(limits.lower), _column(limits.upper)
     p, m = start.shape
     best, converged, rounds = np.clip(start, lower, upper), np.zeros(m, dtype=np.bool_), np.zeros(m, dtype=np.int64)
@@ -157,7 +161,7 @@ def _climb(objective: Objective, start: Array, limits: Limits, most_rounds: int)
         step, damped, held = _step(here, top, damping, limits)
         whole = _shorten(step, held, limits.longest(here))
         gain = 0.5 * (top.gradient * step).sum(axis=0)
-        done = better & whole & (np.abs(gain) < CLOSE) & (damped <= _DAMPED)
+        done = better & whole & (np.abs(gain) < close) & (damped <= _DAMPED)
         trial = np.clip(here + step, lower, upper)
         damping = np.where(damped > _DAMPED, damped, damping)
         ended = done | ~np.isfinite(top.value + gain) | (damping > _MOST_DAMPING)
@@ -199,7 +203,7 @@ def _write(best: Array, last: Surface, at: Places, point: Array, top: Surface) -
 
 
 def maximise_from_each(
-    objective: Objective, starts: Array, limits: Limits, *, most_rounds: int = MOST_ROUNDS
+    objective: Objective, starts: Array, limits: Limits, *, most_rounds: int = MOST_ROUNDS, close: float = CLOSE
 ) -> tuple[Maximum, ...]:
     """The maxima near several starts, of shape (starts, p, m), the largest first.
 
@@ -211,7 +215,7 @@ def maximise_from_each(
         return objective(points, places % m)
 
     start = np.moveaxis(starts, 0, 1).reshape(p, count * m)
-    found = maximise(of_copies, start, limits, most_rounds=most_rounds)
+    found = maximise(of_copies, start, limits, most_rounds=most_rounds, close=close)
     values = np.where(found.converged, found.value, -np.inf).reshape(count, m)
     order = np.argsort(-values, axis=0, kind="stable")
     return tuple(found.take(each * m + np.arange(m)) for each in order)

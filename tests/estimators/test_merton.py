@@ -5,6 +5,7 @@ import pytest
 
 from driftbook.estimators import MODELS, Status
 from driftbook.estimators.jump_mixture import limits, standardised
+from driftbook.estimators.jump_starts import condensed, starts
 from driftbook.estimators.models.merton import MODEL as MERTON
 from driftbook.estimators.models.merton import STRIDE
 
@@ -34,11 +35,14 @@ def prices(n, m, seed, dt=DT, **truth):
 
 
 @pytest.mark.parametrize("unequal", [False, True])
-def test_derivatives_are_those_of_the_likelihood(unequal):
+@pytest.mark.parametrize("few", [False, True])
+def test_derivatives_are_those_of_the_likelihood(unequal, few):
     steps = np.random.default_rng(1).uniform(0.4, 2, (6, 80)) if unequal else None
     z, _, _ = standardised(increments(80, 6, seed=2) * 30, steps)
+    points = starts(condensed(z), 8)
+    z = condensed(z) if few else z
     places, h = np.arange(6), 1e-5
-    for point in z.starts():
+    for point in points:
         surface = z.surface(point, places)
         np.testing.assert_allclose(surface.value, z.loglik(point), rtol=1e-14)
         for i in range(5):
@@ -51,17 +55,50 @@ def test_derivatives_are_those_of_the_likelihood(unequal):
             assert np.abs(by_gradient - surface.hessian[i]).max() <= DIFFERENCES * np.abs(surface.hessian).max()
 
 
+@pytest.mark.parametrize("n", [20, 37, 250, 1001])
+def test_few_points_keep_number_mean_and_squares(n):
+    z, _, _ = standardised(increments(n, 5, seed=18), None)
+    points = condensed(z)
+    assert points.count.sum() == n
+    assert n < 250 or points.z.shape[1] < n / 3
+    for power in (1, 2):
+        np.testing.assert_allclose(points.z**power @ points.count, (z.z**power).sum(axis=1), rtol=1e-12, atol=1e-12 * n)
+
+
+def test_few_points_tell_the_likelihood():
+    """To 0.05, where maxima that matter differ by tenths: at maxima of 60 windows."""
+    x = prices(250, 60, seed=19)
+    z, _, _ = standardised(np.diff(np.log(x), axis=1), None)
+    point = starts(condensed(z), 1)[0]
+    error = np.abs(condensed(z).loglik(point) - z.loglik(point))
+    assert np.quantile(error, 0.9) < 0.05
+
+
 def test_em_never_goes_down():
-    """A property of the algorithm (Dempster, Laird & Rubin 1977); inside the bounds."""
-    from driftbook.estimators.jump_mixture import EM_TERMS, _Mixture
+    """A property of the algorithm (Dempster, Laird & Rubin 1977), inside the bounds; it runs in single precision."""
+    from driftbook.estimators.jump_starts import _constellations, _em_step
 
     z, _, _ = standardised(increments(200, 20, seed=3), None)
-    point = z.starts()[0]
-    values = [_Mixture.at(z, point, EM_TERMS).loglik]
-    for _ in range(5):
-        point = _Mixture.at(z, point, EM_TERMS).em_step()
-        values.append(_Mixture.at(z, point, EM_TERMS).loglik)
-    assert (np.diff(values, axis=0) > -1e-9).all()
+    points = condensed(z)
+    count = points.count.astype(np.float32)
+    values, point = [], _constellations(points)[0].astype(np.float32)
+    for _ in range(8):
+        point, value = _em_step(points.z.astype(np.float32), count, point)
+        values.append(value)
+    assert (np.diff(values, axis=0) > -1e-4 * np.abs(values[0])).all()
+    assert np.mean(values[-1] > values[0]) > 0.9
+
+
+def test_a_window_alone_has_the_fit_of_its_place_in_a_series():
+    """The same maximum, found from every start or from its past's: in all but a few windows."""
+    x = prices(700, 4, seed=20)
+    rolled = MERTON.rolling(x, DT, 250)
+    alone = MERTON.fit(np.lib.stride_tricks.sliding_window_view(x, 251, axis=1)[:, ::9], DT)
+    apart = np.abs(rolled.loglik[:, ::9] - alone.loglik) > 1e-6
+    assert apart.mean() <= 0.02
+    same = ~apart & (rolled.status[:, ::9] == Status.OK)
+    volatility = rolled.total_volatility[:, ::9]
+    np.testing.assert_allclose(alone.total_volatility[same], volatility[same], rtol=1e-5)
 
 
 @pytest.mark.parametrize("unequal", [False, True])
