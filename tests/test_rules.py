@@ -121,3 +121,10 @@ def test_the_project_stands_alone_and_names_no_foreign_path():
         if path.suffix in {".py", ".md", ".sql", ".toml", ".css", ".html"} or path.name == "run":
             text = (ROOT / path).read_text(encoding="utf-8")
             assert not [word for word in words if word in text], path
+
+
+def test_no_two_queries_have_one_name():
+    texts = [path.read_text(encoding="utf-8") for path in sorted((ROOT / "store" / "sql").glob("*.sql"))]
+    names = [line.removeprefix("-- name: ") for text in texts for line in text.splitlines() if "-- name: " in line]
+    assert len(names) > 50
+    assert sorted(set(names)) == sorted(names)

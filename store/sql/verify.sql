@@ -75,7 +75,7 @@ where q.run_from < q.ends_before
 group by all
 order by all
 
--- name: columns_of_base
+-- name: columns_by_table
 -- Every base table with its columns.
 select c.table_name, list(c.column_name order by c.column_index)
 from duckdb_columns() c
