@@ -51,6 +51,7 @@ def test_an_upgrade_alone_is_a_run(older):
 # driftbook as it was when it had ten migrations and four models
 TEN = """
 import sys
+from pathlib import Path
 from types import MappingProxyType
 import driftbook.estimators as estimators
 from driftbook.estimators import registry
@@ -61,7 +62,7 @@ ten = migrate.all_migrations()[:10]
 migrate.all_migrations = lambda: ten
 from driftbook import store
 from made_series import days, plan_text, wave
-path = sys.argv[1]
+path = Path(sys.argv[1])
 store.create(path)
 with store.writing(path, at="2026-01-05") as work:
     work.ingest(days("pellets_fob", wave(40)), store.Options(add_series=True), name="first")
