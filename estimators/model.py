@@ -5,6 +5,7 @@ from __future__ import annotations
 import operator
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Literal
 
 import numpy as np
@@ -143,12 +144,12 @@ class Model:
         """Columns that are kept as numbers."""
         return tuple(column for column in self.columns if column.sql is None)
 
-    @property
+    @cached_property
     def has_half_life(self) -> bool:
         """Whether a distance to its level halves in a time of its own."""
         return any(column.name == "half_life" for column in self.columns)
 
-    @property
+    @cached_property
     def tests_pull(self) -> bool:
         """Whether a fit tells a p-value of no pull."""
         return any(column.name == "no_reversion_p" for column in self.columns)

@@ -6,6 +6,7 @@ from collections.abc import Iterable
 from dataclasses import dataclass, fields, replace
 from datetime import datetime
 from itertools import groupby
+from typing import Any
 
 import duckdb
 import numpy as np
@@ -70,7 +71,6 @@ class _Fit:
     lookback: int
     window_start: datetime
     model: str
-    k: int
     n: int
     loglik: float | None
     status: str
@@ -85,11 +85,10 @@ class _Fit:
     half_life_unbounded: bool | None
     reaches_zero: bool | None
     noise_share: float | None
+    criterion: float  # bic, NaN without numbers
 
-    @property
-    def criterion(self) -> float:
-        """bic, NaN without numbers."""
-        return float("nan") if self.loglik is None else float(bic(self.loglik, self.k, self.n))
+
+_PLACES = {field.name: place for place, field in enumerate(fields(_Fit))}
 
 
 def write_latest(run: Run, plan: Plan, work: Work, last: int) -> None:
@@ -156,9 +155,16 @@ def _fits(con: duckdb.DuckDBPyConnection, asked: list[int], headline: dict[int, 
     )
     con.execute(query("find_headlines"))
     con.unregister("asked_headline")
-    found = [_Fit(*values) for model in MODELS.values() for values in con.execute(_local_sql(model)).fetchall()]
+    found = [fit for model in MODELS.values() for fit in _fits_of(model, con.execute(_local_sql(model)).fetchall())]
     con.execute("drop table headline")
     return sorted(found, key=lambda fit: fit.series_id)
+
+
+def _fits_of(model: Model, rows: list[Any]) -> list[_Fit]:
+    loglik = np.array([row[_PLACES["loglik"]] for row in rows], np.float64)
+    n = np.where(np.isnan(loglik), np.nan, [row[_PLACES["n"]] for row in rows])
+    criteria = bic(loglik, len(model.parameters), n).tolist()
+    return [_Fit(*(*row, criterion)) for row, criterion in zip(rows, criteria, strict=True)]
 
 
 def _headlines(plan: Plan, series: dict[int, Series]) -> dict[int, int]:
@@ -179,7 +185,7 @@ def _local_sql(model: Model) -> str:
     told = ", ".join(f"({there[name]})" if name in there else "null" for name in _PULL)
     optional = {name: there.get(name, "null") for name in ("no_reversion_p", "noise_share")}
     return query("local_fits").format(
-        **local_columns(model) | optional | {"pull": told, "k": len(model.parameters)},
+        **local_columns(model) | optional | {"pull": told},
     )
 
 

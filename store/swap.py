@@ -97,6 +97,8 @@ def rewriting(book: Path, wait: float) -> Iterator[Draft]:
     """
     require_book(book)
     book = book.resolve()  # a link to a book stays a link
+    if not os.access(book, os.W_OK):
+        raise BookError(f"{book} is not yours to write: its rights say so.")
     with lock.writers_lock(book, wait), no_foreign_writer(book):
         _clear_drafts(book)
         put_wal_back(book)

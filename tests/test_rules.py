@@ -1,6 +1,7 @@
 """The rules of the house that a machine can hold."""
 
 import ast
+import re
 import subprocess
 import sys
 import tomllib
@@ -98,6 +99,14 @@ def test_the_table_that_is_loaded_holds_no_objects():
             assert all(stored[name].dtype.kind in "fiub" for name in stored.files)
 
 
+def test_every_named_query_has_a_name_of_its_own_and_is_used():
+    texts = [path.read_text(encoding="utf-8") for path in (ROOT / "store" / "sql").glob("*.sql")]
+    names = re.findall(r"^-- name: (\w+)$", "\n".join(texts), re.MULTILINE)
+    assert sorted(names) == sorted(set(names))
+    code = "\n".join(path.read_text(encoding="utf-8") for path in _python_files("store"))
+    assert [name for name in names if f'"{name}"' not in code] == []
+
+
 def test_no_second_copy_of_the_packages_is_imported():
     import driftbook.estimators
     import driftbook.store  # noqa: F401
@@ -121,10 +130,3 @@ def test_the_project_stands_alone_and_names_no_foreign_path():
         if path.suffix in {".py", ".md", ".sql", ".toml", ".css", ".html"} or path.name == "run":
             text = (ROOT / path).read_text(encoding="utf-8")
             assert not [word for word in words if word in text], path
-
-
-def test_no_two_queries_have_one_name():
-    texts = [path.read_text(encoding="utf-8") for path in sorted((ROOT / "store" / "sql").glob("*.sql"))]
-    names = [line.removeprefix("-- name: ") for text in texts for line in text.splitlines() if "-- name: " in line]
-    assert len(names) > 50
-    assert sorted(set(names)) == sorted(names)

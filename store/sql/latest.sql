@@ -25,7 +25,7 @@ with beside as (
 ), scaled as (
   select *, {per_value} as per_value from there
 )
-select series_id, observed_at, value, lookback, window_start, '{model}', {k}, n, loglik, status, {no_reversion_p},
+select series_id, observed_at, value, lookback, window_start, '{model}', n, loglik, status, {no_reversion_p},
   {volatility}, {drift}, {pull}, {reaches_zero}, {noise_share}
 from scaled
 

@@ -31,7 +31,7 @@ def day(book, number):
 
 
 def expected(run):
-    """What the book holds after a run: of two series the values 0 to run - 1, of one all but the last and a half more."""
+    """What the book holds after a run: two series from 0 to run - 1, one of them and a half more but for the last."""
     total = run * (run - 1) + 0.5 * (run - 1)
     return [2 * run, total, 3 * run - 1, run]
 
@@ -45,21 +45,26 @@ def crowd(tmp_path, *, readers, swaps):
         children = [
             Child(tmp_path / f"reader {k}", read_and_connect_again, book, stop, k % 2 == 0) for k in range(readers)
         ]
-        for number in range(1, swaps + 1):
-            day(book, number)
-            assert old.execute("select max(run_id), count(*) from run").fetchone() == (1, 1)
-            assert old.execute("select count(*), sum(value) from observation").fetchone() == (2, 0.0)
-        time.sleep(0.5)
-        stop.touch()
-        found = []
-        for child in children:
-            ended = child.ended()
-            assert ended.code == 0, ended.err
-            connections, seen = json.loads(ended.out)
-            assert {run: answer for run, answer in seen.items() if answer != expected(int(run))} == {}
-            found.append((connections, len(seen)))
+        try:
+            for number in range(1, swaps + 1):
+                day(book, number)
+                assert old.execute("select max(run_id), count(*) from run").fetchone() == (1, 1)
+                assert old.execute("select count(*), sum(value) from observation").fetchone() == (2, 0.0)
+            time.sleep(0.5)
+        finally:
+            stop.touch()
+        found = [what_was_read(child) for child in children]
     assert store.verify(book).findings == []
     return found
+
+
+def what_was_read(child):
+    """How often a reader connected and how many runs it saw, each of them whole."""
+    ended = child.ended()
+    assert ended.code == 0, ended.err
+    connections, seen = json.loads(ended.out)
+    assert {run: answer for run, answer in seen.items() if answer != expected(int(run))} == {}
+    return connections, len(seen)
 
 
 def test_readers_that_come_and_go_while_the_book_is_swapped(tmp_path):
