@@ -17,7 +17,7 @@ from scipy.optimize import minimize
 
 from driftbook.estimators.models.ckls import MODEL
 
-SERIES, VALUES, LOOKBACK, DT = 10, 2501, 250, 1 / 252
+SERIES, VALUES, LOOKBACK, DT = 10, 2500, 250, 1 / 252
 WINDOWS = SERIES * (VALUES - LOOKBACK)
 LOOPED = 30
 LEAST_RATIO_TO_LOOP = 180

@@ -17,7 +17,7 @@ from scipy.optimize import minimize
 from driftbook.estimators import Status
 from driftbook.estimators.models.quartic import MODEL
 
-SERIES, VALUES, LOOKBACK, DT = 10, 2501, 250, 1 / 252
+SERIES, VALUES, LOOKBACK, DT = 10, 2500, 250, 1 / 252
 WINDOWS = SERIES * (VALUES - LOOKBACK)
 LOOPED = 40
 LEAST_RATIO_TO_LOOP = 700

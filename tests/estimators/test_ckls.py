@@ -7,7 +7,7 @@ import polars as pl
 import pytest
 
 from driftbook.estimators import Fit, Status, aligned_start
-from driftbook.estimators.interpolation import points, weights
+from driftbook.estimators.chebyshev import points, weights
 from driftbook.estimators.log_segments import bridge, mean_series, quotient
 from driftbook.estimators.models.ckls import MODEL
 
@@ -109,7 +109,7 @@ def test_sums_over_windows_agree_with_windows_one_by_one(lookback, relative):
     """Over all tiers of range and step; the windows are summed in another place, at more points and in more terms."""
     x = paths(3 * lookback, 2, relative=relative)[0]
     windows = np.lib.stride_tricks.sliding_window_view(x, lookback + 1)[::7]
-    from driftbook.estimators.models.ckls import _from_windows
+    from driftbook.estimators.elastic_fit import _from_windows
 
     with np.errstate(all="ignore"):
         columns, status = _from_windows(True, windows, np.full((len(windows), lookback), DT))

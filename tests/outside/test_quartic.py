@@ -82,6 +82,19 @@ def test_without_higher_powers_it_is_nearly_the_exact_pull():
     assert abs(found - exact) < 300 * (kappa * DT) ** 3
 
 
+# --- data ---------------------------------------------------------------------------------------------------------
+
+GRID = 1.0 + 0.5 * np.arange(1600)  # thousands of years ago
+
+
+@pytest.fixture(scope="module")
+def ice_core():
+    """Temperature on the grid, forward in time."""
+    frame = table("DAAG", "edcT")
+    age, temperature = (frame[name].to_numpy(dtype=float) for name in ("Age", "dT"))
+    return np.interp(GRID, age / 1000, temperature)[::-1]
+
+
 # --- the optimum --------------------------------------------------------------------------------------------------
 
 
@@ -143,27 +156,29 @@ def windows_of_all_kinds(count):
         yield np.cumsum(rng.standard_normal(n + 1))
 
 
-def assert_optimum_is_the_optimum(count, least):
-    rng, short = np.random.default_rng(1), []
-    for window in windows_of_all_kinds(count):
+def assert_optimum_is_the_optimum(windows, misses):
+    """Nothing better is found, but in so many windows that say themselves that they may not be it."""
+    rng, missed = np.random.default_rng(1), 0
+    for window, dt in windows:
         z = (window - window.mean()) / window.std()
-        fit = MODEL.fit(z, DT, centre=0.0, scale=1.0)
-        if fit.status != Status.NOT_CONVERGED:
-            short.append(patient_search(z, DT, rng) - fit.loglik)
-    assert len(short) >= least
-    assert max(short) < 1e-6
+        fit = MODEL.fit(z, dt, centre=0.0, scale=1.0)
+        if fit.status == Status.NOT_CONVERGED or patient_search(z, dt, rng) - fit.loglik > 1e-6:
+            missed += 1
+            assert fit.status in (Status.NOT_CONVERGED, Status.AT_BOUND)
+    assert missed <= misses
 
 
 def test_optimum_is_the_optimum():
-    assert_optimum_is_the_optimum(6, 23)
+    assert_optimum_is_the_optimum([(window, DT) for window in windows_of_all_kinds(5)], 0)
 
 
 @pytest.mark.study
-def test_optimum_is_the_optimum_in_many_windows():
-    assert_optimum_is_the_optimum(40, 155)
+def test_optimum_is_the_optimum_in_two_hundred_windows(ice_core):
+    simulated = [(window, DT) for window in windows_of_all_kinds(45)]
+    assert_optimum_is_the_optimum([*simulated, *((ice_core[k : k + 251], 0.5) for k in range(0, 1340, 67))], 1)
 
 
-# --- data ---------------------------------------------------------------------------------------------------------
+# --- what the ice core says ----------------------------------------------------------------------------------------
 
 # Euler least squares on the grid, computed apart: drift, its roots, volatility, and the gain in log-likelihood over a
 # linear drift. The two upper roots are one apart, which is far inside their errors.
@@ -171,15 +186,6 @@ EULER = (-0.015402217, -0.049364711, -0.032105273, -0.0035343548)
 ROOTS = (-7.237, -1.4238, -0.4229)
 EULER_SIGMA = 0.84337938
 GAIN = -1442.340471 + 1453.282147
-GRID = 1.0 + 0.5 * np.arange(1600)  # thousands of years ago
-
-
-@pytest.fixture(scope="module")
-def ice_core():
-    """Temperature on the grid, forward in time."""
-    frame = table("DAAG", "edcT")
-    age, temperature = (frame[name].to_numpy(dtype=float) for name in ("Age", "dT"))
-    return np.interp(GRID, age / 1000, temperature)[::-1]
 
 
 def least_squares(x, dt):
