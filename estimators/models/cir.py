@@ -60,6 +60,7 @@ from driftbook.estimators.windows import Array
 SHORTEST = 5
 LN2 = float(np.log(2.0))
 LOST = 1e-7  # of a log-likelihood, that rounding may take
+CLOSE = 1e-10  # gain that a last step may still promise: standard errors are then good to 1e-6
 ROUNDS = 20  # after which a window that sums did not settle is taken transition by transition
 TWO_SIDED = 1.959963984540054
 
@@ -191,10 +192,11 @@ def fit_equal(piece: Piece) -> Answer:
         n = flat.n
         widening = np.sqrt(n * flat.robust / (flat.spread * flat.rss))
         residuals = Residuals(n * flat.fourth / np.square(flat.rss), widening)
-    columns = {name: np.full(m, np.nan) for name in _names(piece.lookback, piece.intervals)}
+    columns = {name: np.empty(m) for name in _names(piece.lookback, piece.intervals)}
     status, done = np.zeros(m, dtype=np.int8), np.zeros(m, dtype=np.bool_)
     summing = Summing(piece, Roots.of(piece, roots))
     status[summing.stale], done[summing.stale] = Status.DISCRETE, True
+    blank(columns, np.flatnonzero(summing.stale))
     for places, sums, start in summing.groups():
         optimum, kept = _climbed(piece, places, sums, start)
         found, became = _estimates(optimum, None if residuals is None else residuals.take(places))
@@ -239,7 +241,7 @@ def _names(n: int, intervals: bool) -> list[str]:
 
 def _climbed(piece: Piece, places: Places, sums: Sums, start: Array) -> tuple[Optimum, Mask]:
     """The optimum of some windows, and whether their sums can vouch for it."""
-    top = maximise(sums.surface, start, _LIMITS, most_rounds=ROUNDS)
+    top = maximise(sums.surface, start, _LIMITS, most_rounds=ROUNDS, close=CLOSE)
     psi, rho, scaled = top.point
     h = -2 * rho
     f = log_ratio(h)
@@ -294,8 +296,8 @@ def _of_level_h_and_alpha(covariance: Array, h: Array, alpha: Array, ratio: Arra
     rows = [sum(weight * covariance[k] for k, weight in row) for row in jacobian]
     found = np.empty_like(covariance)
     for i, row in enumerate(rows):
-        for j, column in enumerate(jacobian):
-            found[i, j] = sum(weight * row[k] for k, weight in column)
+        for j, column in enumerate(jacobian[: i + 1]):
+            found[i, j] = found[j, i] = sum(weight * row[k] for k, weight in column)
     return found
 
 

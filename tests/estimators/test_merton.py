@@ -5,9 +5,9 @@ import pytest
 
 from driftbook.estimators import MODELS, Status
 from driftbook.estimators.jump_mixture import limits, standardised
+from driftbook.estimators.jump_search import STRIDE
 from driftbook.estimators.jump_starts import condensed, starts
 from driftbook.estimators.models.merton import MODEL as MERTON
-from driftbook.estimators.models.merton import STRIDE
 
 DT = 1 / 252
 N = 120
