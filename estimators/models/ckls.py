@@ -43,7 +43,8 @@ Standard errors are those of the observed information. Intervals:
 Zero can be reached if gamma < ½, and not if gamma > ½ while kappa theta > 0 (Feller 1952): `can_reach_zero` is told
 where the interval of gamma lies on one side.
 
-A window in which a step multiplies the value by more than 4.4, or values differ by more than e^12, is not_converged.
+A window in which a step multiplies the value by more than 4.4, or a value is e^6 times the geometric mean or its
+inverse, is not_converged.
 sigma² is looked for within a factor of 3 of the mean square of the movement: far from there the expansion is no density
 and can be larger without bound.
 

@@ -247,7 +247,7 @@ def test_functions_take_centre_and_scale_first():
 
 def strange_rows():
     rng = np.random.default_rng(13)
-    x = np.cumsum(rng.standard_normal((10, 400)), axis=1)
+    x = np.cumsum(rng.standard_normal((12, 400)), axis=1)
     x[1, 200] = np.nan
     x[2, 250] = np.inf
     x[3] = 7.0
@@ -258,6 +258,8 @@ def strange_rows():
     x[8] = 1e9 + 1e-3 * x[8]
     x[9] = 1e3
     x[9, 200:] += 1e-13 * rng.standard_normal(200)
+    x[10] *= 1e-12
+    x[11, 200:] += 1e6
     return x
 
 
@@ -287,7 +289,8 @@ def test_each_strange_row_has_its_status_and_no_number_that_is_none():
     np.testing.assert_array_equal(fit.status[1] == Status.OUT_OF_RANGE, holds)
     assert (fit.status[[3, 6, 9]] == Status.FLAT).all()
     given_ = np.isin(fit.status, [Status.OK, Status.AT_BOUND, Status.TOO_COARSE])
-    assert given_[[0, 4, 7, 8]].all()
+    assert given_[[0, 4, 7, 8, 10]].all()
+    assert (given_[11] | (fit.status[11] == Status.NOT_CONVERGED)).all()
     for name in (*PARAMETERS, "loglik", "a0_se", "sigma_lower", "kurtosis", "centre"):
         np.testing.assert_array_equal(np.isfinite(fit.columns[name]), given_, err_msg=name)
 

@@ -215,7 +215,7 @@ def test_drift_of_the_ice_core(ice_core):
 
 
 def test_the_lower_state_of_the_ice_core_is_sure_and_the_upper_is_not(ice_core):
-    """Between Euler’s upper roots both drifts are nil within their errors: one has roots there, one just not."""
+    """Between Euler's upper roots both drifts are nil within their errors: one has roots there, one just not."""
     fit = MODEL.fit(ice_core, 0.5, centre=0.0, scale=1.0)
     f = [float(fit.columns[name]) for name in ("a0", "a1", "a2", "a3")]
     lowest = np.roots(f[::-1])[0]
@@ -227,6 +227,39 @@ def test_the_lower_state_of_the_ice_core_is_sure_and_the_upper_is_not(ice_core):
     assert (np.abs(cubic.value(f, shelf)) < at_centre.a0_se).all()
     assert (np.abs(cubic.value(EULER, shelf)) < at_centre.a0_se).all()
     assert np.isnan(fit.barrier)
+
+
+# The maximum of the exact likelihood, by a search apart from this test: its roots are −7.214 and −0.805 ± 0.186 i.
+EXACT = (-0.01712485, -0.04276088, -0.03067809, -0.00347648, 0.86398239)
+
+
+def exact_loglik(x, dt, *parameters):
+    """By the Fokker–Planck equation in x/sigma."""
+    *f, s = parameters
+    law = transition(
+        lambda y: cubic.value(f, s * y) / s,
+        lambda y: cubic.slope(f, s * y),
+        lambda y: s * y * (f[0] + s * y * (f[1] / 2 + s * y * (f[2] / 3 + s * y * f[3] / 4))) / s**2,
+        low=-17 / s,
+        high=12 / s,
+        points=121,
+    )
+    return law.log_density(x[:-1] / s, x[1:] / s, dt).sum() - (len(x) - 1) * np.log(s)
+
+
+def test_the_exact_likelihood_of_the_ice_core_has_its_maximum_where_ours_has(ice_core):
+    """And not at Euler's two wells: over so long a step they are what Euler's scheme makes of one."""
+    fit = MODEL.fit(ice_core, 0.5, centre=0.0, scale=1.0)
+    names = ("a0", "a1", "a2", "a3", "sigma")
+    ours, errors = ([float(fit.columns[f"{name}{end}"]) for name in names] for end in ("", "_se"))
+    assert (np.abs(np.subtract(ours, EXACT)) < 0.02 * np.array(errors)).all()
+    top = exact_loglik(ice_core, 0.5, *EXACT)
+    assert 0 <= top - exact_loglik(ice_core, 0.5, *ours) < 1e-3
+    assert top - exact_loglik(ice_core, 0.5, *EULER, EULER_SIGMA) > 0.9
+    for k, error in enumerate(errors):
+        for way in (-0.02, 0.02):
+            aside = [each + way * error * (j == k) for j, each in enumerate(EXACT)]
+            assert exact_loglik(ice_core, 0.5, *aside) < top
 
 
 def test_two_wells_are_found_where_paths_went_to_and_fro():
