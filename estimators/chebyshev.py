@@ -1,12 +1,15 @@
 """Functions of one variable known at Chebyshev points, many at once: their polynomials, and where they are least.
 
 A range is cut into panels; in each a function is the polynomial through its values at the panel's Chebyshev points of
-the first kind, and where it is analytic the error falls geometrically with their number.
+the first kind, and where it is analytic the error falls geometrically with their number. A range in one panel is also
+interpolated by weights, which are products of distances to the points, from either side, so that nothing is divided by
+a distance.
 
 References
 ----------
 Trefethen, L. N. (2013), Approximation Theory and Approximation Practice, SIAM. Clenshaw, C. W. (1955), A note on the
-summation of Chebyshev series, Mathematics of Computation 9, 118–120.
+summation of Chebyshev series, Mathematics of Computation 9, 118–120. Berrut, J.-P. & Trefethen, L. N. (2004),
+Barycentric Lagrange interpolation, SIAM Review 46, 501–517.
 """
 
 from __future__ import annotations
@@ -152,3 +155,47 @@ def least(panels: Panels, values: Array, best: Places) -> Least:
     z = np.where(at_low >= 0, low, np.where(at_high <= 0, high, z))
     falls = np.where(at_high < 0, at_high, 0.0)
     return Least(panel, z, value(series, z), falls, value(derivative(slope), z))
+
+
+def points(low: float, high: float, count: int) -> Array:
+    """The points between two places, rising, shape (count,)."""
+    unit = -np.cos(np.pi * (np.arange(count) + 0.5) / count)
+    return np.asarray(0.5 * (low + high) + 0.5 * (high - low) * unit)
+
+
+def weights(nodes: Array, at: Array, *, bend: bool = False) -> tuple[Array, Array, Array]:
+    """By what the values at points enter the value and two derivatives at places: arrays of shape (count, m).
+
+    Parameters
+    ----------
+    nodes : array, shape (count,)
+    at : array, shape (m,)
+    bend : bool
+        Whether the second derivative is wanted; it is zero otherwise.
+    """
+    count, span = len(nodes), 0.25 * (nodes[-1] - nodes[0])  # a product of distances over this stays near one
+    away = (at - nodes[:, None]) / span
+    apart = (nodes[:, None] - nodes[None, :]) / span
+    np.fill_diagonal(apart, 1.0)
+    below = _products(away, range(count - 1), bend=bend)
+    above = _products(away, range(count - 1, 0, -1), bend=bend)
+    share = 1 / apart.prod(axis=1)[:, None]
+    plain = share * below[0] * above[0]
+    slope = (share / span) * (below[1] * above[0] + below[0] * above[1])
+    if not bend:
+        return plain, slope, np.zeros((count, 1))
+    curved = below[2] * above[0] + 2 * below[1] * above[1] + below[0] * above[2]
+    return plain, slope, (share / span**2) * curved
+
+
+def _products(away: Array, order: range, *, bend: bool) -> tuple[Array, Array, Array]:
+    """At each point the product of the distances that come before it in an order, and two derivatives."""
+    product, slope, curved = np.zeros((3, *away.shape))
+    product[order.start] = 1.0
+    for j in order:
+        k = j + order.step
+        np.multiply(product[j], away[j], out=product[k])
+        slope[k] = slope[j] * away[j] + product[j]
+        if bend:
+            curved[k] = curved[j] * away[j] + 2 * slope[j]
+    return product, slope, curved

@@ -3,9 +3,11 @@
 In eta = x^{1 − gamma}/(1 − gamma), Lamperti's coordinate, the volatility is sigma; the closed-form expansion of the
 log-density to second order in the step (Aït-Sahalia 2002, 2008) is given gamma exactly quadratic in the drift. Values
 are in units of an origin, t = x/origin, and the drift is alpha + b (t − 1), which loses nothing where values are close
-to each other. With u = sigma² in those units, k = gamma/2 − gamma²/4 and c = (alpha, b),
+to each other. The volatility is that at a level e^λ in those units, the window's geometric mean: u = sigma² e^{2 gamma
+λ}, which is all but independent of gamma. With k = gamma/2 − gamma²/4 and c = (alpha, b), and sums in which the powers
+of t that come from the volatility are measured from e^λ,
 
-    loglik = −½ (n ln(2 π u) + Σ ln Δ) − gamma Σ ln t_{i+1} − ½ gamma Σ ln(t_{i+1}/t_i) − P/u
+    loglik = −½ (n ln(2 π u) + Σ ln Δ) − gamma Σ (ln t_{i+1} − λ) − ½ gamma Σ ln(t_{i+1}/t_i) − P/u
              − ¼ c′Uc + c·(B + u C) − ½ u k V − ¼ u² k W,    P = ½ S − c·A + ½ c′Tc,
 
 where S = Σ h²/Δ and A, T, U, V, W, B and C are sums of integrals of powers over the step
@@ -25,12 +27,12 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
-from functools import lru_cache
+from functools import cached_property, lru_cache, partial
 
 import numpy as np
 from numpy.typing import NDArray
 
-from driftbook.estimators.interpolation import points, weights
+from driftbook.estimators.chebyshev import points, weights
 from driftbook.estimators.log_segments import Series, shapes
 from driftbook.estimators.windows import Array
 
@@ -57,10 +59,11 @@ def at_midpoint(series: Series, q: Array) -> Array:
     return total
 
 
-@lru_cache(maxsize=256)
+@lru_cache(maxsize=512)
 def _shapes_at(gamma: float, terms: int) -> dict[str, Series]:
-    """The series at a node."""
-    return shapes(np.asarray(gamma), terms)
+    """The series at a node: one term more of that of h², which weighs far more than what the drift adds."""
+    of_movement = shapes(np.asarray(gamma), terms + 1)
+    return {name: series if name == "hh" else series[:-1] for name, series in of_movement.items()}
 
 
 @dataclass(frozen=True)
@@ -79,55 +82,89 @@ class Steps:
     half: Array
     steps: Array
 
+    def take(self, places: Places) -> Steps:
+        """Of some segments."""
+        return Steps(self.middle[places], self.half[places], self.steps[places])
+
+    @cached_property
+    def q(self) -> Array:
+        """The square that series are in."""
+        return np.square(self.half)
+
+    @cached_property
+    def more(self) -> Array:
+        """By what the geometric mean of a step exceeds the origin, over that."""
+        return np.expm1(self.middle)
+
+    @cached_property
+    def _moved(self) -> Array:
+        return np.asarray(2 * self.half * (1 + self.more))
+
+    @cached_property
+    def _moved_square(self) -> Array:
+        return np.asarray(np.square(self._moved) / self.steps)
+
+    @cached_property
+    def _over(self) -> Array:
+        return np.asarray(self.steps / (1 + self.more))
+
+    @cached_property
+    def _over_square(self) -> Array:
+        return np.asarray(self._over / (1 + self.more))
+
     def base_terms(self, terms: int) -> Iterator[Array]:
         """Terms that do not depend on gamma, 4 × `terms` arrays."""
-        q, inverse = self.half * self.half, np.exp(-self.middle)
-        heads = self.steps * inverse, self.steps**2 * inverse * inverse, self.steps**2 * inverse
-        for head in (*heads, np.broadcast_to(self.steps**2, self.half.shape)):
+        over = self._over
+        for head in (over, over * over, over * self.steps, np.broadcast_to(self.steps**2, self.half.shape)):
             term = head
             for k in range(terms):
                 if k:
-                    term = term * q
+                    term = term * self.q
                 yield term
 
     def terms(self, gamma: float, terms: int, *, fourth: bool) -> Iterator[Array]:
         """Terms at one gamma: S, A, T, V, U_inverse, W and, if wanted, the fourth powers of h."""
-        by = _shapes_at(gamma, terms)
-        q, more = self.half * self.half, np.expm1(self.middle)
-        t = 1 + more
-        power = np.exp(-2 * gamma * self.middle)
-        change = 2 * self.half
-        first = power * t
-        second = first * t
-        S = change * change
-        S *= second
-        S *= at_midpoint(by["hh"], q)
-        S /= self.steps
-        yield S
-        movement = change * first
-        yield movement * at_midpoint(by["first"], q)
-        yield movement * (more * at_midpoint(by["second"], q) + at_midpoint(by["first difference"], q))
+        by = {name: partial(at_midpoint, series, self.q) for name, series in _shapes_at(gamma, terms).items()}
+        more, power = self.more, np.exp((-2 * gamma) * self.middle)
+        square = self._moved_square * power
+        square *= by["hh"]()
+        yield square
+        movement = self._moved * power
+        yield movement * by["first"]()
+        yield movement * (more * by["second"]() + by["first difference"]())
         weighted = power * self.steps
-        yield weighted * at_midpoint(by["square"], q)
-        yield weighted * (more * at_midpoint(by["cross"], q) + at_midpoint(by["cross difference"], q))
-        last = more * at_midpoint(by["last"], q) + 2 * at_midpoint(by["last difference"], q)
-        yield weighted * (more * last + at_midpoint(by["last second difference"], q))
-        inverse = self.steps / second
+        yield weighted * by["square"]()
+        yield weighted * (more * by["cross"]() + by["cross difference"]())
+        last = more * (more * by["last"]() + 2 * by["last difference"]())
+        yield weighted * (last + by["last second difference"]())
+        inverse = self._over_square / power
         yield inverse
-        inverse = inverse * self.steps
-        yield inverse / t * at_midpoint(by["bridge inverse"], q)
-        yield inverse / second * at_midpoint(by["bridge volatility"], q)
+        yield inverse * self._over * by["bridge inverse"]()
+        yield np.square(inverse) * by["bridge volatility"]()
         if fourth:
-            squared = np.square(second) * np.square(change * change / self.steps)
-            yield squared * at_midpoint(by["hhhh"], q)
+            yield np.square(square)
 
 
-def rows_of(gamma: float, terms: int, base: Sequence[Array], sums: Sequence[Array]) -> list[Array]:
-    """The sums at one gamma in the order of `ROWS`, from sums of `Steps.base_terms` and `Steps.terms`."""
+def put_rows(
+    place: Array, gamma: float, terms: int, base: Sequence[Array], sums: Sequence[Array], level: Array
+) -> None:
+    """Put the sums at one gamma into a place, shape (rows, m), in the order of `ROWS`.
+
+    From sums of `Steps.base_terms` and `Steps.terms`, and the logarithm of the level that the volatility is of.
+    """
     by = _shapes_at(gamma, terms)
+    scale = np.exp((2 * gamma) * level)
+    for row, total in zip(place[:6], sums[:6], strict=True):
+        np.multiply(total, scale, out=row)
+    np.divide(sums[6], scale, out=place[6])
     names = ("inverse", "bridge square", "bridge cross", "bridge last")
-    inverse, U0, U1, U2 = (_total(by[name], base[k * terms : (k + 1) * terms]) for k, name in enumerate(names))
-    return [*sums[:7], inverse, U0, U1 - U0, U2 - 2 * U1 + U0, *sums[7:]]
+    place[7], U0, U1, U2 = (_total(by[name], base[k * terms : (k + 1) * terms]) for k, name in enumerate(names))
+    place[8], place[9], place[10] = U0, U1 - U0, U2 - 2 * U1 + U0
+    np.divide(sums[7], scale, out=place[11])
+    square = scale * scale
+    np.divide(sums[8], square, out=place[12])
+    if len(sums) > 9:
+        np.multiply(sums[9], square, out=place[13])
 
 
 def _total(series: Series, sums: Sequence[Array]) -> Array:
@@ -146,14 +183,17 @@ class Elastic:
     ----------
     n : int
         Steps in a window.
+    level : array, shape (m,)
+        λ.
     log_steps, logs, log_change, duration : array, shape (m,)
-        Σ ln Δ, Σ ln t_{i+1}, Σ ln(t_{i+1}/t_i), Σ Δ.
+        Σ ln Δ, Σ (ln t_{i+1} − λ), Σ ln(t_{i+1}/t_i), Σ Δ.
     nodes : array, shape (count,)
     rows : array, shape (count, rows, m)
         Sums at the nodes, in the order of `ROWS`.
     """
 
     n: int
+    level: Array
     log_steps: Array
     logs: Array
     log_change: Array
@@ -161,30 +201,38 @@ class Elastic:
     nodes: Array
     rows: Array
 
+    @classmethod
+    def at_level(cls, n: int, plain: Sequence[Array], level: Array, gammas: Array, rows: Array) -> Elastic:
+        """From Σ ln Δ, Σ ln t_{i+1}, Σ ln(t_{i+1}/t_i), Σ Δ, and rows by `put_rows`."""
+        log_steps, logs, log_change, duration = plain
+        return cls(n, level, log_steps, logs - n * level, log_change, duration, gammas, rows)
+
     def take(self, places: Places) -> Elastic:
         """Of some of the windows."""
         if places.size == self.logs.size:
             return self
-        log_steps, logs, log_change, duration = (
-            values[places] for values in (self.log_steps, self.logs, self.log_change, self.duration)
-        )
-        return Elastic(self.n, log_steps, logs, log_change, duration, self.nodes, self.rows[:, :, places])
+        plain = self.level, self.log_steps, self.logs, self.log_change, self.duration
+        level, *rest = (values[places] for values in plain)
+        log_steps, logs, log_change, duration = rest
+        rows = self.rows.take(places, axis=2)
+        return Elastic(self.n, level, log_steps, logs, log_change, duration, self.nodes, rows)
 
     def at(self, gamma: Array) -> tuple[Array, Array]:
         """Sums and their derivatives at one gamma a window, shape (rows, m)."""
-        plain, slope, _ = weights(self.nodes, gamma)
-        return self._weighted(plain), self._weighted(slope)
+        rows, slopes = self._weighted(weights(self.nodes, gamma)[:2])
+        return rows, slopes
 
     def near(self, gamma: Array) -> Near:
         """Sums about one gamma a window."""
-        return Near(*(self._weighted(each) for each in weights(self.nodes, gamma, bend=True)))
+        return Near(*self._weighted(weights(self.nodes, gamma, bend=True)))
 
-    def _weighted(self, share: Array) -> Array:
-        total, term = np.zeros(self.rows.shape[1:]), np.empty(self.rows.shape[1:])
-        for each, w in zip(self.rows, share, strict=True):
-            np.multiply(each, w, out=term)
-            total += term
-        return total
+    def _weighted(self, shares: tuple[Array, ...]) -> list[Array]:
+        totals, term = [np.zeros(self.rows.shape[1:]) for _ in shares], np.empty(self.rows.shape[1:])
+        for row, *each in zip(self.rows, *shares, strict=True):
+            for total, share in zip(totals, each, strict=True):
+                np.multiply(row, share, out=term)
+                total += term
+        return totals
 
     def spot(self, gamma: Array, rows: Array, u: Array) -> Spot:
         """The likelihood at given sums, gamma and u."""
@@ -227,13 +275,18 @@ class Elastic:
 
     def solved(self, gamma: Array, rows: Array, u: Array | None = None, rounds: int = 3) -> Spot:
         """The likelihood at given sums and gamma, largest over the rest, by Newton's method in ln u."""
-        mean_square = rows[0] / self.n
-        u = mean_square if u is None else u
+        u = rows[0] / self.n if u is None else u
         for _ in range(rounds):
-            spot = self.spot(gamma, rows, u)
-            step = np.where(spot.curvature > 0, spot.slope / spot.curvature, 0.0)
-            u = np.clip(u * np.exp(np.clip(step, -0.7, 0.7)), mean_square / WIDEST, mean_square * WIDEST)
+            u = self._better(self.spot(gamma, rows, u), rows)
         return self.spot(gamma, rows, u)
+
+    def _better(self, spot: Spot, rows: Array) -> Array:
+        """A step of Newton's method: the next u."""
+        step = np.where(spot.curvature > 0, spot.slope / spot.curvature, 0.0)
+        mean_square = rows[0] / self.n
+        return np.asarray(
+            np.clip(spot.u * np.exp(np.clip(step, -0.7, 0.7)), mean_square / WIDEST, mean_square * WIDEST)
+        )
 
     def slope(self, gamma: Array, rows: Array, slopes: Array, spot: Spot) -> Array:
         """The derivative of the log-likelihood by gamma, the rest being where it is."""
@@ -250,9 +303,13 @@ class Elastic:
     def slope_of(
         self, gamma: Array, rows: Array, slopes: Array, u: Array | None = None, rounds: int = 3
     ) -> tuple[Array, Array]:
-        """The derivative of the profile at given sums, and u there."""
+        """The derivative of the profile at given sums, and u there.
+
+        Without rounds it is that of the likelihood at a given u, which differs the less the nearer u is: u, that of the
+        window's own level, hardly depends on gamma.
+        """
         spot = self.solved(gamma, rows, u, rounds)
-        return self.slope(gamma, rows, slopes, spot), spot.u
+        return self.slope(gamma, rows, slopes, spot), self._better(spot, rows)
 
     def slope_at(self, gamma: Array) -> Array:
         """The derivative of the profile."""
@@ -266,6 +323,11 @@ class Near:
     rows: Array
     slopes: Array
     curvatures: Array
+
+    def put(self, places: Places, other: Near) -> None:
+        """Put those of some windows in their places."""
+        self.rows[:, places], self.slopes[:, places] = other.rows, other.slopes
+        self.curvatures[:, places] = other.curvatures
 
     def at(self, away: Array) -> tuple[Array, Array]:
         """Sums and their derivatives so far away from there."""

@@ -135,35 +135,32 @@ class Sums:
         psi, rho, alpha = point
         q, terms = order(psi, alpha), len(self.inverse)
         last = _horner(hankel(terms)[-1], q * q)
-        return np.asarray(np.abs(last) * self.inverse[-1] * np.exp(-terms * self._log_argument(psi, rho)))
-
-    def _log_argument(self, psi: Array, rho: Array) -> Array:
-        """Of A times the unit."""
-        return np.asarray(np.log(2 * self.unit) + psi + rho)
+        return np.asarray(np.abs(last) * self.inverse[-1] * (2 * np.exp(psi + rho) * self.unit) ** -terms)
 
     def _surface(self, psi: Array, rho: Array, q: Array) -> Surface:
         n, c, r, less = self.n, np.exp(psi), np.exp(rho), np.expm1(rho)
         square = c * (self.D2 - less * (2 * self.D1 - less * self.D0))
         lean = 2 * c * r * (self.D1 - less * self.D0)
         weight = 2 * c * np.square(r) * self.D0
-        F, F_l, F_q, F_ll, F_lq, F_qq = self._expansion(self._log_argument(psi, rho), q)
+        F, F_l, F_q, F_ll, F_lq, F_qq = self._expansion(2 * c * r * self.unit, q)
         if self.near is not None:
             F, F_l, F_q, F_ll, F_lq, F_qq = (
                 each + own
                 for each, own in zip((F, F_l, F_q, F_ll, F_lq, F_qq), self.near.sums(psi, rho, q), strict=True)
             )
-        value = n * psi - square + q * (0.5 * self.log_growth - n * rho) + F
-        gradient = np.stack([n - square + F_l, lean - n * q + F_l, 0.5 * self.log_growth - n * rho + F_q])
-        hessian = np.empty((3, 3, psi.size))
+        by_q = 0.5 * self.log_growth - n * rho
+        value = n * psi - square + q * by_q + F
+        gradient, hessian = np.empty((3, psi.size)), np.empty((3, 3, psi.size))
+        gradient[0], gradient[1], gradient[2] = n - square + F_l, lean - n * q + F_l, by_q + F_q
         hessian[0, 0], hessian[1, 1], hessian[2, 2] = F_ll - square, F_ll + lean - weight, F_qq
         hessian[0, 1] = hessian[1, 0] = F_ll + lean
         hessian[0, 2] = hessian[2, 0] = F_lq
         hessian[1, 2] = hessian[2, 1] = F_lq - n
         return Surface(value, gradient, hessian)
 
-    def _expansion(self, log_argument: Array, q: Array) -> tuple[Array, ...]:
-        """Hankel's, summed over steps, and its derivatives by l and q."""
-        qq, shrink = q * q, np.exp(-log_argument)
+    def _expansion(self, argument: Array, q: Array) -> tuple[Array, ...]:
+        """Hankel's, summed over steps, and its derivatives by l and q; `argument` is A times the unit."""
+        qq, shrink = q * q, 1 / argument
         power = np.ones_like(q)
         E, E_l, E_ll, E_m, E_mm, E_lm = (np.zeros_like(q) for _ in range(6))
         for k, (row, sums) in enumerate(zip(hankel(len(self.inverse)), self.inverse, strict=True), start=1):
@@ -185,7 +182,7 @@ class Sums:
                 E_mm += bend
         half = 0.5 * self.count
         return (
-            E - half * (np.log(2 * np.pi) + log_argument) - 0.5 * self.log_g,
+            E - half * np.log(2 * np.pi * argument) - 0.5 * self.log_g,
             E_l - half,
             2 * q * E_m,
             E_ll,

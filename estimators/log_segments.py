@@ -60,20 +60,18 @@ def bridge(p: Array, e: Array, terms: int) -> Series:
 
 
 def shapes(gamma: Array, terms: int) -> dict[str, Series]:
-    """The series of a likelihood: of h² and h⁴, of first integrals, of means of a drift's square, and of bridges.
+    """The series of a likelihood: of h², of first integrals, of means of a drift's square, and of bridges.
 
     Differences are those of a drift that is measured from the value at the origin of m.
     """
     g, e = gamma, 1 - gamma
     h = mean_series(e, terms)
-    hh = product(h, h)
     first = mean_series(1 - 2 * g, terms)
     second = mean_series(2 * e, terms)
     over = [quotient(mean_series(k - 3 * g, terms), h) for k in (1, 2, 3)]
     one, two = less(over[1], over[0]), less(over[2], over[1])
     return {
-        "hh": hh,
-        "hhhh": product(hh, hh),
+        "hh": product(h, h),
         "first": first,
         "second": second,
         "first difference": less(second, first),

@@ -39,11 +39,11 @@ Places = NDArray[np.intp]
 
 SIZE = 4
 MOST_ROUNDS = 40
-_CLOSE = 1e-7  # step of Newton's method in ln u that leaves its square as error
+_CLOSE = 3e-6  # step of Newton's method in ln u that leaves its square as error
 _LONGEST = 0.7
 
 
-def likelihood_terms(x: Array, y: Array, d: Array, steps: Array) -> list[Array]:
+def likelihood_terms(x: Array, y: Array, d: Array, steps: Array, *, more: int = 0) -> list[Array]:
     """What is to be summed over the steps of a window, in the order that `Sums.of` takes.
 
     Parameters
@@ -53,12 +53,14 @@ def likelihood_terms(x: Array, y: Array, d: Array, steps: Array) -> list[Array]:
     d : array, shape (..., n)
         Increments, or what they exceed a given rate by.
     steps : array, broadcasts with them
+    more : int
+        How many of B_7 … B_10 are wanted as well, at the end: they are no part of `Sums`.
     """
     rate = d / steps
-    means = homogeneous(x, y, steps, 6)
+    means = homogeneous(x, y, steps, 6 + more)
     bridges = [steps * each for each in squared(x, y, means[:5])]
     logs = np.broadcast_to(np.log(steps), d.shape)
-    return [logs, d * rate, *(rate * each for each in means[:SIZE]), *means, *bridges]
+    return [logs, d * rate, *(rate * each for each in means[:SIZE]), *means[:7], *bridges, *means[7:]]
 
 
 TERMS = 2 + SIZE + 7 + 5
@@ -97,7 +99,7 @@ class Sums:
         """From sums of `likelihood_terms`."""
         first = [total * mean_share(k) for k, total in enumerate(sums[2 : 2 + SIZE])]
         plain = [total * mean_share(p) for p, total in enumerate(sums[2 + SIZE : 9 + SIZE])]
-        bridges = [total * bridge_share(p) for p, total in enumerate(sums[9 + SIZE :])]
+        bridges = [total * bridge_share(p) for p, total in enumerate(sums[9 + SIZE : TERMS])]
         bridged = [0.5 * p * (p - 1) * each for p, each in enumerate(bridges, start=2)]
         return cls(n, sums[0], sums[1], first, plain, bridged, rate)
 
@@ -231,9 +233,10 @@ def maximise(sums: Sums) -> Optimum:
     at, u = np.arange(m), sums.squares / sums.n
     for left in range(MOST_ROUNDS - 1, -1, -1):
         here = spot(sums, u)
-        concave = here.curvature > 0
-        step = np.where(concave, here.slope / here.curvature, np.log(2 * here.unexplained / (sums.n * u)))
-        step = np.clip(step, -_LONGEST, _LONGEST)
+        concave, noise = here.curvature > 0, here.unexplained / u
+        rest = noise - here.slope
+        step = np.log(noise / np.where(rest > 0, rest, 0.5 * sums.n))
+        step = np.clip(np.where(concave, step * (noise / here.curvature), step), -_LONGEST, _LONGEST)
         done = concave & (np.abs(step) < _CLOSE)
         u = u * np.exp(step)
         ended = done | ~np.isfinite(u) | (left == 0)

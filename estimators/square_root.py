@@ -89,19 +89,23 @@ def order(level: Array, alpha: Array) -> Array:
 
 
 def by_alpha(surface: Surface, level: Array, alpha: Array) -> Surface:
-    """A function of the level, another parameter and q as one of the level, that parameter and alpha."""
+    """A function of the level, another parameter and q as one of the level, that parameter and alpha; in place."""
     scale = np.exp(level)
     growth = alpha * scale
-    (g0, g1, g2), H = surface.gradient, surface.hessian
-    hessian = np.empty_like(H)
-    mixed = H[0, 2] + growth * H[2, 2]
-    hessian[0, 0] = H[0, 0] + growth * (H[0, 2] + mixed + g2)
-    hessian[0, 1] = hessian[1, 0] = H[0, 1] + growth * H[1, 2]
-    hessian[0, 2] = hessian[2, 0] = scale * (mixed + g2)
-    hessian[1, 1] = H[1, 1]
-    hessian[1, 2] = hessian[2, 1] = scale * H[1, 2]
-    hessian[2, 2] = np.square(scale) * H[2, 2]
-    return Surface(surface.value, np.stack([g0 + growth * g2, g1, scale * g2]), hessian)
+    (g0, _, g2), H = surface.gradient, surface.hessian
+    mixed = growth * H[2, 2]
+    mixed += H[0, 2]
+    H[0, 0] += growth * (H[0, 2] + mixed + g2)
+    H[0, 1] += growth * H[1, 2]
+    mixed += g2
+    np.multiply(scale, mixed, out=H[0, 2])
+    H[1, 2] *= scale
+    H[2, 2] *= scale
+    H[2, 2] *= scale
+    H[1, 0], H[2, 0], H[2, 1] = H[0, 1], H[0, 2], H[1, 2]
+    g0 += growth * g2
+    g2 *= scale
+    return surface
 
 
 def log_density(x: Array, steps: Array, kappa: Array, theta: Array, sigma: Array) -> Array:

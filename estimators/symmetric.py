@@ -57,6 +57,28 @@ class Factor:
             found[i] = value
         return found
 
+    def inverse(self) -> list[list[Array]]:
+        """Entries of the inverses on and below the diagonal, row by row."""
+        size = len(self.pivots)
+        low: list[list[Array]] = []  # the inverse of L below its diagonal of ones
+        for row in self.rows:
+            low.append([])
+            for j, entry in enumerate(row):
+                total = -entry
+                for k in range(j + 1, len(row)):
+                    total = total - row[k] * low[k][j]
+                low[-1].append(total)
+        scaled = [[each / pivot for each in row] + [1 / pivot] for row, pivot in zip(low, self.pivots, strict=True)]
+        found: list[list[Array]] = []
+        for i in range(size):
+            found.append([])
+            for j in range(i + 1):
+                total = scaled[i][j]
+                for k in range(i + 1, size):
+                    total = total + low[k][i] * scaled[k][j]
+                found[-1].append(total)
+        return found
+
 
 def factor(entry: Entry, size: int) -> Factor:
     """Factor matrices of that size, given by their entries on and below the diagonal."""

@@ -203,8 +203,34 @@ def test_case_without_a_fit(name, unequal):
     assert not np.isfinite(fit.loglik) or np.isfinite(fit.kappa)
 
 
+def healthy_and_hard():
+    """Windows with a fit, and between them every case without one, and values of every size."""
+    healthy = np.concatenate([series(name, n=N, m=2) for name in SETS])
+    walk = np.exp(np.cumsum(0.3 * np.random.default_rng(6).standard_normal(N + 1)))
+    spread = np.geomspace(1e-3, 1e6, N + 1) * walk
+    hard = [x for x, _ in CASES.values()] + [spread, 1e-12 * healthy[0], 1e12 * healthy[2], 1e-300 * walk]
+    rows = [row for k, each in enumerate(hard) for row in (healthy[k % len(healthy)], each)]
+    return np.stack(rows), np.arange(len(rows)) % 2 == 0
+
+
+@pytest.mark.parametrize("unequal", [False, True])
+def test_no_case_moves_the_windows_beside_it(unequal):
+    """By not one bit; with steps of every length too."""
+    x, kept = healthy_and_hard()
+    dt = np.where(kept, DT, np.geomspace(1e-9, 1e9, len(x)))
+    dt = dt[:, None] * np.linspace(1, 2, N) if unequal else dt
+    beside, alone = CIR.fit(x, dt), CIR.fit(x[kept], dt[kept])
+    assert (alone.status == Status.OK).mean() > 0.5
+    assert np.isin(beside.status, list(Status)).all()
+    np.testing.assert_array_equal(beside.status[kept], alone.status)
+    for name in NAMES:
+        assert np.array_equal(beside.columns[name][kept], alone.columns[name], equal_nan=True), name
+        assert not np.isinf(beside.columns[name]).any(), name
+
+
 def test_too_short():
     assert CIR.fit(np.array([1.0, 2.0, 1.5, 1.2]), DT).status == Status.TOO_SHORT
+    assert (CIR.fit(series("near zero", n=3), DT).status == Status.TOO_SHORT).all()
 
 
 def test_case_clear_pull():

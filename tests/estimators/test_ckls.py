@@ -7,7 +7,7 @@ import polars as pl
 import pytest
 
 from driftbook.estimators import Fit, Status, aligned_start
-from driftbook.estimators.interpolation import points, weights
+from driftbook.estimators.chebyshev import points, weights
 from driftbook.estimators.log_segments import bridge, mean_series, quotient
 from driftbook.estimators.models.ckls import MODEL
 
@@ -109,7 +109,7 @@ def test_sums_over_windows_agree_with_windows_one_by_one(lookback, relative):
     """Over all tiers of range and step; the windows are summed in another place, at more points and in more terms."""
     x = paths(3 * lookback, 2, relative=relative)[0]
     windows = np.lib.stride_tricks.sliding_window_view(x, lookback + 1)[::7]
-    from driftbook.estimators.models.ckls import _from_windows
+    from driftbook.estimators.elastic_fit import _from_windows
 
     with np.errstate(all="ignore"):
         columns, status = _from_windows(True, windows, np.full((len(windows), lookback), DT))
@@ -207,7 +207,7 @@ def test_values_close_to_each_other_lose_nothing():
 
 def strange_rows():
     rng = np.random.default_rng(10)
-    x = np.exp(0.03 * np.cumsum(rng.standard_normal((10, 400)), axis=1))
+    x = np.exp(0.03 * np.cumsum(rng.standard_normal((12, 400)), axis=1))
     x[1, 200] = np.nan
     x[2, 250] = np.inf
     x[3] = 7.0
@@ -217,6 +217,8 @@ def strange_rows():
     x[7, 200] = 0.0
     x[8, 250] = -1.0
     x[9] = 1e3 * (1 + 1e-16 * rng.standard_normal(400))
+    x[10] *= 1e-12
+    x[11, 200:] *= 3
     return x
 
 
@@ -251,7 +253,7 @@ def test_each_strange_row_has_its_status_and_no_number_that_is_none():
     given = np.isin(fit.status, [Status.OK, Status.NO_REVERSION, Status.AT_BOUND])
     for name in ("kappa", "sigma", "gamma", "loglik", "local_volatility", "kurtosis"):
         np.testing.assert_array_equal(np.isfinite(fit.columns[name]), given, err_msg=name)
-    assert given[[0, 4]].all()
+    assert given[[0, 4, 10, 11]].all()
 
 
 @pytest.mark.parametrize("n_obs", [0, 1, 4, 10])

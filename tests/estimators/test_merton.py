@@ -5,9 +5,9 @@ import pytest
 
 from driftbook.estimators import MODELS, Status
 from driftbook.estimators.jump_mixture import limits, standardised
+from driftbook.estimators.jump_search import STRIDE
 from driftbook.estimators.jump_starts import condensed, starts
 from driftbook.estimators.models.merton import MODEL as MERTON
-from driftbook.estimators.models.merton import STRIDE
 
 DT = 1 / 252
 N = 120
@@ -198,7 +198,28 @@ def test_case_without_a_fit(name):
         assert np.array_equal(fit.columns[column][[0, 2]], alone.columns[column], equal_nan=True), column
 
 
+@pytest.mark.parametrize("unequal", [False, True])
+def test_no_window_moves_those_beside_it(unequal):
+    """By not one bit, whatever its values and steps; none of it is infinite."""
+    healthy = prices(N, 8, seed=21, jump_rate=40.0)
+    walk = np.exp(np.cumsum(0.3 * np.random.default_rng(6).standard_normal(N + 1)))
+    spread = np.geomspace(1e-3, 1e6, N + 1) * walk
+    jump = WALK * np.where(np.arange(N + 1) < 40, 1.0, 1e6)
+    hard = [x for x, _ in CASES.values()] + [spread, jump, 1e-12 * healthy[0], 1e12 * healthy[1], 1e-300 * walk]
+    x = np.stack([row for k, each in enumerate(hard) for row in (healthy[k % 8], each)])
+    kept = np.arange(len(x)) % 2 == 0
+    dt = np.where(kept, DT, np.geomspace(1e-9, 1e9, len(x)))
+    dt = dt[:, None] * np.linspace(1, 2, N) if unequal else dt
+    beside, alone = MERTON.fit(x, dt), MERTON.fit(x[kept], dt[kept])
+    assert (alone.status == Status.OK).mean() > 0.5
+    np.testing.assert_array_equal(beside.status[kept], alone.status)
+    for name in NAMES:
+        assert np.array_equal(beside.columns[name][kept], alone.columns[name], equal_nan=True), name
+        assert not np.isinf(beside.columns[name]).any(), name
+
+
 def test_too_short():
+    assert (MERTON.fit(prices(3, 2, seed=22), DT).status == Status.TOO_SHORT).all()
     assert MERTON.fit(WALK[:15], DT).status == Status.TOO_SHORT
 
 

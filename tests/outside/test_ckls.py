@@ -193,23 +193,25 @@ def windows_of_all_kinds(count):
             yield short_rates(start, start + 61), 1 / 12
 
 
-def assert_optimum_is_the_optimum(count, least):
-    short = []
+def assert_optimum_is_the_optimum(count, windows, misses):
+    """Nothing better is found, but in so many windows that say themselves that they may not be it."""
+    missed = tried = 0
     for window, dt in windows_of_all_kinds(count):
-        fit = MODEL.fit(window, dt)
-        if fit.status != Status.NOT_CONVERGED:
-            short.append(patient_search(window, dt) - fit.loglik)
-    assert len(short) >= least
-    assert max(short) < 1e-6
+        fit, tried = MODEL.fit(window, dt), tried + 1
+        if fit.status == Status.NOT_CONVERGED or patient_search(window, dt) - fit.loglik > 1e-6:
+            missed += 1
+            assert fit.status in (Status.NOT_CONVERGED, Status.AT_BOUND)
+    assert tried == windows
+    assert missed <= misses
 
 
 def test_optimum_is_the_optimum():
-    assert_optimum_is_the_optimum(6, 7)
+    assert_optimum_is_the_optimum(6, 8, 0)
 
 
 @pytest.mark.study
-def test_optimum_is_the_optimum_in_many_windows():
-    assert_optimum_is_the_optimum(90, 115)
+def test_optimum_is_the_optimum_in_two_hundred_windows():
+    assert_optimum_is_the_optimum(150, 200, 1)
 
 
 # --- data ---------------------------------------------------------------------------------------------------------

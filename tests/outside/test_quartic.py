@@ -82,6 +82,19 @@ def test_without_higher_powers_it_is_nearly_the_exact_pull():
     assert abs(found - exact) < 300 * (kappa * DT) ** 3
 
 
+# --- data ---------------------------------------------------------------------------------------------------------
+
+GRID = 1.0 + 0.5 * np.arange(1600)  # thousands of years ago
+
+
+@pytest.fixture(scope="module")
+def ice_core():
+    """Temperature on the grid, forward in time."""
+    frame = table("DAAG", "edcT")
+    age, temperature = (frame[name].to_numpy(dtype=float) for name in ("Age", "dT"))
+    return np.interp(GRID, age / 1000, temperature)[::-1]
+
+
 # --- the optimum --------------------------------------------------------------------------------------------------
 
 
@@ -143,27 +156,29 @@ def windows_of_all_kinds(count):
         yield np.cumsum(rng.standard_normal(n + 1))
 
 
-def assert_optimum_is_the_optimum(count, least):
-    rng, short = np.random.default_rng(1), []
-    for window in windows_of_all_kinds(count):
+def assert_optimum_is_the_optimum(windows, misses):
+    """Nothing better is found, but in so many windows that say themselves that they may not be it."""
+    rng, missed = np.random.default_rng(1), 0
+    for window, dt in windows:
         z = (window - window.mean()) / window.std()
-        fit = MODEL.fit(z, DT, centre=0.0, scale=1.0)
-        if fit.status != Status.NOT_CONVERGED:
-            short.append(patient_search(z, DT, rng) - fit.loglik)
-    assert len(short) >= least
-    assert max(short) < 1e-6
+        fit = MODEL.fit(z, dt, centre=0.0, scale=1.0)
+        if fit.status == Status.NOT_CONVERGED or patient_search(z, dt, rng) - fit.loglik > 1e-6:
+            missed += 1
+            assert fit.status in (Status.NOT_CONVERGED, Status.AT_BOUND)
+    assert missed <= misses
 
 
 def test_optimum_is_the_optimum():
-    assert_optimum_is_the_optimum(6, 23)
+    assert_optimum_is_the_optimum([(window, DT) for window in windows_of_all_kinds(5)], 0)
 
 
 @pytest.mark.study
-def test_optimum_is_the_optimum_in_many_windows():
-    assert_optimum_is_the_optimum(40, 155)
+def test_optimum_is_the_optimum_in_two_hundred_windows(ice_core):
+    simulated = [(window, DT) for window in windows_of_all_kinds(45)]
+    assert_optimum_is_the_optimum([*simulated, *((ice_core[k : k + 251], 0.5) for k in range(0, 1340, 67))], 1)
 
 
-# --- data ---------------------------------------------------------------------------------------------------------
+# --- what the ice core says ----------------------------------------------------------------------------------------
 
 # Euler least squares on the grid, computed apart: drift, its roots, volatility, and the gain in log-likelihood over a
 # linear drift. The two upper roots are one apart, which is far inside their errors.
@@ -171,15 +186,6 @@ EULER = (-0.015402217, -0.049364711, -0.032105273, -0.0035343548)
 ROOTS = (-7.237, -1.4238, -0.4229)
 EULER_SIGMA = 0.84337938
 GAIN = -1442.340471 + 1453.282147
-GRID = 1.0 + 0.5 * np.arange(1600)  # thousands of years ago
-
-
-@pytest.fixture(scope="module")
-def ice_core():
-    """Temperature on the grid, forward in time."""
-    frame = table("DAAG", "edcT")
-    age, temperature = (frame[name].to_numpy(dtype=float) for name in ("Age", "dT"))
-    return np.interp(GRID, age / 1000, temperature)[::-1]
 
 
 def least_squares(x, dt):
@@ -209,7 +215,7 @@ def test_drift_of_the_ice_core(ice_core):
 
 
 def test_the_lower_state_of_the_ice_core_is_sure_and_the_upper_is_not(ice_core):
-    """Between Euler’s upper roots both drifts are nil within their errors: one has roots there, one just not."""
+    """Between Euler's upper roots both drifts are nil within their errors: one has roots there, one just not."""
     fit = MODEL.fit(ice_core, 0.5, centre=0.0, scale=1.0)
     f = [float(fit.columns[name]) for name in ("a0", "a1", "a2", "a3")]
     lowest = np.roots(f[::-1])[0]
@@ -221,6 +227,39 @@ def test_the_lower_state_of_the_ice_core_is_sure_and_the_upper_is_not(ice_core):
     assert (np.abs(cubic.value(f, shelf)) < at_centre.a0_se).all()
     assert (np.abs(cubic.value(EULER, shelf)) < at_centre.a0_se).all()
     assert np.isnan(fit.barrier)
+
+
+# The maximum of the exact likelihood, by a search apart from this test: its roots are −7.214 and −0.805 ± 0.186 i.
+EXACT = (-0.01712485, -0.04276088, -0.03067809, -0.00347648, 0.86398239)
+
+
+def exact_loglik(x, dt, *parameters):
+    """By the Fokker–Planck equation in x/sigma."""
+    *f, s = parameters
+    law = transition(
+        lambda y: cubic.value(f, s * y) / s,
+        lambda y: cubic.slope(f, s * y),
+        lambda y: s * y * (f[0] + s * y * (f[1] / 2 + s * y * (f[2] / 3 + s * y * f[3] / 4))) / s**2,
+        low=-17 / s,
+        high=12 / s,
+        points=121,
+    )
+    return law.log_density(x[:-1] / s, x[1:] / s, dt).sum() - (len(x) - 1) * np.log(s)
+
+
+def test_the_exact_likelihood_of_the_ice_core_has_its_maximum_where_ours_has(ice_core):
+    """And not at Euler's two wells: over so long a step they are what Euler's scheme makes of one."""
+    fit = MODEL.fit(ice_core, 0.5, centre=0.0, scale=1.0)
+    names = ("a0", "a1", "a2", "a3", "sigma")
+    ours, errors = ([float(fit.columns[f"{name}{end}"]) for name in names] for end in ("", "_se"))
+    assert (np.abs(np.subtract(ours, EXACT)) < 0.02 * np.array(errors)).all()
+    top = exact_loglik(ice_core, 0.5, *EXACT)
+    assert 0 <= top - exact_loglik(ice_core, 0.5, *ours) < 1e-3
+    assert top - exact_loglik(ice_core, 0.5, *EULER, EULER_SIGMA) > 0.9
+    for k, error in enumerate(errors):
+        for way in (-0.02, 0.02):
+            aside = [each + way * error * (j == k) for j, each in enumerate(EXACT)]
+            assert exact_loglik(ice_core, 0.5, *aside) < top
 
 
 def test_two_wells_are_found_where_paths_went_to_and_fro():
