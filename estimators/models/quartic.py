@@ -82,7 +82,8 @@ likelihood estimation of discretely sampled diffusions: a closed-form approximat
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from collections.abc import Sequence
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -262,12 +263,10 @@ def _in_units_of_x(fit: Fit, centre: Array, scale: Array, *, intervals: bool) ->
     )
     for name in names:
         columns[name] = columns[name] * scale
-    if intervals:
-        for name in RESTING:
-            columns[name] = columns[name] + centre
-        for name in (*_COEFFICIENTS, *RESTING):  # to the bit what their SQL gives
-            reach = _TWO_SIDED * columns[f"{name}_se"]
-            columns |= {f"{name}_lower": columns[name] - reach, f"{name}_upper": columns[name] + reach}
+    for name in RESTING:
+        if intervals:
+            for each in (name, f"{name}_lower", f"{name}_upper"):
+                columns[each] = columns[each] + centre
     columns["loglik"] = columns["loglik"] - fit.n * np.log(scale)
     known = np.isfinite(columns["sigma"])
     columns["centre"] = np.where(known, np.broadcast_to(centre, shape), np.nan)

@@ -65,9 +65,9 @@ base.plan
 base.plan_rows
   CREATE VIEW base.plan_rows AS SELECT p.plan_sha256, p."name", p."text", p.run_from, p.run_to FROM base.plan AS p;
 base.quartic
-  CREATE TABLE base.quartic(series_id INTEGER NOT NULL, lookback INTEGER NOT NULL, window_start TIMESTAMP NOT NULL, window_end TIMESTAMP NOT NULL, n INTEGER NOT NULL, centre DOUBLE, scale DOUBLE, a0 DOUBLE, a0_se DOUBLE, a1 DOUBLE, a1_se DOUBLE, a2 DOUBLE, a2_se DOUBLE, a3 DOUBLE, a3_se DOUBLE, sigma DOUBLE, sigma_se DOUBLE, sigma_lower DOUBLE, sigma_upper DOUBLE, bottom_lower DOUBLE, bottom_lower_se DOUBLE, barrier DOUBLE, barrier_se DOUBLE, bottom_upper DOUBLE, bottom_upper_se DOUBLE, steepest DOUBLE, kurtosis DOUBLE, loglik DOUBLE, status VARCHAR NOT NULL, revision INTEGER NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
+  CREATE TABLE base.quartic(series_id INTEGER NOT NULL, lookback INTEGER NOT NULL, window_start TIMESTAMP NOT NULL, window_end TIMESTAMP NOT NULL, n INTEGER NOT NULL, centre DOUBLE, scale DOUBLE, a0 DOUBLE, a0_se DOUBLE, a0_lower DOUBLE, a0_upper DOUBLE, a1 DOUBLE, a1_se DOUBLE, a1_lower DOUBLE, a1_upper DOUBLE, a2 DOUBLE, a2_se DOUBLE, a2_lower DOUBLE, a2_upper DOUBLE, a3 DOUBLE, a3_se DOUBLE, a3_lower DOUBLE, a3_upper DOUBLE, sigma DOUBLE, sigma_se DOUBLE, sigma_lower DOUBLE, sigma_upper DOUBLE, bottom_lower DOUBLE, bottom_lower_se DOUBLE, bottom_lower_lower DOUBLE, bottom_lower_upper DOUBLE, barrier DOUBLE, barrier_se DOUBLE, barrier_lower DOUBLE, barrier_upper DOUBLE, bottom_upper DOUBLE, bottom_upper_se DOUBLE, bottom_upper_lower DOUBLE, bottom_upper_upper DOUBLE, steepest DOUBLE, kurtosis DOUBLE, loglik DOUBLE, status VARCHAR NOT NULL, revision INTEGER NOT NULL, run_from INTEGER NOT NULL, run_to INTEGER);
 base.quartic_rows
-  CREATE VIEW base.quartic_rows AS SELECT s.series, m.lookback, m.window_start, m.window_end, m.n, m.centre, m.scale, m.a0, m.a0_se, (a0 - (1.9599639845400536 * a0_se)) AS a0_lower, (a0 + (1.9599639845400536 * a0_se)) AS a0_upper, m.a1, m.a1_se, (a1 - (1.9599639845400536 * a1_se)) AS a1_lower, (a1 + (1.9599639845400536 * a1_se)) AS a1_upper, m.a2, m.a2_se, (a2 - (1.9599639845400536 * a2_se)) AS a2_lower, (a2 + (1.9599639845400536 * a2_se)) AS a2_upper, m.a3, m.a3_se, (a3 - (1.9599639845400536 * a3_se)) AS a3_lower, (a3 + (1.9599639845400536 * a3_se)) AS a3_upper, m.sigma, m.sigma_se, m.sigma_lower, m.sigma_upper, m.bottom_lower, m.bottom_lower_se, (bottom_lower - (1.9599639845400536 * bottom_lower_se)) AS bottom_lower_lower, (bottom_lower + (1.9599639845400536 * bottom_lower_se)) AS bottom_lower_upper, m.barrier, m.barrier_se, (barrier - (1.9599639845400536 * barrier_se)) AS barrier_lower, (barrier + (1.9599639845400536 * barrier_se)) AS barrier_upper, m.bottom_upper, m.bottom_upper_se, (bottom_upper - (1.9599639845400536 * bottom_upper_se)) AS bottom_upper_lower, (bottom_upper + (1.9599639845400536 * bottom_upper_se)) AS bottom_upper_upper, m.steepest, m.kurtosis, m.loglik, m.status, m.revision, m.run_from, m.run_to FROM base.quartic AS m INNER JOIN base.series AS s ON ((s.series_id = m.series_id));
+  CREATE VIEW base.quartic_rows AS SELECT s.series, m.lookback, m.window_start, m.window_end, m.n, m.centre, m.scale, m.a0, m.a0_se, m.a0_lower, m.a0_upper, m.a1, m.a1_se, m.a1_lower, m.a1_upper, m.a2, m.a2_se, m.a2_lower, m.a2_upper, m.a3, m.a3_se, m.a3_lower, m.a3_upper, m.sigma, m.sigma_se, m.sigma_lower, m.sigma_upper, m.bottom_lower, m.bottom_lower_se, m.bottom_lower_lower, m.bottom_lower_upper, m.barrier, m.barrier_se, m.barrier_lower, m.barrier_upper, m.bottom_upper, m.bottom_upper_se, m.bottom_upper_lower, m.bottom_upper_upper, m.steepest, m.kurtosis, m.loglik, m.status, m.revision, m.run_from, m.run_to FROM base.quartic AS m INNER JOIN base.series AS s ON ((s.series_id = m.series_id));
 base.quartic_setting
   CREATE TABLE base.quartic_setting(series_id INTEGER NOT NULL, lookback INTEGER NOT NULL, centre DOUBLE NOT NULL, scale DOUBLE NOT NULL, run_from INTEGER NOT NULL);
 base.refused_row
@@ -1390,7 +1390,7 @@ main.quartic.centre
   -- Where z = 0; a setting of the series and lookback. [x]
 main.quartic.kurtosis
   DOUBLE
-  -- Fourth moment of the residuals over the squared second: 3 for a Gaussian. [1]
+  -- Fourth moment of movements over their squared second: 3 for a Gaussian. [1]
 main.quartic.loglik
   DOUBLE
   -- Log-likelihood of the observations after the first, given the first. [1]
@@ -2851,7 +2851,7 @@ versions.quartic.in_force_to
   -- moment of run_to
 versions.quartic.kurtosis
   DOUBLE
-  -- Fourth moment of the residuals over the squared second: 3 for a Gaussian. [1]
+  -- Fourth moment of movements over their squared second: 3 for a Gaussian. [1]
 versions.quartic.loglik
   DOUBLE
   -- Log-likelihood of the observations after the first, given the first. [1]
