@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import re
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -112,4 +113,4 @@ def _mirror(con: duckdb.DuckDBPyConnection) -> None:
 
 def _is_for_readers(sql: str) -> bool:
     text = "\n".join(line for line in sql.splitlines() if not line.startswith("--")).strip().lower()
-    return text.startswith(("create view", "create macro", "comment on view", "comment on macro"))
+    return re.match(r"(create (or replace )?|comment on )(view|macro) ", text) is not None
