@@ -371,9 +371,8 @@ def _far_start(sums: Sums) -> Array:
     variance, h = _weighted_squares(sums, S)
     rho = -0.5 * h
     less, u, r = np.expm1(rho), half - n * rho, np.exp(rho)
-    S_all = (
-        S + 0.125 * variance * sums.inverse[1] / np.square(unit) - np.square(u / S) * sums.inverse[2] / (6 * unit**3)
-    )
+    second, third = 0.125 * variance / unit * sums.inverse[1], np.square(u / sums.inverse[0]) / 6 * sums.inverse[2]
+    S_all = S + (second - third) / unit
     lean = r / S_all
     Q, Q_1 = sums.D2 - less * (2 * sums.D1 - less * sums.D0), 2 * r * (less * sums.D0 - sums.D1)
     R, R_1 = Q - lean * u * u, Q_1 - lean * u * (u - 2 * n)
