@@ -22,7 +22,7 @@ from driftbook.estimators.windows import Array
 ESTIMATES = ("kappa", "theta", "sigma", "gamma", "loglik")
 COARSEST = 0.5
 """Largest pull over a step up to which the likelihood is trusted."""
-PART = 1 << 13  # observations of a piece that are worked on at one time
+PART = 1 << 14  # observations of a piece that are worked on at one time
 _DOUBTFUL = np.int8(-1)
 _LOSS = 1e-8  # largest share that elimination or what the drift explains may cancel to in sums
 
