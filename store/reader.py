@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import re
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -98,6 +99,7 @@ def _mirror(con: duckdb.DuckDBPyConnection) -> None:
 
     The names then resolve for every cursor, which a `USE` would not do.
     """
+    con.execute("begin")  # a commit for each of a hundred statements would take its time
     for schema in ("base", "versions"):
         con.execute(f"create schema {schema}")
     for (table,) in con.execute(query("tables_of"), [_BOOK]).fetchall():
@@ -106,8 +108,9 @@ def _mirror(con: duckdb.DuckDBPyConnection) -> None:
         for statement in con.extract_statements(migration.text):
             if _is_for_readers(statement.query):
                 con.execute(statement)
+    con.execute("commit")
 
 
 def _is_for_readers(sql: str) -> bool:
     text = "\n".join(line for line in sql.splitlines() if not line.startswith("--")).strip().lower()
-    return text.startswith(("create view", "create macro", "comment on view", "comment on macro"))
+    return re.match(r"(create (or replace )?|comment on )(view|macro) ", text) is not None

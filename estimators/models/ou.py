@@ -312,6 +312,7 @@ MODEL = Model(
     revision=1,
     equation="dX = kappa (theta - X) dt + sigma dW",
     range="real",
+    has_pull=True,
     is_relative=False,
     local_volatility=("sigma", "sigma_lower", "sigma_upper"),
     local_drift="kappa * (theta - x)",
