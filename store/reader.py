@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import re
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -114,4 +115,4 @@ def _mirror(con: duckdb.DuckDBPyConnection) -> None:
 
 def _is_macro(sql: str) -> bool:
     text = "\n".join(line for line in sql.splitlines() if not line.startswith("--")).strip().lower()
-    return text.startswith(("create macro", "comment on macro"))
+    return re.match(r"(create (or replace )?|comment on )macro ", text) is not None
