@@ -8,6 +8,8 @@ verify
     Proof that the book is whole.
 create
     An empty book.
+charts
+    The page's charts as altair objects; they need the extra `page`.
 """
 
 from __future__ import annotations
@@ -16,6 +18,7 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from driftbook.store import charts
     from driftbook.store.errors import (
         BookError,
         BookLocked,
@@ -40,6 +43,7 @@ __all__ = [
     "PlanError",
     "UsageError",
     "Writing",
+    "charts",
     "connect",
     "create",
     "verify",
@@ -61,4 +65,6 @@ _HOME = {
 def __getattr__(name: str) -> Any:
     if name not in __all__:
         raise AttributeError(f"driftbook.store has no {name!r}")
+    if name == "charts":
+        return import_module("driftbook.store.charts")
     return getattr(import_module(f"driftbook.store.{_HOME.get(name, 'errors')}"), name)

@@ -1,45 +1,78 @@
-"""One read-only query on a book, kept away from files, the network and settings."""
+"""One query of a stranger on a book: read-only, in a process of its own, away from files, the network and settings."""
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-from contextlib import contextmanager
+from collections.abc import Callable, Iterator
+from contextlib import AbstractContextManager, contextmanager
+from functools import partial
 from pathlib import Path
+from typing import TYPE_CHECKING
 
-import duckdb
-
+from driftbook.store.contained import Limits, contained
 from driftbook.store.errors import UsageError
-from driftbook.store.reader import connect
 
-_READS = {duckdb.StatementType.SELECT, duckdb.StatementType.EXPLAIN}
-_LOCKED = ("set temp_directory = ''", "set enable_external_access = false", "set lock_configuration = true")
+if TYPE_CHECKING:
+    import duckdb
+
+# of a child's memory; the rest is for what Python makes of the rows
+_FOR_THE_QUERY = 0.8
+# The book itself is open already; after these no other file can be, and no setting can be changed back.
+_LOCKED = (
+    "set enable_external_access = false",
+    "set disabled_filesystems = 'LocalFileSystem'",
+    "set lock_configuration = true",
+)
+
+
+def ask(
+    book: Path,
+    sql: str,
+    written: Callable[[duckdb.DuckDBPyRelation], bytes],
+    limits: Limits,
+    *,
+    rows: int | None = None,
+) -> AbstractContextManager[Iterator[bytes]]:
+    """The rows of one SELECT, `rows` of them at most, as `written` puts them into bytes.
+
+    Raises UsageError for anything else, for a query that fails, and for one that goes beyond the limits.
+    """
+    return contained(partial(_locked, book, limits.memory), partial(_answer, sql, written, rows), limits)
 
 
 @contextmanager
-def ask(
-    book: Path, sql: str, *, timeout: float | None = None, rows: int | None = None
-) -> Iterator[duckdb.DuckDBPyRelation]:
-    """The rows of one SELECT, `rows` of them at most, within `timeout` seconds.
+def _locked(book: Path, memory: int) -> Iterator[duckdb.DuckDBPyConnection]:
+    from driftbook.store.reader import connect
 
-    Raises UsageError for anything else, for a query that fails, and for one that takes longer.
-    """
     with connect(book) as con:
-        if timeout is not None:
-            con.execute(f"set max_execution_time = {max(1, round(1000 * timeout))}")
+        con.execute(f"set memory_limit = '{int(_FOR_THE_QUERY * memory)}B'")
         for setting in _LOCKED:
             con.execute(setting)
-        try:
-            statement = _only_statement(con, sql)
-            found = con.sql(statement.query)
-            yield found if rows is None else found.limit(rows)
-        except duckdb.Error as error:
-            raise UsageError(f"the query failed: {str(error).strip()}") from error
+        yield con
+
+
+def _answer(
+    sql: str,
+    written: Callable[[duckdb.DuckDBPyRelation], bytes],
+    rows: int | None,
+    con: duckdb.DuckDBPyConnection,
+) -> bytes:
+    import duckdb
+
+    try:
+        found = con.sql(_only_statement(con, sql).query)
+        return written(found if rows is None else found.limit(rows))
+    except duckdb.OutOfMemoryException as error:
+        raise MemoryError from error
+    except duckdb.Error as error:
+        raise UsageError(f"the query failed: {str(error).strip()}") from error
 
 
 def _only_statement(con: duckdb.DuckDBPyConnection, sql: str) -> duckdb.Statement:
+    from duckdb import StatementType
+
     statements = con.extract_statements(sql)
     if len(statements) != 1:
         raise UsageError(f"give exactly one statement; there are {len(statements)}.")
-    if statements[0].type not in _READS:
+    if statements[0].type not in (StatementType.SELECT, StatementType.EXPLAIN):
         raise UsageError("only a SELECT is run here; a book is changed by `ingest` and `refresh`.")
     return statements[0]

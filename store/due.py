@@ -7,12 +7,14 @@ last observation of each day, week or month ends a window.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 import pyarrow as pa
 from numpy.typing import NDArray
 
 from driftbook.estimators import aligned_start
+from driftbook.store.observed import Days, Microseconds
 
 _EARLIEST = np.iinfo(np.int64).min
 _LATEST = np.iinfo(np.int64).max
@@ -22,13 +24,10 @@ _THURSDAY_TO_MONDAY = 3  # 1 January 1970 was a Thursday
 # The fewest steps that a window over all observations is asked for; a shorter series is too short.
 _FEWEST = 5
 
-Microseconds = NDArray[np.int64]
-Days = NDArray[np.int64]
 Indexes = NDArray[np.int64]
 
 
-@dataclass(frozen=True)
-class Asked:
+class Asked(NamedTuple):
     """One series and lookback of a model; lookback 0 has one window, from the first to the latest observation."""
 
     series_id: int
@@ -89,8 +88,10 @@ def due(asked: Asked, times: Microseconds, changed: Microseconds, days: Days) ->
     opens = changed if asked.every == OBSERVATION else np.minimum(changed, times[np.minimum(first, times.size - 1)])
     until = np.where(last < times.size, times[np.minimum(last, times.size - 1)], _LATEST)
     ends = _merged(np.maximum(first, asked.lookback), np.minimum(last, times.size - 1))
-    spans = [_span(asked, int(one), int(other)) for one, other in zip(opens, until, strict=True)]
-    spans.append(_span(asked, _EARLIEST, int(times[asked.lookback]) - 1))
+    may_lose = np.flatnonzero(~still_there | (asked.every != OBSERVATION))
+    spans = [_span(asked, int(opens[one]), int(until[one])) for one in may_lose]
+    if at[0] <= asked.lookback:
+        spans.append(_span(asked, _EARLIEST, int(times[asked.lookback]) - 1))
     return _slices(asked, ends, times.size, days), spans
 
 
@@ -104,22 +105,6 @@ def slice_of(asked: Asked, ends: Indexes, size: int) -> Slice:
     if size <= asked.lookback or asked.lookback == 0:
         return _everything(asked, np.empty(size, np.int64), ends)[0]
     return _windows_ending(asked, int(ends[0]), int(ends[-1]), ends)
-
-
-def slice_table(slices: list[Slice], shifts: dict[int, float]) -> pa.Table:
-    """The slices as a table for SQL; shifts: what is added to the values of a series, 0 where it is not named."""
-    return pa.table(
-        {
-            "series_id": pa.array([one.series_id for one in slices], pa.int32()),
-            "lookback": pa.array([one.lookback for one in slices], pa.int32()),
-            "steps": pa.array([one.steps for one in slices], pa.int32()),
-            "start": pa.array([one.start for one in slices], pa.int64()),
-            "first": pa.array([one.first for one in slices], pa.int64()),
-            "stop": pa.array([one.stop for one in slices], pa.int64()),
-            "shift": pa.array([shifts.get(one.series_id, 0.0) for one in slices], pa.float64()),
-            "ends": pa.array([one.ends for one in slices], pa.list_(pa.int64())),
-        }
-    )
 
 
 def span_table(spans: list[Span]) -> pa.Table:

@@ -10,8 +10,9 @@ import duckdb
 import pyarrow as pa
 
 from driftbook.estimators import Model
+from driftbook.store.due import Span, span_table
 from driftbook.store.model_schema import stored_columns
-from driftbook.store.sql import only_row, query
+from driftbook.store.sql import query
 
 _KEY = "series_id, lookback, window_end"
 
@@ -30,33 +31,23 @@ class EstimateTable:
         ).fetchall()
         return {(series_id, lookback): count for series_id, lookback, count in rows}
 
-    def estimate(self, con: duckdb.DuckDBPyConnection, slices: pa.Table) -> tuple[int, int]:
-        """Computes the due slices of what is listed into the temporary table `fresh`.
-
-        Gives the windows due and those with numbers.
-        """
-        con.register("due_slice", slices)
-        columns = ", ".join(f"f.{name}" for name in self.stored)
-        con.execute(query("estimate_due").format(rolling=f"rolling_{self.model.name}_from", columns=columns))
-        con.unregister("due_slice")
-        due, fitted = only_row(con, "select count(*), count(loglik) from fresh")
-        return due, fitted
-
-    def write(self, con: duckdb.DuckDBPyConnection, spans: pa.Table, run_id: int) -> None:
-        """Puts what changed in `fresh` in force and closes what it replaces or what is no longer there."""
+    def write(self, con: duckdb.DuckDBPyConnection, fresh: pa.Table, spans: list[Span], run_id: int) -> None:
+        """Puts what changed in force, and closes what it replaces and what is no longer there within the spans."""
         name = self.model.name
-        con.register("due_span", spans)
+        con.register("fresh", fresh)
         con.execute(query("find_changed").format(table=name, same=self.same()))
         con.execute(query("close_replaced").format(table=name), {"run": run_id})
-        con.execute(query("close_vanished").format(table=name), {"run": run_id})
+        if spans:
+            con.register("due_span", span_table(spans))
+            con.execute(query("close_vanished").format(table=name), {"run": run_id})
+            con.unregister("due_span")
         columns = ", ".join(["series_id", "lookback", "window_start", "window_end", "n", *self.stored, "status"])
         con.execute(
             f"insert into base.{name} ({columns}, revision, run_from) "
             f"select {columns}, {self.model.revision}, {run_id} from changed order by {_KEY}"
         )
         con.execute("drop table changed")
-        con.execute("drop table fresh")
-        con.unregister("due_span")
+        con.unregister("fresh")
 
     def close_entries(self, con: duckdb.DuckDBPyConnection, entries: list[tuple[int, int]], run_id: int) -> None:
         """Closes all rows in force of some (series, lookback)."""

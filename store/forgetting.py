@@ -17,6 +17,7 @@ import pyarrow as pa
 
 from driftbook.store import digest, migrate, runs
 from driftbook.store.errors import UsageError
+from driftbook.store.mentions import mentioned, note_mentions
 from driftbook.store.moments import parse_moment
 from driftbook.store.series import Series, known_series, near_name
 from driftbook.store.sql import only_row, query
@@ -26,11 +27,12 @@ from driftbook.store.tables import Tracked, columns_at, tracked_tables
 # What a series leaves in tables that hold a time: from which column on a row is about the past.
 _ABOUT = {"observation": "observed_at"}
 _WINDOW_OPENS = "window_start"
+_TEXT = "refused_row.text"
 
 
 @dataclass(frozen=True)
 class Forgotten:
-    """What was deleted: rows of each table, and the run that says so."""
+    """What was deleted: rows of each table, texts of rows that stay, and the run that says so."""
 
     run: runs.Finished
     rows: dict[str, int]
@@ -47,9 +49,10 @@ def forget(
 ) -> Forgotten:
     """Deletes a series for good, or what it says of times before a moment.
 
-    With `before`, observations of earlier times go, and estimates of windows that begin earlier; without, everything of
-    the series, its name and its refused rows too. The plan's text stays. Raises UsageError where a person has to say
-    yes, or where there is nothing to forget.
+    With `before`, observations and refused rows of earlier times go, and estimates of windows that begin earlier;
+    without, everything of the series. Refused lines of wide files, which may hold its values beside others', lose their
+    text. The plan's text and what was said of a file stay: its name and options. Raises UsageError where a person has
+    to say yes, or where there is nothing to forget.
     """
     if not yes:
         raise UsageError(f"forgetting {series!r} cannot be undone; say so with --yes.")
@@ -60,9 +63,12 @@ def forget(
         one = _series(con, series)
         if before is None:
             _check_not_planned(one)
-        conditions = dict(_conditions(one, None if before is None else parse_moment(before)))
-        touched = _touched_leaves(con, conditions)
+        moment = None if before is None else parse_moment(before)
+        note_mentions(con, one, moment)
+        conditions = dict(_conditions(one, moment))
+        touched = _touched_leaves(con, {**conditions, "refused_row": mentioned()})
         counts = {name: _delete(con, name, where) for name, where in conditions.items()}
+        counts[_TEXT] = _empty_texts(con)
         if not any(counts.values()):
             raise UsageError(f"{series!r} has nothing before {before} to forget.")
         _note_what_is_left(con, one, touched, run.stamp.run_id)
@@ -99,9 +105,7 @@ def _conditions(series: Series, before: datetime | None) -> Iterable[tuple[str, 
         about = _ABOUT.get(table.name) or (_WINDOW_OPENS if _WINDOW_OPENS in there[table.name] else None)
         if table.by_series and about:
             yield table.name, f"{mine} and {about} < make_timestamp({round(before.timestamp() * 1_000_000)})"
-    if before is None:
-        quoted = series.name.replace("'", "''")
-        yield "refused_row", f"name = '{quoted}'"
+    yield "refused_row", mentioned("is_its_own")
 
 
 def _touched_leaves(con: duckdb.DuckDBPyConnection, conditions: dict[str, str]) -> set[tuple[Tracked, int]]:
@@ -120,6 +124,11 @@ def _touched_leaves(con: duckdb.DuckDBPyConnection, conditions: dict[str, str]) 
 
 def _delete(con: duckdb.DuckDBPyConnection, table: str, where: str) -> int:
     return int(only_row(con, f"delete from base.{table} where {where}")[0])
+
+
+def _empty_texts(con: duckdb.DuckDBPyConnection) -> int:
+    """What is noted and still there are lines of several series: their text goes, their place and reason stay."""
+    return int(only_row(con, f"update base.refused_row set text = '' where {mentioned()}")[0])
 
 
 def _note_what_is_left(

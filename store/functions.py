@@ -4,7 +4,6 @@ For each model there are, with x a list of values in time order and steps in yea
 
     fit_<model>(x, dt), fit_<model>_at(t, x)                       one STRUCT: the fit of the whole list
     rolling_<model>(x, dt, lookback), rolling_<model>_at(t, x, lookback)    STRUCT[]: one a window
-    rolling_<model>_from(x, steps, lookback, first)                the same, from window `first` on; a refresh calls it
     loglik_<model>(x, dt, <parameters>)                            the log-likelihood at given parameters
 
 and for a list of returns: realised_variance(r), bipower_variation(r).
@@ -15,7 +14,7 @@ must be, gives one STRUCT whose status says so; a query is never killed by its d
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from concurrent.futures import Executor, Future
 from dataclasses import dataclass
 from functools import cache, partial
@@ -61,8 +60,6 @@ def register(con: duckdb.DuckDBPyConnection, executor: Executor) -> None:
         _add(con, f"fit_{name}_at", partial(_fit_at, fits), ["TIMESTAMP[]", "DOUBLE[]"], one)
         _add(con, f"rolling_{name}", partial(_rolling, fits), ["DOUBLE[]", "DOUBLE", "INTEGER"], many)
         _add(con, f"rolling_{name}_at", partial(_rolling_at, fits), ["TIMESTAMP[]", "DOUBLE[]", "INTEGER"], many)
-        types = ["DOUBLE[]", "DOUBLE[]", "INTEGER", "BIGINT"]
-        _add(con, f"rolling_{name}_from", partial(_rolling_from, fits), types, many)
 
 
 def register_likelihoods(con: duckdb.DuckDBPyConnection) -> None:
@@ -80,6 +77,19 @@ def register_measures(con: duckdb.DuckDBPyConnection) -> None:
     """Registers the measures of a list of returns on a connection."""
     for measure in (realised_variance, bipower_variation):
         _add(con, measure.__name__, partial(_measure, measure), ["DOUBLE[]"], "DOUBLE")
+
+
+def rolled(
+    model: Model, executor: Executor, stretches: Iterable[tuple[Values, Values, int, int]]
+) -> tuple[NDArray[np.int64], pa.StructArray]:
+    """What rolling_<model> gives for stretches of series, each with its steps, lookback and first wanted window.
+
+    How many windows each has, and the fits of all, one after the other.
+    """
+    found = _fits(model, executor, [_Asked(*one) for one in stretches])
+    if not found:
+        return np.empty(0, np.int64), _structs([_without_numbers(model, _Asked(np.empty(0), np.empty(0), 1))])[:0]
+    return np.array([rows.windows for rows in found], np.int64), _structs(found)
 
 
 def struct_type(model: Model) -> str:
@@ -129,13 +139,13 @@ class _Asked:
 def _fits(model: Model, executor: Executor, asked: list[_Asked]) -> list[_Rows]:
     """The wanted windows of each row; blocks of similar rows are worked on together."""
     usable = [row for row, one in enumerate(asked) if one.is_readable and one.windows]
-    found = [_without_numbers(model, one) for one in asked]
     futures = [(rows, executor.submit(roll_block, model.name, *block)) for rows, block in _blocks(asked, usable)]
+    found = {}
     for rows, future in futures:
         fit = future.result()
         for position, row in enumerate(rows):
             found[row] = _Rows(fit, position, asked[row].windows)
-    return found
+    return [found[row] if row in found else _without_numbers(model, one) for row, one in enumerate(asked)]
 
 
 def _fit(fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, dt: Any) -> pa.Array:
@@ -158,13 +168,6 @@ def _rolling_at(
 ) -> pa.Array:
     rows = zip(_lists(t), _lists(x), _integers(lookback), strict=True)
     return _lists_of_structs(fits([_Asked(series, _steps_at(times, series), steps) for times, series, steps in rows]))
-
-
-def _rolling_from(
-    fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, steps: pa.ChunkedArray, lookback: Any, first: Any
-) -> pa.Array:
-    rows = zip(_lists(x), _lists(steps), _integers(lookback), _integers(first), strict=True)
-    return _lists_of_structs(fits([_Asked(*row) for row in rows]))
 
 
 def _loglik(model: Model, x: pa.ChunkedArray, dt: Any, parameters: pa.ChunkedArray) -> pa.Array:
@@ -252,16 +255,11 @@ def _padded(series: list[_Asked]) -> tuple[Values, Values, int, int]:
 
 @dataclass(frozen=True)
 class _Rows:
-    """The windows of one series: a row of a fit, cut to its own length."""
+    """The windows of one series: the first of a row of a fit, as many as its own length gives."""
 
     fit: Fit
     position: int
     windows: int
-
-    def cut(self, values: NDArray[Any]) -> NDArray[Any]:
-        """This series' part of one of the fit's arrays."""
-        part: NDArray[Any] = values[self.position, : self.windows]
-        return part
 
 
 def _without_numbers(model: Model, asked: _Asked) -> _Rows:
@@ -285,25 +283,35 @@ def _lists_of_structs(found: list[_Rows]) -> pa.Array:
 def _structs(found: list[_Rows]) -> pa.Array:
     """The fits of all rows, one after the other."""
     model = MODELS[found[0].fit.model]
-    fields = [pa.array(_joined([rows.cut(rows.fit.n) for rows in found]), pa.int32())]
-    names = ["n"]
+    together = list({id(rows.fit): rows.fit for rows in found}.values())
+    wanted = _places(found, together)
+
+    def values_of(parts: list[NDArray[Any]]) -> NDArray[Any]:
+        values: NDArray[Any] = np.concatenate([part.reshape(-1) for part in parts])[wanted]
+        return values
+
+    fields = [pa.array(values_of([fit.n for fit in together]), pa.int32())]
     for column in model.columns:
-        values = _joined([rows.cut(rows.fit.columns[column.name]) for rows in found])
+        values = values_of([fit.columns[column.name] for fit in together])
         fields.append(_nullable(values, column.kind))
-        names.append(column.name)
-    codes = _joined([rows.cut(rows.fit.status) for rows in found])
-    fields.append(_words().take(pa.array(codes.astype(np.int64))))
-    return pa.StructArray.from_arrays(fields, [*names, "status"])
+    fields.append(_words().take(pa.array(values_of([fit.status for fit in together]).astype(np.int64))))
+    return pa.StructArray.from_arrays(fields, ["n", *(column.name for column in model.columns), "status"])
+
+
+def _places(found: list[_Rows], together: list[Fit]) -> NDArray[np.int64]:
+    """Where the windows of each row stand in the arrays of all fits, put end to end."""
+    ends = np.cumsum([fit.status.size for fit in together]).tolist()
+    starts = dict(zip(map(id, together), [0, *ends], strict=False))
+    places = [
+        np.arange(rows.windows) + (starts[id(rows.fit)] + rows.position * rows.fit.status.shape[1]) for rows in found
+    ]
+    return np.concatenate(places)
 
 
 @cache
 def _words() -> pa.Array:
     # made when first needed: pyarrow looks for pandas at its first array, and loads it where it is installed
     return pa.array([status.word for status in Status], pa.string())
-
-
-def _joined(parts: list[NDArray[Any]]) -> NDArray[Any]:
-    return np.concatenate(parts)
 
 
 def _nullable(values: Values, kind: str) -> pa.Array:

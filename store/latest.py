@@ -106,10 +106,9 @@ def write_latest(run: Run, plan: Plan, work: Work, last: int) -> None:
 
 def _touched(work: Work, before: dict[int, Row], headline: dict[int, int]) -> set[int]:
     """The series of which the book may say something else now: estimated, less estimated, or by another lookback."""
-    estimated = {one.series_id for model in work.models for one in model.spans}
     less = {series_id for model in work.models for series_id, _ in model.leaving}
     moved = {series_id for series_id, row in before.items() if row.lookback != headline.get(series_id)}
-    return estimated | less | moved
+    return work.series_due | less | moved
 
 
 class _Marks:

@@ -8,10 +8,11 @@ import tomllib
 from collections import Counter
 from collections.abc import Callable, Collection, Iterator
 from contextlib import suppress
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from fnmatch import translate
+from functools import cached_property
 from pathlib import Path
-from typing import Annotated, Any, Literal, Self, TypeVar
+from typing import Annotated, Any, Literal, NamedTuple, Self, TypeVar
 from zoneinfo import available_timezones
 
 from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, ValidationError, model_validator
@@ -19,6 +20,7 @@ from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Fie
 from driftbook.estimators import MODELS
 from driftbook.store.errors import PlanError
 from driftbook.store.intake.naming import why_no_name
+from driftbook.store.intake.options import DAY_FIRST, MONTH_FIRST, ROLES, not_dates, tells_the_year
 from driftbook.store.series import Setting, near_name
 
 # Keys of later plan files: named, so that a plan that uses them hears that this driftbook cannot do it yet.
@@ -26,6 +28,8 @@ _NOT_YET = {"breaks", "formula", "group", "also", "horizons"}
 ALL = 0
 BEST = "best"
 _LONGEST = 10_000_000
+# Those of a series' settings that a plan tells as they are.
+_SETTINGS = {field.name for field in fields(Setting)} - {"periods_per_year", "planned"}
 
 
 def _known_zone(zone: str) -> str:
@@ -64,6 +68,19 @@ def _in_the_folder(pattern: str) -> str:
     if "/" in pattern or "\\" in pattern or pattern.startswith("."):
         raise ValueError(f"{pattern!r} leaves the inbox; name files in it, such as power_*.csv")
     return pattern
+
+
+def _readable_dates(dates: str) -> str:
+    if dates not in (DAY_FIRST, MONTH_FIRST) and not tells_the_year(dates):
+        raise ValueError(not_dates(dates))
+    return dates
+
+
+def _known_roles(columns: dict[str, str]) -> dict[str, str]:
+    for role in columns:
+        if role not in ROLES:
+            raise ValueError(f"{role!r} is nothing that a column can hold{near_name(role, list(ROLES))}")
+    return columns
 
 
 Name = Annotated[str, AfterValidator(_possible_name)]
@@ -108,7 +125,7 @@ class PlannedSeries(_Strict):
     def setting(self) -> Setting:
         """The setting that the book keeps for this series."""
         periods = self.periods_per_year if self.clock == "trading" else None
-        told = self.model_dump(exclude={"name", "also_called", "periods_per_year"})
+        told = {name: getattr(self, name) for name in _SETTINGS}
         return Setting(**told, periods_per_year=periods, planned=True)
 
 
@@ -126,16 +143,23 @@ class PlannedIntake(_Strict):
 
     files: Annotated[str, Field(min_length=1), AfterValidator(_in_the_folder)]
     layout: Literal["long", "wide"] = "long"
-    series: str | None = None
-    columns: dict[str, str] = {}
-    dates: str | None = None
+    series: Name | None = None
+    columns: Annotated[dict[str, str], AfterValidator(_known_roles)] = {}
+    dates: Annotated[str, AfterValidator(_readable_dates)] | None = None
     zone: Annotated[str, AfterValidator(_known_zone)] | None = None
     decimal: Literal[".", ","] = "."
     blank: list[str] = []
 
+    @model_validator(mode="after")
+    def _fits_together(self) -> Self:
+        if self.layout == "wide" and self.series is not None:
+            raise ValueError("series: in the wide layout each column is a series of its own; take it out")
+        if self.layout == "wide" and not {"time"}.issuperset(self.columns):
+            raise ValueError("columns: in the wide layout all columns but the time are series; tell the time alone")
+        return self
 
-@dataclass(frozen=True)
-class Entry:
+
+class Entry(NamedTuple):
     """One thing to keep estimated: a model on the windows of one lookback of one series; lookback 0 is "all"."""
 
     series: str
@@ -165,7 +189,7 @@ class Plan(_Strict):
             raise ValueError("\n".join(mistakes))
         return self
 
-    @property
+    @cached_property
     def entries(self) -> list[Entry]:
         """Every series, model and lookback to keep estimated, in the plan's order."""
         return [

@@ -221,7 +221,8 @@ def _finding(leaf: digest.Leaf, names: dict[int, str], what: str) -> Finding:
 def _chain_findings(con: duckdb.DuckDBPyConnection) -> Iterator[Finding]:
     runs = con.execute("select run_id, migration, digest from base.run order by run_id").fetchall()
     for run_id, migration, stored in runs:
-        if not 1 <= migration <= migrate.newest() or chain(con, run_id) != stored:
+        is_known = 1 <= migration <= migrate.newest()
+        if not is_known or chain(con, run_id, columns_at(migration)["run"]) != stored:
             yield Finding(
                 f"run {run_id}: its row, its leaves or the digest before it are not those that it was written with.",
                 "run",

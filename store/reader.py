@@ -56,6 +56,8 @@ def _opened(path: Path) -> duckdb.DuckDBPyConnection:
     con = duckdb.connect(":memory:")
     try:
         con.execute("set TimeZone = 'UTC'")
+        # what does not fit into memory would be written where we happen to be, for anyone to read
+        con.execute("set temp_directory = ''")
         _attach(con, path)
         _check_schema(con, path)
     except BaseException:

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from concurrent.futures import Executor
 from dataclasses import dataclass, field, replace
 
 import duckdb
 
 from driftbook.estimators import MODELS
 from driftbook.store import intake
-from driftbook.store.due import slice_table, span_table
+from driftbook.store.computing import computed
 from driftbook.store.errors import PlanError, UsageError
 from driftbook.store.inbox import Delivered
 from driftbook.store.latest import write_latest
@@ -17,7 +18,7 @@ from driftbook.store.plan import Plan, PlanText, parse_plan
 from driftbook.store.runs import Run
 from driftbook.store.series import Series, add_series, change_setting, known_series, put_aliases_in_force
 from driftbook.store.sql import first_row, only_row, query
-from driftbook.store.work import Work, find_work, needed, shifts
+from driftbook.store.work import Work, find_work
 
 
 @dataclass(frozen=True)
@@ -53,19 +54,23 @@ def put_plan_in_force(run: Run, given: PlanText | None, *, yes: bool) -> tuple[P
     PlanError for a plan that does not fit the book, UsageError where there is none.
     """
     plan, changed = _replace_plan(run, given, yes)
-    return plan, changed, _put_settings_in_force(run, plan)
+    return plan, changed, _put_settings_in_force(run, plan, yes=yes)
 
 
 def refresh(
     run: Run,
     plan: Plan,
+    executor: Executor,
     *,
     everything: bool = False,
     yes: bool = False,
     dry_run: bool = False,
     report: Callable[[Progress], None] | None = None,
 ) -> Refreshed:
-    """Estimates what is due in the draft of a run; raises UsageError where a person has to say yes."""
+    """Estimates what is due in the draft of a run, in blocks that go to the executor.
+
+    Raises UsageError where a person has to say yes.
+    """
     last = last_refresh(run.con)
     revised = {name for name in MODELS if _put_revision_in_force(run, name)}
     work = find_work(run.con, plan, last, revised, everything=everything)
@@ -76,7 +81,7 @@ def refresh(
     for model in work.models:
         model.table.close_entries(run.con, list(model.leaving), run.stamp.run_id)
     for portion in work.portions():
-        _estimate(run, work, portion)
+        _estimate(run, work, portion, executor)
         if report is not None:
             report(Progress(run.windows.due, work.windows))
     write_latest(run, plan, work, last)
@@ -98,21 +103,17 @@ def _warnings(con: duckdb.DuckDBPyConnection) -> tuple[str, ...]:
     )
 
 
-def _estimate(run: Run, work: Work, portion: list[int]) -> None:
+def _estimate(run: Run, work: Work, portion: list[int], executor: Executor) -> None:
     """Computes and writes what is due for some series."""
-    con, chosen = run.con, set(portion)
-    con.register("needed", needed(work.slices(portion), work.series, work.times))
-    con.execute(query("list_observations").format(in_force="o.run_to is null"))
-    con.unregister("needed")
+    chosen = set(portion)
     for model in work.models:
+        slices = [one for one in model.slices if one.series_id in chosen]
         spans = [one for one in model.spans if one.series_id in chosen]
-        if spans:
-            slices = [one for one in model.slices if one.series_id in chosen]
-            due, fitted = model.table.estimate(con, slice_table(slices, shifts(model.name, work.series)))
-            model.table.write(con, span_table(spans), run.stamp.run_id)
-            run.windows.due += due
-            run.windows.fitted += fitted
-    con.execute("drop table listed")
+        if slices or spans:
+            fresh = computed(model.table.model, slices, work.known, work.series, executor)
+            model.table.write(run.con, fresh, spans, run.stamp.run_id)
+            run.windows.due += len(fresh)
+            run.windows.fitted += len(fresh) - fresh.column("loglik").null_count
 
 
 def _replace_plan(run: Run, given: PlanText | None, yes: bool) -> tuple[Plan, bool]:
@@ -136,7 +137,7 @@ def _replace_plan(run: Run, given: PlanText | None, yes: bool) -> tuple[Plan, bo
     return given.plan, True
 
 
-def _put_settings_in_force(run: Run, plan: Plan) -> int:
+def _put_settings_in_force(run: Run, plan: Plan, *, yes: bool) -> int:
     """Adds the plan's series, puts their settings in force, takes up the rows that waited for a name."""
     known = known_series(run.con)
     planned = {series.name: series.setting for series in plan.series}
@@ -150,7 +151,7 @@ def _put_settings_in_force(run: Run, plan: Plan) -> int:
     new = {name: setting for name, setting in planned.items() if name not in known}
     add_series(run.con, new, run.stamp)
     awaited = [*new, *_put_aliases_in_force(run, plan)]
-    return intake.take_up(run.con, awaited, run.stamp) if awaited else 0
+    return intake.take_up(run.con, awaited, run.stamp, yes=yes) if awaited else 0
 
 
 def _put_aliases_in_force(run: Run, plan: Plan) -> list[str]:
@@ -171,7 +172,8 @@ def _check_time_zone(con: duckdb.DuckDBPyConnection, series: Series, zone: str) 
     if first_row(con, "select 1 from base.observation where series_id = ? limit 1", [series.series_id]):
         raise PlanError(
             f"series {series.name!r}: time_zone cannot change from {series.setting.time_zone} to {zone}, "
-            "since there are observations; add a series of another name."
+            f'since there are observations; leave it and say zone = "{zone}" where its files are read, or begin a '
+            "series of another name: the plan first, its files second."
         )
 
 

@@ -15,13 +15,14 @@ import numpy as np
 
 from driftbook.estimators import MODELS
 from driftbook.store import functions
-from driftbook.store.due import OBSERVATION, Asked, Slice, slice_of, slice_table
+from driftbook.store.computing import computed
+from driftbook.store.due import OBSERVATION, Asked, Slice, slice_of
 from driftbook.store.errors import UsageError
 from driftbook.store.estimates import EstimateTable
+from driftbook.store.observed import Observed, observed
 from driftbook.store.reader import attached
 from driftbook.store.series import Series, Setting
 from driftbook.store.sql import only_row, query
-from driftbook.store.work import needed, shifts, split
 
 _WORST = 20
 
@@ -70,7 +71,6 @@ def reproduce(book: str | os.PathLike[str], run_id: int | None = None, *, every:
         wanted = runs if every else [runs[-1] if run_id is None else run_id]
         if not set(wanted) <= set(runs):
             raise UsageError(f"{book} has no run {run_id}; its runs are 1 to {runs[-1]}.")
-        functions.register(con, functions.InlineExecutor())
         return [_reproduce_run(con, one) for one in wanted]
 
 
@@ -111,23 +111,18 @@ def _reproduce_model(
     rows = written.fetchall()
     if not rows:
         return
-    times = split(
-        con.sql(query("times_at"), params={"run": run_id, "series": sorted({row[0] for row in rows})}).fetchnumpy(),
-        "us",
-    )
-    slices = list(_slices(rows, times))
     at_run = f"o.run_from <= {run_id} and (o.run_to is null or o.run_to > {run_id})"
-    con.register("needed", needed(slices, series, times))
-    con.execute(query("list_observations").format(in_force=at_run))
-    con.unregister("needed")
-    table.estimate(con, slice_table(slices, shifts(name, series)))
+    known = observed(con, sorted({row[0] for row in rows}), when=at_run)
+    again = computed(table.model, list(_slices(rows, known)), known, series, functions.InlineExecutor())
+    con.register("fresh", again)
     _compare(con, table, run_id, found)
+    con.unregister("fresh")
 
 
-def _slices(rows: list[tuple[int, int, list[int]]], times: dict[int, np.ndarray]) -> Iterator[Slice]:
+def _slices(rows: list[tuple[int, int, list[int]]], known: Observed) -> Iterator[Slice]:
     """What computes the written windows again; one whose observations are not there comes out different."""
     for series_id, lookback, written in rows:
-        there, ends = times.get(series_id, np.empty(0, np.int64)), np.array(written, np.int64)
+        there, ends = known.us[known.place(series_id)], np.array(written, np.int64)
         at = np.searchsorted(there, ends)
         earliest = lookback if there.size > lookback else 0
         found = at[np.isin(ends, there) & (at >= earliest)]

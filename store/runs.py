@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Iterable
-from dataclasses import asdict, dataclass, field
+from dataclasses import dataclass, field, fields
 from datetime import UTC, datetime
 from importlib.metadata import version
 
@@ -15,7 +15,7 @@ from driftbook.store import digest, migrate
 from driftbook.store.moments import check_told, next_moment, parse_moment
 from driftbook.store.series import Stamp
 from driftbook.store.sql import first_row, only_row, query
-from driftbook.store.tables import columns_at, tracked_tables
+from driftbook.store.tables import columns_of, tracked_tables
 
 NO_DIGEST = "0" * 64
 
@@ -70,30 +70,33 @@ def begin(con: duckdb.DuckDBPyConnection, at: str | datetime | None) -> Run:
 def finish(run: Run, *, migrated: bool) -> Finished | None:
     """Writes the run's row and leaves; None, and nothing written, if the run changed and computed nothing."""
     con, run_id = run.con, run.stamp.run_id
-    found = _leaves_of(con, run_id)
+    columns = columns_of(con)
+    found = _leaves_of(con, run_id, columns)
     if not found and not run.windows.due and not migrated:
         return None
     _insert_leaves(con, found)
     moment = run.told or next_moment(run.last_moment)
     rows_written = sum(leaf.rows_in for leaf in found)
     con.execute(query("insert_run"), _run_row(run, moment, rows_written))
-    chained = chain(con, run_id)
+    chained = chain(con, run_id, columns["run"])
     con.execute("update base.run set digest = ? where run_id = ?", [chained, run_id])
     return Finished(run_id, moment, rows_written, sum(leaf.rows_closed for leaf in found), chained)
 
 
-def chain(con: duckdb.DuckDBPyConnection, run_id: int) -> str:
-    """The digest of a run: SHA-256 over the digest before it, the run's row and its leaves."""
+def chain(con: duckdb.DuckDBPyConnection, run_id: int, columns: list[str]) -> str:
+    """The digest of a run: SHA-256 over the digest before it, the run's row and its leaves.
+
+    `columns` are those that base.run had at the run.
+    """
     before = first_row(con, "select digest from base.run where run_id = ?", [run_id - 1])
     sha = hashlib.sha256((before[0] if before else NO_DIGEST).encode())
-    sha.update(digest.row_bytes(_run_columns(con, run_id)))
+    sha.update(digest.row_bytes(_run_row_again(con, run_id, columns)))
     sha.update(digest.row_bytes(con.sql(query("leaves_of_run"), params=[run_id]).to_arrow_table()))
     return sha.hexdigest()
 
 
-def _leaves_of(con: duckdb.DuckDBPyConnection, run_id: int) -> list[digest.Leaf]:
+def _leaves_of(con: duckdb.DuckDBPyConnection, run_id: int, columns: dict[str, list[str]]) -> list[digest.Leaf]:
     migration = migrate.newest()
-    columns = columns_at(migration)
     per_table: Iterable[Iterable[digest.Leaf]] = (
         digest.leaves(con, table, columns[table.name], (run_id, run_id), migration) for table in tracked_tables()
     )
@@ -102,15 +105,15 @@ def _leaves_of(con: duckdb.DuckDBPyConnection, run_id: int) -> list[digest.Leaf]
 
 def _insert_leaves(con: duckdb.DuckDBPyConnection, found: list[digest.Leaf]) -> None:
     if found:
-        con.register("found_leaves", pa.Table.from_pylist([asdict(leaf) for leaf in found]))
+        names = [column.name for column in fields(digest.Leaf)]
+        con.register("found_leaves", pa.table([[getattr(leaf, name) for leaf in found] for name in names], names))
         con.execute(query("insert_leaves"))
         con.unregister("found_leaves")
 
 
-def _run_columns(con: duckdb.DuckDBPyConnection, run_id: int) -> pa.Table:
-    (migration,) = only_row(con, "select max(migration) from base.run where run_id = ?", [run_id])
-    columns = ", ".join(name for name in columns_at(migration)["run"] if name != "digest")
-    return con.sql(f"select {columns} from base.run where run_id = {int(run_id)}").to_arrow_table()
+def _run_row_again(con: duckdb.DuckDBPyConnection, run_id: int, columns: list[str]) -> pa.Table:
+    told = ", ".join(name for name in columns if name != "digest")
+    return con.sql(f"select {told} from base.run where run_id = {int(run_id)}").to_arrow_table()
 
 
 def _run_row(run: Run, moment: datetime, rows_written: int) -> list[object]:

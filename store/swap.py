@@ -6,7 +6,7 @@ import errno
 import os
 import shutil
 from collections.abc import Iterator
-from contextlib import contextmanager, suppress
+from contextlib import contextmanager
 from pathlib import Path
 from typing import BinaryIO
 
@@ -276,10 +276,16 @@ def _swap_in(draft: Path, book: Path) -> None:
 
 
 def _make_alike(draft: Path, before: os.stat_result) -> None:
-    """Gives a draft the rights of the book, and its owner where we may."""
-    draft.chmod(before.st_mode & 0o7777)
-    with suppress(PermissionError):
+    """Gives a draft the rights and owners of the book; a group that we may not give it gets no rights in its place."""
+    rights = before.st_mode & 0o7777
+    try:
         os.chown(draft, before.st_uid, before.st_gid)
+    except PermissionError:  # only root may give a file away; its group can be any that we are in
+        try:
+            os.chown(draft, -1, before.st_gid)
+        except PermissionError:
+            rights &= ~0o070
+    draft.chmod(rights)
 
 
 def _rewrite(draft: Path, *, asked_for: bool) -> None:

@@ -17,6 +17,11 @@ def harmless(text: str) -> str:
     return text if text.isprintable() else "".join(_visible(character) for character in text)
 
 
+def shortened(text: str, most: int = 400) -> str:
+    """The beginning of a text from somebody else's file: a line may be as long as the file."""
+    return text if len(text) <= most else f"{text[:most]}…"
+
+
 def count_of(number: int, noun: str, nouns: str | None = None) -> str:
     """`1 window`, `2 windows`; `nouns` where an s does not make the plural."""
     return f"{number} {noun if number == 1 else nouns or noun + 's'}"

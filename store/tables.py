@@ -9,6 +9,7 @@ import duckdb
 
 from driftbook.estimators import MODELS
 from driftbook.store import migrate
+from driftbook.store.sql import query
 
 
 @dataclass(frozen=True)
@@ -57,10 +58,12 @@ def columns_at(migration: int) -> dict[str, list[str]]:
         for step in migrate.all_migrations():
             if step.number <= migration:
                 migrate.apply(con, step)
-        rows = con.execute(
-            "select table_name, column_name from duckdb_columns() where schema_name = 'base' and not internal "
-            "order by table_name, column_index"
-        ).fetchall()
+        return columns_of(con)
+
+
+def columns_of(con: duckdb.DuckDBPyConnection) -> dict[str, list[str]]:
+    """The columns that every base table of the default catalog has, without run_to, in their order."""
+    rows = con.execute(query("columns_of_base")).fetchall()
     found: dict[str, list[str]] = {}
     for table_name, column_name in rows:
         found.setdefault(table_name, [])

@@ -7,19 +7,17 @@ from dataclasses import dataclass, field
 
 import duckdb
 import numpy as np
-import pyarrow as pa
 
 from driftbook.estimators import MODELS
-from driftbook.store.clocks import equal_step, microseconds_per_unit
-from driftbook.store.due import OBSERVATION, Asked, Days, Microseconds, Slice, Span, due
+from driftbook.store.due import OBSERVATION, Asked, Slice, Span, due
 from driftbook.store.errors import PlanError
 from driftbook.store.estimates import EstimateTable
-from driftbook.store.plan import Plan, parse_plan
+from driftbook.store.observed import Microseconds, Observed, observed, places
+from driftbook.store.plan import Entry, Plan, parse_plan
 from driftbook.store.series import Series, known_series
-from driftbook.store.sql import query
+from driftbook.store.sql import only_row, query
 
 _WINDOWS_AT_ONCE = 400_000
-_LOCAL_DAY = "(timezone(t.time_zone, timezone('UTC', o.observed_at))::date - date '1970-01-01')::bigint"
 
 
 @dataclass
@@ -44,12 +42,18 @@ class Work:
 
     models: list[ModelWork]
     series: dict[int, Series]
-    times: dict[int, Microseconds]
+    known: Observed
 
     @property
     def windows(self) -> int:
         """How many windows are due."""
         return sum(one.windows for model in self.models for one in model.slices)
+
+    @property
+    def series_due(self) -> set[int]:
+        """The series of which windows are due, or may have vanished."""
+        slices = {one.series_id for model in self.models for one in model.slices}
+        return slices | {one.series_id for model in self.models for one in model.spans}
 
     @property
     def rows_leaving(self) -> int:
@@ -63,7 +67,7 @@ class Work:
 
     def portions(self) -> Iterator[list[int]]:
         """Series, some at a time, so that what is in memory stays bounded."""
-        weights = {one.series_id: 0 for model in self.models for one in model.spans}
+        weights = dict.fromkeys(self.series_due, 0)
         for model in self.models:
             for one in model.slices:
                 weights[one.series_id] += one.windows
@@ -78,48 +82,14 @@ class Work:
         if portion:
             yield portion
 
-    def slices(self, portion: list[int]) -> list[Slice]:
-        """The due slices of some series, over all models."""
-        chosen = set(portion)
-        return [one for model in self.models for one in model.slices if one.series_id in chosen]
-
-
-def needed(slices: list[Slice], series: dict[int, Series], times: dict[int, Microseconds]) -> pa.Table:
-    """The series of some slices, with the first observation that is needed and how their steps are counted."""
-    starts: dict[int, int] = {}
-    for one in slices:
-        starts[one.series_id] = min(one.start, starts.get(one.series_id, one.start))
-    settings = [series[series_id].setting for series_id in starts]
-    steps = [equal_step(setting.clock, setting.periods_per_year) for setting in settings]
-    units = [
-        microseconds_per_unit(setting.clock) if step is None else None
-        for setting, step in zip(settings, steps, strict=True)
-    ]
-    return pa.table(
-        {
-            "series_id": pa.array(list(starts), pa.int32()),
-            "skipped": pa.array(list(starts.values()), pa.int64()),
-            "opens": pa.array([int(times[one][start]) for one, start in starts.items()], pa.int64()),
-            "step": pa.array(steps, pa.float64()),
-            "unit": pa.array(units, pa.int64()),
-        }
-    )
-
-
-def shifts(model: str, series: dict[int, Series]) -> dict[int, float]:
-    """What is added to the values of each series for a model: models for X > 0 alone take a shift."""
-    if MODELS[model].range == "real":
-        return {}
-    return {series_id: one.setting.shift for series_id, one in series.items() if one.setting.shift}
-
 
 def find_work(con: duckdb.DuckDBPyConnection, plan: Plan, last: int, revised: set[str], *, everything: bool) -> Work:
     """What is due under a plan since run `last`; `revised` models are due as a whole."""
     series = known_series(con)
     tables = {name: EstimateTable(model) for name, model in MODELS.items()}
-    in_force = {name: table.in_force(con) for name, table in tables.items()}
     reset = {series_id for (series_id,) in con.execute(query("settings_since"), [last]).fetchall()}
-    before = _entries_at(con, last)
+    before = _entries_at(con, last, plan)
+    in_force = _in_force(con, tables, last, before, plan)
     asked: dict[str, list[Asked]] = {name: [] for name in MODELS}
     for entry in plan.entries:
         series_id = series[entry.series].series_id
@@ -128,25 +98,37 @@ def find_work(con: duckdb.DuckDBPyConnection, plan: Plan, last: int, revised: se
             or series_id in reset
             or entry.model in revised
             or entry not in before
-            or (series_id, entry.lookback) not in in_force[entry.model]
+            or (in_force is not None and (series_id, entry.lookback) not in in_force[entry.model])
         )
         asked[entry.model].append(Asked(series_id, entry.lookback, entry.every, whole))
     models = []
     for name, wanted in asked.items():
+        there = in_force[name] if in_force is not None else {}
         kept = {(one.series_id, one.lookback) for one in wanted}
-        leaving = {key: count for key, count in in_force[name].items() if key not in kept}
-        models.append(ModelWork(tables[name], in_force=sum(in_force[name].values()), leaving=leaving))
+        leaving = {key: count for key, count in there.items() if key not in kept}
+        models.append(ModelWork(tables[name], in_force=sum(there.values()), leaving=leaving))
     by_id = {one.series_id: one for one in series.values()}
     return _with_what_is_due(con, last, list(asked.values()), models, by_id)
 
 
-def _entries_at(con: duckdb.DuckDBPyConnection, run_id: int) -> set[object]:
-    """The entries of the plan at a run; none if that plan can no longer be read."""
+def _in_force(
+    con: duckdb.DuckDBPyConnection, tables: dict[str, EstimateTable], last: int, before: set[Entry], plan: Plan
+) -> dict[str, dict[tuple[int, int], int]] | None:
+    """How many estimates each entry has in force; None, unread, where none left the plan and none was forgotten."""
+    (forgettings,) = only_row(con, query("forgettings_since"), [last])
+    if before and before.issubset(plan.entries) and not forgettings:
+        return None
+    return {name: table.in_force(con) for name, table in tables.items()}
+
+
+def _entries_at(con: duckdb.DuckDBPyConnection, run_id: int, plan: Plan) -> set[Entry]:
+    """The entries of the plan at a run, which may be `plan`, in force now; none if it can no longer be read."""
     found = con.execute(query("plan_at"), {"run": run_id}).fetchall()
     try:
-        return {entry for (text,) in found for entry in parse_plan(text, "the plan before").plan.entries}
+        plans = [plan if is_in_force else parse_plan(text, "the plan before").plan for text, is_in_force in found]
     except PlanError:
         return set()
+    return {entry for one in plans for entry in one.entries}
 
 
 def _with_what_is_due(
@@ -156,28 +138,25 @@ def _with_what_is_due(
     models: list[ModelWork],
     series: dict[int, Series],
 ) -> Work:
-    changed = split(con.sql(query("changed_since"), params={"last": last}).fetchnumpy(), "us")
+    changed = _changed_since(con, last)
     concerned = sorted({one.series_id for each in asked for one in each if one.whole or one.series_id in changed})
     thinned = any(one.every != OBSERVATION for each in asked for one in each)
-    sql = query("times_in_force").format(local_day=_LOCAL_DAY if thinned else "0::bigint")
-    columns = con.sql(sql, params={"series": concerned}).fetchnumpy()
-    times, days = split(columns, "us"), split(columns, "day")
+    known = observed(con, concerned, with_days=thinned)
     none = np.empty(0, np.int64)
     found: dict[Asked, tuple[list[Slice], list[Span]]] = {}  # models mostly ask for the same
     for each, model in zip(asked, models, strict=True):
         for one in each:
             if one not in found:
-                key = one.series_id
-                found[one] = due(one, times.get(key, none), changed.get(key, none), days.get(key, none))
+                place = known.place(one.series_id)
+                found[one] = due(one, known.us[place], changed.get(one.series_id, none), known.days[place])
             slices, spans = found[one]
             model.slices += slices
             model.spans += spans
-    return Work(models, series, times)
+    return Work(models, series, known)
 
 
-def split(columns: dict[str, np.ndarray], column: str) -> dict[int, Days]:
-    """A column's values by series, from rows in the order of series."""
-    series, values = np.asarray(columns["series_id"]), np.asarray(columns[column], np.int64)
-    bounds = np.flatnonzero(np.diff(series)) + 1
-    parts = np.split(values, bounds)
-    return {int(series[start]): part for start, part in zip([0, *bounds], parts, strict=True) if part.size}
+def _changed_since(con: duckdb.DuckDBPyConnection, last: int) -> dict[int, Microseconds]:
+    """When observations of each series were added, corrected or withdrawn after a run."""
+    rows = con.sql(query("changed_since"), params={"last": last}).to_arrow_table()
+    us = rows.column("us").to_numpy()
+    return {series_id: us[place] for series_id, place in places(rows.column("series_id").to_numpy()).items()}

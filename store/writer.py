@@ -10,8 +10,6 @@ from dataclasses import replace
 from datetime import datetime
 from pathlib import Path
 
-import polars as pl
-
 from driftbook.store import functions, intake, runs
 from driftbook.store.errors import UsageError
 from driftbook.store.inbox import Delivered, take_in_folder
@@ -34,17 +32,16 @@ class Writing:
 
     def ingest(
         self,
-        source: str | os.PathLike[str] | pl.DataFrame,
+        source: object,
         options: intake.Options | None = None,
         *,
         name: str | None = None,
     ) -> intake.Outcome:
-        """Takes in a file or a frame; raises IntakeError for what cannot be read at all."""
+        """Takes in a file, or a frame of polars, pandas or Arrow; raises IntakeError for what cannot be read at all."""
         if self._refreshed:
             raise UsageError("take in first and refresh last: estimates are made of what was taken in before.")
         chosen = options or intake.Options()
-        read_from = source if isinstance(source, pl.DataFrame) else Path(source)
-        return intake.take_in(self._run.con, read_from, chosen, self._run.stamp, name=name)
+        return intake.take_in(self._run.con, source, chosen, self._run.stamp, name=name)
 
     def refresh(
         self,
@@ -96,8 +93,7 @@ class Writing:
         text = plan if plan is None or isinstance(plan, PlanText) else read_plan(Path(plan))
         chosen, changed, taken_up = put_plan_in_force(self._run, text, yes=yes)
         delivered = take_in_folder(self._run, Path(inbox), chosen, yes=yes) if inbox is not None else Delivered()
-        functions.register(self._run.con, executor)
-        done = refresh(self._run, chosen, everything=everything, yes=yes, dry_run=dry_run, report=report)
+        done = refresh(self._run, chosen, executor, everything=everything, yes=yes, dry_run=dry_run, report=report)
         return replace(done, delivered=delivered, taken_up=taken_up, plan_changed=changed)
 
     def finish(self) -> None:

@@ -28,6 +28,8 @@ def test_the_wheel_holds_migrations_queries_tables_and_type_marks(wheel):
         "driftbook/migrations/0001_book.sql",
         "driftbook/store/sql/runs.sql",
         "driftbook/store/demo/plan.toml",
+        "driftbook/store/page/templates/first.html",
+        "driftbook/store/page/static/page.css",
         "driftbook/estimators/data/slope_law.npz",
         "driftbook/store/py.typed",
         "driftbook/estimators/py.typed",

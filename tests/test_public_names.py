@@ -40,7 +40,7 @@ COMMANDS = {
     "explain": "--model --lookback --from --to --quiet --json",
     "reproduce": "--run --all --quiet --json",
     "forget": "--before --yes --quiet --json",
-    "sql": "--format --output --timeout --rows --quiet --json",
+    "sql": "--format --output --guard-formulas --timeout --rows --quiet --json",
     "verify": "--quiet --json",
     "demo": "--quiet --json",
     "new": "--quiet --json",

@@ -6,6 +6,7 @@ import sys
 import tomllib
 from pathlib import Path
 
+import numpy as np
 import pytest
 
 ROOT = Path(__file__).resolve().parent.parent
@@ -13,7 +14,8 @@ TOP_LEVEL = {
     "README.md", "DEVELOPERS.md", "pyproject.toml", "store", "estimators", "tests", "migrations", "LICENSE",
 }  # fmt: skip
 STDLIB = set(sys.stdlib_module_names)
-LEAVES = ("driftbook.store.cli",)
+# Leaves, and the folders that may import them; the command line starts the page.
+LEAVES = {"driftbook.store.cli": {"cli"}, "driftbook.store.page": {"page", "cli"}}
 
 
 def _tracked() -> list[Path]:
@@ -58,8 +60,8 @@ def test_estimators_know_no_clock_environment_or_log(path):
 def test_the_store_holds_no_numerics_and_nothing_imports_a_leaf(path):
     imports = _imports(path)
     assert not {name for name in imports if name == "math.exp" or name.split(".")[0] in {"scipy", "statsmodels"}}
-    if "cli" not in path.parts:
-        assert not {name for name in imports if name.startswith(LEAVES)}
+    for leaf, friends in LEAVES.items():
+        assert friends & set(path.parts) or not {name for name in imports if name.startswith(leaf)}
 
 
 def test_only_the_swap_opens_a_book_for_writing():
@@ -68,6 +70,32 @@ def test_only_the_swap_opens_a_book_for_writing():
     for name in ("reader.py", "tables.py"):
         text = (ROOT / "store" / name).read_text(encoding="utf-8")
         assert text.count("duckdb.connect(") == text.count('duckdb.connect(":memory:")')
+
+
+# Reading any of these runs what a file says.
+UNPICKLING = {"pickle", "_pickle", "marshal", "shelve", "dill", "cloudpickle", "joblib", "copyreg", "yaml"}
+UNPICKLERS = {"read_pickle", "unpickle", "Unpickler", "eval", "exec", "compile", "__import__"}
+
+
+@pytest.mark.parametrize("path", [*_python_files("store"), *_python_files("estimators"), *_python_files("migrations")],
+                         ids=str)  # fmt: skip
+def test_nothing_is_unpickled_and_no_text_is_run(path):
+    assert not {name.split(".")[0] for name in _imports(path)} & UNPICKLING
+    for node in ast.walk(ast.parse(path.read_text(encoding="utf-8"))):
+        if isinstance(node, ast.keyword) and node.arg == "allow_pickle":
+            assert isinstance(node.value, ast.Constant)
+            assert node.value.value is False
+        if isinstance(node, ast.Call):
+            name = node.func.attr if isinstance(node.func, ast.Attribute) else getattr(node.func, "id", "")
+            is_of_re = isinstance(node.func, ast.Attribute) and getattr(node.func.value, "id", "") == "re"
+            assert name not in UNPICKLERS or is_of_re, name
+
+
+def test_the_table_that_is_loaded_holds_no_objects():
+    """numpy itself refuses objects in a file unless told; this holds that the file needs no telling."""
+    for path in (ROOT / "estimators" / "data").glob("*.npz"):
+        with np.load(path, allow_pickle=False) as stored:
+            assert all(stored[name].dtype.kind in "fiub" for name in stored.files)
 
 
 def test_no_second_copy_of_the_packages_is_imported():

@@ -15,7 +15,7 @@ import typer
 from driftbook.store import interrupts
 from driftbook.store.cli import asked, begin, morning, page_command
 from driftbook.store.cli.output import say_error
-from driftbook.store.errors import BookError
+from driftbook.store.errors import BookError, UsageError
 
 CAUTION = (
     "Numbers are statistical estimates from past data: no advice and no forecast of returns. Limits, margin "
@@ -62,9 +62,10 @@ def run(arguments: list[str]) -> int:
     heard = _Interrupts()
     before = interrupts.swaps()
     try:
+        _check_text(arguments)
         with heard:
             code = app(arguments, prog_name="driftbook", standalone_mode=False)
-    except BrokenPipeError:  # whoever read, as `head` does, has read enough
+    except (BrokenPipeError, SystemExit):  # typer exits on a broken pipe: whoever read, as `head` does, has enough
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 0
     except (Exception, KeyboardInterrupt) as error:
@@ -75,6 +76,13 @@ def run(arguments: list[str]) -> int:
     if code == _INTERRUPTED:  # typer took the interrupt itself
         _complain(_interrupted(before)[1], arguments)
     return code if isinstance(code, int) else 0
+
+
+def _check_text(arguments: list[str]) -> None:
+    """Bytes that are no UTF-8 come as letters that nothing can write down again."""
+    for argument in arguments:
+        if any("\ud800" <= letter <= "\udfff" for letter in argument):
+            raise UsageError(f"{argument!r} is no UTF-8 text; rename or write it in UTF-8.")
 
 
 class _Interrupts:

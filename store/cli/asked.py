@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 import sys
+from collections.abc import Callable
 from dataclasses import asdict
 from enum import StrEnum
+from functools import partial
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
 
@@ -12,10 +14,12 @@ import typer
 
 from driftbook.store.cli import options as opt
 from driftbook.store.cli.output import say, say_json
-from driftbook.store.errors import DifferenceFound
+from driftbook.store.errors import DifferenceFound, UsageError
 from driftbook.store.table import count_of
 
 if TYPE_CHECKING:
+    import duckdb
+
     from driftbook.store.proof import Verified
     from driftbook.store.reproducing import Reproduced
 
@@ -42,9 +46,12 @@ def sql(
     ],
     how: Annotated[Format, typer.Option("--format", help="How rows are written.")] = Format.TABLE,
     output: Annotated[Path | None, typer.Option("--output", help="A file instead of standard output.")] = None,
+    guarded: Annotated[
+        bool, typer.Option("--guard-formulas", help="CSV for a spreadsheet: no text can be taken for a formula.")
+    ] = False,
     timeout: Annotated[
-        float | None, typer.Option("--timeout", metavar="SECONDS", min=0, help="Give up after this time.")
-    ] = None,
+        float, typer.Option("--timeout", metavar="SECONDS", min=0, help="Give up after this time.")
+    ] = 600.0,
     most: Annotated[int | None, typer.Option("--rows", metavar="N", min=0, help="At most so many rows.")] = None,
     quiet: opt.Quiet = False,
     as_json: opt.Json = False,
@@ -54,16 +61,44 @@ def sql(
     Example: driftbook sql desk.duckdb "from ou where series = 'pellets_fob' order by window_end desc limit 3"
     """
     from driftbook.store.ask import ask
-    from driftbook.store.cli.rows import write_rows
+    from driftbook.store.cli.rows import deliver
+    from driftbook.store.contained import Limits
 
-    text = sys.stdin.read() if statement == "-" else statement
-    with ask(book, text, timeout=timeout, rows=most) as rows:
-        if as_json:
-            say_json({"columns": rows.columns, "rows": rows.fetchall()})
-        else:
-            write_rows(rows, how.value, output)
+    if as_json and output is not None:
+        raise UsageError("--json writes to standard output; write a file with --format json.")
+    written = _written("object" if as_json else how.value, output, guarded=guarded)
+    _check_output(book, output)
+    with ask(
+        book, _from_standard_input() if statement == "-" else statement, written, Limits(timeout), rows=most
+    ) as pieces:
+        deliver(pieces, output)
     if output is not None:
-        say(f"written to {output}", quiet=quiet or as_json)
+        say(f"written to {output}", quiet=quiet)
+
+
+def _from_standard_input() -> str:
+    try:
+        return sys.stdin.buffer.read().decode()
+    except UnicodeDecodeError as error:
+        raise UsageError("standard input is no UTF-8 text.") from error
+
+
+def _written(how: str, output: Path | None, *, guarded: bool) -> Callable[[duckdb.DuckDBPyRelation], bytes]:
+    """How the rows become bytes."""
+    from driftbook.store.cli import rows
+
+    if guarded and how != "csv":
+        raise UsageError("--guard-formulas is for --format csv.")
+    if how == "parquet" and output is None:
+        raise UsageError("Parquet needs a file: add --output FILE.")
+    if how == "csv":
+        return partial(rows.as_csv, guarded=guarded, shown=output is None and sys.stdout.isatty())
+    return {"table": rows.as_table, "json": rows.as_json, "object": rows.as_object, "parquet": rows.as_parquet}[how]
+
+
+def _check_output(book: Path, output: Path | None) -> None:
+    if output is not None and output.exists() and book.exists() and output.samefile(book):
+        raise UsageError(f"{output} is the book itself; name another file.")
 
 
 def verify(book: opt.Book, quiet: opt.Quiet = False, as_json: opt.Json = False) -> int:

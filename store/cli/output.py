@@ -10,10 +10,13 @@ from typing import TYPE_CHECKING, Any
 
 import typer
 
-from driftbook.store.table import count_of, harmless
+from driftbook.store.table import count_of, harmless, shortened
 
 if TYPE_CHECKING:
     from driftbook.store.intake import Outcome
+
+
+_LONGEST_LINE = 2000
 
 
 def say(text: str, *, quiet: bool = False) -> None:
@@ -23,8 +26,8 @@ def say(text: str, *, quiet: bool = False) -> None:
 
 
 def say_error(text: str) -> None:
-    """A line on standard error, as harmless as `say`."""
-    typer.echo("\n".join(harmless(line) for line in text.split("\n")), err=True)
+    """A line on standard error, as harmless as `say`; what it quotes may be as long as a file."""
+    typer.echo("\n".join(harmless(shortened(line, _LONGEST_LINE)) for line in text.split("\n")), err=True)
 
 
 def outcome_text(outcome: Outcome, *, dry_run: bool = False) -> str:
@@ -36,7 +39,7 @@ def outcome_text(outcome: Outcome, *, dry_run: bool = False) -> str:
         f"{outcome.rows_revised} revised, {outcome.rows_same} same, {outcome.rows_refused} refused."
     )
     added = f"\n  series added: {', '.join(outcome.series_added)}" if outcome.series_added else ""
-    refused = "".join(f"\n  line {row.line}: {row.reason}: {row.text}" for row in outcome.refused)
+    refused = "".join(f"\n  line {row.line}: {row.reason}: {harmless(shortened(row.text))}" for row in outcome.refused)
     more = outcome.rows_refused - len(outcome.refused)
     rest = f"\n  and {more} more, in the view refused_row" if more > 0 else ""
     return counts + added + refused + rest + ("\n  (dry run: nothing was changed)" if dry_run else "")

@@ -12,7 +12,7 @@ from driftbook.store.cli import options as opt
 from driftbook.store.cli.output import say, say_json
 from driftbook.store.errors import UsageError
 
-_NEEDS = ("starlette", "uvicorn", "jinja2")
+_NEEDS = ("altair", "vl_convert", "markdown_it", "jinja2", "starlette", "uvicorn")
 
 
 def add_to(app: typer.Typer) -> None:

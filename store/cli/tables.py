@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 
 from rich.cells import cell_len
 
+from driftbook.store import figures
 from driftbook.store.digits import with_interval
 from driftbook.store.table import columns, count_of, word
 
@@ -18,26 +19,38 @@ if TYPE_CHECKING:
 _DAY = 86_400
 
 
+_HEADER = ("series", "value", "volatility", "half-life", "model")
+
+
 def short_table(state: State) -> str:
-    """One sentence and the table that fits a terminal; a note that does not fit stands below its row."""
-    rows = [(row["series"], _value(row), _volatility(row), _half_life(row), row["model"] or "–") for row in state.rows]
+    """One sentence and the table that fits a terminal; a note that does not fit stands below its row.
+
+    Where not even the model fits beside the figures, it goes below with the note.
+    """
+    rows = [_row(row) for row in state.rows]
     if not rows:
         return _sentence(state)
     notes = [note(row, state.as_of) for row in state.rows]
-    header, *lines = columns(("series", "value", "volatility", "half-life", "model"), rows).split("\n")
-    longest = max(map(cell_len, [header, *lines]))
-    beside = longest + 2 + max(map(cell_len, notes)) <= get_terminal_size().columns
-    told = [_with_note(line, words, longest if beside else None) for line, words in zip(lines, notes, strict=True)]
-    if beside and any(notes):
-        header = _with_note(header, "note", longest)
-    return "\n".join([_sentence(state), "", header, *told])
+    width = get_terminal_size().columns
+    table = columns(_HEADER, rows)
+    if _widest(table) > width:
+        table = columns(_HEADER[:-1], [row[:-1] for row in rows])
+        notes = [f"{row[-1]}; {words}" if words else row[-1] for row, words in zip(rows, notes, strict=True)]
+    return "\n".join([_sentence(state), "", *_with_notes(table, notes, width)])
 
 
-def _with_note(line: str, words: str, column: int | None) -> str:
-    """A row with its note beside it, from a column on, or below."""
-    if not words:
-        return line
-    return f"{line}\n  {words}" if column is None else line + " " * (column + 2 - cell_len(line)) + words
+def _widest(table: str) -> int:
+    return max(map(cell_len, table.split("\n")))
+
+
+def _with_notes(table: str, notes: list[str], width: int) -> list[str]:
+    """The rows with their notes beside them, or below where a terminal of this width has no room."""
+    header, *lines = table.split("\n")
+    column = _widest(table) + 2
+    if column + max(map(cell_len, notes)) > width:
+        return [header, *(f"{line}\n  {words}" if words else line for line, words in zip(lines, notes, strict=True))]
+    beside = [("note" if any(notes) else "", header), *zip(notes, lines, strict=True)]
+    return [line + " " * (column - cell_len(line)) + words if words else line for words, line in beside]
 
 
 def full_table(state: State) -> str:
@@ -90,28 +103,23 @@ def _sentence(state: State) -> str:
     if state.moment is None:
         return "No run yet: take in files, then refresh with a plan."
     late = sum(bool(row["stale"]) for row in state.rows)
-    look = sum(bool(row["note"]) for row in state.rows)
+    look = sum(bool(note(row, state.as_of)) for row in state.rows)
     return (
         f"Run {state.run_id} of {state.moment:%Y-%m-%d %H:%M}Z: {len(state.rows)} series, {late} late, "
         f"{look} to look at."
     )
 
 
-def _value(row: dict[str, Any]) -> str:
-    return f"{row['value']:.6g} {row['unit'] or ''}".rstrip()
+def _row(row: dict[str, Any]) -> tuple[str, ...]:
+    value = figures.with_unit(row["value"], row["unit"])
+    return row["series"], value, _volatility(row), _half_life(row), row["model"] or "–"
 
 
 def _volatility(row: dict[str, Any]) -> str:
-    numbers = [row["volatility"], row["volatility_lower"], row["volatility_upper"]]
-    if not row["volatility_unit"].startswith("1/"):
-        return with_interval(*numbers)
-    value, lower, upper = (None if number is None else 100 * number for number in numbers)
-    shown = with_interval(value, lower, upper)
-    return f"{shown} %" if numbers[0] is not None else shown
+    numbers = row["volatility"], row["volatility_lower"], row["volatility_upper"]
+    return figures.volatility(*numbers, row["volatility_unit"])
 
 
 def _half_life(row: dict[str, Any]) -> str:
     ends = row["half_life_days"], row["half_life_days_lower"], row["half_life_days_upper"]
-    if ends == (None, None, None):
-        return "no pull" if row["half_life_unbounded"] else "–"
-    return with_interval(*ends, "d")
+    return figures.half_life(*ends, unbounded=row["half_life_unbounded"])

@@ -73,23 +73,24 @@ def _copied(stack: ExitStack, path: Path) -> Path:
 
 def _unpacked(stack: ExitStack, path: Path, name: str) -> Path:
     target = _temporary(stack)
-    bound = max(_ALWAYS_ALLOWED, _MOST_RATIO * path.stat().st_size)
+    packed = path.stat().st_size
     try:
         with gzip.open(path) as source:
             while chunk := source.read(_CHUNK):
                 target.write(chunk)
-                _check_growth(target.tell(), bound, name)
+                check_growth(target.tell(), packed, name, "unpack it and take in the plain file")
     except (EOFError, gzip.BadGzipFile, zlib.error) as problem:
         raise IntakeError(f"{name} is a broken gzip file: {problem}. Get it again.") from problem
     target.flush()
     return _path_of(target)
 
 
-def _check_growth(size: int, bound: int, name: str) -> None:
-    if size > bound:
+def check_growth(size: int, packed: int, name: str, instead: str) -> None:
+    """Refuses a small file that becomes huge once it is unpacked."""
+    if size > max(_ALWAYS_ALLOWED, _MOST_RATIO * packed):
         raise IntakeError(
             f"{name} unpacks to more than {_MOST_RATIO} times its size and more than {_ALWAYS_ALLOWED >> 30} GiB; "
-            "if that is meant, unpack it and take in the plain file."
+            f"if that is meant, {instead}."
         )
 
 

@@ -42,6 +42,14 @@ def why_no_name(name: str) -> Reason | None:
     return None
 
 
+def check_source(name: str) -> None:
+    """A file's name is bytes to the system; one that is no text cannot be noted in the book."""
+    try:
+        name.encode()
+    except UnicodeEncodeError as problem:
+        raise IntakeError(f"{name!r} is no UTF-8 text; rename the file.") from problem
+
+
 def mark_unknown(con: duckdb.DuckDBPyConnection, names: Collection[str]) -> None:
     """Puts names whose rows are to be refused, with the reason, where SQL can join them."""
     reasons = [why_no_name(name) or Reason.UNKNOWN_SERIES for name in names]

@@ -74,8 +74,8 @@ def check(options: Options) -> None:
         raise UsageError(f"--decimal {options.decimal!r} is no decimal mark; say . or , instead.")
     if options.zone is not None:
         _check_zone(options.zone)
-    if options.dates is not None and options.has_date_form:
-        _check_date_form(options.dates)
+    if options.dates is not None and options.has_date_form and not tells_the_year(options.dates):
+        raise UsageError(f"--dates {not_dates(options.dates)}.")
 
 
 def _check_wide(options: Options) -> None:
@@ -95,15 +95,18 @@ def _check_zone(zone: str) -> None:
         raise UsageError(f"--zone {zone!r} is no time zone; say a name like Europe/Berlin or UTC.") from None
 
 
-def _check_date_form(form: str) -> None:
-    """A form must give back the year at least; strptime would silently put 1900 in its place."""
+def tells_the_year(form: str) -> bool:
+    """A strptime form must give back the year at least; strptime would silently put 1900 in its place."""
     sample = datetime(2023, 11, 1, tzinfo=UTC)
     try:
-        is_dated = datetime.strptime(sample.strftime(form), form).year == sample.year
+        return datetime.strptime(sample.strftime(form), form).year == sample.year
     except ValueError:
-        is_dated = False
-    if not is_dated:
-        raise UsageError(
-            f"--dates {form!r} is neither day-first nor month-first nor a strptime form that holds a year, "
-            "such as %d.%m.%Y or %y%m%d."
-        )
+        return False
+
+
+def not_dates(form: str) -> str:
+    """Why a text says nothing of how dates are written."""
+    return (
+        f"{form!r} is neither {DAY_FIRST} nor {MONTH_FIRST} nor a strptime form that holds a year, "
+        "such as %d.%m.%Y or %y%m%d"
+    )

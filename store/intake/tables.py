@@ -11,12 +11,14 @@ import polars as pl
 import pyarrow as pa
 
 from driftbook.store.errors import IntakeError
+from driftbook.store.intake.landing import check_growth
 from driftbook.store.intake.reasons import Reason
 from driftbook.store.intake.scratch import unless_aborted
 from driftbook.store.intake.source import readable
 from driftbook.store.sql import query
 
 _WITH_ZONE = ("TIMESTAMP WITH TIME ZONE", "TIMESTAMPTZ_NS")
+_BYTES_A_VALUE = 8
 _FRACTIONAL = ("FLOAT", "DOUBLE", "DECIMAL")
 
 
@@ -69,39 +71,52 @@ def open_frame(con: duckdb.DuckDBPyConnection, frame: pl.DataFrame, name: str, d
 def open_parquet(con: duckdb.DuckDBPyConnection, path: Path, name: str, decimal: str) -> TypedTable:
     """The rows of a Parquet file, counted from 1."""
     table = "read_parquet($path, file_row_number = true)"
-    return _described(con, table, "file_row_number + 1", {"path": str(path)}, lambda _: None, name, decimal)
+    found = _described(con, table, "file_row_number + 1", {"path": str(path)}, lambda _: None, name, decimal)
+    with readable(name):
+        rows = con.execute("select num_rows from parquet_file_metadata($path)", {"path": str(path)}).fetchall()[0][0]
+    _check_rows(rows, len(found.columns), path, name)
+    return found
 
 
 def open_arrow(con: duckdb.DuckDBPyConnection, path: Path, name: str, decimal: str, *, is_stream: bool) -> TypedTable:
     """The rows of an Arrow file or stream, counted from 1."""
 
     def prepare(con: duckdb.DuckDBPyConnection) -> object:
-        schema, batches = _arrow_batches(path, is_stream=is_stream)
+        try:
+            schema, batches = _arrow_batches(path, name, is_stream=is_stream)
+        except pa.ArrowException as problem:
+            raise IntakeError(f"{name} is a broken Arrow file: {str(problem).rstrip('.')}. Get it again.") from problem
         return con.register("intake_frame", pa.RecordBatchReader.from_batches(schema, batches))
 
-    try:
-        return _streamed(con, prepare, name, decimal)
-    except pa.ArrowException as problem:
-        raise IntakeError(f"{name} is a broken Arrow file: {problem}. Get it again.") from problem
+    return _streamed(con, prepare, name, decimal)
 
 
-def _arrow_batches(path: Path, *, is_stream: bool) -> tuple[pa.Schema, Iterator[pa.RecordBatch]]:
+def _arrow_batches(path: Path, name: str, *, is_stream: bool) -> tuple[pa.Schema, Iterator[pa.RecordBatch]]:
     """The batches of a file, each checked: DuckDB would trust the offsets in a broken one."""
     reader = pa.ipc.open_stream(pa.OSFile(str(path))) if is_stream else pa.ipc.open_file(pa.OSFile(str(path)))
     count = None if is_stream else reader.num_record_batches
 
     def batches() -> Iterator[pa.RecordBatch]:
+        rows = 0
         for batch in reader if count is None else map(reader.get_batch, range(count)):
+            rows += batch.num_rows
+            _check_rows(rows, batch.num_columns, path, name)
             batch.validate(full=True)
             yield batch
 
     return reader.schema, batches()
 
 
+def _check_rows(rows: int, columns: int, path: Path, name: str) -> None:
+    """Columns that say the same over and over, or nothing, take next to no room however many rows they have."""
+    check_growth(rows * columns * _BYTES_A_VALUE, path.stat().st_size, name, "take it in in parts")
+
+
 def _streamed(
     con: duckdb.DuckDBPyConnection, prepare: Callable[[duckdb.DuckDBPyConnection], object], name: str, decimal: str
 ) -> TypedTable:
-    prepare(con)
+    with readable(name):
+        prepare(con)
     return _described(con, "intake_frame", "row_number() over ()", {}, prepare, name, decimal)
 
 

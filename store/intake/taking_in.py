@@ -48,6 +48,7 @@ def take_in(
     naming.check_named_series(con, options)
     origin = Path(source) if isinstance(source, str | PathLike) else source
     called = name or (origin.name if isinstance(origin, Path) else "frame")
+    naming.check_source(called)
     with opened(con, origin, options, called) as (sha256, rows):
         arrival = _Arrival(called, sha256, options, stamp)
         known = _known_as(con, arrival)

@@ -9,13 +9,13 @@ from starlette.requests import Request
 from starlette.responses import HTMLResponse, JSONResponse, Response
 
 from driftbook.store.errors import BookLocked, UsageError
+from driftbook.store.known import Known, known
+from driftbook.store.page import guide
 from driftbook.store.page.data import csv_of
-from driftbook.store.page.known import Known, known
 from driftbook.store.page.links import Served
 from driftbook.store.page.overview import overview
 from driftbook.store.page.rendering import render
-from driftbook.store.page.sheet import sheet
-from driftbook.store.page.why import why
+from driftbook.store.page.sheet import Asked, sheet
 from driftbook.store.sql import query
 
 _RUNS_OFFERED = 30
@@ -33,16 +33,11 @@ def series_sheet(request: Request) -> Response:
     """One series."""
     as_of, series = _moment(request), request.query_params.get("name", "")
     with known(_book(request), as_of) as book:
-        found = sheet(book, series, _level(request))
+        asked = Asked(_level(request), _run(request, "from"), _run(request, "to"))
+        found = sheet(book, series, asked)
         if found is None:
             raise HTTPException(404, f"The book knows no series {series!r} at that moment.")
-        told = {
-            "one": found,
-            "why": why(book.con, series, _run(request, "from"), _run(request, "to") or _run_then(book)),
-            "runs": runs(book),
-            "mailed": False,
-            "path": _book(request).name,
-        }
+        told = {"one": found, "runs": runs(book), "mailed": False, "path": _book(request).name}
         return HTMLResponse(render("series.html", book, Served(as_of), **told))
 
 
@@ -53,6 +48,19 @@ def csv_file(request: Request) -> Response:
         text = csv_of(book, kind, request.query_params.get("name"))
     name = f'attachment; filename="{kind}.csv"'
     return Response(text, media_type="text/csv; charset=utf-8", headers={"content-disposition": name})
+
+
+def guide_list(_: Request) -> Response:
+    """The pages of the guide."""
+    return HTMLResponse(render("guide.html", None, Served(None), pages=guide.pages(), text=None, mailed=False))
+
+
+def guide_page(request: Request) -> Response:
+    """One page of the guide."""
+    found = guide.page(request.path_params["name"])
+    if found is None:
+        raise HTTPException(404, "The guide has no such page.")
+    return HTMLResponse(render("guide.html", None, Served(None), pages=[], text=found, mailed=False))
 
 
 def newest(request: Request) -> Response:
@@ -107,7 +115,3 @@ def _level(request: Request) -> float | None:
 def _run(request: Request, name: str) -> str | None:
     text = request.query_params.get(name, "")
     return f"run:{text}" if text.isdecimal() else None
-
-
-def _run_then(book: Known) -> str | None:
-    return f"run:{book.run_id}" if book.as_of and book.run_id else None

@@ -23,6 +23,8 @@ def create_app(book: Path) -> Starlette:
         routes=[
             Route("/", answers.first_sheet),
             Route("/series", answers.series_sheet),
+            Route("/guide", answers.guide_list),
+            Route("/guide/{name}.md", answers.guide_page),
             Route("/newest.json", answers.newest),
             Route("/csv/{kind}.csv", answers.csv_file),
             Mount("/static", StaticFiles(directory=STATIC)),

@@ -5,17 +5,14 @@ from __future__ import annotations
 from collections.abc import Callable
 from typing import Any
 
-from driftbook.estimators import MODELS
+from driftbook.store import words
+from driftbook.store.charts.statements import statements
+from driftbook.store.charts.tables import Table, corrections_table, models_table, one_row, values_table, window_of
 from driftbook.store.errors import UsageError
-from driftbook.store.page import words
+from driftbook.store.known import Known
 from driftbook.store.page.csv_text import csv_text
-from driftbook.store.page.known import Known
-from driftbook.store.page.overview import one_row
-from driftbook.store.page.sheet import models_table, statements_table, values_table, window_of
 from driftbook.store.page.small_year import periods_for
 from driftbook.store.sql import only_row, query
-
-Table = tuple[list[str], list[tuple[Any, ...]]]
 
 
 def csv_of(book: Known, kind: str, series: str | None = None) -> str:
@@ -50,12 +47,12 @@ def _years(book: Known) -> Table:
 
 
 def _statements(book: Known, row: dict[str, Any]) -> Table:
-    model = row["model"] or next(iter(MODELS))
-    return statements_table(book, row, model)
-
-
-def _corrections(book: Known, row: dict[str, Any]) -> Table:
-    return book.table(query("page_corrections"), run=book.run_id, series=row["series"])
+    """What the model in force said, then the one that the half-life is told from if that is another."""
+    found = statements(book, row)
+    if found is None:
+        return ["model", "window_end"], []
+    told = found.told if found.pulled is found.told else [*found.told, *found.pulled]
+    return list(told[0]), [tuple(one.values()) for one in told]
 
 
 _OF_BOOK: dict[str, Callable[[Known], Table]] = {"latest": _latest, "years": _years}
@@ -63,5 +60,5 @@ _OF_SERIES: dict[str, Callable[[Known, dict[str, Any]], Table]] = {
     "values": lambda book, row: values_table(book, row, window_of(book, row)),
     "statements": _statements,
     "models": models_table,
-    "corrections": _corrections,
+    "corrections": corrections_table,
 }

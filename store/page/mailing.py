@@ -6,15 +6,14 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from driftbook.store.known import Known, known
 from driftbook.store.page.answers import runs
 from driftbook.store.page.app import STATIC
 from driftbook.store.page.data import csv_of
-from driftbook.store.page.known import Known, known
 from driftbook.store.page.links import Mailed
 from driftbook.store.page.overview import Overview, overview
 from driftbook.store.page.rendering import render
-from driftbook.store.page.sheet import sheet
-from driftbook.store.page.why import why
+from driftbook.store.page.sheet import Asked, sheet
 
 _MOST_SHEETS = 40
 
@@ -42,7 +41,7 @@ def mailed_page(there: Known, book: Path) -> str:
     chosen = _chosen(found)
     links = Mailed(chosen, lambda kind, series: csv_of(there, kind, series))
     inside = Inside(_static("page.css"), _static("page.js"))
-    sheets = [_sheet(there, series) for series in chosen]
+    sheets = [sheet(there, series, Asked(), f"sheet-{at}") for at, series in enumerate(chosen)]
     left = len(found.lines) - len(chosen)
     told: dict[str, Any] = {"sheet": found, "runs": runs(there), "sheets": sheets, "left": left, "path": book.name}
     return render("mailed.html", there, links, mailed=inside, **told)
@@ -54,11 +53,6 @@ def _chosen(found: Overview) -> list[str]:
     if len(lines) > _MOST_SHEETS:
         lines = [line for line in lines if line.needs_a_look][:_MOST_SHEETS]
     return [line.series for line in lines]
-
-
-def _sheet(there: Known, series: str) -> dict[str, Any]:
-    later = f"run:{there.run_id}" if there.run_id else None
-    return {"one": sheet(there, series), "why": why(there.con, series, None, later)}
 
 
 def _static(name: str) -> str:

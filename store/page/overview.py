@@ -6,9 +6,9 @@ import tomllib
 from dataclasses import dataclass
 from typing import Any
 
-from driftbook.store.page import words
-from driftbook.store.page.known import Known
-from driftbook.store.page.scale import Scale
+from driftbook.store import figures, words
+from driftbook.store.charts.scale import Scale
+from driftbook.store.known import Known
 from driftbook.store.page.small_year import SmallYear, periods_for, small_year
 from driftbook.store.page.whiskers import Whisker, shared_axis, whisker
 from driftbook.store.sql import first_row, query
@@ -82,14 +82,6 @@ def overview(book: Known) -> Overview:
     )
 
 
-def one_row(book: Known, series: str) -> dict[str, Any] | None:
-    """What the book says of one series; None if it was not known."""
-    source, told = book.latest()
-    sql = query("page_rows").format(latest=source, chosen="s.series = $series")
-    found = book.rows(sql, run=book.run_id, series=series, **told)
-    return found[0] if found else None
-
-
 def years_of(book: Known, series: int) -> dict[str, SmallYear]:
     """The small years by series."""
     periods = periods_for(series)
@@ -112,13 +104,13 @@ def _planned(book: Known) -> list[str]:
 def _volatility(row: dict[str, Any]) -> tuple[float | None, float | None, float | None]:
     unit = row["volatility_unit"]
     number, lower, upper = (row[f"volatility{end}"] for end in ("", "_lower", "_upper"))
-    return words.scaled(number, unit), words.scaled(lower, unit), words.scaled(upper, unit)
+    return figures.scaled(number, unit), figures.scaled(lower, unit), figures.scaled(upper, unit)
 
 
 def _volatility_before(row: dict[str, Any]) -> float | None:
     """Where it was at the run before, if that is another figure than now."""
     moved = "volatility" in _moved(row)
-    return words.scaled(row["before_volatility"], row["before_volatility_unit"]) if moved else None
+    return figures.scaled(row["before_volatility"], row["before_volatility_unit"]) if moved else None
 
 
 def _half_life_before(row: dict[str, Any]) -> float | None:
@@ -143,7 +135,7 @@ def _line(
         volatility=words.volatility(row),
         volatility_mark=whisker(volatility_axis, _volatility(row), _volatility_before(row)),
         volatility_moved="volatility" in moved,
-        in_own_unit=row["estimated"] and not words.is_relative(row["volatility_unit"]),
+        in_own_unit=row["estimated"] and not figures.is_relative(row["volatility_unit"]),
         half_life=words.half_life_now(row),
         half_life_mark=whisker(half_life_axis, _half_life(row), _half_life_before(row)),
         half_life_moved="half-life" in moved,

@@ -8,8 +8,9 @@ from typing import Any
 
 from jinja2 import Environment, PackageLoader, StrictUndefined
 
-from driftbook.store.page import small_year, whiskers, words
-from driftbook.store.page.known import Known
+from driftbook.store import words
+from driftbook.store.known import Known
+from driftbook.store.page import small_year, whiskers
 from driftbook.store.page.links import Links
 from driftbook.store.table import count_of
 

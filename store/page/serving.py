@@ -6,11 +6,13 @@ import socket
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
+from threading import Thread
 
 import uvicorn
 
 from driftbook.store.errors import UsageError
 from driftbook.store.page.app import create_app
+from driftbook.store.page.drawn import warm_up
 
 _HERE = "127.0.0.1"
 
@@ -32,5 +34,6 @@ def listening(port: int) -> Iterator[socket.socket]:
 
 def serve(book: Path, door: socket.socket) -> None:
     """Answers until it is interrupted."""
+    Thread(target=warm_up, daemon=True).start()
     config = uvicorn.Config(create_app(book), log_level="warning", access_log=False, server_header=False)
     uvicorn.Server(config).run(sockets=[door])

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable
 from dataclasses import dataclass
 
-from driftbook.store.page.scale import Scale, in_decades, number_text
+from driftbook.store.charts.scale import Scale, in_decades, number_text
 
 Numbers = tuple[float | None, float | None, float | None]
 

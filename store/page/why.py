@@ -4,12 +4,11 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-import duckdb
-
+from driftbook.store import words
 from driftbook.store.digits import with_interval
 from driftbook.store.errors import UsageError
 from driftbook.store.explaining import Explanation, Statement, explain_on
-from driftbook.store.page import words
+from driftbook.store.known import Known
 from driftbook.store.table import count_of
 
 
@@ -26,10 +25,11 @@ class Why:
     between: tuple[str, ...] = ()
 
 
-def why(con: duckdb.DuckDBPyConnection, series: str, earlier: str | None, later: str | None) -> Why:
-    """Explains a series between two runs; by default the last change of its latest window."""
+def why(book: Known, series: str, earlier: str | None, later: str | None) -> Why:
+    """Explains a series between two runs; by default the last change of its latest window that was known then."""
+    then = f"run:{book.run_id}" if book.as_of and book.run_id else None
     try:
-        found = explain_on(con, series, earlier=earlier, later=later)
+        found = explain_on(book.con, series, earlier=earlier, later=later or then)
     except UsageError as error:
         text = str(error)
         return Why(text[:1].upper() + text[1:])

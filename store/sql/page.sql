@@ -14,7 +14,8 @@ select p.text from plan_at_run($run) p
 -- Every series with what the book says of it, what it said at the run before, and its last observation.
 with last as (
   select o.series, max(o.observed_at) as observed_at, arg_max(o.value, o.observed_at) as value
-  from observation_at_run($run) o group by o.series
+  from observation_at_run($run) o
+  where o.series not in (select e.series from {latest} e) group by o.series
 )
 select s.series, s.unit, s.clock, coalesce(l.observed_at, t.observed_at) as observed_at,
   coalesce(l.value, t.value) as value, coalesce(l.stale, false) as stale, s.stale_after_days, l.lookback, l.window_end,
@@ -115,7 +116,7 @@ with said as (
 ), scaled as (
   select *, {scale} as scale from there
 )
-select window_end, {volatility}, {drift}, {pull}, status, run_from,
+select '{model}' as model, window_end, {volatility}, {drift}, {pull}, status, run_from,
   case when run_to <= $run then run_to end as run_to
 from scaled order by window_end, run_from
 

@@ -3,8 +3,12 @@
 select t.series_id from base.setting t where t.run_to is null and t.run_from > ?
 
 -- name: plan_at
--- The plan that was in force at a run.
-select p.text from base.plan p where p.run_from <= $run and (p.run_to is null or p.run_to > $run)
+-- The plan that was in force at a run, and whether it is in force now.
+select p.text, p.run_to is null from base.plan p where p.run_from <= $run and (p.run_to is null or p.run_to > $run)
+
+-- name: forgettings_since
+-- How many runs after a run have forgotten something.
+select count(*) from base.run r where r.kind = 'forget' and r.run_id > ?
 
 -- name: changed_since
 -- When and where observations were added, corrected or withdrawn after a run.
@@ -14,14 +18,11 @@ where o.run_from > $last or o.run_to > $last
 group by all
 order by all
 
--- name: times_in_force
--- The times of the observations in force of some series, with the local day that each falls on.
-select o.series_id, epoch_us(o.observed_at) as us,
-  {local_day} as day
+-- name: observed
+-- Observations of some series in any order, with the local day that each falls on if it is asked for.
+select o.series_id, epoch_us(o.observed_at) as us, o.value, {day} as day
 from base.observation o
-join base.setting t on t.series_id = o.series_id and t.run_to is null
-where o.run_to is null and o.series_id in (select unnest($series::integer[]))
-order by o.series_id, o.observed_at
+where {when} and o.series_id in (select unnest($series::integer[]))
 
 -- name: weekday_series_on_elapsed_time
 -- Planned series under act365 whose last 250 observations all fall on weekdays.

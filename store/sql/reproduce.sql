@@ -15,14 +15,6 @@ where m.run_from = $run and m.revision = $revision
 group by all
 order by all
 
--- name: times_at
--- The times of the observations of some series that were in force at a run.
-select o.series_id, epoch_us(o.observed_at) as us
-from base.observation o
-where o.run_from <= $run and (o.run_to is null or o.run_to > $run)
-  and o.series_id in (select unnest($series::integer[]))
-order by o.series_id, o.observed_at
-
 -- name: compare_again
 -- How many rows of a run came out identical, the same, or different.
 select count(*) filter (where {identical}),

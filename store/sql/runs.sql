@@ -18,6 +18,13 @@ from base.leaf l
 where l.run_id = ?
 order by l.table_name, l.series_id nulls first
 
+-- name: columns_of_base
+-- The columns of the tables in the schema base.
+select c.table_name, c.column_name
+from duckdb_columns() c
+where c.database_name = current_database() and c.schema_name = 'base' and not c.internal
+order by c.table_name, c.column_index
+
 -- name: tables_of
 -- The base tables of an attached book.
 select t.table_name from duckdb_tables() t where t.database_name = ? and t.schema_name = 'base'

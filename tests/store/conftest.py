@@ -15,6 +15,7 @@ from driftbook.store.swap import create
 sys.path.append(str(Path(__file__).parent))
 
 from made_series import days, plan_text, wave
+from page_books import thousand_series
 
 
 @pytest.fixture(scope="session")
@@ -73,3 +74,9 @@ def filled(tmp_path: Path, _history: Path) -> Path:
     path = tmp_path / "desk.duckdb"
     shutil.copyfile(_history, path)
     return path
+
+
+@pytest.fixture(scope="session")
+def many(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """A book with a thousand series, to be read only."""
+    return thousand_series(tmp_path_factory.mktemp("many") / "many.duckdb")

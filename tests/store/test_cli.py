@@ -105,10 +105,15 @@ def test_latest_is_a_sentence_and_a_table_that_fits_80_columns(book, say):
     code, out, err = say("latest", book, "--as-of", "2026-01-06")
     sentence, blank, head, *rows = out.splitlines()
     assert (code, err, blank) == (0, "", "")
-    assert sentence == "Run 2 of 2026-01-06 08:00Z: 4 series, 4 late, 2 to look at."
-    assert head.split()[:5] == ["series", "value", "volatility", "half-life", "model"]
+    assert sentence == "Run 2 of 2026-01-06 08:00Z: 4 series, 4 late, 4 to look at."
+    assert head.split() == ["series", "value", "volatility", "half-life"]
     assert [row.split()[0] for row in rows[::2]] == ["pellets_fob", "power_da", "crown_peg", "reservoir_level"]
-    assert rows[1::2] == ["  correction; stale 657 d", "  stale 657 d", "  no variation; stale 657 d", "  stale 657 d"]
+    assert rows[1::2] == [
+        "  exp_ou; correction; stale 657 d",
+        "  abm; stale 657 d",
+        "  –; no variation; stale 657 d",
+        "  ou; stale 657 d",
+    ]
     assert [line for line in out.splitlines() if len(line) > 80] == []
 
 
@@ -354,6 +359,77 @@ def test_an_output_that_cannot_be_written_is_said_in_a_sentence(book, say, tmp_p
     assert (code, err) == (2, f"driftbook: cannot write {target}: No such file or directory.\n")
 
 
+ODD_TEXTS = [
+    "=1+1",
+    "+1",
+    "-1",
+    "@a",
+    "\tx",
+    "\rx",
+    "\n=x",
+    "  =1+1",
+    "＝1",
+    "a;=1+1",
+    "plain",
+    "'quoted",
+    'say "x"',
+    "",
+]
+
+
+def spoken(texts, extra=""):
+    return "select unnest([" + ", ".join("'" + one.replace("'", "''") + "'" for one in texts) + f']) as "=head"{extra}'
+
+
+def test_csv_guards_against_formulas_when_asked_and_else_tells_every_letter(book, say):
+    sql = spoken(ODD_TEXTS, ", -1.5 as n, -2 as i, null as nothing, date '2024-01-02' as d")
+    plain = list(csv.reader(io.StringIO(say("sql", book, sql, "--format", "csv")[1], newline="")))
+    assert [row[0] for row in plain] == ["=head", *ODD_TEXTS]
+    text = say("sql", book, sql, "--format", "csv", "--guard-formulas")[1]
+    guarded = list(csv.reader(io.StringIO(text, newline="")))
+    assert [row[0] for row in guarded] == ["'=head", *(f"'{one}" for one in ODD_TEXTS[:9]), *ODD_TEXTS[9:]]
+    assert {tuple(row[1:]) for row in guarded[1:]} == {("-1.5", "-2", "", "2024-01-02")}
+    assert '"a;=1+1",-1.5,-2,"","2024-01-02"\n' in text, "a delimiter that only the spreadsheet knows opens no new cell"
+
+
+@pytest.mark.parametrize("how", ["table", "json", "parquet"])
+def test_the_guard_is_for_csv_alone(book, say, tmp_path, how):
+    words = ["sql", book, SQL, "--format", how, "--guard-formulas", "--output", tmp_path / "rows"]
+    assert say(*words) == (2, "", "driftbook: --guard-formulas is for --format csv.\n")
+
+
+def test_an_answer_cannot_be_written_over_the_book(book, say, tmp_path):
+    before = book.read_bytes()
+    (tmp_path / "link").symlink_to(book)
+    for target in (book, tmp_path / "link"):
+        assert say("sql", book, SQL, "--output", target)[::2] == (
+            2,
+            f"driftbook: {target} is the book itself; name another file.\n",
+        )
+    assert book.read_bytes() == before
+
+
+def test_json_goes_to_standard_output_alone(book, say, tmp_path):
+    code, _, err = say("sql", book, SQL, "--json", "--output", tmp_path / "rows")
+    assert (code, err) == (2, "driftbook: --json writes to standard output; write a file with --format json.\n")
+
+
+@pytest.mark.parametrize(
+    "words", [("sql", "{book}", "select '\udcff'"), ("new", "\udcff.duckdb"), ("latest", "{book}", "\udcff")]
+)
+def test_an_argument_that_is_no_text_is_told_in_a_sentence(book, say, words):
+    code, out, err = say(*(word.replace("{book}", str(book)) for word in words))
+    assert (code, out) == (2, "")
+    assert err.endswith("is no UTF-8 text; rename or write it in UTF-8.\n")
+
+
+def test_standard_input_that_is_no_text_is_told_in_a_sentence(book):
+    done = subprocess.run(
+        [*PROGRAM, "sql", book, "-"], input=b"select '\xff'", capture_output=True, timeout=60, check=False
+    )
+    assert (done.returncode, done.stderr) == (2, b"driftbook: standard input is no UTF-8 text.\n")
+
+
 def test_parquet_needs_a_file(book, say):
     assert say("sql", book, SQL, "--format", "parquet")[::2] == (
         2,
@@ -471,9 +547,9 @@ def test_help_of_every_command_has_an_example_and_the_caution_stands_below(say):
 
 
 def test_help_and_sql_load_neither_polars_scipy_pandas_nor_the_plan(book):
-    """Nor pydantic, but for what the command line's own library wants of it."""
+    """Nor pydantic, but for what the command line's own library wants of it; sql not even DuckDB, but in its child."""
     script = ("import sys; from driftbook.store.cli.app import run; code = run(sys.argv[1:]); "
-              "heavy = ('polars', 'scipy', 'pandas', 'driftbook.store.plan'); "
+              "heavy = ('polars', 'scipy', 'pandas', 'duckdb', 'pyarrow', 'numpy', 'driftbook.store.plan'); "
               "print([name for name in heavy if name in sys.modules], file=sys.stderr)")  # fmt: skip
     for words in (["--help"], ["sql", str(book), "select 1"]):
         done = subprocess.run(

@@ -146,6 +146,112 @@ def test_a_book_that_was_rewritten_is_read_by_the_same_clients_as_before(desk):
     assert desk.read_bytes()[8:20] == before  # magic bytes and storage version
 
 
+# what was refused of it
+
+PLAN = """
+name = "desk"
+[[series]]
+name = "gas"
+[[series]]
+name = "grö \\"ße"
+also_called = ["GAS TTF"]
+[[estimate]]
+series = ["gas"]
+models = ["abm"]
+lookbacks = [3]
+"""
+NAME = 'grö "ße'
+HEAD = "series,time,value\n"
+# each text that must go or stay has a number of its own, written twice
+LONG = f"""{HEAD}gas,2024-01-01,70017001x
+"grö ""ße",2024-01-01,70027002x
+GAS TTF,2024-01-05,70037003x
+"grö ""ße",2024-01-02,1
+"grö ""ße",2024-01-02,70047004
+gas,2024-01-02,70057005,grö
+ "grö ""ße" ,2024-01-09,70067006x
+other,2024-01-01,70077007
+gas 2,2024-01-01,70087008x
+"grö ""ße, 2024-01-03, 70097009
+GAS TTF,nodate,70107010
+"""
+WIDE = """time,gas,GAS TTF,peg
+2024-01-03,71017101x,71027102.25,71037103
+2024-01-08,5,71047104x,2
+2024-01-09,71057105x,3,2
+ragged,71067106
+"""
+GONE_WHOLE = {7002, 7003, 7004, 7006, 7009, 7010, 7011, 7012, 7013, 7101, 7102, 7104, 7105, 7106}
+GONE_BEFORE = {7002, 7003, 7004, 7009, 7011, 7012, 7101, 7102}
+NUMBERS = {*range(7001, 7014), *range(7101, 7107)}
+
+
+@pytest.fixture(scope="module")
+def _refusing(tmp_path_factory):
+    """Rows of a series refused for every kind of reason, under each of its names, before and after it was known."""
+    folder = tmp_path_factory.mktemp("refusing")
+    book = folder / "desk.duckdb"
+    create(book)
+    for number, (name, text) in enumerate(
+        {"long": LONG, "wide": WIDE, "first": f"{HEAD}GAS TTF,2024-01-04,70117011\n"}.items()
+    ):
+        (folder / f"{number} {name}.csv").write_text(text, encoding="utf-8")
+    (folder / "one.csv").write_text("time,value\n2024-01-04,70127012x\n2024-01-08,70137013x\n")
+    (folder / "plan.toml").write_text(PLAN, encoding="utf-8")
+    with store.writing(book, at="2026-01-05") as work:
+        work.ingest(folder / "2 first.csv")
+        work.ingest(folder / "0 long.csv")
+    with store.writing(book, at="2026-01-06") as work:
+        work.refresh(folder / "plan.toml")
+    with store.writing(book, at="2026-01-07") as work:
+        work.ingest(folder / "0 long.csv", store.Options(zone="UTC"))
+        work.ingest(folder / "1 wide.csv", store.Options(layout="wide"))
+        work.ingest(folder / "one.csv", store.Options(series=NAME))
+    with store.writing(book, at="2026-01-08") as work:
+        work.refresh(plan_text({"gas": [3]}), yes=True)
+    return book
+
+
+@pytest.fixture
+def refusing(_refusing, tmp_path):
+    book = tmp_path / "desk.duckdb"
+    book.write_bytes(_refusing.read_bytes())
+    return book
+
+
+def numbers_in(folder, table="refused_row"):
+    """Which of the numbers stand in the bytes of any file of a folder, or are told by the table."""
+    bytes_of_all = b"".join(path.read_bytes() for path in folder.iterdir())
+    book = folder / "desk.duckdb"
+    told = str(ask(book, f"select * from base.{table}"))
+    written = {number: 2 * str(number) for number in NUMBERS}
+    return {number for number, text in written.items() if text.encode() in bytes_of_all or text in told}
+
+
+@pytest.mark.parametrize(("before", "gone"), [(None, GONE_WHOLE), ("2024-01-07", GONE_BEFORE)])
+def test_what_was_refused_of_a_series_is_gone_and_of_others_is_there(refusing, before, gone):
+    assert numbers_in(refusing.parent) == NUMBERS
+    places = ask(refusing, "select intake_id, line, cell, reason from base.refused_row where name is null order by all")
+    forget(refusing, NAME, before=before, yes=True)
+    assert numbers_in(refusing.parent) == NUMBERS - gone
+    assert store.verify(refusing).findings == []
+    left = ask(refusing, "select intake_id, line, cell, reason from base.refused_row where name is null order by all")
+    assert set(left) < set(places)
+    wide = (
+        "select intake_id, line, cell, reason from base.refused_row where intake_id = 4 and name is null order by all"
+    )
+    assert set(ask(refusing, wide)) == {place for place in places if place[0] == 4}, "of a wide file only texts go"
+
+
+def test_a_name_that_went_over_to_another_series_is_that_ones(refusing):
+    with store.writing(refusing) as work:
+        work.refresh(plan_text({"gas": [3]}, also_called={"gas": "GAS TTF"}))
+    forget(refusing, NAME, yes=True)
+    assert {7003, 7010} <= numbers_in(refusing.parent)
+    assert {7002, 7004, 7006} & numbers_in(refusing.parent) == set()
+    assert store.verify(refusing).findings == []
+
+
 @pytest.mark.parametrize(
     ("arguments", "words"),
     [

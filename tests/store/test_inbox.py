@@ -85,6 +85,13 @@ def test_a_file_that_cannot_be_read_is_named_and_left_and_the_others_are_taken(r
     ]
 
 
+def test_a_file_whose_name_is_no_text_is_named_and_left(refresh, tmp_path):
+    (tmp_path / "inbox" / os.fsdecode(b"\xff.csv")).write_text("series,time,value\ngas,2024-01-01,1\n")
+    delivered = refresh({"b.csv": "series,time,value\ngas,2024-01-01,1\n"})
+    assert [outcome.source for outcome in delivered.outcomes] == ["b.csv"]
+    assert [sentence.endswith("is no UTF-8 text; rename the file.") for sentence in delivered.left] == [True]
+
+
 def test_hidden_and_unfinished_files_and_folders_are_not_looked_at(refresh, tmp_path):
     (tmp_path / "inbox" / "folder.csv").mkdir()
     delivered = refresh(dict.fromkeys((".a.csv", "b.csv.tmp", "c.csv.part"), "nonsense"))

@@ -192,7 +192,7 @@ def stamp(run):
     return Stamp(run, datetime(2026, 1, 1, tzinfo=UTC) + timedelta(days=run))
 
 
-@settings(max_examples=50, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@settings(max_examples=35, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(deliveries=st.lists(delivery(), min_size=1, max_size=3))
 @example(deliveries=[(b"series,time,value\ngas,2024-01-02,1\ngas,2024-01-02,\n", {"add_series": False})])
 def test_the_book_after_any_deliveries_is_what_a_naive_reading_gives(deliveries, tmp_path):

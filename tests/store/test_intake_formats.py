@@ -3,17 +3,22 @@
 import gzip
 import io
 import os
+import re
+import subprocess
 import sys
 import threading
 from contextlib import closing
 from datetime import UTC, date, datetime
+from pathlib import Path
 
 import pandas as pd
 import polars as pl
 import pyarrow as pa
+import pyarrow.parquet as pq
 import pytest
 from naive_intake import empty_book
 
+from driftbook import store
 from driftbook.store import intake
 from driftbook.store.errors import IntakeError, UsageError
 from driftbook.store.intake import landing
@@ -108,6 +113,63 @@ def test_a_compression_bomb_is_refused_before_it_fills_the_disk(take, monkeypatc
         take(packed, "bomb")
 
 
+RESIDENT = """
+import resource, sys
+from pathlib import Path
+from contextlib import closing
+sys.path.append(sys.argv[1])
+from datetime import UTC, datetime
+from naive_intake import empty_book
+from driftbook.store import intake
+from driftbook.store.errors import IntakeError
+from driftbook.store.intake import landing
+from driftbook.store.series import Stamp
+landing._ALWAYS_ALLOWED = int(sys.argv[2])
+most = lambda: resource.getrusage(resource.RUSAGE_SELF).ru_maxrss >> 10
+with closing(empty_book()) as con:
+    for path in map(Path, sys.argv[3:]):
+        before = most()
+        try:
+            print(intake.take_in(con, path, intake.Options(), Stamp(1, datetime(2026, 1, 1, tzinfo=UTC))))
+        except IntakeError as error:
+            print(most() - before, error)
+"""
+
+
+def bombs(folder, mebibytes):
+    """Small files that would unpack to so much, two of them to nothing but many rows."""
+    with gzip.open(folder / "bomb.csv.gz", "wb", compresslevel=6) as file:
+        file.write(CSV)
+        for _ in range(mebibytes):
+            file.write(b"\n" * (1 << 20))
+    columns = ("series", "time", "value")
+    rows = (mebibytes << 20) // 8 // len(columns)
+    many = pa.table({name: pa.nulls(1_000_000, pa.float64()) for name in columns})
+    with pq.ParquetWriter(folder / "bomb.parquet", many.schema) as writer:
+        for _ in range(rows // 1_000_000 + 1):
+            writer.write_table(many)
+    nothing = pa.table({name: pa.nulls(rows) for name in columns})
+    with pa.ipc.new_stream(folder / "bomb.arrow", nothing.schema) as writer:
+        writer.write_table(nothing)
+    return [folder / name for name in ("bomb.csv.gz", "bomb.parquet", "bomb.arrow")]
+
+
+@pytest.mark.parametrize("allowed", [64, pytest.param(1024, marks=pytest.mark.soak)])
+def test_a_bomb_is_refused_in_a_sentence_and_takes_no_memory(tmp_path, allowed):
+    """Memory is the most that the process ever held, in MiB beyond the file before; 1024 MiB is what users have."""
+    files = bombs(tmp_path, 3 * allowed // 2)
+    assert all(path.stat().st_size * 200 < allowed << 20 for path in files)
+    done = subprocess.run(
+        [sys.executable, "-c", RESIDENT, Path(__file__).parent, str(allowed << 20), *files],
+        capture_output=True, text=True, check=True,
+    )  # fmt: skip
+    lines = done.stdout.splitlines()
+    assert [re.sub(r"^\d+ ", "", line).partition(" unpacks to more than 200 times its size")[0] for line in lines] == [
+        path.name for path in files
+    ]
+    assert max(int(line.split()[0]) for line in lines) < 48
+
+
 @pytest.fixture
 def room(tmp_path, monkeypatch):
     """A folder for temporary files, to see what is left of them."""
@@ -119,10 +181,10 @@ def room(tmp_path, monkeypatch):
 
 def test_temporary_files_are_private_and_gone_afterwards(take, room, monkeypatch):
     seen = []
-    check_growth = landing._check_growth
+    check_growth = landing.check_growth
     monkeypatch.setattr(
         landing,
-        "_check_growth",
+        "check_growth",
         lambda *told: (seen.extend(path.stat().st_mode & 0o777 for path in room.iterdir()), check_growth(*told)),
     )
     take(gzip.compress(CSV.decode().encode("utf-16")))
@@ -221,6 +283,14 @@ def test_a_damaged_arrow_file_is_named(take, con, how):
     assert observations(con) == []
 
 
+def test_an_arrow_file_without_columns_is_named(take):
+    sink = io.BytesIO()
+    with pa.ipc.new_stream(sink, pa.schema([])):
+        pass
+    with pytest.raises(IntakeError, match=r"^delivery cannot be read: .*at least one column"):
+        take(sink.getvalue())
+
+
 def test_arrow_times_with_a_zone_and_dictionaries_are_read(take, con):
     table = pa.table(
         {
@@ -253,6 +323,19 @@ def test_arrow_times_with_a_zone_and_dictionaries_are_read(take, con):
 def test_frames_of_other_makes_are_read(take, con, frame):
     assert take(frame).rows_new == 2
     assert observations(con) == EXPECTED
+
+
+def test_a_book_under_change_takes_frames_of_any_make_and_paths(book, tmp_path):
+    path = tmp_path / "delivery.csv"
+    FRAME.write_csv(path)
+    options = intake.Options(add_series=True)
+    with store.writing(book) as work:
+        found = [work.ingest(source, options) for source in (FRAME.to_pandas(), path, FRAME.to_arrow(), str(path))]
+        with pytest.raises(UsageError, match="neither a path nor"):
+            work.ingest([1, 2])
+    assert [(one.rows_new, one.rows_same, one.known_already) for one in found] == [
+        (2, 0, False), (0, 2, False), (0, 0, True), (0, 0, True),
+    ]  # fmt: skip
 
 
 def test_anything_that_hands_itself_over_as_an_arrow_stream_is_a_frame(take, con):

@@ -165,8 +165,25 @@ def test_a_series_needs_only_a_name():
     ('name = "desk"', 'name = "desk"\nzzz = 30',
      "zzz: no such key; there are name, headline_lookback, series, intake, estimate"),
     ('name = "desk"', 'name = "desk"\ngroup = []', "group: this driftbook does not have this key yet; take it out"),
-    ("lookbacks = [20]", 'lookbacks = [20]\n[[intake]]\nfiles = "../a.csv"',
-     "intake[1].files: '../a.csv' leaves the inbox; name files in it, such as power_*.csv"),
+    *((
+        "lookbacks = [20]", f"lookbacks = [20]\n[[intake]]\nfiles = '{files}'",
+        f"intake[1].files: {files!r} leaves the inbox; name files in it, such as power_*.csv",
+    ) for files in ("../a.csv", "/etc/passwd", "..", "a/../../b.csv", ".hidden", "..\\a.csv", "C:\\a.csv", "*/a.csv")),
+    *((
+        "lookbacks = [20]", f'lookbacks = [20]\n[[intake]]\nfiles = "a.csv"\n{keys}', told
+    ) for keys, told in (
+        ('layout = "wide"\nseries = "spark"', "intake[1]: series: in the wide layout each column is a series of "
+         "its own; take it out"),
+        ('layout = "wide"\ncolumns = {time = "d", value = "x"}',
+         "intake[1]: columns: in the wide layout all columns but the time are series; tell the time alone"),
+        ('columns = {vlaue = "x"}',
+         "intake[1].columns: 'vlaue' is nothing that a column can hold; did you mean 'value'?"),
+        ('dates = "dd/mm/yyyy"',
+         "intake[1].dates: 'dd/mm/yyyy' is neither day-first nor month-first nor a strptime form "
+         "that holds a year, such as %d.%m.%Y or %y%m%d"),
+        ('series = " spark"', "intake[1].series: ' spark' cannot be a name: it has space around it."),
+        ('decimal = "."\nzone = "Olso"', "intake[1].zone: no time zone is called 'Olso'"),
+    )),
     ("[[estimate]]", "[estimate]", "estimate: write it as [[estimate]], in two brackets"),
 ])  # fmt: skip
 def test_a_mistake_is_named_by_its_key(old, new, told):
@@ -392,8 +409,9 @@ def test_the_time_zone_cannot_change_once_there_are_observations(desk):
     with pytest.raises(store.PlanError) as raised:
         desk.run(text)
     assert str(raised.value) == (
-        "series 'spark': time_zone cannot change from UTC to Europe/Oslo, since there are observations; "
-        "add a series of another name."
+        "series 'spark': time_zone cannot change from UTC to Europe/Oslo, since there are observations; leave it and "
+        'say zone = "Europe/Oslo" where its files are read, or begin a series of another name: the plan first, its '
+        "files second."
     )
 
 
@@ -414,6 +432,18 @@ def test_another_name_takes_up_the_rows_that_waited_for_it(desk):
     assert desk.ask("select count(*) from refused_row") == [(0,)]
     desk.run(frame=days("SPK", [9.0], 52), options=WAITING)
     assert desk.ask("select count(*) from observation where series = 'spark'") == [(53,)]
+
+
+def test_rows_that_waited_need_a_yes_to_withdraw_more_than_a_tenth(desk):
+    """A value and its withdrawal wait for a name under which the book already has one value at that time."""
+    desk.run(frame=days("SPK", [None, None, None, None, None, None], 1), options=WAITING)
+    text = SMALL.replace('name = "spark"', 'name = "spark"\nalso_called = ["SPK"]')
+    with pytest.raises(
+        store.BookError, match="withdraws 6 of the 50 observations of 'spark', more than a tenth; say --yes"
+    ):
+        desk.run(text)
+    assert desk.run(text, yes=True).taken_up == 6
+    assert desk.ask("select count(*) from observation where series = 'spark'") == [(44,)]
 
 
 def test_another_name_may_not_be_a_series_of_the_book(desk):

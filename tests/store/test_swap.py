@@ -440,6 +440,34 @@ def test_the_book_keeps_its_rights(book, wide_umask, rights):
     assert mode(book) == rights
 
 
+@pytest.mark.skipif(os.geteuid() != 0, reason="only root may give a file away")
+def test_the_book_keeps_its_owner_and_group(book):
+    os.chown(book, 12345, 54321)
+    book.chmod(0o640)
+    write(book, "desk")
+    assert (book.stat().st_uid, book.stat().st_gid, mode(book)) == (12345, 54321, 0o640)
+
+
+@pytest.mark.parametrize(("is_of_the_group", "rights"), [(True, 0o664), (False, 0o604)])
+def test_a_writer_who_may_not_give_the_book_away_gives_no_other_group_its_rights(
+    book, monkeypatch, is_of_the_group, rights
+):
+    """As for a writer who is not root: the group can be kept if it is one of the writer's own."""
+    given = []
+
+    def chown(path, uid, gid):
+        if uid != -1 or not is_of_the_group:
+            raise PermissionError
+        given.append(gid)
+
+    book.chmod(0o664)
+    group = book.stat().st_gid
+    monkeypatch.setattr(os, "chown", chown)
+    write(book, "desk")
+    assert mode(book) == rights
+    assert given == [group] * is_of_the_group
+
+
 @pytest.mark.parametrize("rights", [0o640, 0o600])
 def test_nothing_beside_the_book_is_open_to_more_people_than_the_book(book, wide_umask, rights):
     """Neither the lock nor, while a run is under way, its draft; also when the book was narrowed."""

@@ -387,6 +387,12 @@ def forge(book):
         )
 
 
+def chain_again(con, run_id):
+    """Gives a run the digest that fits what stands there now."""
+    digest_now = runs.chain(con, run_id, columns_at(newest())["run"])
+    con.execute("update base.run set digest = ? where run_id = ?", [digest_now, run_id])
+
+
 def test_a_leaf_that_was_made_to_fit_is_found_in_the_chain(filled):
     forge(filled)
     assert found_at(filled) == {("run", None, 1)}
@@ -396,7 +402,7 @@ def test_a_run_that_was_made_to_fit_is_found_in_the_next_one(filled):
     forge(filled)
     with duckdb.connect(filled) as con:
         con.execute("set TimeZone = 'UTC'")
-        con.execute("update base.run set digest = ? where run_id = 1", [runs.chain(con, 1)])
+        chain_again(con, 1)
     assert found_at(filled) == {("run", None, 2)}
 
 
@@ -406,7 +412,7 @@ def test_a_book_forged_from_end_to_end_has_another_last_digest(filled):
     with duckdb.connect(filled) as con:
         con.execute("set TimeZone = 'UTC'")
         for run_id in range(1, 7):
-            con.execute("update base.run set digest = ? where run_id = ?", [runs.chain(con, run_id), run_id])
+            chain_again(con, run_id)
     seen = store.verify(filled)
     assert seen.findings == []
     assert seen.last_digest != noted

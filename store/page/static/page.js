@@ -94,14 +94,13 @@ function grid(table) {
 
 function level(section) {
   const figure = section.querySelector("figure");
-  const picture = figure.querySelector("svg.chart");
-  const line = picture.querySelector(".level");
+  const pictures = [...figure.querySelectorAll("svg")];
+  const lines = pictures.map((picture) => picture.querySelector(".level_marks line"));
   const field = section.querySelector("input[name=level]");
   const output = section.querySelector("output");
-  const [low, high] = [Number(figure.dataset.low), Number(figure.dataset.high)];
+  const [low, high, height] = ["low", "high", "height"].map((name) => Number(figure.dataset[name]));
   const values = figure.dataset.values.split(" ").map(Number);
   const times = figure.dataset.times.split(" ");
-  const height = picture.getAttribute("height") - 22;
 
   function sentence(at) {
     let up = 0, down = 0, last = null;
@@ -118,16 +117,18 @@ function level(section) {
   }
 
   function move(at) {
-    const y = height - height * (at - low) / (high - low);
-    line.setAttribute("y1", y);
-    line.setAttribute("y2", y);
+    const y = height * (1 - (at - low) / (high - low));
+    for (const line of lines) {
+      const across = line.transform.baseVal.consolidate().matrix.e;
+      line.setAttribute("transform", `translate(${across},${y})`);
+    }
     output.textContent = sentence(at);
   }
 
   function follow(event) {
-    const y = event.clientY - picture.getBoundingClientRect().top;
-    const at = low + (high - low) * (1 - Math.max(0, Math.min(height, y)) / height);
-    field.value = Number(at.toPrecision(5));
+    const plot = event.currentTarget.querySelector(".background").getBoundingClientRect();
+    const down = Math.max(0, Math.min(1, (event.clientY - plot.top) / plot.height));
+    field.value = Number((low + (high - low) * (1 - down)).toPrecision(5));
     move(Number(field.value));
   }
 
@@ -141,8 +142,10 @@ function level(section) {
     move(Number(field.value));
   });
   field.addEventListener("input", () => { if (field.value !== "") move(Number(field.value)); });
-  picture.addEventListener("pointerdown", (event) => { picture.setPointerCapture(event.pointerId); follow(event); });
-  picture.addEventListener("pointermove", (event) => { if (event.buttons) follow(event); });
+  for (const picture of pictures) {
+    picture.addEventListener("pointerdown", (event) => { picture.setPointerCapture(event.pointerId); follow(event); });
+    picture.addEventListener("pointermove", (event) => { if (event.buttons) follow(event); });
+  }
   section.querySelector("form").addEventListener("submit", (event) => event.preventDefault());
   const button = section.querySelector("form button");
   if (button) button.hidden = true;
@@ -174,6 +177,6 @@ function picker(details) {
 }
 
 for (const table of document.querySelectorAll("#series")) grid(table);
-for (const section of document.querySelectorAll(".picture")) level(section);
+for (const section of document.querySelectorAll(".past-values")) level(section);
 for (const details of document.querySelectorAll(".picker")) picker(details);
 if (document.body.dataset.run !== undefined) news(Number(document.body.dataset.run));

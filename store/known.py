@@ -61,11 +61,25 @@ def known(book: Path, as_of: str | None = None) -> Iterator[Known]:
 
     Raises UsageError for what is no moment, or one that is still to come.
     """
-    moment = datetime.now(UTC)
-    told = parse_moment(as_of) if as_of else None
-    if told is not None and told > moment:
-        raise UsageError(f"{as_of} is still to come; nobody knows yet what will be known then.")
+    told = _told(as_of)
     with attached(book) as con:
-        run_id, run_moment = only_row(con, query("run_in_force"), {"moment": told or moment})
-        (newest,) = only_row(con, query("page_newest"))
-        yield Known(con, run_id or 0, run_moment, told, told or moment, newest or 0)
+        yield _known(con, told)
+
+
+def known_on(con: duckdb.DuckDBPyConnection, as_of: str | None = None) -> Known:
+    """As `known`, on a book that is open."""
+    return _known(con, _told(as_of))
+
+
+def _known(con: duckdb.DuckDBPyConnection, told: datetime | None) -> Known:
+    moment = told or datetime.now(UTC)
+    run_id, run_moment = only_row(con, query("run_in_force"), {"moment": moment})
+    (newest,) = only_row(con, query("page_newest"))
+    return Known(con, run_id or 0, run_moment, told, moment, newest or 0)
+
+
+def _told(as_of: str | None) -> datetime | None:
+    told = parse_moment(as_of) if as_of else None
+    if told is not None and told > datetime.now(UTC):
+        raise UsageError(f"{as_of} is still to come; nobody knows yet what will be known then.")
+    return told

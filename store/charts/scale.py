@@ -8,7 +8,6 @@ from datetime import datetime, timedelta
 from math import ceil, floor, isfinite, log10
 
 _STEPS = (1, 2, 2.5, 5, 10)
-_MONTHS = ["Jan", "Feb", "Mar", "Apr", "May", "Jun", "Jul", "Aug", "Sep", "Oct", "Nov", "Dec"]
 
 
 @dataclass(frozen=True)
@@ -81,11 +80,12 @@ def _round_numbers(low: float, high: float, about: int) -> list[float]:
     rough = (high - low) / max(about, 1)
     power = 10.0 ** floor(log10(rough))
     step = next(one * power for one in _STEPS if one * power >= rough * 0.999)
-    return [round(k * step, 12) for k in range(ceil(low / step), floor(high / step) + 1)]
+    found = [round(k * step, 12) for k in range(ceil(low / step), floor(high / step) + 1)]
+    return found if len(found) > 1 else _round_numbers(low, high, about + 2)
 
 
-def time_ticks(first: datetime, last: datetime, about: int = 5) -> list[tuple[datetime, str]]:
-    """Round times between two, with their words: years, months, days or hours, whatever is right."""
+def time_ticks(first: datetime, last: datetime, about: int = 5) -> tuple[list[datetime], str]:
+    """Round times between two and how they are written: years, months, days or hours, whatever is right."""
     span = last - first
     if span > timedelta(days=60):
         return _months(first, last, about)
@@ -93,20 +93,13 @@ def time_ticks(first: datetime, last: datetime, about: int = 5) -> list[tuple[da
     every = unit * max(1, ceil(span / unit / about))
     start = first.replace(hour=0, minute=0, second=0, microsecond=0)
     times = [start + every * k for k in range(ceil((last - start) / every) + 1)]
-    return [(time, _short(time)) for time in times if first <= time <= last]
+    written = "%-d %b" if unit == timedelta(days=1) else "%-d %b, %H:%M"
+    return [time for time in times if first <= time <= last], written
 
 
-def _months(first: datetime, last: datetime, about: int) -> list[tuple[datetime, str]]:
+def _months(first: datetime, last: datetime, about: int) -> tuple[list[datetime], str]:
     months = (last.year - first.year) * 12 + last.month - first.month
     every = next((one for one in (1, 2, 3, 6, 12, 24, 60) if months / one <= about), 120)
-    found = []
-    for count in range(first.year * 12, last.year * 12 + last.month):
-        if count % every == 0:
-            time = datetime(count // 12, count % 12 + 1, 1)
-            if first <= time <= last:
-                found.append((time, f"{_MONTHS[time.month - 1]} {time.year}" if every < 12 else f"{time.year}"))
-    return found
-
-
-def _short(time: datetime) -> str:
-    return f"{time.day} {_MONTHS[time.month - 1]}" if time.hour == 0 else f"{time:%H:%M}"
+    counts = [count for count in range(first.year * 12, last.year * 12 + last.month) if count % every == 0]
+    times = [datetime(count // 12, count % 12 + 1, 1) for count in counts]
+    return [time for time in times if first <= time <= last], "%b %Y" if every < 12 else "%Y"
