@@ -1,6 +1,7 @@
 """The rules of the house that a machine can hold."""
 
 import ast
+import re
 import subprocess
 import sys
 import tomllib
@@ -96,6 +97,13 @@ def test_the_table_that_is_loaded_holds_no_objects():
     for path in (ROOT / "estimators" / "data").glob("*.npz"):
         with np.load(path, allow_pickle=False) as stored:
             assert all(stored[name].dtype.kind in "fiub" for name in stored.files)
+
+
+def test_every_named_query_has_a_name_of_its_own():
+    texts = [path.read_text(encoding="utf-8") for path in (ROOT / "store" / "sql").glob("*.sql")]
+    names = [name for text in texts for name in re.findall(r"^-- name: (\w+)$", text, re.MULTILINE)]
+    assert len(names) > 50
+    assert sorted(names) == sorted(set(names))
 
 
 def test_no_second_copy_of_the_packages_is_imported():

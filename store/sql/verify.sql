@@ -75,8 +75,8 @@ where q.run_from < q.ends_before
 group by all
 order by all
 
--- name: columns_of_base
--- Every base table with its columns.
+-- name: columns_to_read
+-- Every base table with all its columns.
 select c.table_name, list(c.column_name order by c.column_index)
 from duckdb_columns() c
 join duckdb_tables() t using (table_oid)
