@@ -5,6 +5,7 @@ from __future__ import annotations
 import operator
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Literal
 
 import numpy as np
@@ -129,7 +130,7 @@ class Model:
         """Columns that are kept as numbers."""
         return tuple(column for column in self.columns if column.sql is None)
 
-    @property
+    @cached_property
     def has_pull(self) -> bool:
         """Whether it has a pull to a level, and so a half-life."""
         return any(column.name == "half_life" for column in self.columns)

@@ -11,6 +11,7 @@ import os
 import resource
 import signal
 import sys
+import warnings
 from collections.abc import Callable, Iterator
 from contextlib import AbstractContextManager, contextmanager, suppress
 from dataclasses import dataclass, field
@@ -63,7 +64,7 @@ def contained(
     reading, writing = os.pipe()
     sys.stdout.flush()
     sys.stderr.flush()
-    child = os.fork()
+    child = _forked()
     if child == 0:
         os.close(reading)
         _be_the_child(writing, prepare, work, limits)
@@ -73,6 +74,13 @@ def contained(
         if not head.endswith(b"\n"):
             raise _why(how_it_ended(), limits)
         yield _pieces(answer, _size(json.loads(head), limits))
+
+
+def _forked() -> int:
+    """Python warns of threads, whose locks a fork leaves as they are; the child makes everything that it uses anew."""
+    with warnings.catch_warnings():
+        warnings.simplefilter("ignore", DeprecationWarning)
+        return os.fork()
 
 
 @contextmanager

@@ -47,7 +47,7 @@ def find_damage(con: duckdb.DuckDBPyConnection) -> list[Damage]:
 
 
 def _damages(con: duckdb.DuckDBPyConnection) -> Iterator[Damage]:
-    for table, columns in con.execute(query("columns_to_read")).fetchall():
+    for table, columns in con.execute(query("columns_of_base")).fetchall():
         refused = {column: _refusal(con, table, [column]) for column in columns}
         damaged = [column for column, why in refused.items() if why]
         if damaged:

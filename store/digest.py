@@ -13,6 +13,7 @@ from __future__ import annotations
 import hashlib
 from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import duckdb
 import numpy as np
@@ -27,8 +28,7 @@ _ROWS_ENCODED_AT_ONCE = 50_000
 _NO_ROWS = (0, hashlib.sha256().digest())
 
 
-@dataclass(frozen=True)
-class Leaf:
+class Leaf(NamedTuple):
     """The digest of what one run did to one table for one series (None: a table without series)."""
 
     run_id: int
@@ -119,18 +119,20 @@ def _grouped_rows(
     marks = ", ".join(f"{column} as _{column}" for column in group)
     order = ", ".join([*group, *table.key])
     rows = con.sql(f"select {select}, {marks} from base.{table.name} where {where} order by {order}").to_arrow_table()
-    found = {}
-    for groups in _some_at_once(_group_bounds(rows, [f"_{column}" for column in group])):
+    bounds = _group_bounds(rows, [f"_{column}" for column in group])
+    found: list[tuple[int, bytes]] = []
+    for groups in _some_at_once(bounds):
         first, last = groups[0][0], groups[-1][1]
         laid_out = _laid_out(rows.select(columns).slice(first, last - first))
         encoded = memoryview(b"".join(_encoded_runs(laid_out)))
-        ends = _row_ends(laid_out)
+        ends = _row_ends(laid_out).tolist()
         for start, stop in groups:
-            run_id = rows.column(f"_{run_column}")[start].as_py()
-            series_id = rows.column("_series_id")[start].as_py() if table.by_series else None
             group_bytes = encoded[ends[start - first] : ends[stop - first]]
-            found[series_id, run_id] = stop - start, hashlib.sha256(group_bytes).digest()
-    return found
+            found.append((stop - start, hashlib.sha256(group_bytes).digest()))
+    starts = pa.array([start for start, _ in bounds], pa.int64())
+    run_ids = rows.column(f"_{run_column}").take(starts).to_pylist()
+    series_ids = rows.column("_series_id").take(starts).to_pylist() if table.by_series else [None] * len(starts)
+    return dict(zip(zip(series_ids, run_ids, strict=True), found, strict=True))
 
 
 def _some_at_once(bounds: Iterable[tuple[int, int]]) -> Iterator[list[tuple[int, int]]]:
@@ -145,7 +147,7 @@ def _some_at_once(bounds: Iterable[tuple[int, int]]) -> Iterator[list[tuple[int,
         yield some
 
 
-def _group_bounds(rows: pa.Table, group: list[str]) -> Iterable[tuple[int, int]]:
+def _group_bounds(rows: pa.Table, group: list[str]) -> list[tuple[int, int]]:
     if rows.num_rows == 0:
         return []
     changed = np.zeros(rows.num_rows, dtype=bool)
@@ -154,7 +156,7 @@ def _group_bounds(rows: pa.Table, group: list[str]) -> Iterable[tuple[int, int]]
         values = rows.column(name).combine_chunks().to_numpy(zero_copy_only=False)
         changed[1:] |= values[1:] != values[:-1]
     starts = np.flatnonzero(changed).tolist()
-    return zip(starts, [*starts[1:], rows.num_rows], strict=True)
+    return list(zip(starts, [*starts[1:], rows.num_rows], strict=True))
 
 
 def _laid_out(rows: pa.Table) -> list[_Column]:

@@ -79,6 +79,8 @@ def due(asked: Asked, times: Microseconds, changed: Microseconds, days: Days) ->
         return [], []
     if asked.whole or times.size <= asked.lookback or asked.lookback == 0:
         return _everything(asked, times, days), [_span(asked, _EARLIEST, _LATEST)]
+    if asked.every == OBSERVATION and np.array_equal(times[-changed.size :], changed):
+        return _at_the_end(asked, times, changed.size)
     at = np.searchsorted(times, changed)
     still_there = times[np.minimum(at, times.size - 1)] == changed
     # the last window end that holds a changed observation, or bridges the gap that a withdrawn one left
@@ -91,7 +93,7 @@ def due(asked: Asked, times: Microseconds, changed: Microseconds, days: Days) ->
     may_lose = np.flatnonzero(~still_there | (asked.every != OBSERVATION))
     spans = [_span(asked, int(opens[one]), int(until[one])) for one in may_lose]
     if at[0] <= asked.lookback:
-        spans.append(_span(asked, _EARLIEST, int(times[asked.lookback]) - 1))
+        spans.append(_before_the_first(asked, times))
     return _slices(asked, ends, times.size, days), spans
 
 
@@ -138,6 +140,19 @@ def _everything(asked: Asked, times: Microseconds, days: Days) -> list[Slice]:
         steps = asked.lookback or steps_over_all(times.size)
         return [Slice(asked.series_id, asked.lookback, steps, 0, 0, last)] if times.size else []
     return _slices(asked, [(asked.lookback, last)], times.size, days)
+
+
+def _at_the_end(asked: Asked, times: Microseconds, new: int) -> tuple[list[Slice], list[Span]]:
+    """What is due when all that changed is at the end, as on most days: the windows that end there."""
+    before = times.size - new
+    first_end = max(before, asked.lookback)
+    spans = [_before_the_first(asked, times)] if before <= asked.lookback else []
+    return [_windows_ending(asked, first_end, times.size - 1)], spans
+
+
+def _before_the_first(asked: Asked, times: Microseconds) -> Span:
+    """Where what a series that was too short had in force may stand."""
+    return _span(asked, _EARLIEST, int(times[asked.lookback]) - 1)
 
 
 def _slices(asked: Asked, ranges: list[tuple[int, int]], size: int, days: Days) -> list[Slice]:

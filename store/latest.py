@@ -6,6 +6,7 @@ from collections.abc import Iterable
 from dataclasses import dataclass, fields
 from datetime import datetime
 from itertools import groupby
+from typing import Any
 
 import duckdb
 import numpy as np
@@ -67,7 +68,6 @@ class _Fit:
     lookback: int
     window_start: datetime
     model: str
-    k: int
     n: int
     loglik: float | None
     status: str
@@ -80,11 +80,10 @@ class _Fit:
     half_life_lower: float | None
     half_life_upper: float | None
     half_life_unbounded: bool | None
+    criterion: float  # bic, NaN without numbers
 
-    @property
-    def criterion(self) -> float:
-        """bic, NaN without numbers."""
-        return float("nan") if self.loglik is None else float(bic(self.loglik, self.k, self.n))
+
+_PLACES = {field.name: place for place, field in enumerate(fields(_Fit))}
 
 
 def write_latest(run: Run, plan: Plan, work: Work, last: int) -> None:
@@ -151,9 +150,16 @@ def _fits(con: duckdb.DuckDBPyConnection, asked: list[int], headline: dict[int, 
     )
     con.execute(query("find_headlines"))
     con.unregister("asked_headline")
-    found = [_Fit(*values) for model in MODELS.values() for values in con.execute(_local_sql(model)).fetchall()]
+    found = [fit for model in MODELS.values() for fit in _fits_of(model, con.execute(_local_sql(model)).fetchall())]
     con.execute("drop table headline")
     return sorted(found, key=lambda fit: fit.series_id)
+
+
+def _fits_of(model: Model, rows: list[Any]) -> list[_Fit]:
+    loglik = np.array([row[_PLACES["loglik"]] for row in rows], np.float64)
+    n = np.where(np.isnan(loglik), np.nan, [row[_PLACES["n"]] for row in rows])
+    criteria = bic(loglik, len(model.parameters), n).tolist()
+    return [_Fit(*(*row, criterion)) for row, criterion in zip(rows, criteria, strict=True)]
 
 
 def _headlines(plan: Plan, series: dict[int, Series]) -> dict[int, int]:
@@ -178,7 +184,7 @@ def _local_sql(model: Model) -> str:
         f"with there as (select h.*, {local['x']} as x from headline h), "
         f"scaled as (select *, {local['scale']} as scale from there) "
         "select h.series_id, h.observed_at, h.value, h.lookback, m.window_start, "
-        f"'{model.name}', {len(model.parameters)}, n, loglik, status, {p_value}, {local['volatility']}, "
+        f"'{model.name}', n, loglik, status, {p_value}, {local['volatility']}, "
         f"{local['drift']}, {pull} "
         f"from scaled h join base.{model.name} m on m.series_id = h.series_id and m.lookback = h.lookback "
         "and m.window_end = h.observed_at and m.run_to is null"
@@ -187,8 +193,9 @@ def _local_sql(model: Model) -> str:
 
 def _row(fits: list[_Fit], series: Series, before: Row | None, marks: _Marks) -> Row:
     setting = series.setting
-    chosen = choose([_candidate(fit) for fit in fits], setting.in_force, _choice(before))
-    weight = dict(zip([fit.model for fit in fits], _weights(fits), strict=True))
+    candidates = [_candidate(fit) for fit in fits]
+    chosen = choose(candidates, setting.in_force, _choice(before))
+    weight = dict(zip([fit.model for fit in fits], _weights(fits, candidates), strict=True))
     by_name = {fit.model: fit for fit in fits}
     first, fit = fits[0], by_name.get(chosen.model or "")
     pulled = _pulled(fit, fits, weight)
@@ -227,8 +234,8 @@ def _choice(before: Row | None) -> Choice | None:
     return None if before is None else Choice(before.model, before.challenger)
 
 
-def _weights(fits: list[_Fit]) -> list[float | None]:
-    usable = [fit.criterion if _candidate(fit).is_usable else float("nan") for fit in fits]
+def _weights(fits: list[_Fit], candidates: list[Candidate]) -> list[float | None]:
+    usable = [fit.criterion if one.is_usable else float("nan") for fit, one in zip(fits, candidates, strict=True)]
     if np.isnan(usable).all():
         return [None] * len(fits)
     return [None if np.isnan(weight) else float(weight) for weight in weights(usable)]

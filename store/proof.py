@@ -5,7 +5,7 @@ from __future__ import annotations
 import os
 import re
 from collections.abc import Iterator
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from functools import cache
 from itertools import groupby
 from pathlib import Path
@@ -176,7 +176,7 @@ def _with_what_was_forgotten(con: duckdb.DuckDBPyConnection, stored: _Stored) ->
     ).fetchall():
         where = (table_name, series_id, run_id)
         if where in stored and (rows_in or rows_closed):
-            left[where] = replace(stored[where], rows_in=rows_in, rows_closed=rows_closed, sha256=sha256)
+            left[where] = stored[where]._replace(rows_in=rows_in, rows_closed=rows_closed, sha256=sha256)
         else:
             left.pop(where, None)
     return left

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Iterable
-from dataclasses import dataclass, field, fields
+from dataclasses import dataclass, field
 from datetime import UTC, datetime
 from importlib.metadata import version
 
@@ -105,8 +105,9 @@ def _leaves_of(con: duckdb.DuckDBPyConnection, run_id: int, columns: dict[str, l
 
 def _insert_leaves(con: duckdb.DuckDBPyConnection, found: list[digest.Leaf]) -> None:
     if found:
-        names = [column.name for column in fields(digest.Leaf)]
-        con.register("found_leaves", pa.table([[getattr(leaf, name) for leaf in found] for name in names], names))
+        con.register(
+            "found_leaves", pa.table([list(column) for column in zip(*found, strict=True)], digest.Leaf._fields)
+        )
         con.execute(query("insert_leaves"))
         con.unregister("found_leaves")
 

@@ -64,9 +64,4 @@ def columns_at(migration: int) -> dict[str, list[str]]:
 def columns_of(con: duckdb.DuckDBPyConnection) -> dict[str, list[str]]:
     """The columns that every base table of the default catalog has, without run_to, in their order."""
     rows = con.execute(query("columns_of_base")).fetchall()
-    found: dict[str, list[str]] = {}
-    for table_name, column_name in rows:
-        found.setdefault(table_name, [])
-        if column_name != "run_to":
-            found[table_name].append(column_name)
-    return found
+    return {table: [name for name in columns if name != "run_to"] for table, columns in rows}

@@ -99,11 +99,12 @@ def test_the_table_that_is_loaded_holds_no_objects():
             assert all(stored[name].dtype.kind in "fiub" for name in stored.files)
 
 
-def test_every_named_query_has_a_name_of_its_own():
+def test_every_named_query_has_a_name_of_its_own_and_is_used():
     texts = [path.read_text(encoding="utf-8") for path in (ROOT / "store" / "sql").glob("*.sql")]
-    names = [name for text in texts for name in re.findall(r"^-- name: (\w+)$", text, re.MULTILINE)]
-    assert len(names) > 50
+    names = re.findall(r"^-- name: (\w+)$", "\n".join(texts), re.MULTILINE)
     assert sorted(names) == sorted(set(names))
+    code = "\n".join(path.read_text(encoding="utf-8") for path in _python_files("store"))
+    assert [name for name in names if f'"{name}"' not in code] == []
 
 
 def test_no_second_copy_of_the_packages_is_imported():

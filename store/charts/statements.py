@@ -144,7 +144,7 @@ def draw(shown: Said, palette: Palette) -> alt.LayerChart:
         times = pl.DataFrame({"time": [milliseconds(when) for when in shown.corrections]})
         rail = alt.Chart(times).mark_rule(color=palette.ink, strokeWidth=2)
         layers.append(rail.encode(x, y=alt.value(HEIGHT + _RAIL), y2=alt.value(HEIGHT + _RAIL + _TICK)))
-    return on_paper(layers, palette, HEIGHT, shown.summary)
+    return on_paper(layers, palette, HEIGHT, shown.summary, below=_RAIL + _TICK)
 
 
 def thinned(points: Sequence[Any]) -> Sequence[Any]:

@@ -11,7 +11,9 @@ import altair as alt
 from driftbook.store.charts.scale import Scale, time_ticks
 
 WIDTH = 800
-_NUMBERS = 46  # pixels on the left for the numbers of the vertical axis
+NUMBERS = 52  # pixels on the left for the numbers of the vertical axis
+_MARGIN = 0.06  # of the width, at both ends, where a time would be written over the edge
+_EDGE, _TIMES = 6, 22  # pixels at the other sides, and below for the times
 
 
 @dataclass(frozen=True)
@@ -26,6 +28,13 @@ class Palette:
     paper: str = "#fcfbf8"
     letters: str = "Georgia, serif"
 
+    def inked(self, share: float) -> str:
+        """From the colour of shade, at 0, to that of ink, at 1."""
+        if not self.ink.startswith("#"):
+            return f"color-mix(in srgb, {self.ink} {share:.0%}, {self.shade})"
+        pairs = [(int(self.ink[at : at + 2], 16), int(self.shade[at : at + 2], 16)) for at in (1, 3, 5)]
+        return "#" + "".join(f"{round(share * ink + (1 - share) * shade):02x}" for ink, shade in pairs)
+
 
 PLAIN = Palette()
 
@@ -38,6 +47,8 @@ def milliseconds(when: datetime) -> int:
 def along(first: datetime, last: datetime, *, below: int = 4, grid: bool = True) -> alt.X:
     """Time, from edge to edge; what is written stands some pixels below the chart."""
     times, written = time_ticks(first, last)
+    room = _MARGIN * (last - first)
+    times = [time for time in times if first + room <= time <= last - room]
     return alt.X(
         "time:T",
         scale=alt.Scale(type="utc", domain=[milliseconds(first), milliseconds(last)], nice=False),
@@ -49,7 +60,6 @@ def along(first: datetime, last: datetime, *, below: int = 4, grid: bool = True)
             domain=False,
             ticks=False,
             labelPadding=below,
-            labelFlush=True,
             labelOverlap="greedy",
         ),
     )
@@ -67,21 +77,21 @@ def up(name: str, scale: Scale, about: int = 4) -> alt.Y:
             domain=False,
             ticks=False,
             labelPadding=8,
-            minExtent=_NUMBERS,
-            maxExtent=_NUMBERS,
         ),
     )
 
 
-def on_paper(layers: Sequence[alt.Chart], palette: Palette, height: int, title: str) -> alt.LayerChart:
-    """Layers, the first at the back, as one chart."""
+def on_paper(
+    layers: Sequence[alt.Chart], palette: Palette, height: int, title: str, *, left: int = NUMBERS, below: int = 0
+) -> alt.LayerChart:
+    """Layers, the first at the back, as one chart; all have the same room around them, so that their edges agree."""
     return alt.LayerChart(
         layer=list(layers),
         description=title,
-        width=WIDTH,
+        width=WIDTH - left - _EDGE,
         height=height,
-        padding=1,
-        autosize=alt.AutoSizeParams(type="fit-x", contains="padding"),
+        padding={"left": left, "right": _EDGE, "top": _EDGE, "bottom": _TIMES + below},
+        autosize="none",
         config={
             "background": palette.paper,
             "font": palette.letters,

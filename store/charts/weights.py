@@ -17,6 +17,7 @@ from driftbook.store.words import model as in_words
 
 _ROW, _INK = 38, 13
 _MOST_CELLS = 120
+_OVERLAP = 0.6  # pixels that a cell reaches into the next, so that no paper shines through
 
 
 @dataclass(frozen=True)
@@ -59,21 +60,21 @@ def draw(shown: Weights, palette: Palette) -> alt.LayerChart:
         {
             "model": list(shown.by_model),
             "text": [f"{in_words(name)} ({name}), now {last_weight(shown, name)}" for name in shown.by_model],
-            "time": [milliseconds(shown.ends[0])] * len(shown.by_model),
-            "until": [milliseconds(shown.ends[-1])] * len(shown.by_model),
         }
     )
-    cells = pl.DataFrame(_cells(shown), ["model", "time", "until", "weight"], orient="row")
-    ink = alt.Opacity("weight:Q", scale=alt.Scale(domain=[0, 1], range=[0, 1]), legend=None)
+    cells = pl.DataFrame(
+        [(*cell, palette.inked(cell[-1])) for cell in _cells(shown)],
+        ["model", "time", "until", "weight", "ink"],
+        orient="row",
+    )
     below = _ROW / 2 - _INK / 2 - 2
+    bars = alt.Chart(cells).mark_bar(height=_INK, yOffset=below, x2Offset=_OVERLAP)
+    words = alt.Chart(names).mark_text(color=palette.ink, align="left", baseline="bottom", dy=2, fontSize=13)
     layers = [
-        alt.Chart(names).mark_bar(color=palette.shade, height=_INK, yOffset=below).encode(x, rows, x2="until:T"),
-        alt.Chart(cells).mark_bar(color=palette.ink, height=_INK, yOffset=below).encode(x, rows, ink, x2="until:T"),
-        alt.Chart(names)
-        .mark_text(color=palette.ink, align="left", baseline="bottom", dy=2, fontSize=13)
-        .encode(rows, text="text:N", x=alt.value(0)),
+        bars.encode(x, rows, x2="until:T", color=alt.Color("ink:N", scale=None)),
+        words.encode(rows, text="text:N", x=alt.value(0)),
     ]
-    return on_paper(layers, palette, _ROW * len(shown.by_model), shown.summary)
+    return on_paper(layers, palette, _ROW * len(shown.by_model), shown.summary, left=0)
 
 
 def _cells(shown: Weights) -> list[tuple[str, int, int, float]]:

@@ -17,25 +17,26 @@ if TYPE_CHECKING:
     from driftbook.store.state import State
 
 _DAY = 86_400
-
-
 _HEADER = ("series", "value", "volatility", "half-life", "model")
 
 
 def short_table(state: State) -> str:
     """One sentence and the table that fits a terminal; a note that does not fit stands below its row.
 
-    Where not even the model fits beside the figures, it goes below with the note.
+    A narrow terminal has the unit of a volatility once, in the value beside it, where both are the same. Where not even
+    the model fits beside the figures, it goes below with the note.
     """
-    rows = [_row(row) for row in state.rows]
-    if not rows:
+    if not state.rows:
         return _sentence(state)
     notes = [note(row, state.as_of) for row in state.rows]
     width = get_terminal_size().columns
-    table = columns(_HEADER, rows)
-    if _widest(table) > width:
-        table = columns(_HEADER[:-1], [row[:-1] for row in rows])
+    rows = [_row(row) for row in state.rows]
+    if _widest(columns(_HEADER, rows)) > width:
+        rows = [_row(row, unit_once=True) for row in state.rows]
+    if _widest(columns(_HEADER, rows)) > width:
         notes = [f"{row[-1]}; {words}" if words else row[-1] for row, words in zip(rows, notes, strict=True)]
+        rows = [row[:-1] for row in rows]
+    table = columns(_HEADER[: len(rows[0])], rows)
     return "\n".join([_sentence(state), "", *_with_notes(table, notes, width)])
 
 
@@ -73,12 +74,17 @@ def explanation_text(found: Explanation) -> str:
     one, other = found.earlier, found.later
     lookback = "all steps" if not found.lookback else count_of(found.lookback, "step")
     head = f"{found.series}, {found.model}, {lookback}: run {one.run_id} and run {other.run_id}."
-    rows = [(name, with_interval(*one.numbers[name]), with_interval(*other.numbers[name])) for name in one.numbers]
+    rows = [(name, _estimate(*one.numbers[name]), _estimate(*other.numbers[name])) for name in one.numbers]
     rows.append(("window", f"{word(one.window_start)} – {word(one.window_end)}",
                  f"{word(other.window_start)} – {word(other.window_end)}"))  # fmt: skip
     rows.append(("status", one.status, other.status))
     table = columns(("", _run(one), _run(other)), rows)
     return "\n".join([head, "", table, "", *_between(found)])
+
+
+def _estimate(value: float | None, lower: float | None, upper: float | None) -> str:
+    without = ", no interval" if value is not None and (lower, upper) == (None, None) else ""
+    return with_interval(value, lower, upper) + without
 
 
 def _run(statement: Statement) -> str:
@@ -110,14 +116,15 @@ def _sentence(state: State) -> str:
     )
 
 
-def _row(row: dict[str, Any]) -> tuple[str, ...]:
+def _row(row: dict[str, Any], *, unit_once: bool = False) -> tuple[str, ...]:
     value = figures.with_unit(row["value"], row["unit"])
-    return row["series"], value, _volatility(row), _half_life(row), row["model"] or "–"
+    return row["series"], value, _volatility(row, unit_once=unit_once), _half_life(row), row["model"] or "–"
 
 
-def _volatility(row: dict[str, Any]) -> str:
-    numbers = row["volatility"], row["volatility_lower"], row["volatility_upper"]
-    return figures.volatility(*numbers, row["volatility_unit"])
+def _volatility(row: dict[str, Any], *, unit_once: bool) -> str:
+    unit = row["volatility_unit"]
+    shown_unit = None if unit_once and not figures.is_relative(unit) else unit
+    return figures.volatility(row["volatility"], row["volatility_lower"], row["volatility_upper"], shown_unit)
 
 
 def _half_life(row: dict[str, Any]) -> str:

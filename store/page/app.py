@@ -25,6 +25,7 @@ def create_app(book: Path) -> Starlette:
             Route("/series", answers.series_sheet),
             Route("/guide", answers.guide_list),
             Route("/guide/{name}.md", answers.guide_page),
+            Mount("/guide/pictures", StaticFiles(packages=[("driftbook.store.guide", "pictures")])),
             Route("/newest.json", answers.newest),
             Route("/csv/{kind}.csv", answers.csv_file),
             Mount("/static", StaticFiles(directory=STATIC)),

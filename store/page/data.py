@@ -42,8 +42,7 @@ def _latest(book: Known) -> Table:
 
 def _years(book: Known) -> Table:
     (series,) = only_row(book.con, "select count(*) from series_at_run($run)", {"run": book.run_id})
-    sql = query("page_years_csv").format(years=query("page_years"))
-    return book.table(sql, run=book.run_id, periods=periods_for(series))
+    return book.table(query("page_years"), run=book.run_id, periods=periods_for(series))
 
 
 def _statements(book: Known, row: dict[str, Any]) -> Table:

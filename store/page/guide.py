@@ -38,7 +38,13 @@ def _page(name: str, text: str) -> Page:
     first, _, _ = text.partition("\n")
     title = first.removeprefix("# ").strip()
     # the guide is our own text, and HTML in it would come out as text
-    return Page(name, title, Markup(_writer().render(text)))  # noqa: S704
+    return Page(name, title, Markup(_within_reach(_writer().render(text))))  # noqa: S704
+
+
+def _within_reach(html: str) -> str:
+    """Lets the keyboard scroll what is wider than the page."""
+    html = html.replace("<pre>", '<pre tabindex="0">')
+    return html.replace("<table>", '<div class="wide" tabindex="0"><table>').replace("</table>", "</table></div>")
 
 
 @cache

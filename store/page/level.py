@@ -24,6 +24,11 @@ class Crossed:
     last: datetime | None
     sentence: str
 
+    @property
+    def written(self) -> str:
+        """The level without needless digits."""
+        return f"{self.level:.15g}"
+
 
 @dataclass(frozen=True)
 class Levelled:

@@ -3,14 +3,19 @@
 from __future__ import annotations
 
 import tomllib
+from collections.abc import Sequence
 from dataclasses import dataclass
+from datetime import datetime
+from functools import lru_cache
 from typing import Any
+
+from markupsafe import Markup
 
 from driftbook.store import figures, words
 from driftbook.store.charts.scale import Scale
 from driftbook.store.known import Known
-from driftbook.store.page.small_year import SmallYear, periods_for, small_year
-from driftbook.store.page.whiskers import Whisker, shared_axis, whisker
+from driftbook.store.page.small_year import periods_for, small_years
+from driftbook.store.page.whiskers import shared_axis, whisker
 from driftbook.store.sql import first_row, query
 
 
@@ -23,13 +28,12 @@ class Line:
     unit: str
     value: str
     observed: str
-    year: SmallYear | None
+    year: Markup
     volatility: str
-    volatility_mark: Whisker | None
+    volatility_mark: Markup
     volatility_moved: bool
-    in_own_unit: bool
     half_life: str
-    half_life_mark: Whisker | None
+    half_life_mark: Markup
     half_life_moved: bool
     model: str
     model_name: str
@@ -49,6 +53,7 @@ class Cause:
     note: str
     changes: list[tuple[str, str, str]]
     since_run: int
+    since: datetime
 
 
 @dataclass(frozen=True)
@@ -68,11 +73,13 @@ def overview(book: Known) -> Overview:
     sql = query("page_rows").format(latest=source, chosen="true")
     rows = in_plan_order(book.rows(sql, run=book.run_id, **told), _planned(book))
     for row in rows:
+        row["now"] = said_now(row)
         row["changes"] = changes(row)
+        row["moved"] = {what for what, _, _ in row["changes"]}
     years = years_of(book, len(rows))
     volatility_axis = shared_axis((*_volatility(row), _volatility_before(row)) for row in rows)
     half_life_axis = shared_axis((*_half_life(row), _half_life_before(row)) for row in rows)
-    lines = [_line(row, book, years.get(row["series"]), volatility_axis, half_life_axis) for row in rows]
+    lines = [_line(row, book, years.get(row["series"], Markup()), volatility_axis, half_life_axis) for row in rows]
     return Overview(
         lines=lines,
         causes=[_cause(row) for row in rows if row["note"]],
@@ -82,23 +89,28 @@ def overview(book: Known) -> Overview:
     )
 
 
-def years_of(book: Known, series: int) -> dict[str, SmallYear]:
+def years_of(book: Known, series: int) -> dict[str, Markup]:
     """The small years by series."""
-    periods = periods_for(series)
-    rows = book.rows(query("page_years"), run=book.run_id, periods=periods)
-    return {row["series"]: small_year(row, periods) for row in rows}
+    told = {"run": book.run_id, "periods": periods_for(series)}
+    columns = book.con.execute(query("page_years"), told).fetchnumpy()
+    return dict(small_years(columns, told["periods"]))
 
 
-def in_plan_order(rows: list[dict[str, Any]], planned: list[str]) -> list[dict[str, Any]]:
+def in_plan_order(rows: list[dict[str, Any]], planned: Sequence[str]) -> list[dict[str, Any]]:
     """Rows as the plan names their series, then the others as they were added."""
     place = {name: at for at, name in enumerate(planned)}
     return sorted(rows, key=lambda row: place.get(row["series"], len(place)))
 
 
-def _planned(book: Known) -> list[str]:
+def _planned(book: Known) -> tuple[str, ...]:
     row = first_row(book.con, query("page_plan"), {"run": book.run_id})
-    named = tomllib.loads(row[0]).get("series", []) if row else []
-    return [one["name"] for one in named]
+    return _series_named(row[0]) if row else ()
+
+
+@lru_cache(maxsize=4)
+def _series_named(plan: str) -> tuple[str, ...]:
+    """The series in the order of a plan's text, which seldom changes and is long when they are many."""
+    return tuple(one["name"] for one in tomllib.loads(plan).get("series", []))
 
 
 def _volatility(row: dict[str, Any]) -> tuple[float | None, float | None, float | None]:
@@ -109,22 +121,21 @@ def _volatility(row: dict[str, Any]) -> tuple[float | None, float | None, float 
 
 def _volatility_before(row: dict[str, Any]) -> float | None:
     """Where it was at the run before, if that is another figure than now."""
-    moved = "volatility" in _moved(row)
+    moved = "volatility" in row["moved"]
     return figures.scaled(row["before_volatility"], row["before_volatility_unit"]) if moved else None
 
 
 def _half_life_before(row: dict[str, Any]) -> float | None:
-    return row["before_half_life"] if "half-life" in _moved(row) else None
+    return row["before_half_life"] if "half-life" in row["moved"] else None
 
 
 def _half_life(row: dict[str, Any]) -> tuple[float | None, float | None, float | None]:
     return row["half_life_days"], row["half_life_days_lower"], row["half_life_days_upper"]
 
 
-def _line(
-    row: dict[str, Any], book: Known, year: SmallYear | None, volatility_axis: Scale, half_life_axis: Scale
-) -> Line:
-    moved = _moved(row)
+def _line(row: dict[str, Any], book: Known, year: Markup, volatility_axis: Scale, half_life_axis: Scale) -> Line:
+    now, moved = row["now"], row["moved"]
+    in_own_unit = row["estimated"] and not figures.is_relative(row["volatility_unit"])
     return Line(
         series=row["series"],
         name=words.clean(row["series"]),
@@ -132,14 +143,13 @@ def _line(
         value=f"{row['value']:.6g}" if row["value"] is not None else "",
         observed=words.day(row["observed_at"]),
         year=year,
-        volatility=words.volatility(row),
-        volatility_mark=whisker(volatility_axis, _volatility(row), _volatility_before(row)),
+        volatility=now["volatility"],
+        volatility_mark=whisker(volatility_axis, _volatility(row), _volatility_before(row), square=in_own_unit),
         volatility_moved="volatility" in moved,
-        in_own_unit=row["estimated"] and not figures.is_relative(row["volatility_unit"]),
-        half_life=words.half_life_now(row),
+        half_life=now["half-life"],
         half_life_mark=whisker(half_life_axis, _half_life(row), _half_life_before(row)),
         half_life_moved="half-life" in moved,
-        model=words.model(row["model"]) if row["estimated"] else "not estimated",
+        model=now["model"] if row["estimated"] else "not estimated",
         model_name=row["model"] or "",
         weight="" if row["model_weight"] is None else f"{row['model_weight']:.2f}",
         model_moved="model" in moved,
@@ -149,24 +159,29 @@ def _line(
     )
 
 
+def said_now(row: dict[str, Any]) -> dict[str, str]:
+    """What is said of a series, in the digits shown."""
+    return {
+        "volatility": words.volatility(row),
+        "half-life": words.half_life_now(row),
+        "model": words.model(row["model"]),
+    }
+
+
 def changes(row: dict[str, Any]) -> list[tuple[str, str, str]]:
     """What is said otherwise than at the run before, in the digits shown: what, from, to."""
     if not row["said_before"] or not row["estimated"]:
         return []
-    pairs = [
-        ("volatility", words.volatility(row, "before_"), words.volatility(row)),
-        ("half-life", words.half_life_before(row), words.half_life_now(row)),
-        ("model", words.model(row["before_model"]), words.model(row["model"])),
-    ]
-    return [(what, one, other) for what, one, other in pairs if one != other]
-
-
-def _moved(row: dict[str, Any]) -> set[str]:
-    return {what for what, _, _ in row["changes"]}
+    before = {
+        "volatility": words.volatility(row, "before_"),
+        "half-life": words.half_life_before(row),
+        "model": words.model(row["before_model"]),
+    }
+    return [(what, before[what], now) for what, now in said_now(row).items() if before[what] != now]
 
 
 def _cause(row: dict[str, Any]) -> Cause:
-    return Cause(row["series"], words.clean(row["series"]), row["note"], row["changes"], row["run_id"])
+    return Cause(row["series"], words.clean(row["series"]), row["note"], row["changes"], row["run_id"], row["said_at"])
 
 
 def _note(row: dict[str, Any], book: Known) -> str:

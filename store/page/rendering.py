@@ -10,7 +10,7 @@ from jinja2 import Environment, PackageLoader, StrictUndefined
 
 from driftbook.store import words
 from driftbook.store.known import Known
-from driftbook.store.page import small_year, whiskers
+from driftbook.store.page import whiskers
 from driftbook.store.page.links import Links
 from driftbook.store.table import count_of
 
@@ -29,9 +29,7 @@ def _environment() -> Environment:
         trim_blocks=True,
         lstrip_blocks=True,
     )
-    made.globals.update(
-        words=words, count_of=count_of, ticks=whiskers.ticks, caution=CAUTION, small_height=small_year.HEIGHT
-    )
+    made.globals.update(words=words, count_of=count_of, ticks=whiskers.ticks, caution=CAUTION)
     made.filters["shell"] = shlex.quote
     return made
 

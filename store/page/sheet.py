@@ -76,7 +76,7 @@ def sheet(book: Known, series: str, asked: Asked, place: str = "sheet") -> Sheet
         past=found,
         said=said(book, row, place),
         models=which_model(book, row, place),
-        why=why(book, series, asked.earlier, asked.later),
+        why=why(book, row, asked.earlier, asked.later),
         source=_source(book, series),
     )
 

@@ -2,21 +2,17 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Iterator, Mapping
 from typing import Any
 
-HEIGHT = 28
+import numpy as np
+from markupsafe import Markup
+from numpy.typing import NDArray
+
 FINE, COARSE = 52, 26
 _MANY = 300
-
-
-@dataclass(frozen=True)
-class SmallYear:
-    """Paths on a paper as wide as the year has periods."""
-
-    line: str
-    band: str
-    width: int
+_HEIGHT = 28
+_EDGE = 2  # what the line needs above and below
 
 
 def periods_for(series: int) -> int:
@@ -24,27 +20,43 @@ def periods_for(series: int) -> int:
     return COARSE if series > _MANY else FINE
 
 
-def small_year(row: dict[str, Any], periods: int) -> SmallYear:
-    """The paths of one row of the query."""
-    low, high = min(row["lowest"]), max(row["highest"])
-    scale = (HEIGHT - 4) / (high - low) if high > low else 0.0
-    places = [[_height(value, high, scale) for value in row[name]] for name in ("last", "lowest", "highest")]
-    last, lowest, highest = places
-    at = row["period"]
-    around = [*zip(at, highest, strict=True), *zip(reversed(at), reversed(lowest), strict=True)]
-    return SmallYear(_path(list(zip(at, last, strict=True))), _path(around), periods - 1)
+def small_years(columns: Mapping[str, NDArray[Any]], periods: int) -> Iterator[tuple[str, Markup]]:
+    """A drawing for each series, from columns series (in pieces), period, last, lowest and highest."""
+    names = columns["series"]
+    if not len(names):
+        return
+    starts = np.flatnonzero(np.concatenate([[True], names[1:] != names[:-1]]))
+    lengths = np.diff(np.append(starts, len(names)))
+    top = np.maximum.reduceat(columns["highest"], starts)
+    span = top - np.minimum.reduceat(columns["lowest"], starts)
+    scale = np.where(span > 0, (_HEIGHT - 2 * _EDGE) / np.where(span > 0, span, 1.0), 0.0)
+    above = np.where(span > 0, _EDGE, _HEIGHT // 2)
+
+    def down(column: str) -> NDArray[np.int64]:
+        """Pixels from the top."""
+        values = np.repeat(top, lengths) - columns[column]
+        heights: NDArray[np.int64] = np.rint(np.repeat(above, lengths) + values * np.repeat(scale, lengths)).astype(int)
+        return heights
+
+    at, last, high, low = columns["period"], down("last"), down("highest"), down("lowest")
+    line = [f"l{x}{y:+}" if y else f"h{x}" for x, y in zip(_steps(at), _steps(last), strict=True)]
+    band = [f"m{x}{y:+}v{h}" for x, y, h in zip(_steps(at), _steps(high, low), (low - high).tolist(), strict=True)]
+    for start, length in zip(starts.tolist(), lengths.tolist(), strict=True):
+        line[start] = f"M{at[start]} {last[start]}{'h1' if length == 1 else ''}"
+        band[start] = f"M{at[start]} {high[start]}v{low[start] - high[start]}"
+        stop = start + length
+        yield names[start], _drawing("".join(line[start:stop]), "".join(band[start:stop]), periods - 1)
 
 
-def _height(value: float, high: float, scale: float) -> int:
-    return round(2 + (high - value) * scale) if scale else HEIGHT // 2
+def _steps(there: NDArray[Any], before: NDArray[Any] | None = None) -> list[int]:
+    """From each place to the next, which is shorter to write than the places; the first of a series is written over."""
+    steps: list[int] = (there - np.roll(there if before is None else before, 1)).tolist()
+    return steps
 
 
-def _path(points: list[tuple[int, int]]) -> str:
-    """A path in steps from point to point, which is shorter than in places; one point is a short stroke."""
-    (x, y), *rest = points
-    path = [f"M{x} {y}l"]
-    for next_x, next_y in rest:
-        down = next_y - y
-        path.append(f"{next_x - x}{down} " if down < 0 else f"{next_x - x} {down} ")
-        x, y = next_x, next_y
-    return "".join(path).rstrip() if rest else f"M{x} {y}h1"
+def _drawing(line: str, band: str, width: int) -> Markup:
+    """The band is a stroke a period wide for each of them."""
+    return Markup(  # noqa: S704
+        f'<svg class=y viewBox="0 0 {width} {_HEIGHT}" preserveAspectRatio=none aria-hidden=true>'
+        f'<path d="{band}"/><path d="{line}"/></svg>'
+    )

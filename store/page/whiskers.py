@@ -1,23 +1,17 @@
-"""An estimate as a dot on its interval, and as it was at the run before: one axis in decades for all rows."""
+"""An estimate as a dot on its interval, and as it was at the run before: one axis in decades for all rows.
+
+There are two of them in each of very many rows: hence no quotes where HTML needs none.
+"""
 
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass
+
+from markupsafe import Markup
 
 from driftbook.store.charts.scale import Scale, in_decades, number_text
 
 Numbers = tuple[float | None, float | None, float | None]
-
-
-@dataclass(frozen=True)
-class Whisker:
-    """Places in per cent of the axis, as text; an open end runs to the edge. Empty: nothing to draw there."""
-
-    start: str
-    width: str
-    dot: str
-    before: str
 
 
 def shared_axis(estimates: Iterable[Iterable[float | None]]) -> Scale:
@@ -30,19 +24,28 @@ def ticks(axis: Scale) -> list[tuple[str, str]]:
     return [(_per_cent(axis.at(number)), number_text(number)) for number in axis.ticks(3)]
 
 
-def whisker(axis: Scale, now: Numbers, before: float | None) -> Whisker | None:
-    """One row's mark; None without any number."""
+def whisker(axis: Scale, now: Numbers, before: float | None, *, square: bool = False) -> Markup:
+    """One row's mark: an open end runs to the edge, no interval has no bar, and no number leaves nothing."""
     number, lower, upper = (end if axis.holds(end) else None for end in now)
     if number is None and lower is None and upper is None:
-        return None
+        return Markup()
+    bar = "" if lower is None and upper is None else _bar(axis, lower, upper)
+    hollow = f"<circle cx={_place(axis, before)} />" if before is not None and axis.holds(before) else ""
+    solid = "" if number is None else _solid(_place(axis, number), square=square)
+    return Markup(f"<svg class=w aria-hidden=true>{bar}{hollow}{solid}</svg>")  # noqa: S704
+
+
+def _bar(axis: Scale, lower: float | None, upper: float | None) -> str:
     start = 0.0 if lower is None else axis.at(lower)
     stop = 100.0 if upper is None else axis.at(upper)
-    return Whisker(_per_cent(start), _per_cent(stop - start), _place(axis, number), _place(axis, before))
+    return f"<rect x={_per_cent(start)} width={_per_cent(stop - start)} />"
 
 
-def _place(axis: Scale, number: float | None) -> str:
-    if number is None or not axis.holds(number):
-        return ""
+def _solid(place: str, *, square: bool) -> str:
+    return f"<rect class=d x={place} />" if square else f"<circle class=d cx={place} />"
+
+
+def _place(axis: Scale, number: float) -> str:
     return _per_cent(min(100.0, max(0.0, axis.at(number))))
 
 

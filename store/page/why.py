@@ -3,7 +3,10 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
+from driftbook.estimators import MODELS
+from driftbook.estimators.model import Parameter
 from driftbook.store import words
 from driftbook.store.digits import with_interval
 from driftbook.store.errors import UsageError
@@ -25,11 +28,11 @@ class Why:
     between: tuple[str, ...] = ()
 
 
-def why(book: Known, series: str, earlier: str | None, later: str | None) -> Why:
+def why(book: Known, row: dict[str, Any], earlier: str | None, later: str | None) -> Why:
     """Explains a series between two runs; by default the last change of its latest window that was known then."""
     then = f"run:{book.run_id}" if book.as_of and book.run_id else None
     try:
-        found = explain_on(book.con, series, earlier=earlier, later=later or then)
+        found = explain_on(book.con, row["series"], earlier=earlier, later=later or then)
     except UsageError as error:
         text = str(error)
         return Why(text[:1].upper() + text[1:])
@@ -37,7 +40,7 @@ def why(book: Known, series: str, earlier: str | None, later: str | None) -> Why
     if one.run_id == other.run_id:
         return Why(f"There is one statement so far, of run {one.run_id}; nothing has moved yet.")
     return Why(
-        _sentence(found), _head(one), _head(other), one.run_id, other.run_id, _rows(found), tuple(_between(found))
+        _sentence(found), _head(one), _head(other), one.run_id, other.run_id, _rows(found, row), tuple(_between(found))
     )
 
 
@@ -55,13 +58,21 @@ def _sentence(found: Explanation) -> str:
     return f"Between run {found.earlier.run_id} and run {found.later.run_id}: {'; '.join(causes) or 'nothing came'}."
 
 
-def _rows(found: Explanation) -> tuple[tuple[str, str, str], ...]:
+def _rows(found: Explanation, row: dict[str, Any]) -> tuple[tuple[str, str, str], ...]:
     one, other = found.earlier, found.later
+    names = [(parameter.name, _named(parameter, row)) for parameter in MODELS[found.model].parameters]
     return (
-        *((name, with_interval(*one.numbers[name]), with_interval(*other.numbers[name])) for name in one.numbers),
+        *((shown, with_interval(*one.numbers[name]), with_interval(*other.numbers[name])) for name, shown in names),
         ("window", _window(one), _window(other)),
         ("status", one.status.replace("_", " "), other.status.replace("_", " ")),
     )
+
+
+def _named(parameter: Parameter, row: dict[str, Any]) -> str:
+    """A parameter with its unit: the registry counts in x, the unit of the series, and t, that of its clock."""
+    time = "second" if row["clock"] == "seconds" else "year"
+    unit = parameter.unit.replace("t", time).replace("x", words.clean(row["unit"]) or "unit")
+    return f"{parameter.name}, {unit}" if unit else parameter.name
 
 
 def _window(said: Statement) -> str:

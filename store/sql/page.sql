@@ -17,17 +17,18 @@ with last as (
   from observation_at_run($run) o
   where o.series not in (select e.series from {latest} e) group by o.series
 )
-select s.series, s.unit, s.clock, coalesce(l.observed_at, t.observed_at) as observed_at,
+select s.series, s.unit, s.clock, s.in_force, coalesce(l.observed_at, t.observed_at) as observed_at,
   coalesce(l.value, t.value) as value, coalesce(l.stale, false) as stale, s.stale_after_days, l.lookback, l.window_end,
   l.model, l.model_weight, l.volatility, l.volatility_lower, l.volatility_upper, l.volatility_unit, l.drift,
   l.half_life_days, l.half_life_days_lower, l.half_life_days_upper, l.half_life_unbounded, l.can_reach_zero, l.note,
-  l.run_id, l.series is not null as estimated, p.series is not null as said_before, p.model as before_model,
+  l.run_id, r.moment as said_at, l.series is not null as estimated, p.series is not null as said_before, p.model as before_model,
   p.volatility as before_volatility, p.volatility_lower as before_volatility_lower,
   p.volatility_upper as before_volatility_upper, p.volatility_unit as before_volatility_unit,
   p.half_life_days as before_half_life, p.half_life_days_lower as before_half_life_lower,
   p.half_life_days_upper as before_half_life_upper, p.half_life_unbounded as before_half_life_unbounded
 from series_at_run($run) s
 left join {latest} l on l.series = s.series
+left join run r on r.run_id = l.run_id
 left join latest_at_run($run - 1) p on p.series = s.series
 left join last t on t.series = s.series
 where {chosen}
@@ -35,29 +36,26 @@ order by s.added_at, s.series
 
 -- name: page_years
 -- The year before the book's last observation in equal periods, for each series: last, lowest and highest value.
-with edge as (
-  select max(o.observed_at) as last from observation_at_run($run) o
+with there as (
+  select o.series_id, o.observed_at, o.value from base.observation o
+  where o.run_from <= $run and (o.run_to is null or o.run_to > $run)
+), edge as (
+  select max(t.observed_at) as last from there t
 ), period as (
-  select o.series, least($periods - 1, greatest(0, $periods - 1 - floor(
-      (epoch(e.last) - epoch(o.observed_at)) * $periods / 31536000)::integer)) as period,
-    arg_max(o.value, o.observed_at) as last, min(o.value) as lowest, max(o.value) as highest
-  from observation_at_run($run) o, edge e
-  where o.observed_at > e.last - interval 365 day
-  group by o.series, period
+  select t.series_id, least($periods - 1, greatest(0, $periods - 1 - floor(
+      (epoch(e.last) - epoch(t.observed_at)) * $periods / 31536000)::integer)) as period,
+    arg_max(t.value, t.observed_at) as last, min(t.value) as lowest, max(t.value) as highest
+  from there t, edge e
+  where t.observed_at > e.last - interval 365 day
+  group by t.series_id, period
 )
-select p.series, list(p.period order by p.period) as period, list(p.last order by p.period) as last,
-  list(p.lowest order by p.period) as lowest, list(p.highest order by p.period) as highest
-from period p group by p.series order by p.series
+select s.series, p.period, p.last, p.lowest, p.highest
+from period p join base.series s on s.series_id = p.series_id
+order by s.series_id, p.period
 
 -- name: page_latest_csv
 -- The view latest, in the order in which series were added.
 select l.* from {latest} l join base.series s on s.series = l.series order by s.series_id
-
--- name: page_years_csv
--- What the small years are drawn from.
-select y.series, unnest(y.period) as period, unnest(y.last) as last, unnest(y.lowest) as lowest,
-  unnest(y.highest) as highest
-from ({years}) y
 
 -- name: page_values
 -- A series' last observations in time order, whether each belongs to the window, and the run that last wrote it.

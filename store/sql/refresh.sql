@@ -20,7 +20,7 @@ order by all
 
 -- name: observed
 -- Observations of some series in any order, with the local day that each falls on if it is asked for.
-select o.series_id, epoch_us(o.observed_at) as us, o.value, {day} as day
+select o.series_id, epoch_us(o.observed_at) as us, o.value{day}
 from base.observation o
 where {when} and o.series_id in (select unnest($series::integer[]))
 

@@ -19,11 +19,13 @@ where l.run_id = ?
 order by l.table_name, l.series_id nulls first
 
 -- name: columns_of_base
--- The columns of the tables in the schema base.
-select c.table_name, c.column_name
+-- Every base table with its columns.
+select c.table_name, list(c.column_name order by c.column_index)
 from duckdb_columns() c
-where c.database_name = current_database() and c.schema_name = 'base' and not c.internal
-order by c.table_name, c.column_index
+join duckdb_tables() t using (table_oid)
+where c.database_name = current_database() and t.database_name = current_database() and c.schema_name = 'base'
+group by c.table_name
+order by c.table_name
 
 -- name: tables_of
 -- The base tables of an attached book.

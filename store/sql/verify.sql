@@ -75,15 +75,6 @@ where q.run_from < q.ends_before
 group by all
 order by all
 
--- name: columns_to_read
--- Every base table with all its columns.
-select c.table_name, list(c.column_name order by c.column_index)
-from duckdb_columns() c
-join duckdb_tables() t using (table_oid)
-where c.database_name = current_database() and t.database_name = current_database() and c.schema_name = 'base'
-group by c.table_name
-order by c.table_name
-
 -- name: tables_of_migrations
 -- The base tables that hold only what the migrations put there.
 select t.table_name

@@ -43,12 +43,13 @@ def correct(path: Path, at: str | None = None, to: float = 99.0) -> None:
 
 
 def thousand_series(path: Path) -> Path:
-    """A thousand series with a year of days and a morning, each with a window."""
+    """A thousand series with a year of weekdays and a morning, each with a window."""
     count, length = 1000, 262
     rng = np.random.default_rng(20260630)
     values = 100 * np.exp(np.cumsum(rng.normal(0, 0.02, (count, length)), axis=1))
     end = datetime(2026, 6, 29)
-    times = [end - timedelta(days=length - 1 - day) for day in range(length)]
+    back = (end - timedelta(days=days) for days in range(2 * length))
+    times = sorted([day for day in back if day.weekday() < 5][:length])
     names = [f"series_{number:04d}" for number in range(count)]
     frame = pl.DataFrame(
         {"series": np.repeat(names, length), "time": times * count, "value": values.round(2).ravel()},

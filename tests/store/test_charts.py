@@ -1,6 +1,7 @@
 """The charts in a notebook: what they draw is what the views hold."""
 
 import json
+import re
 import subprocess
 import sys
 
@@ -9,6 +10,8 @@ from page_books import small_book
 
 from driftbook import store
 from driftbook.store import charts
+from driftbook.store.charts.style import Palette
+from driftbook.store.page.drawn import drawn, warm_up
 
 
 @pytest.fixture(scope="module")
@@ -110,3 +113,22 @@ def test_what_cannot_be_drawn_is_said_in_a_sentence(con):
 def test_charts_are_loaded_only_when_asked_for():
     code = "import sys\nfrom driftbook import store\nassert 'altair' not in sys.modules\nstore.charts.values"
     subprocess.run([sys.executable, "-c", code], check=True)
+
+
+def test_ink_goes_from_shade_to_ink_whatever_the_colours_are_called():
+    plain = Palette(ink="#000000", shade="#ffff00")
+    assert [plain.inked(share) for share in (0.0, 0.5, 1.0)] == ["#ffff00", "#808000", "#000000"]
+    named = Palette(ink="var(--ink)", shade="var(--shade)")
+    assert named.inked(0.25) == "color-mix(in srgb, var(--ink) 25%, var(--shade))"
+
+
+def test_the_page_draws_in_two_widths_with_names_of_its_own_and_without_the_network(con):
+    chart = charts.values(con, "power_da", level=60.0)
+    one, other = (drawn(chart, place, 'of "it" & more') for place in ("one", "other"))
+    assert re.findall(r'viewBox="0 0 (\d+) ', one.svg) == ["800", "340"]
+    names = [re.findall(r'id="([^"]+)"', picture.svg) for picture in (one, other)]
+    assert len(set(names[0] + names[1])) == len(names[0] + names[1]) > 0
+    assert set(re.findall(r"url\(#([^)]+)\)", one.svg)) <= set(names[0])
+    assert one.svg.count('role="img" aria-label="of &#34;it&#34; &amp; more"') == 2
+    assert "http" not in one.svg.replace("http://www.w3.org/", "")
+    warm_up()

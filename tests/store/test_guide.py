@@ -10,7 +10,7 @@ from driftbook.store.guide import pictures, reference
 
 GUIDE = ROOT / "store" / "guide"
 PAGES = sorted(GUIDE.glob("*.md"))
-PATHS = re.compile(r'd="([^"]+)"')
+PATHS = re.compile(r' d="([^"]+)"')
 
 
 @pytest.mark.parametrize("page", PAGES, ids=lambda path: path.name)

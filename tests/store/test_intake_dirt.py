@@ -174,6 +174,22 @@ def test_what_only_looks_like_a_number_is_refused(take):
     )
 
 
+LIKE_NOTHING = (
+    "n/a", "N/A", "n.a.", "N.A.", "NA", "na", "#N/A", "#NA", "#N/A N/A", "#VALUE!", "#REF!", "#DIV/0!", "null", "NULL",
+    "Null", "None", "nil", "none", "missing", "-", "--", "—", "..", "...", "?", "*", "x", ".", "TBD", "closed",
+)  # fmt: skip
+
+
+def test_what_means_nothing_is_refused_in_every_spelling_and_a_blank_when_told(take, con):
+    data = "".join(f"gas;2024-01-{day:02};{text}\n" for day, text in enumerate(LIKE_NOTHING, start=1))
+    new, refused = take("series;time;value\n" + data)
+    assert (new, {reason for _, reason in refused}) == (0, {"not_a_number"})
+    told = con.execute("select line, reason from base.refused_row order by line").fetchall()
+    assert told == [(line, "not_a_number") for line in range(2, 2 + len(LIKE_NOTHING))]
+    new, refused = take("series;time;value\n" + data, "told", blank=LIKE_NOTHING)
+    assert (new, {reason for _, reason in refused}) == (0, {"no_value"})
+
+
 def test_what_is_not_finite_is_refused(take):
     texts = ("inf", "-inf", "Infinity", "nan", "NaN", "-NAN", "1e999", "-1e999", "9" * 400)
     data = "".join(f"gas,2024-01-01,{text}\n" for text in texts)

@@ -8,15 +8,19 @@ from pathlib import Path
 
 import duckdb
 import httpx2
+import numpy as np
 import pytest
 from page_books import HOSTILE, correct, small_book
 from starlette.testclient import TestClient
 
 from driftbook import store
+from driftbook.store.charts.scale import in_decades
 from driftbook.store.cli.app import run as run_command
 from driftbook.store.page import create_app
 from driftbook.store.page.csv_text import csv_text
 from driftbook.store.page.guard import HEADERS
+from driftbook.store.page.small_year import small_years
+from driftbook.store.page.whiskers import whisker
 
 ADDRESSES = ["/", "/series?name=power_da", "/newest.json", "/csv/latest.csv", "/static/page.css", "/no"]
 MEGABYTE = 1_000_000
@@ -252,6 +256,42 @@ def test_why_compares_the_runs_that_are_asked_for(client):
     assert "corrected to 99 in run 2" in words
 
 
+def test_figures_of_a_comparison_have_units(client):
+    words = words_of(client.get("/series?name=power_da&from=1&to=2"))
+    assert "theta, EUR/t" in words
+    assert "sigma, EUR/t/√year" in words
+    assert "kappa, 1/year" in words
+
+
+def test_a_whisker_runs_to_the_edge_where_there_is_no_end_and_has_no_bar_without_an_interval():
+    axis = in_decades([1.0, 100.0], 100.0)
+    both, open_end, alone = (
+        _Words(whisker(axis, (10.0, *ends), None)).tags[1:] for ends in ((5.0, 20.0), (5.0, None), (None, None))
+    )
+    assert alone == [("circle", {"class": "d", "cx": "50%"})]
+    bars = [tags[0][1] for tags in (both, open_end)]
+    start, *widths = (float(text[:-1]) for text in (bars[0]["x"], *(bar["width"] for bar in bars)))
+    assert bars[0]["x"] == bars[1]["x"]
+    assert widths == [pytest.approx(100 - 2 * start, abs=0.2), pytest.approx(100 - start, abs=0.2)]
+    assert "<circle cx=25% />" in whisker(axis, (10.0, 5.0, 20.0), axis.low * (axis.high / axis.low) ** 0.25)
+
+
+def test_a_small_year_goes_through_the_values():
+    rows = {
+        "series": np.array(["a", "a", "a", "b", "c", "c"], object),
+        "period": np.array([0, 1, 4, 2, 3, 4]),
+        "last": np.array([1.0, 3.0, 2.0, 5.0, 7.0, 7.0]),
+        "lowest": np.array([1.0, 1.0, 2.0, 5.0, 7.0, 7.0]),
+        "highest": np.array([2.0, 3.0, 3.0, 5.0, 7.0, 7.0]),
+    }
+    found = {name: [a["d"] for tag, a in _Words(year).tags if tag == "path"] for name, year in small_years(rows, 5)}
+    assert found == {
+        "a": ["M0 14v12m1-24v24m3-24v12", "M0 26l1-24l3+12"],
+        "b": ["M2 14v0", "M2 14h1"],
+        "c": ["M3 14v0m1+0v0", "M3 14h1"],
+    }
+
+
 def test_the_demo_is_shown_as_the_tour_tells_it(island):
     book = island / "island.duckdb"
     client = client_of(book)
@@ -265,6 +305,9 @@ def test_the_demo_is_shown_as_the_tour_tells_it(island):
     columns, *rows = rows_of(client.get("/csv/latest.csv"))
     assert sorted((row[0], row[columns.index("model")]) for row in rows) == models
     assert "358 (322–395)" in words_of(client.get("/series?name=power_da"))
+    assert "In force is ou: another takes its place when it leads by 6 in bic" in words_of(
+        client.get("/series?name=pellets_fob")
+    )
     assert "Run 7 of" in words_of(client.get("/?as_of=2026-06-30T08:00Z"))
 
 
@@ -285,7 +328,7 @@ def test_the_guide_is_served_and_its_links_lead_to_pages(client):
         assert answer.status_code == 200
         found = _Words(answer.text)
         assert [tag for tag, _ in found.tags].count("h1") == 1
-        links = [a["href"] for tag, a in found.tags if tag == "a"]
+        links = [a.get("href") or a["src"] for tag, a in found.tags if tag in ("a", "img")]
         for link in links:
             if not link.startswith("http"):
                 assert client.get(str(httpx2.URL(f"http://127.0.0.1{address}").join(link))).status_code == 200

@@ -230,12 +230,27 @@ def test_every_picture_has_words_instead(page, small):
         assert len(pictures.nth(at).get_attribute("aria-label")) > 20
 
 
+def test_on_a_telephone_a_row_is_two_lines_and_gives_its_numbers_on_focus(page, small):
+    page.set_viewport_size({"width": 360, "height": 800})
+    page.goto(small)
+    for at in range(3):
+        lines = rows(page).nth(at).evaluate("it => getComputedStyle(it).gridTemplateRows.split(' ').length")
+        assert lines == 2
+    row = rows(page).nth(2)
+    volatility, before = row.locator("td").nth(2), row.bounding_box()["height"]
+    assert volatility.locator("i").evaluate("it => getComputedStyle(it).clipPath") == "inset(50%)"
+    volatility.focus()
+    assert volatility.locator("i").evaluate("it => getComputedStyle(it).clipPath") == "none"
+    assert volatility.locator("i").evaluate("it => it.scrollWidth <= it.parentElement.clientWidth")
+    assert row.bounding_box()["height"] == before
+
+
 def test_an_empty_book_is_one_sentence(page, serve, book):
     page.goto(serve(book))
     assert page.get_by_role("heading").all_inner_texts() == ["No run yet: take in files, then refresh with a plan."]
 
 
-@pytest.mark.parametrize("address", ["/", "/series?name=power_da", "/?as_of=2024-03-01T09:00"])
+@pytest.mark.parametrize("address", ["/", "/series?name=power_da", "/?as_of=2024-03-01T09:00", "/guide/intake.md"])
 @pytest.mark.parametrize("width", [360, 800, 1400, 2400])
 def test_nothing_is_wider_than_the_window(page, small, address, width):
     page.set_viewport_size({"width": width, "height": 800})
@@ -301,7 +316,7 @@ def test_it_prints_on_a4_within_the_paper(page, small):
 @pytest.mark.skipif(not AXE.exists(), reason="axe-core is not installed (npm install axe-core, or AXE_CORE)")
 @pytest.mark.parametrize("scheme", ["light", "dark"])
 @pytest.mark.parametrize("width", [360, 1400])
-@pytest.mark.parametrize("address", ["/", "/series?name=power_da", "/?as_of=2024-03-01T09:00"])
+@pytest.mark.parametrize("address", ["/", "/series?name=power_da", "/?as_of=2024-03-01T09:00", "/guide/intake.md"])
 def test_axe_finds_nothing_serious(browser, small, address, width, scheme):
     context = browser.new_context(viewport={"width": width, "height": 900}, color_scheme=scheme, bypass_csp=True)
     page = context.new_page()

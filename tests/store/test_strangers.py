@@ -2,6 +2,7 @@
 
 import json
 import os
+import random
 import resource
 import shutil
 import signal
@@ -182,6 +183,76 @@ def test_what_looks_odd_but_stays_inside_changes_nothing(locked, folder, sql):
     before = settings(locked), state(folder)
     assert SECRET not in asking._answer(sql, written, None, locked).decode()
     assert (settings(locked), state(folder)) == before
+
+
+SEED = 20261201
+TARGETS = [
+    "{folder}/secret.csv",
+    "{folder}/secret.parquet",
+    "{folder}/other.duckdb",
+    "{folder}/out",
+    "{folder}/desk.duckdb",
+    "{folder}/*",
+    "/etc/passwd",
+    "file://{folder}/secret.txt",
+    "{folder}/./secret.txt",
+    "",
+    "con",
+    "desk",
+    "book",
+]
+INNER = [
+    *(f"from {function}('@')" for function in (
+        "read_csv", "read_text", "read_blob", "read_json", "read_parquet", "read_duckdb", "glob", "sniff_csv",
+        "parquet_schema", "query_table", "which_secret", "storage_info", "read_single_csv_file")),
+    "from '@'", 'from "@"', "from \"@\".secret", "copy (select 1) to '@'", "copy book.base.run to '@' (format parquet)",
+    "attach '@'", "attach '@' as x (read_only)", "export database '@'", "load '@'", "install '@'",
+    "set temp_directory = '@'", "set home_directory = '@'", "set allowed_paths = ['@']", "set file_search_path = '@'",
+    "set enable_external_access = true", "set lock_configuration = false", "reset disabled_filesystems",
+    "set variable x = '@'", "pragma import_database('@')",
+    "call enable_logging(storage := 'file', storage_path := '@')",
+    "delete from book.base.run", "insert into book.base.plan values ('@', '@', '@', 1, null)", "drop schema book.base",
+    "create table t as from '@'", "create view v as from '@'", "select current_setting('temp_directory')",
+    "select count(*) from observation", "select * from query('from read_text(''@'')')", "checkpoint", "vacuum analyze",
+]  # fmt: skip
+WRAPPED = [
+    "{0}", "{0}", "{0};", "explain {0}", "explain analyze {0}", "select * from ({0})", "select exists({0})",
+    "with w as ({0}) from w", "with w as materialized ({0}) select count(*) from w", "select 1; {0}", "{0}; select 1",
+    "from query($${0}$$)", "prepare p as {0}", "describe {0}", "summarize {0}", "({0}) union all ({0})",
+    "select (select count(*) from ({0}))", "begin; {0}; commit", "create macro m() as table {0}",
+    "/* {0} */ {0} -- {0}",
+    "select * from series s, lateral ({0}) limit 1", "from json_execute_serialized_sql(json_serialize_sql($${0}$$))",
+    "pivot ({0}) on 1 using count(*)", "copy ({0}) to '{{folder}}/out.csv'", "execute immediate '{0}'", "{0} {0}",
+]  # fmt: skip
+
+
+def try_statements(locked, folder, count, seed):
+    """Runs so many statements put together at random; gives how many were answered."""
+    chance = random.Random(seed)
+    before, answered = (settings(locked), state(folder)), 0
+    for _ in range(count):
+        sql = chance.choice(INNER)
+        for _ in range(chance.choice((1, 1, 2, 3))):
+            sql = chance.choice(WRAPPED).replace("{{", "{").replace("}}", "}").replace("{0}", sql)
+        sql = sql.replace("@", chance.choice(TARGETS)).replace("{folder}", str(folder))
+        try:
+            said = asking._answer(sql, written, None, locked).decode()
+            answered += 1
+        except UsageError as refused:
+            said = str(refused)
+        assert said.replace(sql, "").find(SECRET) < 0, sql
+        assert sorted(path.name for path in folder.iterdir()) == [name for name, _ in before[1]], sql
+    assert (settings(locked), state(folder)) == before
+    return answered
+
+
+def test_300_statements_put_together_at_random_reach_nothing(locked, folder):
+    assert 0 < try_statements(locked, folder, 300, SEED) < 150
+
+
+@pytest.mark.soak
+def test_5_000_statements_put_together_at_random_reach_nothing(locked, folder):
+    assert 0 < try_statements(locked, folder, 5_000, SEED + 1) < 2_500
 
 
 # what a query can use up
