@@ -17,6 +17,7 @@ FORKING.set_forkserver_preload(
         "driftbook.store.swap",
         "driftbook.store.writer",
         "pandas",  # which pyarrow loads where it is there
+        "tests.store.loaded",  # found where the tests are run in the checkout, as they usually are
     ]
 )
 
