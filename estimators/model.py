@@ -53,15 +53,18 @@ class Column:
     sql : str or None
         For a column that is a formula of stored ones: that formula, in SQL over stored columns of this model. None
         for a column that is stored.
-    kind : "double" or "boolean"
-        A boolean is 1.0, 0.0 or NaN in a `Fit`.
+    kind : "double", "boolean" or "word"
+        In a `Fit` a boolean is 1.0, 0.0 or NaN, and a word its place in `words`, or NaN.
+    words : tuple of str
+        For a column of words: those that there are.
     """
 
     name: str
     unit: str
     meaning: str
     sql: str | None = None
-    kind: Literal["double", "boolean"] = "double"
+    kind: Literal["double", "boolean", "word"] = "double"
+    words: tuple[str, ...] = ()
 
 
 def parameter_columns(parameter: Parameter) -> tuple[Column, ...]:
@@ -88,11 +91,13 @@ class Model:
         The model's equation in plain text.
     range : "real" or "positive"
         Which values it can take.
+    has_pull : bool
+        Whether its drift leads back to a level, or to one of several.
     is_relative : bool
         Whether `local_volatility` and `local_drift` are fractions of the value rather than in its units.
     local_volatility : tuple of three str
-        Volatility at the last value of a window, and the ends of its 95 % interval: SQL over stored columns and `x`,
-        the last value (of the series plus its shift, for a model of positive values).
+        Volatility at the last value of a window, and the ends of its 95 % interval: SQL over stored columns, `step`,
+        the mean step, and `x`, the last value (of the series plus its shift, for a model of positive values).
     local_drift : str
         Expected change per unit of time at the last value: SQL, likewise.
     reaches_zero : bool or None
@@ -108,12 +113,15 @@ class Model:
         Fits one piece of a batch; see `driftbook.estimators.batches`.
     log_density : callable
         What `loglik` calls with checked arguments.
+    of_logs : Model or None
+        The same model of the logarithm, for series of positive values; None where there is none.
     """
 
     name: str
     revision: int
     equation: str
     range: Literal["real", "positive"]
+    has_pull: bool
     is_relative: bool
     local_volatility: tuple[str, str, str]
     local_drift: str
@@ -124,6 +132,12 @@ class Model:
     columns: tuple[Column, ...]
     kernel: Kernel
     log_density: Loglik
+    of_logs: Model | None = None
+
+    @property
+    def settings(self) -> tuple[Parameter, ...]:
+        """What goes before the parameters in functions, belongs to a series and a lookback, and is not estimated."""
+        return ()
 
     @property
     def stored(self) -> tuple[Column, ...]:
@@ -131,9 +145,14 @@ class Model:
         return tuple(column for column in self.columns if column.sql is None)
 
     @cached_property
-    def has_pull(self) -> bool:
-        """Whether it has a pull to a level, and so a half-life."""
+    def has_half_life(self) -> bool:
+        """Whether a distance to its level halves in a time of its own."""
         return any(column.name == "half_life" for column in self.columns)
+
+    @cached_property
+    def tests_pull(self) -> bool:
+        """Whether a fit tells a p-value of no pull."""
+        return any(column.name == "no_reversion_p" for column in self.columns)
 
     @property
     def derived(self) -> tuple[Column, ...]:
@@ -233,6 +252,18 @@ class Model:
         columns = {c.name: found[c.name].reshape(shape) if c.name in found else _nothing(shape) for c in self.columns}
         return Fit(self.name, _count(lookback, shape), columns, status.reshape(shape))
 
+    def settings_of(self, x: ArrayLike, lookback: int) -> tuple[Array, ...]:
+        """The settings that a model would give series, shape (..., n_obs), from their first window; arrays (...)."""
+        del x, lookback
+        return ()
+
+    def rolling_by(
+        self, settings: Sequence[ArrayLike], x: ArrayLike, dt: ArrayLike, lookback: int, *, first: int = 0
+    ) -> Fit:
+        """`rolling` by given settings, in the order of `Model.settings`, each of shape () or (...)."""
+        del settings
+        return self.rolling(x, dt, lookback, first=first)
+
     def loglik(self, x: ArrayLike, dt: ArrayLike, *parameters: ArrayLike) -> Array:
         """Log-likelihood of windows at given parameters: log p(x_1 … x_n | x_0), in the series' own unit.
 
@@ -243,7 +274,7 @@ class Model:
         dt : array_like, shape (), (...) or (..., n)
             The step, as in `fit`.
         *parameters : array_like
-            The model's parameters, in its order; they broadcast with the windows.
+            The model's settings and parameters, in its order; they broadcast with the windows.
 
         Returns
         -------
@@ -260,7 +291,7 @@ class Model:
         """
         x = _series(x)
         steps = _steps(dt, x)
-        names = [parameter.name for parameter in self.parameters]
+        names = [parameter.name for parameter in (*self.settings, *self.parameters)]
         if len(parameters) != len(names):
             raise ValueError(f"{self.name} has the parameters {', '.join(names)}; got {len(parameters)} numbers")
         given = [_numbers(values, name) for values, name in zip(parameters, names, strict=True)]

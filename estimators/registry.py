@@ -9,12 +9,31 @@ from numpy.typing import ArrayLike
 
 from driftbook.estimators.model import Model
 from driftbook.estimators.models.abm import MODEL as ABM
+from driftbook.estimators.models.cir import MODEL as CIR
+from driftbook.estimators.models.ckls import MODEL as CKLS
 from driftbook.estimators.models.exp_ou import MODEL as EXP_OU
 from driftbook.estimators.models.gbm import MODEL as GBM
+from driftbook.estimators.models.inertial import MODEL as INERTIAL
+from driftbook.estimators.models.merton import MODEL as MERTON
 from driftbook.estimators.models.ou import MODEL as OU
+from driftbook.estimators.models.ou_noise import MODEL as OU_NOISE
+from driftbook.estimators.models.quartic import MODEL as QUARTIC
 from driftbook.estimators.result import Fit
 
-MODELS: Mapping[str, Model] = MappingProxyType({model.name: model for model in (ABM, GBM, OU, EXP_OU)})
+_ALL = (
+    ABM,
+    GBM,
+    OU,
+    EXP_OU,
+    CIR,
+    CKLS,
+    QUARTIC,
+    MERTON,
+    INERTIAL,
+    OU_NOISE,
+)
+
+MODELS: Mapping[str, Model] = MappingProxyType({model.name: model for model in _ALL})
 
 
 def rolling(

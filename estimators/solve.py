@@ -1,4 +1,4 @@
-"""Roots of many functions of one variable at once, each with its own bracket and its own end.
+"""Roots of many functions of one variable at once, each with its own end.
 
 References
 ----------

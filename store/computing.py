@@ -12,17 +12,24 @@ from numpy.typing import NDArray
 from driftbook.estimators import Model
 from driftbook.store.clocks import equal_step, microseconds_per_unit
 from driftbook.store.due import Slice
-from driftbook.store.functions import rolled
+from driftbook.store.for_model import ForModel, Settings, for_model
+from driftbook.store.functions import Stretch, rolled
 from driftbook.store.model_schema import stored_columns
-from driftbook.store.observed import Observed, Values
+from driftbook.store.observed import Observed
 from driftbook.store.series import Series, Setting
 
 
 def computed(
-    model: Model, slices: list[Slice], known: Observed, series: Mapping[int, Series], executor: Executor
+    model: Model,
+    slices: list[Slice],
+    known: Observed,
+    series: Mapping[int, Series],
+    fixed: Settings,
+    executor: Executor,
 ) -> pa.Table:
     """One row for each window of some slices: its series, lookback and times, and what the model says of it.
 
+    `fixed` are the model's settings of each series and lookback.
     A slice begins where its blocks begin, and windows before the first due one are passed over. A series shorter than
     its lookback has one window, which says so.
     """
@@ -30,7 +37,13 @@ def computed(
     begins = _integers(known.place(one.series_id).start for one in slices)
     firsts = begins + _integers(one.first for one in slices)
     stops = begins + _integers(one.stop + 1 for one in slices)
-    counts, fits = rolled(model, executor, (_stretch(model, one, known, settings[one.series_id]) for one in slices))
+    stretches = (
+        _stretch(
+            one, known, settings[one.series_id], for_model(model, settings[one.series_id], fixed.get(one.entry, ()))
+        )
+        for one in slices
+    )
+    counts, fits = rolled(model, executor, stretches)
     nth = np.arange(len(fits)) - np.repeat(np.cumsum(counts) - counts, counts)
     starts, ends = np.repeat(firsts, counts) + nth, np.repeat(stops - counts, counts) + nth
     columns = {
@@ -44,14 +57,16 @@ def computed(
     return found.filter(_wanted(slices, counts)) if any(one.ends is not None for one in slices) else found
 
 
-def _stretch(model: Model, one: Slice, known: Observed, setting: Setting) -> tuple[Values, Values, int, int]:
-    """Values, steps, lookback and first window of one slice; models for X > 0 alone take the series' shift."""
+def _stretch(one: Slice, known: Observed, setting: Setting, taken: ForModel) -> Stretch:
+    """What of a series one slice needs, as the model takes it."""
     begin = known.place(one.series_id).start
     here = slice(begin + one.start, begin + one.stop + 1)
     step = equal_step(setting.clock, setting.periods_per_year)
     steps = np.array([step]) if step else np.diff(known.us[here]) / microseconds_per_unit(setting.clock)
     x = known.values[here]
-    return x + setting.shift if setting.shift and model.range != "real" else x, steps, one.steps, one.first - one.start
+    return Stretch(
+        x + taken.shift if taken.shift else x, steps, one.steps, one.first - one.start, taken.settings, taken.on_logs
+    )
 
 
 def _integers(values: Iterable[int]) -> NDArray[np.int64]:

@@ -30,31 +30,15 @@ select f.function_name, null, null, regexp_replace(f.comment, ': [a-z_]+\\(.*\\)
 from duckdb_functions() f
 where f.database_name = current_database() and f.schema_name = 'main' and f.comment is not null;
 """
-_HEAD = """-- dictionary: what every view, column, macro and function means, with an example that runs.
+_HEAD = """-- dictionary: filled again, from the comments of the catalog and the list of functions.
 -- Printed by `python -m driftbook.store.dictionary_schema`.
-create table base.dictionary_entry (
-  name varchar not null,
-  column_name varchar,
-  unit varchar,
-  meaning varchar not null,
-  example varchar
-);
-
-create view main.dictionary as
-select d.name, d.column_name, d.unit, d.meaning, d.example from base.dictionary_entry d;
-
-comment on view main.dictionary is 'what every view, column, macro and function means';
-comment on column main.dictionary.name is 'view, macro or function';
-comment on column main.dictionary.column_name is 'column of a view; NULL: the entry is about the whole';
-comment on column main.dictionary.unit is 'unit in words; x: unit of the series, t: year or second, 1: a pure number';
-comment on column main.dictionary.meaning is 'what it says';
-comment on column main.dictionary.example is 'a query that runs; functions need a connection of driftbook';
+delete from base.dictionary_entry;
 
 """
 
 
 def migration_text() -> str:
-    """The migration that makes the view and fills it."""
+    """The migration that fills it, in place of what it held."""
     rows = ",\n".join(_row(*entry) for entry in _functions())
     return f"{_HEAD}{_FROM_CATALOG}\ninsert into base.dictionary_entry values\n{rows};\n"
 
@@ -81,8 +65,9 @@ def _functions_of(model: Model) -> list[tuple[str, str, str]]:
         "(select list(value order by observed_at) as x, list(observed_at order by observed_at) as t "
         "from observation group by series)"
     )
-    values = ", ".join("1" for _ in model.parameters)
-    parameters = ", ".join(parameter.name for parameter in model.parameters)
+    given = (*model.settings, *model.parameters)
+    values = ", ".join("1" for _ in given)
+    parameters = ", ".join(one.name for one in given)
     return [
         (
             f"fit_{name}",

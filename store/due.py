@@ -52,6 +52,11 @@ class Slice:
     ends: Indexes | None = None
 
     @property
+    def entry(self) -> tuple[int, int]:
+        """Series and lookback."""
+        return self.series_id, self.lookback
+
+    @property
     def windows(self) -> int:
         """How many windows are due; a series shorter than its lookback has the one that says so."""
         if self.ends is not None:

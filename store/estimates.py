@@ -15,6 +15,7 @@ from driftbook.store.model_schema import stored_columns
 from driftbook.store.sql import query
 
 _KEY = "series_id, lookback, window_end"
+_OF_AN_ESTIMATE = ("_se", "_lower", "_upper", "_median_unbiased")
 
 
 class EstimateTable:
@@ -23,6 +24,7 @@ class EstimateTable:
     def __init__(self, model: Model) -> None:
         self.model = model
         self.stored = [name for name, _ in stored_columns(model)]
+        self._kinds = dict(stored_columns(model))
 
     def in_force(self, con: duckdb.DuckDBPyConnection) -> dict[tuple[int, int], int]:
         """How many rows are in force for each (series, lookback)."""
@@ -70,6 +72,9 @@ class EstimateTable:
         return " and ".join([*exact, *(self._close(name) for name in self.stored)])
 
     def _close(self, name: str) -> str:
+        same = f"f.{name} is not distinct from b.{name}"
+        if self._kinds[name] != "double":
+            return same
         error = self._standard_error(name)
         tolerance = f"1e-9 * abs(b.{name})"
         if error:
@@ -77,10 +82,9 @@ class EstimateTable:
         if name == "loglik":
             tolerance = "1e-6"
         apart = f"abs(f.{name} - b.{name}) <= {tolerance}"
-        return f"(f.{name} is not distinct from b.{name} or coalesce({apart}, false))"
+        return f"({same} or coalesce({apart}, false))"
 
     def _standard_error(self, name: str) -> str | None:
-        for parameter in self.model.parameters:
-            if name == parameter.name or name.startswith(parameter.name + "_"):
-                return f"{parameter.name}_se"
-        return None
+        """The standard error by which a number is measured: of what it is an estimate of, or an end, or an error."""
+        stem = next((name.removesuffix(end) for end in _OF_AN_ESTIMATE if name.endswith(end)), name)
+        return next((f"{one}_se" for one in (name, stem) if f"{one}_se" in self._kinds), None)

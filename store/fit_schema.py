@@ -1,7 +1,7 @@
 """The views over all models: `fit`, one row a fit, and `estimate`, one row a parameter.
 
 `python -m driftbook.store.fit_schema` prints the migration that makes them for the registered models; a new model
-brings a new migration that makes them again.
+brings a new migration that replaces them.
 """
 
 from __future__ import annotations
@@ -9,7 +9,7 @@ from __future__ import annotations
 from driftbook.estimators import MODELS, Model
 from driftbook.estimators.compare import AIC_SQL, BIC_SQL
 from driftbook.store.model_schema import IDENTITY
-from driftbook.store.reader_schema import comments, readers, versions
+from driftbook.store.reader_schema import comments, readers, replacing, versions
 
 _FIT = (
     *IDENTITY[:4],
@@ -40,7 +40,7 @@ _USABLE = "x.status in ('ok', 'no_reversion', 'at_bound')"
 
 
 def migration_text() -> str:
-    """The migration that makes fit and estimate over all registered models."""
+    """The migration that makes fit and estimate over all registered models, in place of those over fewer."""
     lines = [
         "-- fit and estimate: views over all models. Printed by `python -m driftbook.store.fit_schema`.",
         "create view base.fit_rows as",
@@ -58,7 +58,7 @@ def migration_text() -> str:
         *_comments("fit", "all models: one row per fit, with what compares models", _FIT),
         *_comments("estimate", "all models: one row per parameter of a fit", _ESTIMATE),
     ]
-    return "\n".join(lines) + "\n"
+    return replacing("\n".join(lines) + "\n")
 
 
 def _fit_branch(model: Model) -> str:

@@ -4,9 +4,12 @@ For each model there are, with x a list of values in time order and steps in yea
 
     fit_<model>(x, dt), fit_<model>_at(t, x)                       one STRUCT: the fit of the whole list
     rolling_<model>(x, dt, lookback), rolling_<model>_at(t, x, lookback)    STRUCT[]: one a window
-    loglik_<model>(x, dt, <parameters>)                            the log-likelihood at given parameters
+    loglik_<model>(x, dt, <settings>, <parameters>)                the log-likelihood at given parameters
 
 and for a list of returns: realised_variance(r), bipower_variation(r).
+
+A model with settings (quartic: centre and scale) takes them from the first window of a list. A model that is fitted to
+the level of some series and the logarithm of others (ou_noise, inertial) fits the values of a list as they are.
 
 The forms with _at take times and count Act/365. A list that is too short for its lookback, or a NULL where a value
 must be, gives one STRUCT whose status says so; a query is never killed by its data.
@@ -26,14 +29,15 @@ import pyarrow as pa
 from duckdb.func import FunctionNullHandling, PythonUDFType
 from numpy.typing import NDArray
 
-from driftbook.estimators import MODELS, Fit, Model, Status, rolling
+from driftbook.estimators import MODELS, Fit, Model, Status
+from driftbook.estimators.model import Column
 from driftbook.estimators.realised import bipower_variation, realised_variance
 from driftbook.store.clocks import MICROSECONDS_PER_YEAR
 from driftbook.store.due import steps_over_all
 
 _BLOCK_VALUES = 1 << 18
 _PADDING = 1.25
-_SQL_TYPES = {"double": "DOUBLE", "boolean": "BOOLEAN"}
+_SQL_TYPES = {"double": "DOUBLE", "boolean": "BOOLEAN", "word": "VARCHAR"}
 # What DuckDB keeps for the times 'infinity' and '-infinity'; a NULL becomes a number below.
 _ENDLESS = np.iinfo(np.int64).max
 
@@ -65,7 +69,7 @@ def register(con: duckdb.DuckDBPyConnection, executor: Executor) -> None:
 def register_likelihoods(con: duckdb.DuckDBPyConnection) -> None:
     """Registers the log-likelihood of every model: a macro that names its parameters, over one function."""
     for model in MODELS.values():
-        parameters = ", ".join(parameter.name for parameter in model.parameters)
+        parameters = ", ".join(one.name for one in (*model.settings, *model.parameters))
         _add(con, f"loglik_of_{model.name}", partial(_loglik, model), ["DOUBLE[]", "DOUBLE", "DOUBLE[]"], "DOUBLE")
         con.execute(
             f"create macro main.loglik_{model.name}(x, dt, {parameters}) as "
@@ -79,49 +83,27 @@ def register_measures(con: duckdb.DuckDBPyConnection) -> None:
         _add(con, measure.__name__, partial(_measure, measure), ["DOUBLE[]"], "DOUBLE")
 
 
-def rolled(
-    model: Model, executor: Executor, stretches: Iterable[tuple[Values, Values, int, int]]
-) -> tuple[NDArray[np.int64], pa.StructArray]:
-    """What rolling_<model> gives for stretches of series, each with its steps, lookback and first wanted window.
-
-    How many windows each has, and the fits of all, one after the other.
-    """
-    found = _fits(model, executor, [_Asked(*one) for one in stretches])
-    if not found:
-        return np.empty(0, np.int64), _structs([_without_numbers(model, _Asked(np.empty(0), np.empty(0), 1))])[:0]
-    return np.array([rows.windows for rows in found], np.int64), _structs(found)
-
-
-def struct_type(model: Model) -> str:
-    """The SQL type of one fit: n, the model's columns, status."""
-    columns = ", ".join(f"{column.name} {_SQL_TYPES[column.kind]}" for column in model.columns)
-    return f"STRUCT(n INTEGER, {columns}, status VARCHAR)"
-
-
-def roll_block(name: str, x: Values, steps: Values, lookback: int, first: int) -> Fit:
-    """What a worker does with one block of series: arrays in, arrays out."""
-    return rolling(name, x, steps, lookback, first=first)
-
-
-def _add(con: duckdb.DuckDBPyConnection, name: str, function: Callable[..., Any], takes: list[Any], gives: str) -> None:
-    con.create_function(
-        name, function, takes, gives, type=PythonUDFType.ARROW, null_handling=FunctionNullHandling.SPECIAL
-    )
-
-
 @dataclass(frozen=True)
-class _Asked:
-    """One row of a chunk: a series, its steps (one number, or one a step), and the windows that are wanted."""
+class Stretch:
+    """A series, its steps (one number, or one a step), and the windows that are wanted.
+
+    `settings` are those of a model that has any; without, they are found in the stretch. `on_logs` asks for the model
+    of the logarithm.
+    """
 
     x: Values
     steps: Values
     lookback: int
     first: int = 0
+    settings: tuple[float, ...] = ()
+    on_logs: bool = False
 
     @property
     def is_readable(self) -> bool:
         """Whether lookback and steps can be used at all."""
-        usable = self.steps.size == 1 or self.steps.size == self.x.size - 1
+        if self.steps.size == 1:
+            return self.lookback >= 1 and 0 < float(self.steps[0]) < np.inf
+        usable = self.steps.size == self.x.size - 1
         return self.lookback >= 1 and usable and bool((np.isfinite(self.steps) & (self.steps > 0)).all())
 
     @property
@@ -133,10 +115,44 @@ class _Asked:
     def shape(self) -> tuple[object, ...]:
         """What series must share to be worked on in one block."""
         step = float(self.steps[0]) if self.steps.size == 1 else None
-        return (self.steps.size == 1, step or 0.0, self.lookback, self.first)
+        told = len(self.settings)
+        return (self.steps.size == 1, step or 0.0, self.lookback, self.first, told, self.on_logs)
 
 
-def _fits(model: Model, executor: Executor, asked: list[_Asked]) -> list[_Rows]:
+def rolled(model: Model, executor: Executor, stretches: Iterable[Stretch]) -> tuple[NDArray[np.int64], pa.StructArray]:
+    """What rolling_<model> gives for stretches of series.
+
+    How many windows each has, and the fits of all, one after the other.
+    """
+    found = _fits(model, executor, list(stretches))
+    if not found:
+        return np.empty(0, np.int64), _structs([_without_numbers(model, Stretch(np.empty(0), np.empty(0), 1))])[:0]
+    return np.array([rows.windows for rows in found], np.int64), _structs(found)
+
+
+def struct_type(model: Model) -> str:
+    """The SQL type of one fit: n, the model's columns, status."""
+    columns = ", ".join(f"{column.name} {_SQL_TYPES[column.kind]}" for column in model.columns)
+    return f"STRUCT(n INTEGER, {columns}, status VARCHAR)"
+
+
+def roll_block(name: str, x: Values, steps: Values, lookback: int, first: int, settings: Values, on_logs: bool) -> Fit:
+    """What a worker does with one block of series: arrays in, arrays out."""
+    model = MODELS[name].of_logs if on_logs else MODELS[name]
+    if model is None:
+        raise ValueError(f"{name} is not fitted to logarithms")
+    if not settings.size:
+        return model.rolling(x, steps, lookback, first=first)
+    return model.rolling_by(list(settings.T), x, steps, lookback, first=first)
+
+
+def _add(con: duckdb.DuckDBPyConnection, name: str, function: Callable[..., Any], takes: list[Any], gives: str) -> None:
+    con.create_function(
+        name, function, takes, gives, type=PythonUDFType.ARROW, null_handling=FunctionNullHandling.SPECIAL
+    )
+
+
+def _fits(model: Model, executor: Executor, asked: list[Stretch]) -> list[_Rows]:
     """The wanted windows of each row; blocks of similar rows are worked on together."""
     usable = [row for row, one in enumerate(asked) if one.is_readable and one.windows]
     futures = [(rows, executor.submit(roll_block, model.name, *block)) for rows, block in _blocks(asked, usable)]
@@ -148,26 +164,26 @@ def _fits(model: Model, executor: Executor, asked: list[_Asked]) -> list[_Rows]:
     return [found[row] if row in found else _without_numbers(model, one) for row, one in enumerate(asked)]
 
 
-def _fit(fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, dt: Any) -> pa.Array:
+def _fit(fits: Callable[[list[Stretch]], list[_Rows]], x: pa.ChunkedArray, dt: Any) -> pa.Array:
     asked = [_whole(series, np.array([step])) for series, step in zip(_lists(x), _numbers(dt), strict=True)]
     return _structs(fits(asked))
 
 
-def _fit_at(fits: Callable[[list[_Asked]], list[_Rows]], t: pa.ChunkedArray, x: pa.ChunkedArray) -> pa.Array:
+def _fit_at(fits: Callable[[list[Stretch]], list[_Rows]], t: pa.ChunkedArray, x: pa.ChunkedArray) -> pa.Array:
     asked = [_whole(series, _steps_at(times, series)) for times, series in zip(_lists(t), _lists(x), strict=True)]
     return _structs(fits(asked))
 
 
-def _rolling(fits: Callable[[list[_Asked]], list[_Rows]], x: pa.ChunkedArray, dt: Any, lookback: Any) -> pa.Array:
+def _rolling(fits: Callable[[list[Stretch]], list[_Rows]], x: pa.ChunkedArray, dt: Any, lookback: Any) -> pa.Array:
     rows = zip(_lists(x), _numbers(dt), _integers(lookback), strict=True)
-    return _lists_of_structs(fits([_Asked(series, np.array([step]), steps) for series, step, steps in rows]))
+    return _lists_of_structs(fits([Stretch(series, np.array([step]), steps) for series, step, steps in rows]))
 
 
 def _rolling_at(
-    fits: Callable[[list[_Asked]], list[_Rows]], t: pa.ChunkedArray, x: pa.ChunkedArray, lookback: Any
+    fits: Callable[[list[Stretch]], list[_Rows]], t: pa.ChunkedArray, x: pa.ChunkedArray, lookback: Any
 ) -> pa.Array:
     rows = zip(_lists(t), _lists(x), _integers(lookback), strict=True)
-    return _lists_of_structs(fits([_Asked(series, _steps_at(times, series), steps) for times, series, steps in rows]))
+    return _lists_of_structs(fits([Stretch(series, _steps_at(times, series), steps) for times, series, steps in rows]))
 
 
 def _loglik(model: Model, x: pa.ChunkedArray, dt: Any, parameters: pa.ChunkedArray) -> pa.Array:
@@ -208,8 +224,8 @@ def _alike(sizes: list[int], padding: float) -> Iterator[list[int]]:
         yield group
 
 
-def _whole(x: Values, steps: Values) -> _Asked:
-    return _Asked(x, steps, steps_over_all(x.size))
+def _whole(x: Values, steps: Values) -> Stretch:
+    return Stretch(x, steps, steps_over_all(x.size))
 
 
 def _steps_at(times: NDArray[Any], x: Values) -> Values:
@@ -221,14 +237,18 @@ def _steps_at(times: NDArray[Any], x: Values) -> Values:
     return np.where(known[1:] & known[:-1], np.diff(microseconds) / MICROSECONDS_PER_YEAR, np.nan)
 
 
-def _blocks(asked: list[_Asked], usable: list[int]) -> Iterator[tuple[list[int], tuple[Values, Values, int, int]]]:
+_Block = tuple[Values, Values, int, int, Values, bool]
+
+
+def _blocks(asked: list[Stretch], usable: list[int]) -> Iterator[tuple[list[int], _Block]]:
     """Rows of one shape and of about the same length, filled up with NaN at their ends.
 
     What stands behind a series does not touch its windows, so padding moves no bit of them.
     """
+    shapes = {row: asked[row].shape for row in usable}
     block: list[int] = []
-    for row in sorted(usable, key=lambda row: (*asked[row].shape, asked[row].x.size)):
-        if block and not _belongs(asked[block[0]], asked[row], len(block)):
+    for row in sorted(usable, key=lambda row: (*shapes[row], asked[row].x.size)):
+        if block and not (shapes[row] == shapes[block[0]] and _belongs(asked[block[0]], asked[row], len(block))):
             yield block, _padded([asked[one] for one in block])
             block = []
         block.append(row)
@@ -236,12 +256,11 @@ def _blocks(asked: list[_Asked], usable: list[int]) -> Iterator[tuple[list[int],
         yield block, _padded([asked[one] for one in block])
 
 
-def _belongs(first: _Asked, other: _Asked, size: int) -> bool:
-    alike = first.shape == other.shape and other.x.size <= _PADDING * first.x.size
-    return alike and (size + 1) * other.x.size <= _BLOCK_VALUES
+def _belongs(first: Stretch, other: Stretch, size: int) -> bool:
+    return other.x.size <= _PADDING * first.x.size and (size + 1) * other.x.size <= _BLOCK_VALUES
 
 
-def _padded(series: list[_Asked]) -> tuple[Values, Values, int, int]:
+def _padded(series: list[Stretch]) -> _Block:
     first = series[0]
     longest = max(one.x.size for one in series)
     x = np.full((len(series), longest), np.nan)
@@ -250,7 +269,7 @@ def _padded(series: list[_Asked]) -> tuple[Values, Values, int, int]:
         x[row, : one.x.size] = one.x
         if first.steps.size > 1:
             steps[row, : one.steps.size] = one.steps
-    return x, steps, first.lookback, first.first
+    return x, steps, first.lookback, first.first, np.array([one.settings for one in series]), first.on_logs
 
 
 @dataclass(frozen=True)
@@ -262,7 +281,7 @@ class _Rows:
     windows: int
 
 
-def _without_numbers(model: Model, asked: _Asked) -> _Rows:
+def _without_numbers(model: Model, asked: Stretch) -> _Rows:
     """One fit without numbers, for a series that has no whole window or that cannot be read."""
     nothing = np.full((1, 1), np.nan)
     status = Status.TOO_SHORT if asked.is_readable or asked.x.size < 2 else Status.OUT_OF_RANGE
@@ -293,7 +312,7 @@ def _structs(found: list[_Rows]) -> pa.Array:
     fields = [pa.array(values_of([fit.n for fit in together]), pa.int32())]
     for column in model.columns:
         values = values_of([fit.columns[column.name] for fit in together])
-        fields.append(_nullable(values, column.kind))
+        fields.append(_nullable(values, column))
     fields.append(_words().take(pa.array(values_of([fit.status for fit in together]).astype(np.int64))))
     return pa.StructArray.from_arrays(fields, ["n", *(column.name for column in model.columns), "status"])
 
@@ -314,10 +333,13 @@ def _words() -> pa.Array:
     return pa.array([status.word for status in Status], pa.string())
 
 
-def _nullable(values: Values, kind: str) -> pa.Array:
-    if kind == "boolean":
+def _nullable(values: Values, column: Column) -> pa.Array:
+    if column.kind == "boolean":
         return pa.array(values == 1.0, mask=np.isnan(values))
-    return pa.array(values, from_pandas=True)
+    numbers = pa.array(values, from_pandas=True)
+    if column.kind == "word":
+        return pa.array(column.words, pa.string()).take(numbers.cast(pa.int64()))
+    return numbers
 
 
 def _lists(column: pa.ChunkedArray) -> Iterator[NDArray[Any]]:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, fields, replace
 from datetime import datetime
 from itertools import groupby
 from typing import Any
@@ -30,7 +30,10 @@ _NO_NUMBERS = {
     "out_of_range": "a value outside the model's range",
     "alternating": "swings from step to step",
     "not_converged": "no fit found",
+    "too_coarse": "steps too long for the model",
+    "discrete": "too many unchanged values",
 }
+_MUCH_NOISE = 0.1  # share of the variance of a step above which a p-value that knows no noise is not to be trusted
 
 
 @dataclass(frozen=True)
@@ -80,6 +83,8 @@ class _Fit:
     half_life_lower: float | None
     half_life_upper: float | None
     half_life_unbounded: bool | None
+    reaches_zero: bool | None
+    noise_share: float | None
     criterion: float  # bic, NaN without numbers
 
 
@@ -177,28 +182,22 @@ def _headlines(plan: Plan, series: dict[int, Series]) -> dict[int, int]:
 def _local_sql(model: Model) -> str:
     """The latest fits of one model, with what it says at the last value."""
     there = {column.name: column.sql or column.name for column in model.columns}
-    pull = ", ".join(f"({there[name]})" if name in there else "null" for name in _PULL)
-    p_value = "no_reversion_p" if "no_reversion_p" in there else "null"
-    local = local_columns(model)
-    return (
-        f"with there as (select h.*, {local['x']} as x from headline h), "
-        f"scaled as (select *, {local['scale']} as scale from there) "
-        "select h.series_id, h.observed_at, h.value, h.lookback, m.window_start, "
-        f"'{model.name}', n, loglik, status, {p_value}, {local['volatility']}, "
-        f"{local['drift']}, {pull} "
-        f"from scaled h join base.{model.name} m on m.series_id = h.series_id and m.lookback = h.lookback "
-        "and m.window_end = h.observed_at and m.run_to is null"
+    told = ", ".join(f"({there[name]})" if name in there else "null" for name in _PULL)
+    optional = {name: there.get(name, "null") for name in ("no_reversion_p", "noise_share")}
+    return query("local_fits").format(
+        **local_columns(model) | optional | {"pull": told},
     )
 
 
 def _row(fits: list[_Fit], series: Series, before: Row | None, marks: _Marks) -> Row:
     setting = series.setting
-    candidates = [_candidate(fit) for fit in fits]
+    candidates = _candidates(fits)
     chosen = choose(candidates, setting.in_force, _choice(before))
     weight = dict(zip([fit.model for fit in fits], _weights(fits, candidates), strict=True))
+    usable = {fit.model: fit for fit, one in zip(fits, candidates, strict=True) if one.is_usable}
     by_name = {fit.model: fit for fit in fits}
-    first, fit = fits[0], by_name.get(chosen.model or "")
-    pulled = _pulled(fit, fits, weight)
+    first, named, fit = fits[0], by_name.get(chosen.model or ""), usable.get(chosen.model or "")
+    pulled = _pulled(named, fit, usable, weight)
     days = 1 / _SECONDS_PER_DAY if setting.clock == "seconds" else _DAYS_PER_YEAR
     return Row(
         series_id=series.series_id,
@@ -217,17 +216,30 @@ def _row(fits: list[_Fit], series: Series, before: Row | None, marks: _Marks) ->
         half_life_days_lower=_scaled(pulled.half_life_lower, days) if pulled else None,
         half_life_days_upper=_scaled(pulled.half_life_upper, days) if pulled else None,
         half_life_unbounded=pulled.half_life_unbounded if pulled else None,
-        can_reach_zero=_can_reach_zero(chosen.model, setting.sign),
+        can_reach_zero=named.reaches_zero if named and setting.sign == "positive" else None,
         challenger=chosen.challenger,
         note="; ".join(
-            [*_what_happened(first, marks), *_what_changed(chosen, before), *_what_is_missing(fit or first)]
+            [
+                *_what_happened(first, marks),
+                *_what_changed(chosen, before),
+                *_what_is_missing(named or first),
+                *_what_is_noise(fit, pulled, usable),
+            ]
         ),
     )
 
 
-def _candidate(fit: _Fit) -> Candidate:
-    criterion = None if fit.loglik is None else fit.criterion
-    return Candidate(fit.model, fit.status, criterion, MODELS[fit.model].has_pull, fit.no_reversion_p)
+def _candidates(fits: list[_Fit]) -> list[Candidate]:
+    """What the choice needs of each; a model without a p-value of its own is held against those without a pull."""
+    found = []
+    for fit in fits:
+        model = MODELS[fit.model]
+        criterion = None if fit.loglik is None else fit.criterion
+        found.append(Candidate(fit.model, fit.status, criterion, model.has_pull, fit.no_reversion_p))
+    free = [one.bic for one in found if one.is_usable and not one.has_pull and one.bic is not None]
+    return [
+        replace(one, without_pull=min(free, default=None)) if not MODELS[one.model].tests_pull else one for one in found
+    ]
 
 
 def _choice(before: Row | None) -> Choice | None:
@@ -241,21 +253,19 @@ def _weights(fits: list[_Fit], candidates: list[Candidate]) -> list[float | None
     return [None if np.isnan(weight) else float(weight) for weight in weights(usable)]
 
 
-def _pulled(fit: _Fit | None, fits: list[_Fit], weight: dict[str, float | None]) -> _Fit | None:
-    """The fit that the half-life is told from: the model in force, or the heaviest that has a pull."""
-    if fit is not None and MODELS[fit.model].has_pull:
+def _pulled(
+    named: _Fit | None, fit: _Fit | None, usable: dict[str, _Fit], weight: dict[str, float | None]
+) -> _Fit | None:
+    """The fit that the half-life is told from: the model in force, or the heaviest that has a half-life."""
+    if named is not None and MODELS[named.model].has_half_life:
         return fit
-    heaviest = sorted((one for one in fits if MODELS[one.model].has_pull), key=lambda one: -(weight[one.model] or 0.0))
-    return heaviest[0] if heaviest else None
+    with_one = (one for one in usable.values() if MODELS[one.model].has_half_life)
+    return max(with_one, key=lambda one: weight[one.model] or 0.0, default=None)
 
 
 def _volatility_unit(series: Series) -> str:
     time = "√second" if series.setting.clock == "seconds" else "√year"
     return f"1/{time}" if series.setting.sign == "positive" else f"{series.setting.unit or 'unit'}/{time}"
-
-
-def _can_reach_zero(model: str | None, sign: str) -> bool | None:
-    return None if model is None or sign != "positive" else MODELS[model].reaches_zero
 
 
 def _what_happened(fit: _Fit, marks: _Marks) -> list[str]:
@@ -273,6 +283,13 @@ def _what_is_missing(fit: _Fit) -> list[str]:
     if fit.status == "too_short":
         return [f"too short: {fit.n} steps"]
     return [_NO_NUMBERS[fit.status]] if fit.status in _NO_NUMBERS else []
+
+
+def _what_is_noise(fit: _Fit | None, pulled: _Fit | None, usable: dict[str, _Fit]) -> list[str]:
+    """Noise in the observations makes whatever knows no noise see a pull, and p-values of no pull too small."""
+    share = max((one.noise_share for one in usable.values() if one.noise_share is not None), default=0.0)
+    fooled = [one for one in (fit, pulled) if one and one.noise_share is None and one.no_reversion_p is not None]
+    return ["noise: the pull may be a bounce"] if share > _MUCH_NOISE and fooled else []
 
 
 def _scaled(value: float | None, factor: float) -> float | None:

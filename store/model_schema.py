@@ -21,7 +21,7 @@ _CLOSING = (
     ("status", "what became of the fit, in a word"),
     ("revision", "revision of the model that computed the row"),
 )
-_SQL_TYPES = {"double": "double", "boolean": "boolean"}
+_SQL_TYPES = {"double": "double", "boolean": "boolean", "word": "varchar"}
 
 
 def stored_columns(model: Model) -> list[tuple[str, str]]:
@@ -32,7 +32,12 @@ def stored_columns(model: Model) -> list[tuple[str, str]]:
 def migration_text(model: Model) -> str:
     """The migration that gives a book the table, views and macros of a model."""
     given = [*readers(model.name), *versions(model.name), *_comments(model)]
-    return "\n".join([*_table(model), *_rows_view(model), *given]) + "\n"
+    return "\n".join([*_table(model), *_settings_table(model), *_rows_view(model), *given]) + "\n"
+
+
+def settings_table(model: Model) -> str:
+    """The name of the table that keeps a model's settings; only a model that has some has it."""
+    return f"{model.name}_setting"
 
 
 def _table(model: Model) -> list[str]:
@@ -50,6 +55,22 @@ def _table(model: Model) -> list[str]:
         "  revision integer not null,",
         "  run_from integer not null,",
         "  run_to integer",
+        ");",
+        "",
+    ]
+
+
+def _settings_table(model: Model) -> list[str]:
+    if not model.settings:
+        return []
+    names = " and ".join(setting.name for setting in model.settings)
+    return [
+        f"-- {names} of each series and lookback, from the first window that was fitted; they never change.",
+        f"create table base.{settings_table(model)} (",
+        "  series_id integer not null,",
+        "  lookback integer not null,",
+        *(f"  {setting.name} double not null," for setting in model.settings),
+        "  run_from integer not null",
         ");",
         "",
     ]

@@ -49,6 +49,11 @@ def versions(name: str) -> list[str]:
     ]
 
 
+def replacing(sql: str) -> str:
+    """Statements that make views and macros, as ones that also replace those that are there."""
+    return sql.replace("create view ", "create or replace view ").replace("create macro ", "create or replace macro ")
+
+
 def comments(name: str, *, in_force: str, every_version: str, columns: Iterable[tuple[str, str]]) -> list[str]:
     """What the views, their columns and the macros mean; `columns` without those that say which version it is."""
     described = list(columns)

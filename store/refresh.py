@@ -12,6 +12,7 @@ from driftbook.estimators import MODELS
 from driftbook.store import intake
 from driftbook.store.computing import computed
 from driftbook.store.errors import PlanError, UsageError
+from driftbook.store.for_model import Settings, fix_settings
 from driftbook.store.inbox import Delivered
 from driftbook.store.latest import write_latest
 from driftbook.store.plan import Plan, PlanText, parse_plan
@@ -80,8 +81,9 @@ def refresh(
     run.kind = "refresh"
     for model in work.models:
         model.table.close_entries(run.con, list(model.leaving), run.stamp.run_id)
+    fixed = {model.name: fix_settings(run, model.table.model, model.slices, work.known) for model in work.models}
     for portion in work.portions():
-        _estimate(run, work, portion, executor)
+        _estimate(run, work, portion, fixed, executor)
         if report is not None:
             report(Progress(run.windows.due, work.windows))
     write_latest(run, plan, work, last)
@@ -103,14 +105,14 @@ def _warnings(con: duckdb.DuckDBPyConnection) -> tuple[str, ...]:
     )
 
 
-def _estimate(run: Run, work: Work, portion: list[int], executor: Executor) -> None:
+def _estimate(run: Run, work: Work, portion: list[int], fixed: dict[str, Settings], executor: Executor) -> None:
     """Computes and writes what is due for some series."""
     chosen = set(portion)
     for model in work.models:
         slices = [one for one in model.slices if one.series_id in chosen]
         spans = [one for one in model.spans if one.series_id in chosen]
         if slices or spans:
-            fresh = computed(model.table.model, slices, work.known, work.series, executor)
+            fresh = computed(model.table.model, slices, work.known, work.series, fixed[model.name], executor)
             model.table.write(run.con, fresh, spans, run.stamp.run_id)
             run.windows.due += len(fresh)
             run.windows.fitted += len(fresh) - fresh.column("loglik").null_count

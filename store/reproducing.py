@@ -19,6 +19,7 @@ from driftbook.store.computing import computed
 from driftbook.store.due import OBSERVATION, Asked, Slice, slice_of
 from driftbook.store.errors import UsageError
 from driftbook.store.estimates import EstimateTable
+from driftbook.store.for_model import settings_at
 from driftbook.store.observed import Observed, observed
 from driftbook.store.reader import attached
 from driftbook.store.series import Series, Setting
@@ -113,7 +114,8 @@ def _reproduce_model(
         return
     at_run = f"o.run_from <= {run_id} and (o.run_to is null or o.run_to > {run_id})"
     known = observed(con, sorted({row[0] for row in rows}), when=at_run)
-    again = computed(table.model, list(_slices(rows, known)), known, series, functions.InlineExecutor())
+    fixed, slices = settings_at(con, table.model, run_id), list(_slices(rows, known))
+    again = computed(table.model, slices, known, series, fixed, functions.InlineExecutor())
     con.register("fresh", again)
     _compare(con, table, run_id, found)
     con.unregister("fresh")

@@ -9,6 +9,7 @@ import duckdb
 
 from driftbook.estimators import MODELS
 from driftbook.store import migrate
+from driftbook.store.model_schema import settings_table
 from driftbook.store.sql import query
 
 
@@ -46,9 +47,14 @@ BOOK_TABLES = (
 
 
 def tracked_tables() -> tuple[Tracked, ...]:
-    """All tracked tables: those of the book and one for each registered model."""
+    """All tracked tables: those of the book, and of each registered model its estimates, and settings if it has any."""
     models = (Tracked(name, ("series_id", "lookback", "window_end")) for name in MODELS)
-    return (*BOOK_TABLES, *models)
+    settings = (
+        Tracked(settings_table(model), ("series_id", "lookback"), closes=False)
+        for model in MODELS.values()
+        if model.settings
+    )
+    return (*BOOK_TABLES, *models, *settings)
 
 
 @cache

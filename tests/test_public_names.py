@@ -33,6 +33,15 @@ VIEWS = {
     "half_life, half_life_lower, half_life_upper, half_life_mle, half_life_unbounded, stationary_sd, kurtosis, "
     "loglik, status, revision, run_id",
 }
+FIRST, LAST = "series, lookback, window_start, window_end, n", "kurtosis, loglik, status, revision, run_id"
+OF_MODELS = {
+    "cir": ("", "kappa theta sigma", "feller_ratio, can_reach_zero"),
+    "ckls": ("", "kappa theta sigma gamma", "local_volatility, can_reach_zero"),
+    "quartic": ("centre, scale", "a0 a1 a2 a3 sigma", ""),
+    "merton": ("", "mu sigma jump_rate jump_mean jump_sd", "total_volatility, jump_probability"),
+    "inertial": ("", "damping omega theta eta", "period, damping_ratio"),
+    "ou_noise": ("", "kappa theta sigma noise", "noise_share"),
+}
 VERSIONED = ("series", "observation", "refused_row", "plan", "latest", "fit", "estimate", *MODELS)
 COMMANDS = {
     "refresh": "--plan --inbox --workers --all --dry-run --at --strict --yes --wait --quiet --json",
@@ -42,6 +51,7 @@ COMMANDS = {
     "forget": "--before --yes --quiet --json",
     "sql": "--format --output --guard-formulas --timeout --rows --quiet --json",
     "verify": "--quiet --json",
+    "page": "--port --output --quiet --json",
     "demo": "--quiet --json",
     "new": "--quiet --json",
     "ingest": "--series --add-series --wide --columns --dates --decimal --zone --blank --dry-run --at --strict --yes "
@@ -61,6 +71,17 @@ def test_a_view_has_the_columns_that_were_promised_in_their_order(empty, view):
     promised = VIEWS[view].split(", ")
     there = [name for name in empty.sql(f"from main.{view}").columns if name in promised]
     assert there == promised
+
+
+@pytest.mark.parametrize("model", OF_MODELS)
+def test_a_model_has_its_parameters_with_their_intervals_and_what_follows_from_them(empty, model):
+    settings, parameters, derived = OF_MODELS[model]
+    columns = [f"{name}{end}" for name in parameters.split() for end in ("", "_se", "_lower", "_upper")]
+    promised = [
+        name for part in (FIRST, settings, ", ".join(columns), derived, LAST) if part for name in part.split(", ")
+    ]
+    assert [name for name in empty.sql(f"from main.{model}").columns if name in promised] == promised
+    assert ("fitted_on" in empty.sql(f"from main.{model}").columns) == (model in ("inertial", "ou_noise"))
 
 
 @pytest.mark.parametrize("view", VERSIONED)
@@ -97,7 +118,7 @@ def test_a_command_has_the_options_that_were_promised_and_an_example(command):
     assert f"Example: driftbook {command}" in shown.stdout
 
 
-@pytest.mark.parametrize("module", [store, estimators], ids=lambda module: module.__name__)
+@pytest.mark.parametrize("module", [store, store.charts, estimators], ids=lambda module: module.__name__)
 def test_all_public_names_exist_and_say_what_they_are(module):
     public = [getattr(module, name) for name in module.__all__]
     assert [thing for thing in public if callable(thing) and not thing.__doc__] == []

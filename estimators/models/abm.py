@@ -106,6 +106,7 @@ MODEL = Model(
     revision=1,
     equation="dX = mu dt + sigma dW",
     range="real",
+    has_pull=False,
     is_relative=False,
     local_volatility=("sigma", "sigma_lower", "sigma_upper"),
     local_drift="mu",

@@ -65,6 +65,7 @@ MODEL = Model(
     revision=1,
     equation="d ln X = kappa (theta - ln X) dt + sigma dW",
     range="positive",
+    has_pull=True,
     is_relative=True,
     local_volatility=("sigma", "sigma_lower", "sigma_upper"),
     local_drift="kappa * (theta - ln(x)) + sigma * sigma / 2",

@@ -62,6 +62,7 @@ MODEL = Model(
     revision=1,
     equation="dX = mu X dt + sigma X dW",
     range="positive",
+    has_pull=False,
     is_relative=True,
     local_volatility=("sigma", "sigma_lower", "sigma_upper"),
     local_drift="mu",

@@ -18,7 +18,7 @@ with k as (
     max(q.observed_at) as ends_at
   from known q
 ), asked as (
-  select t.clock, t.periods_per_year, t.shift, coalesce(lookback, (
+  select t.series_id, t.clock, t.periods_per_year, t.shift, t.sign, coalesce(lookback, (
       select l.lookback from base.latest l where l.series_id = t.series_id
         and l.run_from <= (select k.run_id from k) and (l.run_to is null or l.run_to > (select k.run_id from k))),
       0) as steps
@@ -28,7 +28,7 @@ with k as (
     and t.run_from <= (select k.run_id from k) and (t.run_to is null or t.run_to > (select k.run_id from k))
 ), fitted as (
   select g.ends_at, a.steps, unnest(parameters_of_window(
-    model::varchar, g.x, g.us, a.clock, a.periods_per_year, a.shift, a.steps::integer)) as p
+    model::varchar, g.x, g.us, a.clock, a.periods_per_year, a.shift, a.sign, {settings}, a.steps::integer)) as p
   from gathered g, asked a
 )
 select name as series, f.steps as lookback, f.ends_at as window_end, model as model, f.p.parameter, f.p.value, f.p.se,

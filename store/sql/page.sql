@@ -103,7 +103,7 @@ with said as (
   where v.series = $series and v.lookback = $lookback and v.run_from <= $run
     and (v.run_to is null or v.run_to > v.run_from)
 ), beside as (
-  select m.*, o.value, s.sign, s.shift, case s.clock when 'seconds' then 1 / 86400.0 else 365.0 end as days
+  select m.*, o.value, s.sign, s.shift, {step} as step, case s.clock when 'seconds' then 1 / 86400.0 else 365.0 end as days
   from said m
   join series_at_run($run) s on s.series = m.series
   left join versions.observation o
@@ -112,7 +112,7 @@ with said as (
 ), there as (
   select b.*, {x} as x from beside b
 ), scaled as (
-  select *, {scale} as scale from there
+  select *, {per_value} as per_value from there
 )
 select '{model}' as model, window_end, {volatility}, {drift}, {pull}, status, run_from,
   case when run_to <= $run then run_to end as run_to

@@ -30,9 +30,10 @@ KEYS = {
     "alias": ["name", "run_from", "series_id"],
     "latest": ["series_id", "run_from"],
     **{model: ["series_id", "lookback", "window_end", "run_from"] for model in MODELS},
+    "quartic_setting": ["series_id", "lookback", "run_from"],
 }
 WITHOUT_SERIES = {"intake", "refused_row", "plan", "model_revision"}
-NEVER_CLOSED = {"series", "intake"}
+NEVER_CLOSED = {"series", "intake", "quartic_setting"}
 
 doubles = st.floats(allow_nan=False, allow_infinity=False)
 texts = st.text(st.characters(exclude_categories=["Cs"], exclude_characters="\0"), max_size=12) | st.sampled_from(

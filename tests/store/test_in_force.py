@@ -24,7 +24,18 @@ def pull(bic, p=0.01, status="ok", model="ou"):
     return Candidate(model, status, bic, has_pull=True, no_reversion_p=p)
 
 
+def curved(bic, without_pull, status="ok"):
+    """A fit of a model with a pull that has no p-value of its own."""
+    return Candidate("quartic", status, bic, has_pull=True, no_reversion_p=None, without_pull=without_pull)
+
+
 @pytest.mark.parametrize(("candidates", "before", "after"), [
+    # without a p-value it has to confine, and to be ahead of a model without a pull
+    ([level(10.0), curved(9.0, 10.0)], None, Choice("quartic", None)),
+    ([level(10.0), curved(9.0, 10.0, "at_bound")], None, Choice("abm", None)),
+    ([level(10.0), curved(11.0, 10.0), pull(12.0)], None, Choice("abm", None)),
+    ([pull(12.0), curved(9.0, None)], None, Choice("ou", None)),
+    ([pull(12.0, p=0.5), curved(9.0, None)], None, Choice("quartic", None)),
     # the first choice: the best by bic; with a pull only where it is significant
     ([level(10.0), pull(9.0)], None, Choice("ou", None)),
     ([level(10.0), pull(9.0)], NEVER, Choice("ou", None)),

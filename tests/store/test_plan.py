@@ -152,9 +152,11 @@ def test_a_series_needs_only_a_name():
     ("lookbacks = [20]", 'lookbacks = [20]\nalso = ["horizon"]',
      "estimate[1].also: this driftbook does not have this key yet; take it out"),
     ('models = ["ou"]', 'models = ["uo"]',
-     "estimate[1].models[1]: no model is called 'uo'; there are abm, gbm, ou, exp_ou"),
+     "estimate[1].models[1]: no model is called 'uo'; there are abm, gbm, ou, exp_ou, "
+     "cir, ckls, quartic, merton, inertial, ou_noise"),
     ('models = ["ou"]', 'models = ["levy"]',
-     "estimate[1].models[1]: no model is called 'levy'; there are abm, gbm, ou, exp_ou"),
+     "estimate[1].models[1]: no model is called 'levy'; there are abm, gbm, ou, exp_ou, "
+     "cir, ckls, quartic, merton, inertial, ou_noise"),
     ('series = ["*"]', 'series = ["pellet_fob", "spark"]',
      "estimate[1].series: no [[series]] is called 'pellet_fob'; did you mean 'pellets_fob'?"),
     ('series = ["*"]', 'series = ["gas_*", "spark"]', "estimate[1].series: no [[series]] is called 'gas_*'"),

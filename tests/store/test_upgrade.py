@@ -1,8 +1,12 @@
 """A book of an older schema: readers are told how, and the next writer upgrades it in its copy."""
 
+import subprocess
+import sys
+from pathlib import Path
+
 import duckdb
 import pytest
-from made_series import days, wave
+from made_series import days, plan_text, wave
 
 from driftbook import store
 from driftbook.store import migrate
@@ -42,3 +46,53 @@ def test_an_upgrade_alone_is_a_run(older):
         pass
     assert work.finished is not None
     assert store.verify(older).findings == []
+
+
+# driftbook as it was when it had ten migrations and four models
+TEN = """
+import sys
+from pathlib import Path
+from types import MappingProxyType
+import driftbook.estimators as estimators
+from driftbook.estimators import registry
+few = MappingProxyType({name: estimators.MODELS[name] for name in ("abm", "gbm", "ou", "exp_ou")})
+estimators.MODELS = registry.MODELS = few
+from driftbook.store import migrate
+ten = migrate.all_migrations()[:10]
+migrate.all_migrations = lambda: ten
+from driftbook import store
+from made_series import days, plan_text, wave
+path = Path(sys.argv[1])
+store.create(path)
+with store.writing(path, at="2026-01-05") as work:
+    work.ingest(days("pellets_fob", wave(40)), store.Options(add_series=True), name="first")
+    work.refresh(plan_text({"pellets_fob": [25]}, models=tuple(few)))
+with store.writing(path, at="2026-01-06") as work:
+    work.ingest(days("pellets_fob", [97.0, 99.0], 30), name="second")
+    work.refresh()
+"""
+
+
+def test_a_book_of_four_models_goes_on_with_all(tmp_path):
+    from driftbook.estimators import MODELS
+    from driftbook.store.reproducing import reproduce
+
+    path = tmp_path / "desk.duckdb"
+    subprocess.run([sys.executable, "-c", TEN, str(path)], check=True, env={"PYTHONPATH": str(Path(__file__).parent)})
+    with duckdb.connect(path, read_only=True) as con:
+        assert con.execute("select max(number) from base.migration").fetchall() == [(10,)]
+        before = con.execute("from base.ou order by all").fetchall()
+        assert len(before) > 15
+    with store.writing(path, at="2026-01-07") as work:
+        work.ingest(days("pellets_fob", wave(2, first=40), 40), name="third")
+        work.refresh(plan_text({"pellets_fob": [25]}, models=tuple(MODELS)))
+    assert store.verify(path).findings == []
+    for again in reproduce(path, every=True):
+        assert again.identical == again.rows > 0
+    with duckdb.connect(path, read_only=True) as con:
+        assert con.execute("from base.ou where run_from < 3 order by all").fetchall() == before
+        there = con.execute("select model, count(*) from fit group by all").fetchall()
+        assert dict(there) == dict.fromkeys(MODELS, 17)
+        assert con.execute(
+            "select count(distinct name) from dictionary where name in ('cir', 'quartic')"
+        ).fetchone() == (2,)
