@@ -78,7 +78,9 @@ def test_fit_at_every_run_is_what_the_tables_say(con):
 def test_fit_is_that_of_the_last_run_and_has_weights_worth_the_comparison(con):
     found = rows(con, "from fit")
     assert_same_fits(found, fits_of_tables(con, RUNS[-1]))
-    assert {row["models_compared"] for row in found} >= {2, 4}
+    compared = {row["models_compared"] for row in found}
+    assert 2 in compared  # a series of any sign
+    assert max(compared) >= 4
     assert any(0.01 < (row["model_weight"] or 0.0) < 0.99 for row in found)
 
 
