@@ -69,7 +69,7 @@ def _uncertainty(estimate: Estimate, columns: Columns, swings: Mask) -> Columns:
     found |= _on_logs("sigma_s", columns["sigma_s"], sigma_se)
     strong = estimate.damping[0] * estimate.duration / n > STRONG
     found |= _on_logs_or_inverses("damping", columns["damping"], damping_se, strong)
-    found |= _on_logs_or_inverses("eta", columns["eta"], eta_se, strong)
+    found |= _on_logs_or_inverses("eta", columns["eta"], np.where(strong, damping_se, eta_se), strong)
     pull = pull_ends(hidden_pull(n, estimate.duration, kappa, estimate.theta, estimate.first, given, of_parameters))
     found |= {
         "kappa_s_lower": pull.lower,
