@@ -41,9 +41,9 @@ def ask(
 
 @contextmanager
 def _locked(book: Path, memory: int) -> Iterator[duckdb.DuckDBPyConnection]:
-    from driftbook.store.reader import connect
+    from driftbook.store.reader import reading
 
-    with connect(book) as con:
+    with reading(book) as con:
         con.execute(f"set memory_limit = '{int(_FOR_THE_QUERY * memory)}B'")
         for setting in _LOCKED:
             con.execute(setting)

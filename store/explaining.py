@@ -13,7 +13,7 @@ import duckdb
 from driftbook.estimators import MODELS
 from driftbook.store.errors import UsageError
 from driftbook.store.moments import parse_moment
-from driftbook.store.reader import connect
+from driftbook.store.reader import reading
 from driftbook.store.series import ended, near_name
 from driftbook.store.sql import first_row, query
 
@@ -70,7 +70,7 @@ def explain(
     `earlier` and `later` are moments or `run:41`; by default the run before the last that changed the latest window,
     and now. model and lookback default to what `latest` speaks of. Raises UsageError where there is nothing to compare.
     """
-    with connect(Path(book)) as con:
+    with reading(Path(book)) as con:
         return explain_on(con, series, model=model, lookback=lookback, earlier=earlier, later=later)
 
 

@@ -72,7 +72,7 @@ def register_likelihoods(con: duckdb.DuckDBPyConnection) -> None:
         parameters = ", ".join(one.name for one in (*model.settings, *model.parameters))
         _add(con, f"loglik_of_{model.name}", partial(_loglik, model), ["DOUBLE[]", "DOUBLE", "DOUBLE[]"], "DOUBLE")
         con.execute(
-            f"create macro main.loglik_{model.name}(x, dt, {parameters}) as "
+            f"create macro memory.main.loglik_{model.name}(x, dt, {parameters}) as "
             f"loglik_of_{model.name}(x, dt, [{parameters}]::double[])"
         )
 

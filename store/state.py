@@ -10,7 +10,7 @@ from typing import Any
 
 from driftbook.store.errors import UsageError
 from driftbook.store.moments import parse_moment
-from driftbook.store.reader import connect
+from driftbook.store.reader import reading
 from driftbook.store.series import ended, near_name
 from driftbook.store.sql import only_row, query
 
@@ -32,7 +32,7 @@ def latest_state(book: str | os.PathLike[str], series: list[str], as_of: str | N
     Raises UsageError for a series that is not there.
     """
     moment = datetime.now(UTC) if as_of is None else parse_moment(as_of)
-    with connect(Path(book)) as con:
+    with reading(Path(book)) as con:
         source = "latest" if as_of is None else "latest_as_of($moment)"
         found = con.execute(query("latest_in_order").format(latest=source), {} if as_of is None else {"moment": moment})
         columns = [column[0] for column in found.description or []]

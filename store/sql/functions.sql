@@ -2,7 +2,7 @@
 -- One row for each parameter of one stored series' window, computed with the data and settings as known at a
 -- moment. By default the window of latest's lookback that ends at the latest observation, as known now; a bare date
 -- as window_end is the end of that day.
-create macro main.window_fit(name, model, lookback := null, window_end := null, as_of := null) as table
+create macro memory.main.window_fit(name, model, lookback := null, window_end := null, as_of := null) as table
 with k as (
   select case when as_of is null then (select max(r.run_id) from base.run r)
     else base.run_at(base.moment_us(as_of)) end as run_id
