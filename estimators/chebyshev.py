@@ -114,6 +114,8 @@ class Least:
         range. NaN where it is not a number.
     value, curvature : array
         The function and its second derivative by z.
+    slope : array
+        The function's derivative by z.
     falls : array
         The slope at the next point if the function falls on beyond it, at the end of the range or because the point
         was not the best; else 0.
@@ -122,6 +124,7 @@ class Least:
     panel: Places
     z: Array
     value: Array
+    slope: Array
     falls: Array
     curvature: Array
 
@@ -154,7 +157,7 @@ def least(panels: Panels, values: Array, best: Places) -> Least:
     z = roots(lambda z, places: value(slope[:, places], z), low, high, at_low, at_high, TOLERANCE)
     z = np.where(at_low >= 0, low, np.where(at_high <= 0, high, z))
     falls = np.where(at_high < 0, at_high, 0.0)
-    return Least(panel, z, value(series, z), falls, value(derivative(slope), z))
+    return Least(panel, z, value(series, z), value(slope, z), falls, value(derivative(slope), z))
 
 
 def points(low: float, high: float, count: int) -> Array:

@@ -28,7 +28,7 @@ COARSEST = 0.5
 COEFFICIENTS = ("a0", "a1", "a2", "a3")
 RESTING = ("bottom_lower", "barrier", "bottom_upper")
 
-_PART = 1 << 14  # observations of a piece that are worked on at one time
+_PART = 1 << 15  # observations of a piece that are worked on at one time
 _LEAST_SHARE = 1e-7  # of a pivot that elimination leaves: coefficients are then good to 1e-6 of their standard errors
 _KURTOSIS_LOSS = 1e-7  # largest loss left standing in the kurtosis, whose standard error is some √(24/n)
 
@@ -143,7 +143,7 @@ def _estimates(sums: Sums, optimum: Optimum, place: Place, extra: _Extra | None)
     """Columns and status of windows, shape (m,); all of them with what intervals take."""
     unit = np.ones(1) if place.unit is None else place.unit
     drift = optimum.drift if sums.rate is None else _with_rate(optimum.drift, sums.rate)
-    rows = _to_powers_of_z(place.origin, unit)
+    rows = cubic.shifts(place.origin) if place.unit is None else _to_powers_of_z(place.origin, place.unit)
     sigma = unit * np.sqrt(optimum.variance)
     columns = {name: dot(row, drift) for name, row in zip(COEFFICIENTS, rows, strict=True)}
     columns |= {"sigma": sigma, "loglik": optimum.loglik - sums.n * np.log(unit)}

@@ -20,7 +20,9 @@ from driftbook.estimators.status import Status
 from driftbook.estimators.windows import Array
 
 ESTIMATES = ("kappa", "theta", "sigma", "gamma", "loglik")
-PART = 1 << 13  # observations of a piece that are worked on at one time
+COARSEST = 0.5
+"""Largest pull over a step up to which the likelihood is trusted."""
+PART = 1 << 14  # observations of a piece that are worked on at one time
 _DOUBTFUL = np.int8(-1)
 _LOSS = 1e-8  # largest share that elimination or what the drift explains may cancel to in sums
 
@@ -51,8 +53,8 @@ def _from_sums(piece: Piece) -> Answer:
             left &= ~wanted
             sums = segments.sums(tier, some, intervals=piece.intervals).take(np.flatnonzero(wanted[some]))
             at = np.flatnonzero(wanted)
-            origin = segments.origin.reshape(-1)[at]
-            found, became, done = _fitted(sums, origin, intervals=piece.intervals, careful=False)
+            origin, longest = segments.origin.reshape(-1)[at], segments.longest.reshape(-1)[at]
+            found, became, done = _fitted(sums, origin, longest, intervals=piece.intervals, careful=False)
             status.reshape(-1)[at] = np.where(done, became, _DOUBTFUL)
             for name, values in found.items():
                 columns[name][at] = values
@@ -67,7 +69,7 @@ def _from_windows(intervals: bool, windows: Array, steps: Array) -> tuple[Column
     n, logs = windows.shape[1] - 1, np.log(windows)
     origin = np.exp(0.5 * (logs.min(axis=1) + logs.max(axis=1)))
     sums, fits = of_windows(windows, steps, origin, intervals=intervals)
-    columns, status, done = _fitted(sums, origin, intervals=intervals, careful=True)
+    columns, status, done = _fitted(sums, origin, steps.max(axis=1), intervals=intervals, careful=True)
     change = np.log1p(np.diff(windows, axis=1) / windows[:, :-1])
     moved = np.square(change - change.mean(axis=1, keepdims=True)).sum(axis=1)
     flat = moved <= n * ROUNDING**2
@@ -77,7 +79,9 @@ def _from_windows(intervals: bool, windows: Array, steps: Array) -> tuple[Column
     return columns, status
 
 
-def _fitted(sums: Elastic, origin: Array, *, intervals: bool, careful: bool) -> tuple[Columns, Statuses, Mask]:
+def _fitted(
+    sums: Elastic, origin: Array, longest: Array, *, intervals: bool, careful: bool
+) -> tuple[Columns, Statuses, Mask]:
     """Columns, status, and whether sums can vouch for them."""
     found = top(sums, careful=careful)
     spot, gamma = found.spot, found.gamma
@@ -93,6 +97,7 @@ def _fitted(sums: Elastic, origin: Array, *, intervals: bool, careful: bool) -> 
         columns |= uncertainty(sums, found, columns, origin)
     status = np.where(kappa > 0, np.int8(Status.OK), np.int8(Status.NO_REVERSION))
     status[found.at_edge] = Status.AT_BOUND
+    status[np.abs(kappa) * longest > COARSEST] = Status.TOO_COARSE
     M00, M01, M11 = spot.matrix
     square = found.near.rows[0]
     done: Mask = np.isfinite(spot.loglik) & (M00 * M11 - M01 * M01 > _LOSS * M00 * M11) & (M00 > 0)

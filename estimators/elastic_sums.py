@@ -51,8 +51,8 @@ class Segments:
         Of shape (segments, steps).
     origin : array, shape (segments, windows)
         Value at the pivot.
-    level, reach, step : array, shape (segments, windows)
-        Mean of ln x from there, farthest from it, and largest change.
+    level, reach, step, longest : array, shape (segments, windows)
+        Mean of ln x from there, farthest from it, largest change, and longest step.
     plain : tuple of array, shape (segments, windows)
         Σ ln Δ, Σ ln x_{i+1}, Σ ln(x_{i+1}/x_i), Σ Δ.
     """
@@ -64,6 +64,7 @@ class Segments:
     level: Array
     reach: Array
     step: Array
+    longest: Array
     plain: tuple[Array, ...]
 
     @classmethod
@@ -81,6 +82,7 @@ class Segments:
         windows = piece.lookback, piece.skip
         high, low = (window_maxima(np.maximum(way * before, way * after), *windows) for way in (1, -1))
         step = window_maxima(np.abs(change), *windows)
+        longest = dt[:, : step.shape[1]] if piece.steps is None else window_maxima(dt, *windows)
         terms = (before, after, change, np.log(dt), dt)
         room = PairedTerms(change.shape, len(terms))
         for part, term in zip(room.parts, terms, strict=True):
@@ -90,7 +92,7 @@ class Segments:
         reach = np.maximum(high - level, low + level)
         steps = Steps(before + 0.5 * change, 0.5 * change, dt)
         origins = np.broadcast_to(origin.reshape(-1, 1), step.shape)
-        return cls(*windows, steps, origins, level, reach, step, (log_steps, logs, log_change, duration))
+        return cls(*windows, steps, origins, level, reach, step, longest, (log_steps, logs, log_change, duration))
 
     def within(self, tier: Tier) -> Mask:
         """Windows that a tier is fine enough for."""

@@ -160,52 +160,46 @@ class Sums:
 
     def _expansion(self, argument: Array, q: Array) -> tuple[Array, ...]:
         """Hankel's, summed over steps, and its derivatives by l and q; `argument` is A times the unit."""
-        qq, shrink = q * q, 1 / argument
-        power = np.ones_like(q)
-        E, E_l, E_ll, E_m, E_mm, E_lm = (np.zeros_like(q) for _ in range(6))
-        for k, (row, sums) in enumerate(zip(hankel(len(self.inverse)), self.inverse, strict=True), start=1):
-            power *= shrink
-            term = power * sums
-            value, slope, bend = _horner_jet(row, qq)
-            value *= term
-            slope *= term
-            E += value
-            E_m += slope
-            value *= -k
-            slope *= -k
-            E_l += value
-            E_lm += slope
-            value *= -k
-            E_ll += value
-            if bend is not None:
-                bend *= term
-                E_mm += bend
+        qq, power = q * q, 1 / argument
+        terms = np.empty_like(self.inverse)
+        terms[0] = power
+        for below, above in pairwise(terms):
+            np.multiply(below, power, out=above)
+        terms *= self.inverse
+        E, E_l, E_ll, E_m, E_lm, E_mm = np.zeros((6, q.size))
+        for row, term in zip(reversed(hankel(len(terms))), terms[::-1], strict=True):
+            E += _horner(row, qq) * term
+            E_l += E  # Σ k t_k is the sum over k of what has been summed from k on, and Σ k (k + 1)/2 t_k that of those
+            E_ll += E_l
+            E_m += _horner(_slopes(row), qq) * term
+            E_lm += E_m
+            if len(row) > 2:
+                E_mm += _horner(_slopes(_slopes(row)), qq) * term
         half = 0.5 * self.count
         return (
             E - half * np.log(2 * np.pi * argument) - 0.5 * self.log_g,
-            E_l - half,
+            -E_l - half,
             2 * q * E_m,
-            E_ll,
-            2 * q * E_lm,
+            2 * E_ll - E_l,
+            -2 * q * E_lm,
             2 * E_m + 4 * qq * E_mm,
         )
 
 
-def _horner(row: tuple[float, ...], x: Array) -> Array:
-    total = np.full_like(x, row[-1])
-    for coefficient in row[-2::-1]:
-        total *= x
+def _horner(row: tuple[float, ...], x: Array) -> Array | float:
+    if len(row) == 1:
+        return row[0]
+    total = x * row[-1]
+    for coefficient in row[-2:0:-1]:
         total += coefficient
+        total *= x
+    total += row[0]
     return total
 
 
-def _horner_jet(row: tuple[float, ...], x: Array) -> tuple[Array, Array, Array | None]:
-    """A polynomial and its first two derivatives; None for one that is zero."""
-    value = _horner(row, x)
-    slope = _horner(tuple(j * each for j, each in enumerate(row))[1:], x)
-    if len(row) < 3:
-        return value, slope, None
-    return value, slope, _horner(tuple(j * (j - 1) * each for j, each in enumerate(row))[2:], x)
+def _slopes(row: tuple[float, ...]) -> tuple[float, ...]:
+    """Coefficients of a polynomial's derivative."""
+    return tuple(j * each for j, each in enumerate(row))[1:]
 
 
 @dataclass(frozen=True)
@@ -366,19 +360,20 @@ def _near_start(sums: Sums, S: Array, Sy: Array, Syy: Array) -> Array:
 
 
 def _far_start(sums: Sums) -> Array:
-    """Where the likelihood with two terms of the expansion is largest, nearly, for windows without steps near zero.
+    """Where the likelihood with three terms of the expansion is largest, nearly, for windows without steps near zero.
 
-    With S = Σ 1/g + Σ 1/g²/(2 A), the best q is u A/S with u = ½ ln(x_n/x_0) − n rho, and the best c is n/(2 R) with
-    R = Q − r u²/S, Q = Σ (b − r a)²; what is left is to minimise ln R + rho: one step of Newton's from weighted least
-    squares.
+    With S = Σ 1/g + Σ 1/g²/(2 A) − q² Σ 1/g³/(6 A²), the best q is u A/S with u = ½ ln(x_n/x_0) − n rho, and the best c
+    is n/(2 R) with R = Q − r u²/S, Q = Σ (b − r a)²; what is left is to minimise ln R + rho: one step of Newton's from
+    weighted least squares, at whose A = 4/(sigma² Δ) and q the sum S is taken.
     """
-    n, half = sums.n, 0.5 * sums.log_growth
-    S = sums.inverse[0] / sums.unit
+    n, half, unit = sums.n, 0.5 * sums.log_growth, sums.unit
+    S = sums.inverse[0] / unit
     variance, h = _weighted_squares(sums, S)
-    S_both = S + 0.125 * variance * (sums.inverse[1] / np.square(sums.unit))
     rho = -0.5 * h
     less, u, r = np.expm1(rho), half - n * rho, np.exp(rho)
-    lean = r / S_both
+    second, third = 0.125 * variance / unit * sums.inverse[1], np.square(u / sums.inverse[0]) / 6 * sums.inverse[2]
+    S_all = S + (second - third) / unit
+    lean = r / S_all
     Q, Q_1 = sums.D2 - less * (2 * sums.D1 - less * sums.D0), 2 * r * (less * sums.D0 - sums.D1)
     R, R_1 = Q - lean * u * u, Q_1 - lean * u * (u - 2 * n)
     R_2 = Q_1 + 2 * np.square(r) * sums.D0 - lean * (u * (u - 4 * n) + 2 * n * n)
@@ -386,10 +381,10 @@ def _far_start(sums: Sums) -> Array:
     move = -(share + 1) / (R_2 / R - np.square(share))
     rho = rho + np.where(np.abs(move) < _LONGEST, move, 0.0)
     less, u, r = np.expm1(rho), half - n * rho, np.exp(rho)
-    R = sums.D2 - less * (2 * sums.D1 - less * sums.D0) - r / S_both * u * u
+    R = sums.D2 - less * (2 * sums.D1 - less * sums.D0) - r / S_all * u * u
     c = n / (2 * np.fmax(R, 0.25 * sums.D2))
     c = c * (1 - S / (8 * n * c * r))
-    q = 2 * c * r * u / S_both
+    q = 2 * c * r * u / S_all
     return np.stack([np.log(c), rho, np.fmax((q + 1) / c, 0.25 / c)])
 
 

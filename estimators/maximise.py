@@ -167,7 +167,10 @@ def _climb(objective: Objective, start: Array, limits: Limits, most_rounds: int,
         ended = done | ~np.isfinite(top.value + gain) | (damping > _MOST_DAMPING)
         if ended.any():
             out, on = np.flatnonzero(ended), np.flatnonzero(~ended)
-            _write(best, last, at[out], np.where(done[out], trial[:, out], here[:, out]), top.take(out))
+            if at.size == m:  # nobody has left before: faster to write all
+                _write(best, last, slice(None), np.where(done, trial, here), top)
+            else:
+                _write(best, last, at[out], np.where(done[out], trial[:, out], here[:, out]), top.take(out))
             last.value[at[done]] += gain[done]
             converged[at[done]], rounds[at[out]] = True, number
             at, trial, here, top, damping = at[on], trial[:, on], here[:, on], top.take(on), damping[on]
@@ -196,7 +199,7 @@ def _chosen(first: Mask, a: Surface, b: Surface) -> Surface:
     )
 
 
-def _write(best: Array, last: Surface, at: Places, point: Array, top: Surface) -> None:
+def _write(best: Array, last: Surface, at: Places | slice, point: Array, top: Surface) -> None:
     """Put what is known of some windows into the arrays of all."""
     best[:, at], last.value[at] = point, top.value
     last.gradient[:, at], last.hessian[:, :, at] = top.gradient, top.hessian
@@ -291,8 +294,7 @@ def _newton(top: Surface, damping: Array, held: Mask, move: Array) -> tuple[Arra
     if some.size:
         bend, pull = bend.copy(), pull.copy()
         bend[:, :, some], pull[:, some] = _holding(top.take(some), held[:, some], move[:, some])
-    damped = damping.copy()
-    step = _solved(bend, pull, damping, held)
+    damped, step = damping.copy(), _solved(bend, pull, damping, held)
     left = np.flatnonzero(np.isnan(step[0]))
     for _ in range(_MOST_TRIES):
         if not left.size:
@@ -322,7 +324,8 @@ def _solved(bend: Array, pull: Array, damping: Array, held: Mask) -> Array:
         for i, each in enumerate(held):
             bend[i, i] -= np.where(each, 0.0, damping * np.abs(bend[i, i]))
     factors, sound = _factored(bend, -1.0)
-    step = np.stack(factors.solve(list(-pull)))
+    step = np.stack(factors.solve(list(pull)))
+    np.negative(step, out=step)
     if not sound.all():
         step[:, ~sound] = np.nan
     return step

@@ -22,6 +22,7 @@ import numpy as np
 
 from driftbook.estimators import chebyshev
 from driftbook.estimators.chebyshev import Least, Panels, Places, least
+from driftbook.estimators.edge import HALF_POINT
 from driftbook.estimators.filtered import FilteredSums, filtered_sums
 from driftbook.estimators.innovations import standardised_moments
 from driftbook.estimators.noisy_profile import powers, profile, weight_of_one
@@ -33,7 +34,6 @@ POINTS, MORE_POINTS = 16, 32  # of a panel, and of one for windows that are sear
 LANES = 1 << 10  # nodes by segments that are worked on at one time
 FEW, FEW_LANES = 16, 1 << 13  # windows in a segment, up to which more lanes fit in the processor's cache
 SLICE = 16  # windows of a segment, of those lanes, whose profiles are worked out at one time
-HALF_POINT = 1.92  # half the 95 % point of χ² with one degree of freedom
 NOTHING = 1e-6  # a below this is none
 
 
@@ -64,9 +64,9 @@ class Candidates:
         Weighted means of levels and of increments.
     spread : array
         As in `Profile`.
-    curvature, slope_t, lean : array
-        By t: the second derivative of f, the derivative of b, and that of c less theta times that of b, which is b
-        times that of theta.
+    rise, curvature, slope_t, lean : array
+        By t: the first and second derivative of f, the derivative of b, and that of c less theta times that of b, which
+        is b times that of theta.
     """
 
     a: Array
@@ -77,6 +77,7 @@ class Candidates:
     level: Array
     drift: Array
     spread: Array
+    rise: Array
     curvature: Array
     slope_t: Array
     lean: Array
@@ -225,8 +226,8 @@ def _free(panels: Panels, tables: Tables, best: Places) -> Candidates:
     a[t < NOTHING] = 0.0
     pure = _outside(b, a) | ((at.falls < 0) & (t > 0))
     lean = drift_t + b * level_t - drift / b * b_t
-    curvature = at.curvature / panels.half**2
-    return Candidates(a, b, pure, np.zeros_like(pure), at.value, level, drift, spread, curvature, b_t, lean)
+    rise, curvature = at.slope / panels.half, at.curvature / panels.half**2
+    return Candidates(a, b, pure, np.zeros_like(pure), at.value, level, drift, spread, rise, curvature, b_t, lean)
 
 
 def _with_slope(panels: Panels, table: Array, at: Least) -> tuple[Array, Array]:

@@ -39,7 +39,7 @@ Places = NDArray[np.intp]
 
 SIZE = 4
 MOST_ROUNDS = 40
-_CLOSE = 3e-6  # step of Newton's method in ln u that leaves its square as error
+_CLOSE = 2e-4  # step of Newton's method in ln u that leaves less than its square as error: 1e-6 of a standard error
 _LONGEST = 0.7
 
 
@@ -168,23 +168,41 @@ class Spot:
 
 def spot(sums: Sums, u: Array) -> Spot:
     """The likelihood at one u a window."""
-    D, E = sums.divergence, sums.last
-    right = [sums.first[0], *(A - 0.5 * u * each for A, each in zip(sums.first[1:], D, strict=True))]
-    right[-1] = right[-1] - 0.25 * u * u * E
-    solved = factor(sums.matrix(u), SIZE)
-    a = solved.solve(right)
-    bent = sums.bent(a)
-    pulled = [bent[0], *(b + 0.5 * each for b, each in zip(bent[1:], D, strict=True))]
-    last = 0.25 * u * E * a[3]
-    P = 0.5 * (sums.squares - _dot(a, sums.first) - u * (_dot(a, pulled) + last))
-    along = [*pulled[:-1], pulled[-1] + 0.5 * u * E]
-    moved = solved.solve(along)
+    fit = _Fit.of(sums, u)
+    a, P, last = fit.drift, fit.unexplained, fit.last
+    along = [*fit.pulled[:-1], fit.pulled[-1] + 0.5 * u * sums.last]
+    moved = fit.factor.solve(along)
     loglik = -0.5 * (sums.n * np.log(2 * np.pi * u) + sums.log_steps) - P / u
-    loglik -= 0.5 * _dot(a, bent) + last
-    for each, d in zip(a[1:], D, strict=True):
+    loglik -= 0.5 * _dot(a, fit.bent) + last
+    for each, d in zip(a[1:], sums.divergence, strict=True):
         loglik -= 0.5 * each * d
     curvature = P / u + last - u * _dot(along, moved)
-    return Spot(a, [-u * each for each in moved], P, loglik, P / u - last - 0.5 * sums.n, curvature, solved)
+    return Spot(a, [-u * each for each in moved], P, loglik, P / u - last - 0.5 * sums.n, curvature, fit.factor)
+
+
+@dataclass(frozen=True)
+class _Fit:
+    """The drift at one u a window, and what it leaves: a, κa, κa + ½ D, ¼ u a′E, P, and the factor of B + u κ."""
+
+    drift: list[Array]
+    bent: list[Array]
+    pulled: list[Array]
+    last: Array
+    unexplained: Array
+    factor: Factor
+
+    @classmethod
+    def of(cls, sums: Sums, u: Array) -> _Fit:
+        D, E = sums.divergence, sums.last
+        right = [sums.first[0], *(A - 0.5 * u * each for A, each in zip(sums.first[1:], D, strict=True))]
+        right[-1] = right[-1] - 0.25 * u * u * E
+        solved = factor(sums.matrix(u), SIZE)
+        a = solved.solve(right)
+        bent = sums.bent(a)
+        pulled = [bent[0], *(b + 0.5 * each for b, each in zip(bent[1:], D, strict=True))]
+        last = 0.25 * u * E * a[3]
+        P = 0.5 * (sums.squares - _dot(a, sums.first) - u * (_dot(a, pulled) + last))
+        return cls(a, bent, pulled, last, P, solved)
 
 
 def _dot(a: Sequence[Array], b: Sequence[Array]) -> Array:
@@ -227,10 +245,10 @@ class Optimum:
 
 
 def maximise(sums: Sums) -> Optimum:
-    """The maximum of each window's likelihood, from all of the movement taken as noise."""
+    """The maximum of each window's likelihood."""
     m = sums.squares.size
     found, converged = np.full((5 + 2 * SIZE, m), np.nan), np.zeros(m, dtype=np.bool_)
-    at, u = np.arange(m), sums.squares / sums.n
+    at, u = np.arange(m), _start(sums)
     for left in range(MOST_ROUNDS - 1, -1, -1):
         here = spot(sums, u)
         concave, noise = here.curvature > 0, here.unexplained / u
@@ -242,7 +260,8 @@ def maximise(sums: Sums) -> Optimum:
         ended = done | ~np.isfinite(u) | (left == 0)
         if ended.any():
             moved = [a + step * by for a, by in zip(here.drift, here.response, strict=True)]
-            state = (u, here.curvature, here.loglik, here.unexplained, here.factor.share, *moved, *here.response)
+            loglik = here.loglik + 0.5 * step * here.slope
+            state = (u, here.curvature, loglik, here.unexplained, here.factor.share, *moved, *here.response)
             for row, values in zip(found, state, strict=True):
                 row[at[ended]] = values[ended]
             converged[at] = done
@@ -253,3 +272,11 @@ def maximise(sums: Sums) -> Optimum:
     variance, curvature, loglik, unexplained, share = found[:5]
     drift, response = found[5 : 5 + SIZE], found[5 + SIZE :]
     return Optimum(variance, drift, response, curvature, loglik, unexplained, share, converged)
+
+
+def _start(sums: Sums) -> Array:
+    """What the drift leaves of all movement, by the drift that is best if all of it were noise."""
+    u = sums.squares / sums.n
+    fit = _Fit.of(sums, u)
+    left = fit.unexplained / (0.5 * sums.n + fit.last)
+    return np.where((left > 0.1 * u) & (left < 10 * u), left, u)

@@ -33,6 +33,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from driftbook.estimators.half_life import finite, half_lives
 from driftbook.estimators.intervals import COARSEST, PullInterval, exact_over_euler, widened_pull
 from driftbook.estimators.maximise import Places
 from driftbook.estimators.regression import EPS, Mask
@@ -42,7 +43,6 @@ from driftbook.estimators.square_root import FASTEST, Windows, log_ratio_slope, 
 from driftbook.estimators.status import Status
 from driftbook.estimators.windows import Array
 
-LN2 = float(np.log(2.0))
 LOST = 1e-7  # of a log-likelihood, that rounding may take
 TWO_SIDED = 1.959963984540054
 
@@ -158,9 +158,9 @@ def _interval_estimates(optimum: Optimum, residuals: Residuals, columns: dict[st
     feller = _feller_interval(optimum, pull, critical)
     return {
         "kurtosis": residuals.kurtosis,
-        "kappa_lower": _finite(pull.lower / duration),
-        "kappa_upper": _finite(pull.upper / duration),
-        "kappa_median_unbiased": _finite(pull.median / duration),
+        "kappa_lower": finite(pull.lower / duration),
+        "kappa_upper": finite(pull.upper / duration),
+        "kappa_median_unbiased": finite(pull.median / duration),
         "no_reversion_p": law.p_no_pull(slope),
         "theta_lower": theta[0],
         "theta_upper": theta[1],
@@ -216,29 +216,18 @@ def _feller_interval(optimum: Optimum, pull: PullInterval, critical: Array) -> t
     centre = ratio + along * (pull.median / n - optimum.h)
     below = centre - np.sqrt(own + np.square(along * (pull.median - pull.lower) / n))
     above = centre + np.sqrt(own + np.square(along * (pull.upper - pull.median) / n))
-    return np.maximum(np.fmin(below, ratio - np.sqrt(critical * variance)), 0.0), _finite(above)
+    return np.maximum(np.fmin(below, ratio - np.sqrt(critical * variance)), 0.0), finite(above)
 
 
 def _formulas(columns: dict[str, Array]) -> dict[str, Array]:
     """The columns that are formulas of others, as their SQL has them but for the need of a pull."""
-    kappa, lower, sigma = columns["kappa"], columns["kappa_lower"], columns["sigma"]
+    kappa, sigma = columns["kappa"], columns["sigma"]
     below, above = columns["feller_ratio_lower"], columns["feller_ratio_upper"]
-    return {
-        "half_life": _finite(LN2 / columns["kappa_median_unbiased"]),
-        "half_life_lower": _finite(LN2 / columns["kappa_upper"]),
-        "half_life_upper": _finite(LN2 / lower),
-        "half_life_mle": LN2 / kappa,
-        "half_life_unbounded": np.where(np.isnan(lower), np.nan, lower == 0),
+    return half_lives(columns) | {
         "stationary_sd": sigma * np.sqrt(columns["theta"] / (2 * kappa)),
         "feller_ratio": 2 * kappa * columns["theta"] / (sigma * sigma),
         "can_reach_zero": np.where(above < 1, 1.0, np.where(below > 1, 0.0, np.nan)),
     }
-
-
-def _finite(values: Array) -> Array:
-    """NaN in place of infinity, which is how a missing end is told."""
-    values[np.isinf(values)] = np.nan
-    return values
 
 
 def residuals_of(windows: Windows) -> Residuals:

@@ -6,8 +6,10 @@ from statistics import NormalDist
 
 import numpy as np
 
+from driftbook.estimators.edge import reach_of
 from driftbook.estimators.hidden_pull import hidden_pull, pull_ends
 from driftbook.estimators.jets import Jet, constant, covariance, inverse, logarithm, times
+from driftbook.estimators.maximise import Maximum
 from driftbook.estimators.maximise import inverse as inverse_of
 from driftbook.estimators.regression import Mask
 from driftbook.estimators.repair import Columns
@@ -15,7 +17,8 @@ from driftbook.estimators.swing_estimate import Estimate
 from driftbook.estimators.windows import Array
 
 TWO_SIDED = NormalDist().inv_cdf(0.975)
-STRONG = 8.0  # damping times a step from which on 1/damping is what the data tell
+STRONG = 2.0  # damping times a step from which on 1/damping is what the data tell
+TURNS = 4 * np.pi  # omega times a window's time from which on motion swings for long
 
 
 def swing_columns(estimate: Estimate, *, intervals: bool) -> Columns:
@@ -34,7 +37,7 @@ def swing_columns(estimate: Estimate, *, intervals: bool) -> Columns:
         swings = stiffness > 0.25 * damping**2
         turn = np.sqrt(np.where(swings, stiffness - 0.25 * damping**2, np.nan))
         columns |= {"period": 2 * np.pi / turn, "damping_ratio": damping / (2 * omega)}
-        columns |= _uncertainty(estimate, columns, damping < omega)
+        columns |= _uncertainty(estimate, columns, (damping < omega) & (omega * estimate.duration > TURNS))
     return columns
 
 
@@ -65,14 +68,9 @@ def _uncertainty(estimate: Estimate, columns: Columns, swings: Mask) -> Columns:
     }
     found |= _on_logs("sigma_s", columns["sigma_s"], sigma_se)
     strong = estimate.damping[0] * estimate.duration / n > STRONG
-    damping, eta = _on_logs("damping", columns["damping"], damping_se), _on_logs("eta", columns["eta"], eta_se)
-    far, near = 1 - TWO_SIDED * damping_se, 1 + TWO_SIDED * damping_se
-    for name, ends in (("damping", damping), ("eta", eta)):
-        ends[f"{name}_lower"] = np.where(strong, columns[name] / near, ends[f"{name}_lower"])
-        with_end = np.where(far > 0, columns[name] / far, np.nan)
-        ends[f"{name}_upper"] = np.where(strong, with_end, ends[f"{name}_upper"])
+    found |= _on_logs_or_inverses("damping", columns["damping"], damping_se, strong)
+    found |= _on_logs_or_inverses("eta", columns["eta"], np.where(strong, damping_se, eta_se), strong)
     pull = pull_ends(hidden_pull(n, estimate.duration, kappa, estimate.theta, estimate.first, given, of_parameters))
-    found |= damping | eta
     found |= {
         "kappa_s_lower": pull.lower,
         "kappa_s_upper": pull.upper,
@@ -80,8 +78,27 @@ def _uncertainty(estimate: Estimate, columns: Columns, swings: Mask) -> Columns:
         "theta_upper": pull.theta_upper,
         "no_reversion_p": pull.p_no_pull,
     }
+    # bias of a rate of return: Tang, C. Y. & Chen, S. X. (2009), J. Econometrics 149, 65–81
+    too_strong = 1 + 4 / np.maximum(estimate.damping[0] * estimate.duration, 2.0)
+    found["damping_lower"] /= too_strong
+    for name in ("kappa_s_upper", "sigma_s_upper"):
+        found[name] *= too_strong
     found |= _of_swing(columns, found, omega_se, swings)
     return found
+
+
+def overdamped_columns(found: Maximum, mean_step: Array, columns: Columns) -> Columns:
+    """Ends of what strong damping leaves without an estimate, where the likelihood is largest at the strongest.
+
+    `columns` are those of the same windows, with kappa_s and sigma_s from `ou`.
+    """
+    s = found.point[0] + reach_of(found, 0)[0]
+    damping = 1 / (np.expm1(s) * mean_step)
+    return {
+        "damping_lower": damping,
+        "omega_lower": np.sqrt(damping * columns["kappa_s_lower"]),
+        "eta_lower": damping * columns["sigma_s_lower"],
+    }
 
 
 def _on_logs(name: str, value: Array, se: Array) -> Columns:
@@ -90,15 +107,21 @@ def _on_logs(name: str, value: Array, se: Array) -> Columns:
     return {f"{name}_lower": value / reach, f"{name}_upper": value * reach}
 
 
+def _on_logs_or_inverses(name: str, value: Array, se: Array, strong: Mask) -> Columns:
+    """The interval on the scale of the logarithm, or where damping is strong on that of one over the value."""
+    ends, far = _on_logs(name, value, se), 1 - TWO_SIDED * se
+    by_inverse = value / (1 + TWO_SIDED * se), np.where(far > 0, value / far, np.nan)
+    return {end: np.where(strong, other, ends[end]) for end, other in zip(ends, by_inverse, strict=True)}
+
+
 def _of_swing(columns: Columns, found: Columns, omega_se: Array, swings: Mask) -> Columns:
     """Normal theory where motion swings for long; else the ends of omega from those of kappa_s and damping."""
     by_theory = _on_logs("omega", columns["omega"], omega_se)
     by_theory |= _on_logs("kappa_s", columns["kappa_s"], found["kappa_s_se"] / columns["kappa_s"])
     reach = TWO_SIDED * found["theta_se"]
     by_theory |= {"theta_lower": columns["theta"] - reach, "theta_upper": columns["theta"] + reach}
-    log_damping_reach = TWO_SIDED * found["damping_se"] / columns["damping"]
     other = dict(found)
     for end, sign in (("lower", -1.0), ("upper", 1.0)):
-        of_kappa = np.abs(np.log(found[f"kappa_s_{end}"] / columns["kappa_s"]))
-        other[f"omega_{end}"] = columns["omega"] * np.exp(0.5 * sign * np.hypot(of_kappa, log_damping_reach))
+        of_both = (np.log(found[f"{name}_{end}"] / columns[name]) for name in ("kappa_s", "damping"))
+        other[f"omega_{end}"] = columns["omega"] * np.exp(0.5 * sign * np.hypot(*of_both))
     return {name: np.where(swings, values, other[name]) for name, values in by_theory.items()}

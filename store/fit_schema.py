@@ -119,11 +119,15 @@ def _fit_versions() -> list[str]:
 
 
 def _versions_of() -> list[str]:
+    """Moments are read as `_as_of` reads them, and a bare date means every window that ends on that day."""
     return [
         "create macro main.versions_of(name, model, lookback, window_end) as table",
         "select v.* from versions.estimate v",
-        "where v.series = name and v.model = model and v.lookback = lookback and v.window_end = window_end::timestamp",
-        "order by v.parameter, v.run_from;",
+        "where v.series = name and v.model = model and v.lookback = lookback",
+        "  and v.window_end <= make_timestamp(base.moment_us(window_end))",
+        "  and v.window_end >= make_timestamp(base.moment_us(window_end) -",
+        r"    case when regexp_full_match(trim(window_end::varchar), '\d{4}-\d{2}-\d{2}') then 86399999999 else 0 end)",
+        "order by v.window_end, v.parameter, v.run_from;",
         "",
         "comment on macro table main.versions_of is 'every version of one window''s estimates: "
         "versions_of(''pellets_fob'', ''ou'', 250, ''2026-06-29'')';",

@@ -101,7 +101,9 @@ class Stretch:
     @property
     def is_readable(self) -> bool:
         """Whether lookback and steps can be used at all."""
-        usable = self.steps.size == 1 or self.steps.size == self.x.size - 1
+        if self.steps.size == 1:
+            return self.lookback >= 1 and 0 < float(self.steps[0]) < np.inf
+        usable = self.steps.size == self.x.size - 1
         return self.lookback >= 1 and usable and bool((np.isfinite(self.steps) & (self.steps > 0)).all())
 
     @property
@@ -243,9 +245,10 @@ def _blocks(asked: list[Stretch], usable: list[int]) -> Iterator[tuple[list[int]
 
     What stands behind a series does not touch its windows, so padding moves no bit of them.
     """
+    shapes = {row: asked[row].shape for row in usable}
     block: list[int] = []
-    for row in sorted(usable, key=lambda row: (*asked[row].shape, asked[row].x.size)):
-        if block and not _belongs(asked[block[0]], asked[row], len(block)):
+    for row in sorted(usable, key=lambda row: (*shapes[row], asked[row].x.size)):
+        if block and not (shapes[row] == shapes[block[0]] and _belongs(asked[block[0]], asked[row], len(block))):
             yield block, _padded([asked[one] for one in block])
             block = []
         block.append(row)
@@ -254,8 +257,7 @@ def _blocks(asked: list[Stretch], usable: list[int]) -> Iterator[tuple[list[int]
 
 
 def _belongs(first: Stretch, other: Stretch, size: int) -> bool:
-    alike = first.shape == other.shape and other.x.size <= _PADDING * first.x.size
-    return alike and (size + 1) * other.x.size <= _BLOCK_VALUES
+    return other.x.size <= _PADDING * first.x.size and (size + 1) * other.x.size <= _BLOCK_VALUES
 
 
 def _padded(series: list[Stretch]) -> _Block:

@@ -32,8 +32,12 @@ def take_in_folder(run: Run, folder: Path, plan: Plan, *, yes: bool) -> Delivere
     if not folder.is_dir():
         raise UsageError(f"there is no folder {folder} to take files from.")
     outcomes, left = [], []
+    known = intake.KnownFiles(run.con)
     for file in _files(folder):
         options = _options(file.name, plan, yes=yes)
+        if (outcome := known.outcome(file, options)) is not None:
+            outcomes.append(outcome)
+            continue
         run.con.begin()
         try:
             outcomes.append(intake.take_in(run.con, file, options, run.stamp))

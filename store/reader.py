@@ -99,16 +99,20 @@ def _mirror(con: duckdb.DuckDBPyConnection) -> None:
 
     The names then resolve for every cursor, which a `USE` would not do.
     """
+    con.execute("begin")  # a commit for each of a hundred statements would take its time
     for schema in ("base", "versions"):
         con.execute(f"create schema {schema}")
-    for (table,) in con.execute(query("tables_of"), [_BOOK]).fetchall():
-        con.execute(f"create view base.{table} as from {_BOOK}.base.{table}")
+    for schema, name, meaning in con.execute(query("relations_of"), {"book": _BOOK}).fetchall():
+        con.execute(f"create view {schema}.{name} as from {_BOOK}.{schema}.{name}")
+        if meaning is not None:
+            con.execute(f"comment on view {schema}.{name} is '{meaning.replace(chr(39), chr(39) * 2)}'")
     for migration in migrate.all_migrations():
         for statement in con.extract_statements(migration.text):
-            if _is_for_readers(statement.query):
+            if _is_macro(statement.query):
                 con.execute(statement)
+    con.execute("commit")
 
 
-def _is_for_readers(sql: str) -> bool:
+def _is_macro(sql: str) -> bool:
     text = "\n".join(line for line in sql.splitlines() if not line.startswith("--")).strip().lower()
-    return re.match(r"(create (or replace )?|comment on )(view|macro) ", text) is not None
+    return re.match(r"(create (or replace )?|comment on )macro ", text) is not None

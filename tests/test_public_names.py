@@ -51,6 +51,7 @@ COMMANDS = {
     "forget": "--before --yes --quiet --json",
     "sql": "--format --output --guard-formulas --timeout --rows --quiet --json",
     "verify": "--quiet --json",
+    "page": "--port --output --quiet --json",
     "demo": "--quiet --json",
     "new": "--quiet --json",
     "ingest": "--series --add-series --wide --columns --dates --decimal --zone --blank --dry-run --at --strict --yes "
@@ -117,7 +118,7 @@ def test_a_command_has_the_options_that_were_promised_and_an_example(command):
     assert f"Example: driftbook {command}" in shown.stdout
 
 
-@pytest.mark.parametrize("module", [store, estimators], ids=lambda module: module.__name__)
+@pytest.mark.parametrize("module", [store, store.charts, estimators], ids=lambda module: module.__name__)
 def test_all_public_names_exist_and_say_what_they_are(module):
     public = [getattr(module, name) for name in module.__all__]
     assert [thing for thing in public if callable(thing) and not thing.__doc__] == []

@@ -24,7 +24,7 @@ from functools import partial
 import numpy as np
 from numpy.typing import NDArray
 
-from driftbook.estimators import square_root
+from driftbook.estimators import half_life, square_root
 from driftbook.estimators.batches import Answer, Piece
 from driftbook.estimators.hankel_sums import STALE, TRUNCATED, Roots, Summing, Sums
 from driftbook.estimators.maximise import Limits, Places, maximise
@@ -49,39 +49,7 @@ PARAMETERS = (
 
 COLUMNS = (
     *(column for parameter in PARAMETERS for column in parameter_columns(parameter)),
-    Column("kappa_median_unbiased", "1/t", "Estimate of kappa that is too high as often as too low."),
-    Column("no_reversion_p", "", "One-sided p-value of no pull; below 0.05 speaks for a pull."),
-    Column(
-        "half_life",
-        "t",
-        "Time in which a distance to theta halves, by kappa_median_unbiased; empty without evidence of a pull.",
-        "CASE WHEN kappa > 0 THEN ln(2) / nullif(kappa_median_unbiased, 0) END",
-    ),
-    Column(
-        "half_life_lower",
-        "t",
-        "Lower end of the 95 % interval of half_life; empty: no end on this side.",
-        "CASE WHEN kappa_upper > 0 THEN ln(2) / kappa_upper END",
-    ),
-    Column(
-        "half_life_upper",
-        "t",
-        "Upper end of the 95 % interval of half_life; empty: no end on this side.",
-        "CASE WHEN kappa_lower > 0 THEN ln(2) / kappa_lower END",
-    ),
-    Column(
-        "half_life_mle",
-        "t",
-        "Half-life by kappa itself: too short on average.",
-        "CASE WHEN kappa > 0 THEN ln(2) / kappa END",
-    ),
-    Column(
-        "half_life_unbounded",
-        "",
-        "Whether the data leave the half-life without an upper end.",
-        "kappa_lower = 0",
-        "boolean",
-    ),
+    *half_life.COLUMNS,
     Column(
         "stationary_sd",
         "x",

@@ -25,8 +25,8 @@ gamma  kappa  sigma  kappa Δ  sigma √Δ  expansion  Euler
 1      20     1      0.385    0.139     1.1e-3     1.9e-1
 =====  =====  =====  =======  ========  =========  =======
 
-It grows with the third power of the step. Where the pull over a step exceeds a half, or zero is near, no closed form is
-adequate.
+It grows with the third power of the step. Where the pull over the longest step exceeds a half, the fit is `too_coarse`:
+its numbers stand, but the likelihood is not to be compared. Near zero it is not adequate either.
 
 sigma and gamma by themselves are hard to tell apart (the standard error of gamma is about 1/(√(2n) sd(ln X))); the
 volatility at the window's geometric mean m, `local_volatility` = sigma m^gamma, is well determined where they are not.

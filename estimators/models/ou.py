@@ -34,8 +34,9 @@ from functools import partial
 import numpy as np
 from numpy.typing import NDArray
 
-from driftbook.estimators import unequal
+from driftbook.estimators import half_life, unequal
 from driftbook.estimators.batches import Answer, Piece
+from driftbook.estimators.half_life import finite, half_lives
 from driftbook.estimators.intervals import sigma_interval, theta_set, widened_pull
 from driftbook.estimators.model import Column, Model, Parameter, parameter_columns
 from driftbook.estimators.regression import Mask, Regression, from_sums, from_windows
@@ -47,7 +48,6 @@ from driftbook.estimators.unequal import Solution, as_regression
 from driftbook.estimators.windows import Array
 
 SHORTEST = 5
-LN2 = float(np.log(2.0))
 
 PARAMETERS = (
     Parameter("kappa", "1/t", "Speed of the pull to theta; the likelihood's estimate, some 4/T too high on average."),
@@ -57,39 +57,7 @@ PARAMETERS = (
 
 COLUMNS = (
     *(column for parameter in PARAMETERS for column in parameter_columns(parameter)),
-    Column("kappa_median_unbiased", "1/t", "Estimate of kappa that is too high as often as too low."),
-    Column("no_reversion_p", "", "One-sided p-value of no pull; below 0.05 speaks for a pull."),
-    Column(
-        "half_life",
-        "t",
-        "Time in which a distance to theta halves, by kappa_median_unbiased; empty without evidence of a pull.",
-        "CASE WHEN kappa > 0 THEN ln(2) / nullif(kappa_median_unbiased, 0) END",
-    ),
-    Column(
-        "half_life_lower",
-        "t",
-        "Lower end of the 95 % interval of half_life; empty: no end on this side.",
-        "CASE WHEN kappa_upper > 0 THEN ln(2) / kappa_upper END",
-    ),
-    Column(
-        "half_life_upper",
-        "t",
-        "Upper end of the 95 % interval of half_life; empty: no end on this side.",
-        "CASE WHEN kappa_lower > 0 THEN ln(2) / kappa_lower END",
-    ),
-    Column(
-        "half_life_mle",
-        "t",
-        "Half-life by kappa itself: too short on average.",
-        "CASE WHEN kappa > 0 THEN ln(2) / kappa END",
-    ),
-    Column(
-        "half_life_unbounded",
-        "",
-        "Whether the data leave the half-life without an upper end.",
-        "kappa_lower = 0",
-        "boolean",
-    ),
+    *half_life.COLUMNS,
     Column(
         "stationary_sd",
         "x",
@@ -237,13 +205,13 @@ def _interval_estimates(regression: Regression, robust: Array, fourth: Array, dt
     theta = theta_set(law, b, mean_from=0.0, mean_to=regression.drift, A=A * uneven, s2=s2 * uneven)
     sigma = sigma_interval(n, b, median_pull=pull.median, A=A, s2=s2, kurtosis=kurtosis, step=dt)
     return {
-        "kappa_lower": _finite(pull.lower / duration),
-        "kappa_upper": _finite(pull.upper / duration),
+        "kappa_lower": finite(pull.lower / duration),
+        "kappa_upper": finite(pull.upper / duration),
         "theta_lower": regression.level + theta.lower,
         "theta_upper": regression.level + theta.upper,
         "sigma_lower": sigma.lower,
-        "sigma_upper": _finite(sigma.upper),
-        "kappa_median_unbiased": _finite(pull.median / duration),
+        "sigma_upper": finite(sigma.upper),
+        "kappa_median_unbiased": finite(pull.median / duration),
         "no_reversion_p": law.p_no_pull(b),
         "kurtosis": kurtosis,
     }
@@ -251,21 +219,7 @@ def _interval_estimates(regression: Regression, robust: Array, fourth: Array, dt
 
 def _formulas(columns: dict[str, Array]) -> dict[str, Array]:
     """The columns that are formulas of others, as their SQL has them but for the need of a pull."""
-    kappa, lower = columns["kappa"], columns["kappa_lower"]
-    return {
-        "half_life": _finite(LN2 / columns["kappa_median_unbiased"]),
-        "half_life_lower": _finite(LN2 / columns["kappa_upper"]),
-        "half_life_upper": _finite(LN2 / lower),
-        "half_life_mle": LN2 / kappa,
-        "half_life_unbounded": np.where(np.isnan(lower), np.nan, lower == 0),
-        "stationary_sd": columns["sigma"] / np.sqrt(2 * kappa),
-    }
-
-
-def _finite(values: Array) -> Array:
-    """NaN in place of infinity, which is how a missing end is told."""
-    values[np.isinf(values)] = np.nan
-    return values
+    return half_lives(columns) | {"stationary_sd": columns["sigma"] / np.sqrt(2 * columns["kappa"])}
 
 
 def _from_windows(intervals: bool, windows: Array, steps: Array) -> tuple[dict[str, Array], NDArray[np.int8]]:

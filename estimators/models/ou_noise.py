@@ -8,9 +8,10 @@ At equal steps the increments are an AR(1) regression with moving-average errors
 rho = e^{−kappa Δ}, the root a and the innovations' variance F, noise² = F a/rho, and X has the variance
 F (1 − a/rho)(1 − a rho) a step.
 
-About half of all windows of a plain Ornstein–Uhlenbeck process end at a = 0: `Status.AT_BOUND`, with no noise, all
-columns and the log-likelihood those of `ou`. Where rho < a or rho > 1/a would be best only noise is left, about a level
-or a curve: `Status.AT_BOUND` too, with sigma = 0 and no kappa.
+About half of all windows of a plain Ornstein–Uhlenbeck process end at a = 0: `Status.AT_BOUND`, with no noise, the
+columns and the log-likelihood those of `ou`, but for lower ends of kappa and sigma, which allow for as much noise as
+the likelihood does (`driftbook.estimators.noisy_edge`). Where rho < a or rho > 1/a would be best only noise is left,
+about a level or a curve: `Status.AT_BOUND` too, with sigma = 0 and no kappa.
 
 Standard errors are those of the observed information. Kappa's interval feeds rho to the exact law of the AR(1) slope,
 widened by the standard error of rho over √((1 − rho²)/n + 4/n²), what that law has without noise; theta's is of
@@ -37,6 +38,7 @@ from driftbook.estimators.model import Column, Model, Parameter, parameter_colum
 from driftbook.estimators.models import ou
 from driftbook.estimators.noisy import MORE_POINTS, Candidates, Segments, candidates, centred, exact
 from driftbook.estimators.noisy_columns import point, with_intervals
+from driftbook.estimators.noisy_edge import NoisyEdge, edge_by_filter, edge_by_regression, edge_columns
 from driftbook.estimators.noisy_estimate import Estimate, by_filter, by_regression
 from driftbook.estimators.noisy_values import first_search
 from driftbook.estimators.pull import Pull
@@ -136,7 +138,9 @@ def _settle(piece: Piece, found: Candidates, columns: Columns, status: Statuses)
     usable = (status != Status.FLAT) & (status != Status.OUT_OF_RANGE)
     lost = usable & ~np.isfinite(found.value + found.a)
     at_zero = usable & (found.a == 0) & ~found.pure & (status != Status.ALTERNATING)
-    _without_noise(columns, status, np.flatnonzero(at_zero))
+    none = np.flatnonzero(at_zero)
+    dt = np.repeat(piece.dt.reshape(-1), piece.shape[-1])
+    _without_noise(edge_by_regression(found.take(none), piece.lookback, dt[none]), dt[none], none, columns, status)
     status[usable & found.swings] = Status.ALTERNATING
     blank(columns, np.flatnonzero(usable & found.swings))
     places = np.flatnonzero(usable & ~lost & ~at_zero & ~found.swings)
@@ -144,19 +148,22 @@ def _settle(piece: Piece, found: Candidates, columns: Columns, status: Statuses)
     for start in range(0, places.size, at_once):
         part = places[start : start + at_once]
         windows = piece.windows[np.unravel_index(part, piece.shape)]
-        dt, some = piece.dt.reshape(-1)[part // piece.shape[-1]], found.take(part)
+        some = found.take(part)
         fit = exact(windows, some)
         lost[part] = ~(np.abs(fit.value - some.value) <= AGREED * piece.lookback)
-        _write(by_regression(fit, some, dt), part, columns, status)
+        _write(by_regression(fit, some, dt[part]), part, columns, status)
     return np.flatnonzero(lost)
 
 
-def _without_noise(columns: Columns, status: Statuses, places: Places) -> None:
+def _without_noise(edge: NoisyEdge, mean_step: Array, places: Places, columns: Columns, status: Statuses) -> None:
     """What is known of the noise where none is seen; the rest is that of `ou`."""
     status[places] = Status.AT_BOUND
     columns["noise"][places] = 0.0
     if "noise_share" in columns:
         columns["noise_share"][places], columns["no_noise_p"][places] = 0.0, 1.0
+        here = {name: values[places] for name, values in columns.items()}
+        for name, values in edge_columns(edge, mean_step, here).items():
+            columns[name][places] = values
 
 
 def _write(estimate: Estimate, places: Places, columns: Columns, status: Statuses) -> None:
@@ -210,7 +217,9 @@ def _fit_unequal(
     without = columns["loglik"][places] + n * np.log(unit)
     none = (found.at_bound[1] & (found.point[1] == 0)) | (found.value <= without)
     none &= found.converged | np.isfinite(without)
-    _without_noise(columns, status, places[none & (status[places] != Status.ALTERNATING)])
+    at_zero = np.flatnonzero(none & (status[places] != Status.ALTERNATING))
+    edge = edge_by_filter(found.take(at_zero), fit.take(at_zero), lengths.take(at_zero))
+    _without_noise(edge, lengths.duration[at_zero] / n, places[at_zero], columns, status)
     some = np.flatnonzero(~none)
     if not some.size:
         return

@@ -6,7 +6,6 @@ import json
 import os
 import signal
 import sys
-from importlib.metadata import version
 from threading import current_thread, main_thread
 from typing import Annotated
 
@@ -40,6 +39,8 @@ def _about(
     show_version: Annotated[bool, typer.Option("--version", help="Show the version and end.", is_eager=True)] = False,
 ) -> None:
     if show_version:
+        from importlib.metadata import version  # slow, and seldom needed
+
         typer.echo(version("driftbook"))
         raise typer.Exit
 

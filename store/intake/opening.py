@@ -55,7 +55,7 @@ def opened(con: duckdb.DuckDBPyConnection, origin: object, options: Options, nam
         with _said_plainly(name):
             given, plain = stack.enter_context(landed(origin, name))
             before = _state(given)
-            digest = _digest_of_file(given)
+            digest = digest_of_file(given)
             source = _source(con, plain, name, options.decimal)
         stack.callback(source.close, con)
         yield digest, laid_out(source, options)
@@ -82,7 +82,8 @@ def _digest_of_frame(frame: pl.DataFrame) -> str:
     return written.sha256.hexdigest()
 
 
-def _digest_of_file(path: Path) -> str:
+def digest_of_file(path: Path) -> str:
+    """SHA-256 over a file's bytes."""
     with path.open("rb") as file:
         return hashlib.file_digest(file, "sha256").hexdigest()
 

@@ -15,7 +15,7 @@ from driftbook.store.page.overview import Overview, overview
 from driftbook.store.page.rendering import render
 from driftbook.store.page.sheet import Asked, sheet
 
-_MOST_SHEETS = 40
+_MOST_SHEETS = 20  # each about half a megabyte, and what is to be mailed has to stay below 25
 
 
 @dataclass(frozen=True)

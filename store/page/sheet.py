@@ -98,10 +98,10 @@ def _answer(row: dict[str, Any]) -> list[str]:
     if row["model"] is None:
         reason = f": {row['note']}" if row["note"] else ""
         return [f"There is no estimate in force{reason}."]
-    time = figures.volatility_time(row["volatility_unit"])
+    time = "" if row["volatility"] is None else f" {figures.volatility_time(row['volatility_unit'])}"
     return [
-        f"Volatility {words.volatility(row)} {time}.",
-        f"Half-life {words.half_life_now(row)}.",
+        f"Volatility: {words.volatility(row)}{time}.",
+        f"Half-life: {words.half_life_now(row)}.",
         *_zero(row),
         f"Model: {words.model(row['model'])} ({row['model']}){_weight(row)}.",
     ]

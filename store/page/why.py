@@ -71,7 +71,11 @@ def _rows(found: Explanation, row: dict[str, Any]) -> tuple[tuple[str, str, str]
 def _named(parameter: Parameter, row: dict[str, Any]) -> str:
     """A parameter with its unit: the registry counts in x, the unit of the series, and t, that of its clock."""
     time = "second" if row["clock"] == "seconds" else "year"
-    unit = parameter.unit.replace("t", time).replace("x", words.clean(row["unit"]) or "unit")
+    of_series = words.clean(row["unit"]) or "unit"
+    unit = parameter.unit.replace("t", time)
+    for power in ("√x", "x^"):
+        unit = unit.replace(power, power.replace("x", f"({of_series})"))
+    unit = unit.replace("x", of_series)
     return f"{parameter.name}, {unit}" if unit else parameter.name
 
 

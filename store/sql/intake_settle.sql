@@ -205,6 +205,12 @@ where source = ?
 order by intake_id desc
 limit 1
 
+-- name: intake_newest_of_each
+-- The newest intake from each source.
+select source, max(intake_id), max_by(sha256, intake_id), max_by(options, intake_id)
+from base.intake
+group by source
+
 -- name: intake_first_refused
 -- The first refused rows of an intake, to show.
 select line, text, reason, cell

@@ -27,6 +27,16 @@ where c.database_name = current_database() and t.database_name = current_databas
 group by c.table_name
 order by c.table_name
 
+-- name: relations_of
+-- The private tables and the views of an attached book, with what they mean.
+select t.schema_name, t.table_name, t.comment
+from duckdb_tables() t
+where t.database_name = $book and t.schema_name = 'base'
+union all
+select v.schema_name, v.view_name, v.comment
+from duckdb_views() v
+where v.database_name = $book and not v.internal
+
 -- name: tables_of
 -- The base tables of an attached book.
 select t.table_name from duckdb_tables() t where t.database_name = ? and t.schema_name = 'base'

@@ -21,7 +21,7 @@ class Truth:
     name: str
     make: object
     fat_tails: bool = False
-    no_pull: bool = False
+    at_zero: frozenset = frozenset()  # columns whose truth is at the end of their range
 
 
 @dataclass(frozen=True)
@@ -136,6 +136,9 @@ def ou_noise(rng, n, paths, *, kappa, noise, sigma=0.3, kind="gaussian", gaps="e
     return Windows(y, hidden.steps, hidden.truth | {"noise": noise})
 
 
+EDGES = {"kappa": ("kappa", "half_life"), "noise": ("noise",)}
+
+
 def grid(make, cases, model=None):
     model = model or make.__name__
     for name, settings in cases.items():
@@ -144,7 +147,9 @@ def grid(make, cases, model=None):
             name,
             partial(make, **settings),
             fat_tails=settings.get("kind", "gaussian") != "gaussian",
-            no_pull=settings.get("kappa", settings.get("kappa_s", 1)) == 0,
+            at_zero=frozenset(
+                column for setting, columns in EDGES.items() if settings.get(setting) == 0 for column in columns
+            ),
         )
 
 

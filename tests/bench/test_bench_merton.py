@@ -20,7 +20,7 @@ from driftbook.estimators.models.merton import MODEL as MERTON
 pytestmark = pytest.mark.bench
 
 SERIES, VALUES, LOOKBACK, DT = 10, 2500, 250, 1 / 252
-LEAST_RATIO = 80  # 104 to 114 measured, with the machine busy
+LEAST_RATIO = 80  # 102 to 114 measured, on a busy machine
 LOOPED = 12
 STARTS = ((0.7, 0.03, 0.0, 4.0), (0.5, 0.1, 0.0, 3.0), (0.4, 0.3, 0.0, 1.5), (0.8, 0.01, -2.0, 4.0))
 

@@ -93,12 +93,3 @@ def test_against_a_loop_of_optimisers(intervals):
     print(f"{ratio:,.0f} times; log-likelihood, ours over the loop's: {over.min():.1e} to {over.max():.1e}")
     assert over.min() > -1e-6
     assert ratio >= LEAST_RATIO_TO_LOOP
-
-
-@pytest.mark.bench
-def test_time_of_one_core_by_lookback_and_series():
-    for rows in (10, 100):
-        series = wells(rows, VALUES, 1, substeps=2)
-        for lookback in (60, 250, 1000):
-            (seconds,) = best(lambda s=series, n=lookback: MODEL.rolling(s, DT, n), rounds=2)
-            print(f"\n{rows} series, lookback {lookback}: {seconds / rows / (VALUES - lookback) * 1e6:.2f} µs a window")

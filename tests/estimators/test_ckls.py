@@ -8,6 +8,7 @@ import pytest
 
 from driftbook.estimators import Fit, Status, aligned_start
 from driftbook.estimators.chebyshev import points, weights
+from driftbook.estimators.elastic_fit import COARSEST
 from driftbook.estimators.log_segments import bridge, mean_series, quotient
 from driftbook.estimators.models.ckls import MODEL
 
@@ -250,7 +251,7 @@ def test_each_strange_row_has_its_status_and_no_number_that_is_none():
         np.testing.assert_array_equal(fit.status[row] == Status.OUT_OF_RANGE, holds)
     assert (fit.status[[3, 6, 9]] == Status.FLAT).all()
     assert (fit.status[5, :101] == Status.NOT_CONVERGED).all()
-    given = np.isin(fit.status, [Status.OK, Status.NO_REVERSION, Status.AT_BOUND])
+    given = np.isin(fit.status, [Status.OK, Status.NO_REVERSION, Status.AT_BOUND, Status.TOO_COARSE])
     for name in ("kappa", "sigma", "gamma", "loglik", "local_volatility", "kurtosis"):
         np.testing.assert_array_equal(np.isfinite(fit.columns[name]), given, err_msg=name)
     assert given[[0, 4, 10, 11]].all()
@@ -264,16 +265,29 @@ def test_window_of_too_few_steps(n_obs):
 
 def test_statuses_and_ends_say_what_was_found():
     fit = MODEL.rolling(paths(900, 12, rows=4, relative=0.15), DT, 60)
-    bound = fit.status == Status.AT_BOUND
+    coarse, bound = fit.status == Status.TOO_COARSE, fit.status == Status.AT_BOUND
     assert bound.any()
-    np.testing.assert_array_equal(bound, np.isin(fit.gamma, [-1.0, 2.5]))
-    np.testing.assert_array_equal(np.isnan(fit.gamma_lower), bound)
-    np.testing.assert_array_equal(fit.status == Status.NO_REVERSION, ~bound & (fit.kappa <= 0))
+    np.testing.assert_array_equal(coarse, np.abs(fit.kappa) * DT > COARSEST)
+    at_edge = np.isin(fit.gamma, [-1.0, 2.5])
+    np.testing.assert_array_equal(bound, ~coarse & at_edge)
+    np.testing.assert_array_equal(np.isnan(fit.gamma_lower), at_edge)
+    np.testing.assert_array_equal(fit.status == Status.NO_REVERSION, ~coarse & ~bound & (fit.kappa <= 0))
     above = fit.gamma > 1
     for name in ("half_life", "half_life_lower", "half_life_upper", "half_life_mle"):
         assert np.isnan(fit.columns[name][above]).all()
     assert (fit.local_volatility_lower < fit.local_volatility).all()
     assert (fit.local_volatility < fit.local_volatility_upper).all()
+
+
+@pytest.mark.parametrize("dt", [1.0, [1.0, 1.0, 20.0]])
+def test_a_pull_of_more_than_a_half_over_the_longest_step_is_too_coarse(dt):
+    x = paths(300, 14, kappa=9.0)[0]
+    steps = DT * np.resize(dt, 300)
+    fit = MODEL.rolling(x, steps, 100)
+    longest = np.lib.stride_tricks.sliding_window_view(steps, 100).max(axis=1)
+    np.testing.assert_array_equal(fit.status == Status.TOO_COARSE, np.abs(fit.kappa) * longest > COARSEST)
+    assert (fit.status == Status.TOO_COARSE).any() == (np.ndim(dt) == 1)
+    assert np.isfinite(fit.kappa_lower[fit.status == Status.TOO_COARSE]).all()
 
 
 def test_columns_with_a_formula_hold_what_it_says():

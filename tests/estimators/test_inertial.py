@@ -189,6 +189,30 @@ def test_without_inertia_the_fit_is_that_of_ou(steps):
     for name in ("damping", "omega", "eta", "damping_se", "period"):
         assert np.isnan(fit.columns[name][none]).all(), name
     assert (fit.loglik >= plain.loglik - SAME_DENSITY).all()
+    assert np.isnan(fit.damping_upper[none]).all()
+    assert (fit.damping_lower[none] > 0).mean() > 0.9
+    at_most = np.sqrt(fit.damping_lower * fit.kappa_s_lower)[none]
+    np.testing.assert_allclose(fit.omega_lower[none], at_most, rtol=1e-12)
+
+
+def test_lower_end_of_damping_that_is_too_strong_to_tell():
+    """There the likelihood has lost no less than half a χ² allows, 1.92: the way there is taken for a parabola."""
+    rng, b = np.random.default_rng(5), np.exp(-10 * DT)
+    x = lfilter([1.0], [1.0, -b], rng.standard_normal((12, 151)), axis=1)
+    fit = MODEL.fit(x, DT)
+    lost = []
+    for k in np.flatnonzero((fit.status == Status.AT_BOUND) & (fit.damping_lower > 0)):
+
+        def minus(z, k=k):
+            damping = fit.damping_lower[k]
+            pull, theta, sigma = np.exp(z[0]), z[1], np.exp(z[2])
+            return -float(MODEL.loglik(x[k], DT, damping, np.sqrt(pull * damping), theta, sigma * damping))
+
+        start = [np.log(max(fit.kappa_s[k], 1.0)), fit.theta[k], np.log(fit.sigma_s[k])]
+        best = minimize(minus, start, method="Nelder-Mead", options={"maxiter": 2000, "fatol": 1e-6})
+        lost.append(fit.loglik[k] + best.fun)
+    assert len(lost) >= 3
+    assert 1.92 < min(lost) <= max(lost) < 8
 
 
 def case(x, dt=DT):

@@ -151,7 +151,7 @@ def test_where_no_noise_is_seen_the_fit_is_that_of_ou(steps):
         "theta",
         "sigma",
         "loglik",
-        "kappa_lower",
+        "kappa_upper",
         "theta_upper",
         "sigma_se",
         "half_life",
@@ -163,6 +163,29 @@ def test_where_no_noise_is_seen_the_fit_is_that_of_ou(steps):
     assert (fit.no_noise_p[none] == 1).all()
     assert np.isnan(fit.noise_se[none]).all()
     assert (fit.loglik >= plain.loglik - SAME_DENSITY).all()
+    assert (fit.noise_lower[none] == 0).all()
+    assert (fit.kappa_lower[none] <= plain.kappa_lower[none]).all()
+    assert (fit.sigma_lower[none] < plain.sigma_lower[none]).all()
+
+
+@pytest.mark.parametrize("steps", ["equal", "calendar"])
+def test_upper_end_of_noise_that_is_not_seen(steps):
+    """There the likelihood has lost what half a χ² allows, 1.92; the way there is taken for a parabola."""
+    given = DT if steps == "equal" else calendar(150, 12, seed=7)
+    x = noisy(10.0, 0.0, 150, 12, seed=4, steps=given)
+    fit = MODEL.fit(x, given)
+    lost = []
+    for k in np.flatnonzero(fit.status == Status.AT_BOUND):
+        own = given if steps == "equal" else given[k]
+
+        def minus(z, k=k, own=own):
+            return -float(MODEL.loglik(x[k], own, z[0], z[1], np.exp(z[2]), fit.noise_upper[k]))
+
+        start = [fit.kappa[k], fit.theta[k], np.log(fit.sigma[k])]
+        best = minimize(minus, start, method="Nelder-Mead", options={"maxiter": 2000, "fatol": 1e-6})
+        lost.append(fit.loglik[k] + best.fun)
+    assert len(lost) >= 3
+    assert 0.8 < min(lost) <= max(lost) < 4
 
 
 def test_only_noise():

@@ -146,9 +146,22 @@ def test_at_least_as_good_as_another_search_in_many_windows():
     windows = [simulated(seed) for seed in range(60)] + [index[k : k + 251] for k in range(0, 6000, 150)]
     fit = MERTON.fit(np.stack(windows), DT)
     short = np.array([search(x, SEARCH_STARTS) for x in windows]) - fit.loglik
-    missed = (short > 1e-6) & (fit.status == Status.OK)
+    missed = ~(short <= 1e-6)
     print(f"\n{len(windows)} windows: short in {missed.mean():.1%}, by up to {short[missed].max(initial=0):.2f}")
-    assert missed.mean() <= 0.03
+    assert missed.mean() <= 0.02
+
+
+@pytest.mark.study
+def test_windows_in_rolling_position_have_the_largest_maximum():
+    """Against each window by itself from every start, which the search above vouches for."""
+    index = sp500("1990-01-01", "2015-12-31")
+    rolled = MERTON.rolling(index, DT, 250)
+    places = np.arange(0, rolled.loglik.size, 13)
+    alone = MERTON.fit(np.lib.stride_tricks.sliding_window_view(index, 251)[places], DT)
+    short = alone.loglik - rolled.loglik[places]
+    missed = ~(short <= 1e-6)
+    print(f"\n{places.size} windows: short in {missed.mean():.1%}, by up to {short[missed].max(initial=0):.2f}")
+    assert missed.mean() <= 0.02
 
 
 @pytest.mark.parametrize("kind", ["jumps", "Gaussian", "Student-5"])

@@ -4,7 +4,7 @@ import os
 import sys
 import traceback
 from dataclasses import dataclass
-from multiprocessing import get_context
+from multiprocessing import forkserver, get_context
 from pathlib import Path
 
 # Starts every child; also makes the pipes that children are given.
@@ -17,6 +17,7 @@ FORKING.set_forkserver_preload(
         "driftbook.store.swap",
         "driftbook.store.writer",
         "pandas",  # which pyarrow loads where it is there
+        "loaded",
     ]
 )
 
@@ -34,6 +35,7 @@ class Child:
     """A child that runs a function and writes to files beside each other."""
 
     def __init__(self, folder: Path, function, *arguments):
+        _see_that_the_server_runs()
         folder.mkdir(parents=True, exist_ok=True)
         self._said = [folder / "out", folder / "err"]
         for path in self._said:
@@ -48,6 +50,17 @@ class Child:
             self.process.join()
         out, err = (path.read_text() for path in self._said)
         return Ended(self.process.exitcode, out, err)
+
+
+def _see_that_the_server_runs():
+    """What stands beside the tests is on its path, as it is on ours."""
+    before = os.environ.get("PYTHONPATH")
+    os.environ["PYTHONPATH"] = os.pathsep.join([str(Path(__file__).parent), *([before] if before else [])])
+    forkserver.ensure_running()
+    if before is None:
+        del os.environ["PYTHONPATH"]
+    else:
+        os.environ["PYTHONPATH"] = before
 
 
 def _run(said, function, arguments):

@@ -1557,7 +1557,7 @@ main.series_at_run
   macro (run) SELECT x.* EXCLUDE (run_from, run_to), x.run_from AS run_id FROM base.series_rows AS x WHERE ((x.run_from <= run) AND ((x.run_to IS NULL) OR (x.run_to > run)))
   -- the view series as it was after a run: series_at_run(41)
 main.versions_of
-  macro (name, model, lookback, window_end) SELECT v.* FROM versions.estimate AS v WHERE ((v.series = "name") AND (v.model = model) AND (v.lookback = lookback) AND (v.window_end = CAST(window_end AS TIMESTAMP_US))) ORDER BY v.parameter, v.run_from
+  macro (name, model, lookback, window_end) SELECT v.* FROM versions.estimate AS v WHERE ((v.series = "name") AND (v.model = model) AND (v.lookback = lookback) AND (v.window_end <= make_timestamp(base.moment_us(window_end))) AND (v.window_end >= make_timestamp((base.moment_us(window_end) - CASE  WHEN (regexp_full_match("trim"(CAST(window_end AS VARCHAR)), '\d{4}-\d{2}-\d{2}')) THEN (86399999999) ELSE 0 END)))) ORDER BY v.window_end, v.parameter, v.run_from
   -- every version of one window's estimates: versions_of('pellets_fob', 'ou', 250, '2026-06-29')
 versions.abm
   CREATE VIEW versions.abm AS SELECT x.*, f.moment AS in_force_from, t.moment AS in_force_to FROM base.abm_rows AS x INNER JOIN base.run AS f ON ((f.run_id = x.run_from)) LEFT JOIN base.run AS t ON ((t.run_id = x.run_to));

@@ -197,7 +197,7 @@ def test_a_run_that_fails_while_it_estimates_leaves_the_book_byte_for_byte(books
     def fail(*_, **__):
         raise MemoryError("no more")
 
-    monkeypatch.setattr(functions, "rolling", fail)
+    monkeypatch.setattr(functions, "roll_block", fail)
     with pytest.raises(Exception, match="no more"), store.writing(book) as work:  # noqa: PT012
         work.ingest(lot(120, 130), ADDING, name="daily")
         work.refresh()

@@ -267,6 +267,9 @@ def test_a_value_that_is_missing_spoils_only_the_windows_that_hold_it(con):
             }
 
 
+CLIMBED = ("cir", "ckls", "quartic", "merton", "inertial", "ou_noise")
+
+
 @pytest.mark.parametrize("model", MODEL_NAMES)
 def test_the_loglik_at_the_estimates_is_that_of_the_fit_and_smaller_beside_them(con, model):
     x, names = suited(model), ", ".join(f"f.{name}" for name in GIVEN[model])
@@ -276,7 +279,8 @@ def test_the_loglik_at_the_estimates_is_that_of_the_fit_and_smaller_beside_them(
         f"from (select x, fit_{model}(x, 0.1) as f from (select ?::double[] as x))",
         [x],
     ).fetchone()
-    assert at == pytest.approx(told, rel=1e-12)
+    # a batched climb reports the value with the gain that its last step, below 1e-9, promised
+    assert at == pytest.approx(told, rel=1e-12, abs=1e-9 if model in CLIMBED else 0)
     assert off < at
 
 

@@ -140,7 +140,7 @@ def test_what_the_table_says_of_their_meaning_holds():
 
 
 def test_the_numbers_that_the_guide_names_are_read_or_refused_as_it_says():
-    _, _, rest = GUIDE.partition("### Numbers\n\n")
+    _, _, rest = GUIDE.partition("## Numbers\n\n")
     yes, _, no = rest.partition("No thousands separators")
     assert [read_number(one) for one in code(yes.partition(". With")[0])] == [1.0, -1.5, 0.5, 0.002]
     assert read_number("1,5", ",") == 1.5

@@ -6,6 +6,7 @@ import os
 import pytest
 
 from driftbook import store
+from driftbook.store import intake
 from driftbook.store.errors import UsageError
 from driftbook.store.plan import parse_plan
 
@@ -108,3 +109,29 @@ def test_a_folder_that_may_not_be_read_is_a_wrong_request(refresh, tmp_path):
     (tmp_path / "inbox").chmod(0)
     with pytest.raises(UsageError, match="cannot be read: Permission denied"):
         refresh({})
+
+
+def test_a_known_file_is_not_looked_into_again_and_a_changed_one_is(refresh, monkeypatch):
+    """So that an inbox may keep what it had: a year of deliveries costs no more than the reading of their bytes."""
+    files = {f"{day:02d}.csv": f"series,time,value\ngas,2024-01-{day:02d},{day}\n" for day in range(1, 11)}
+    refresh(files)
+    seen = []
+    really = intake.take_in
+    monkeypatch.setattr(intake, "take_in", lambda con, file, *rest: seen.append(file.name) or really(con, file, *rest))
+    again = refresh(
+        {"11.csv": "series,time,value\ngas,2024-01-11,11\n", "03.csv": files["03.csv"] + "gas,2024-01-12,1\n"}
+    )
+    assert seen == ["03.csv", "11.csv"]
+    assert [outcome.source for outcome in again.outcomes if not outcome.known_already] == seen
+    assert len(again.outcomes) == 11
+
+
+def test_a_known_file_that_is_to_be_read_in_another_way_is_looked_into_again(refresh, book):
+    """Another entry of the plan is then meant; the name tells which."""
+    refresh({"a.csv": "series,time,value\ngas,2024-01-01,1\n"})
+    with store.writing(book) as work:
+        text = PLAN.replace('files = "*.txt"', 'files = "a.csv"').replace(
+            'columns = {value = "px"}', 'dates = "day-first"'
+        )
+        again = work.refresh(parse_plan(text, "the test's plan"), inbox=book.parent / "inbox").delivered
+    assert [outcome.known_already for outcome in again.outcomes] == [False]

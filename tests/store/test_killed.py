@@ -144,24 +144,42 @@ def test_a_run_killed_in_the_middle(tmp_path, name):
 
 @pytest.mark.soak
 def test_500_kills(tmp_path):
-    """Before each call that changes or syncs a file, in functions and at times at random; some recoveries die too."""
+    """Before each call that changes or syncs a file, in functions and at times at random; and so do two recoveries."""
     draw = random.Random(SEED)
     trials = [Trial(tmp_path / name.replace(" ", "_"), name) for name in SCENARIOS]
-    moments = [(one, before_system_call, number) for one in trials for number in range(1, len(one.calls) + 1)]
-    moments += [(one, in_function, draw.randint(1, one.functions)) for one in trials for _ in range(30)]
-    moments += [(one, at_a_time, draw.uniform(0, one.seconds)) for one, _ in zip(cycle(trials), range(180))]
-    kinds, states, recoveries = Counter(), Counter(), 0
+    kinds, states, lived, books = Counter(), Counter(), 0, 0
     begun = time.monotonic()
-    for trial, how, when in moments:
+    for trial, how, when in moments_of(trials, draw):
         book = trial.fresh()
-        kinds[how.__name__] += how(trial, book, when) if how is at_a_time else trial.kill(book, how, when)
-        states[(trial.name, trial.state(book))] += 1
-        if draw.random() < 0.2:
-            recoveries += trial.kill(book, in_function, draw.randint(1, trial.functions))
-            trial.state(book)
+        for kind, moment in ((how, when), at_random(draw, trial), at_random(draw, trial)):
+            killed = kind(trial, book, moment) if kind is at_a_time else trial.kill(book, kind, moment)
+            kinds[kind.__name__] += killed
+            lived += not killed
+            states[trial.name, trial.state(book)] += 1
         trial.completes(book)
-    kills = recoveries + kinds.total()
-    print(f"\n  {kills} kills of {len(moments)} runs in {time.monotonic() - begun:.0f} s, {recoveries} of recoveries")
-    print("  " + ", ".join(f"{kind} {count}" for kind, count in sorted(kinds.items())))
+        books += 1
+        if books % 20 == 0:
+            print(
+                f"\n  {kinds.total()} kills, {lived} ended first, {time.monotonic() - begun:.0f} s", end="", flush=True
+            )
+        if kinds.total() >= 500 and books > sum(len(one.calls) for one in trials):
+            break
+    print(f"\n  {kinds.total()} kills, {books} books completed after them: {dict(kinds)}")
     print("  " + ", ".join(f"{name}: {count} {state}" for (name, state), count in sorted(states.items())))
-    assert kills >= 500
+    assert {name for name, _ in states} == set(SCENARIOS)
+
+
+def moments_of(trials, draw):
+    """Each chosen moment of each scenario, in any order, and then moments at random without an end."""
+    chosen = [(one, before_system_call, number) for one in trials for number in range(1, len(one.calls) + 1)]
+    draw.shuffle(chosen)
+    yield from chosen
+    for trial in cycle(trials):
+        yield trial, *at_random(draw, trial)
+
+
+def at_random(draw, trial):
+    """A way and a moment to die."""
+    if draw.random() < 0.5:
+        return in_function, draw.randint(1, trial.functions)
+    return at_a_time, draw.uniform(0, trial.seconds)

@@ -14,6 +14,8 @@ from page_books import HOSTILE, correct, small_book
 from starlette.testclient import TestClient
 
 from driftbook import store
+from driftbook.estimators import MODELS
+from driftbook.store import words
 from driftbook.store.charts.scale import in_decades
 from driftbook.store.cli.app import run as run_command
 from driftbook.store.page import create_app
@@ -21,6 +23,7 @@ from driftbook.store.page.csv_text import csv_text
 from driftbook.store.page.guard import HEADERS
 from driftbook.store.page.small_year import small_years
 from driftbook.store.page.whiskers import whisker
+from driftbook.store.page.why import _named
 
 ADDRESSES = ["/", "/series?name=power_da", "/newest.json", "/csv/latest.csv", "/static/page.css", "/no"]
 MEGABYTE = 1_000_000
@@ -104,10 +107,10 @@ def test_a_served_page_has_nothing_that_a_strict_policy_forbids(client, address)
 
 
 def test_the_first_sheet_opens_with_one_sentence_and_names_what_to_look_at(client):
-    words = words_of(client.get("/?as_of=2024-03-02T09:00"))
-    assert "Run 2 of 2 Mar 2024, 08:00 UTC: 3 series, 3 late, 2 to look at." in words
-    assert "power_da: correction. Volatility" in words
-    assert "peg: no variation." in words
+    said = words_of(client.get("/?as_of=2024-03-02T09:00"))
+    assert "Run 2 of 2 Mar 2024, 08:00 UTC: 3 series, 3 late, 2 to look at." in said
+    assert "power_da: correction. Volatility" in said
+    assert "peg: no variation." in said
 
 
 def test_series_stand_in_the_order_of_the_plan(client):
@@ -178,7 +181,7 @@ def test_what_is_said_of_each_window_is_what_latest_said_of_the_last(client, sma
 
 
 def test_a_level_is_counted_on_the_server_as_sql_counts_it(client, small):
-    words = words_of(client.get("/series?name=power_da&level=61"))
+    said = words_of(client.get("/series?name=power_da&level=61"))
     with store.connect(small) as con:
         (crossed,) = con.execute(
             "with step as (select observed_at, value >= 61 as above, lag(value >= 61) over (order by observed_at) as "
@@ -186,7 +189,7 @@ def test_a_level_is_counted_on_the_server_as_sql_counts_it(client, small):
             "(select max(window_start) from ou where series = 'power_da')) "
             "select count(*) filter (where above <> before) from step"
         ).fetchone()
-    assert f"Crossed {crossed} times in the window" in words
+    assert f"Crossed {crossed} times in the window" in said
 
 
 @pytest.mark.parametrize("level", ["much", "nan", "inf", "1e999"])
@@ -195,8 +198,8 @@ def test_what_is_no_level_is_refused(client, level):
 
 
 def test_a_failed_fit_says_why_on_both_sheets(client):
-    words = words_of(client.get("/series?name=peg"))
-    assert "There is no estimate in force: no variation." in words
+    said = words_of(client.get("/series?name=peg"))
+    assert "There is no estimate in force: no variation." in said
     assert "no variation" in words_of(client.get("/"))
 
 
@@ -251,16 +254,33 @@ def test_a_series_without_estimates_is_shown_all_the_same(filled):
 
 
 def test_why_compares_the_runs_that_are_asked_for(client):
-    words = words_of(client.get("/series?name=power_da&from=1&to=2"))
-    assert "Between run 1 and run 2: 1 correction." in words
-    assert "corrected to 99 in run 2" in words
+    said = words_of(client.get("/series?name=power_da&from=1&to=2"))
+    assert "Between run 1 and run 2: 1 correction." in said
+    assert "corrected to 99 in run 2" in said
 
 
 def test_figures_of_a_comparison_have_units(client):
-    words = words_of(client.get("/series?name=power_da&from=1&to=2"))
-    assert "theta, EUR/t" in words
-    assert "sigma, EUR/t/√year" in words
-    assert "kappa, 1/year" in words
+    said = words_of(client.get("/series?name=power_da&from=1&to=2"))
+    assert "theta, EUR/t" in said
+    assert "sigma, EUR/t/√year" in said
+    assert "kappa, 1/year" in said
+
+
+def test_units_of_parameters_are_those_of_the_series_and_its_clock():
+    named = {
+        (model, parameter.name): _named(parameter, {"unit": "EUR/t", "clock": clock})
+        for model, clock in (("ckls", "trading"), ("cir", "seconds"))
+        for parameter in MODELS[model].parameters
+    }
+    assert named["ckls", "sigma"] == "sigma, (EUR/t)^(1-gamma)/√year"
+    assert named["ckls", "gamma"] == "gamma"
+    assert named["cir", "sigma"] == "sigma, √(EUR/t)/√second"
+    assert named["cir", "kappa"] == "kappa, 1/second"
+
+
+def test_every_model_has_words_of_its_own():
+    assert {words.model(name) for name in MODELS}.isdisjoint(MODELS)
+    assert len({words.model(name) for name in MODELS}) == len(MODELS)
 
 
 def test_a_whisker_runs_to_the_edge_where_there_is_no_end_and_has_no_bar_without_an_interval():

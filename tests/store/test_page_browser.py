@@ -117,7 +117,7 @@ def test_arrows_walk_through_the_grid_and_enter_opens_a_sheet(page, small):
     assert focused(page) == "power_da"
     page.keyboard.press("Enter")
     page.wait_for_url("**/series?name=power_da")
-    assert page.locator("h1").inner_text().startswith("All series")
+    assert page.locator("h1").inner_text().startswith("power_da: 59 EUR/t")
 
 
 def test_typing_filters_at_once_and_escape_ends_it(page, small):
