@@ -9,6 +9,7 @@ import pytest
 from made_series import days, plan_text
 
 from driftbook import store
+from driftbook.estimators import MODELS
 from driftbook.store.explaining import Correction, explain
 
 ADDING = store.Options(add_series=True, yes=True)
@@ -122,7 +123,7 @@ def test_a_series_that_left_the_plan_can_still_be_explained(book):
 
 @pytest.mark.parametrize(("series", "how", "told"), [
     ("pellet_fob", {}, "the book has no series 'pellet_fob'; did you mean 'pellets_fob'?"),
-    ("pellets_fob", {"model": "uo"}, "no model is called 'uo'; there are abm, gbm, ou, exp_ou, "),
+    ("pellets_fob", {"model": "uo"}, f"no model is called 'uo'; there are {', '.join(MODELS)}."),
     ("pellets_fob", {"model": "gbm"}, "there is no estimate of gbm on 'pellets_fob' with that lookback."),
     ("pellets_fob", {"lookback": 99}, "with that lookback."),
     ("pellets_fob", {"earlier": "run:99"}, 'the book has no run at run:99; see driftbook sql BOOK "from run".'),
