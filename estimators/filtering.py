@@ -192,7 +192,7 @@ def by_length(steps: StepLengths, transition: Callable[[Array], Transition]) -> 
     places = steps.places()
 
     def chosen(k: int) -> Transition:
-        found = table.take(places[k], axis=1).reshape(len(slots), 6, m)
+        found = list(table.take(places[k], axis=1).reshape(len(slots), 6, m))
         jets = {name: found[slots[key]] for name, key in names.items()}
         return Transition(**{"less": None, "delta": None, **jets})
 

@@ -241,7 +241,15 @@ STEPS = {
         np.where(np.arange(n) % 300 < 200, STEPS["calendar"](n), STEPS["irregular"](n)),
     ),
 }
-ALL = [(model, steps) for model in MODELS for steps in STEPS]
+SEARCHED = ("cir", "ckls", "quartic", "merton", "inertial", "ou_noise")  # a search a window: fewer and shorter cases
+ALL = [(model, steps) for model in MODELS for steps in STEPS if model not in SEARCHED or steps in ("equal", "calendar")]
+
+
+def at_lookbacks(*lookbacks):
+    """Every model and kind of steps at every lookback; a model that is searched for at the second only."""
+    return [
+        (*one, lookback) for one in ALL for lookback in lookbacks if one[0] not in SEARCHED or lookback == lookbacks[1]
+    ]
 
 
 def prices(n_obs, rows=None, *, seed=30):
@@ -249,12 +257,12 @@ def prices(n_obs, rows=None, *, seed=30):
     return 50 * np.exp(0.01 * np.random.default_rng(seed).standard_normal(shape).cumsum(axis=-1))
 
 
-@pytest.mark.parametrize("lookback", [6, 50, 333])
-@pytest.mark.parametrize(("model", "steps"), ALL)
+@pytest.mark.parametrize(("model", "steps", "lookback"), at_lookbacks(6, 50, 333))
 def test_windows_from_first_on_have_the_same_bits(model, steps, lookback):
-    x, dt = prices(701, 3), np.tile(STEPS[steps](700), (3, 1))
+    n, rows = (200, 2) if model in SEARCHED else (700, 3)
+    x, dt = prices(n + 1, rows), np.tile(STEPS[steps](n), (rows, 1))
     whole = rolling(model, x, dt, lookback)
-    for first in {0, 1, lookback - 1, lookback, 2 * lookback + 1, 700 - lookback}:
+    for first in {0, 1, lookback - 1, lookback, 2 * lookback + 1, n - lookback}:
         assert_same_bits(rolling(model, x, dt, lookback, first=first), part(whole, np.s_[:, first:]))
 
 
@@ -273,23 +281,29 @@ def test_first_below_zero_raises():
         rolling("ou", prices(101), DT, 50, first=1.0)  # type: ignore[arg-type]
 
 
-@pytest.mark.parametrize("lookback", [7, 60, 250])
-@pytest.mark.parametrize(("model", "steps"), ALL)
+# A model with settings takes them from all values where none are given, so a slice has others.
+@pytest.mark.parametrize(
+    ("model", "steps", "lookback"), [one for one in at_lookbacks(7, 60, 250) if not MODELS[one[0]].settings]
+)
 def test_bits_of_slices_and_of_longer_series(model, steps, lookback):
-    x, dt = prices(900), STEPS[steps](899)
+    n = 270 if model in SEARCHED else 900
+    x, dt = prices(n), STEPS[steps](n - 1)
     whole = rolling(model, x, dt, lookback)
-    for first in {lookback, lookback + 1, 500}:
+    for first in {lookback, lookback + 1, n * 5 // 9}:
         start = aligned_start(first, lookback)
         assert_same_bits(rolling(model, x[start:], dt[start:], lookback), part(whole, slice(start, None)))
-    for end in {lookback + 3, 2 * lookback, 2 * lookback + 1, 700}:
+    for end in {lookback + 3, 2 * lookback, 2 * lookback + 1, n * 7 // 9}:
         assert_same_bits(rolling(model, x[:end], dt[: end - 1], lookback), part(whole, slice(0, end - lookback)))
 
 
-@pytest.mark.parametrize("lookback", [6, 60])
-@pytest.mark.parametrize("model", MODELS)
+@pytest.mark.parametrize(
+    ("model", "lookback"),
+    [(model, lookback) for model in MODELS for lookback in (6, 60) if lookback > 6 or model not in SEARCHED],
+)
 def test_rows_of_other_steps_do_not_influence_each_other_by_a_bit(model, lookback, monkeypatch):
-    x = strange_rows()[:, :600] + 100
-    dt = np.array([STEPS[name](599) for name in (*STEPS, *STEPS)] + [np.full(599, 1.0)])
+    n = 120 if model in SEARCHED else 600
+    x = strange_rows()[:, :n] + 100
+    dt = np.array([STEPS[name](n - 1) for name in (*STEPS, *STEPS)] + [np.full(n - 1, 1.0)])
     together = rolling(model, x, dt, lookback)
     for row in range(len(x)):
         assert_same_bits(rolling(model, x[row], dt[row], lookback), part(together, row))
