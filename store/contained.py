@@ -22,6 +22,7 @@ from driftbook.store.errors import BookError, UsageError
 
 _CHUNK = 1 << 20
 _OUT_OF_MEMORY = "MemoryError"
+_INTERRUPT = {signal.SIGINT}
 
 
 def _half_of_the_memory() -> int:
@@ -64,12 +65,14 @@ def contained(
     reading, writing = os.pipe()
     sys.stdout.flush()
     sys.stderr.flush()
+    signal.pthread_sigmask(signal.SIG_BLOCK, _INTERRUPT)  # before its guard stands, one would leave the child alone
     child = _forked()
     if child == 0:
         os.close(reading)
         _be_the_child(writing, prepare, work, limits)
     os.close(writing)
     with os.fdopen(reading, "rb") as answer, _ended(child) as how_it_ended:
+        signal.pthread_sigmask(signal.SIG_UNBLOCK, _INTERRUPT)
         head = answer.readline()
         if not head.endswith(b"\n"):
             raise _why(how_it_ended(), limits)
@@ -152,6 +155,7 @@ def _be_the_child(
 def _be_quiet_and_mortal(seconds: float) -> None:
     """The kernel ends the process when its time is over, whatever code is running and whoever is still there."""
     signal.signal(signal.SIGINT, signal.SIG_DFL)
+    signal.pthread_sigmask(signal.SIG_UNBLOCK, _INTERRUPT)
     signal.signal(signal.SIGALRM, signal.SIG_DFL)
     signal.setitimer(signal.ITIMER_REAL, max(seconds, 0.001))
     resource.setrlimit(resource.RLIMIT_CORE, (0, 0))
