@@ -8,6 +8,17 @@ from contextlib import contextmanager
 from threading import current_thread, main_thread
 
 _swaps = [0]
+_heard = [False]
+
+
+def listen_anew() -> None:
+    """What was heard before is over."""
+    _heard[0] = False
+
+
+def note() -> None:
+    """Ctrl-C was heard; a library may lose the exception that this becomes, as one does while it loads another."""
+    _heard[0] = True
 
 
 def swaps() -> int:
@@ -17,7 +28,12 @@ def swaps() -> int:
 
 @contextmanager
 def swapping() -> Iterator[None]:
-    """For what puts something new in a book's place: Ctrl-C waits until it is done and counted."""
+    """For what puts something new in a book's place: Ctrl-C waits until it is done and counted.
+
+    One that was lost before is raised here, where the book is still as it was.
+    """
+    if _heard[0]:
+        raise KeyboardInterrupt
     with _held_back():
         yield
         _swaps[0] += 1

@@ -93,6 +93,7 @@ class _Interrupts:
         self.seen = False
 
     def __enter__(self) -> None:
+        interrupts.listen_anew()
         if current_thread() is main_thread():
             signal.signal(signal.SIGINT, self._note)
 
@@ -102,6 +103,7 @@ class _Interrupts:
 
     def _note(self, *_: object) -> None:
         self.seen = True
+        interrupts.note()
         raise KeyboardInterrupt
 
 

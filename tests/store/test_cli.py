@@ -568,7 +568,7 @@ def test_another_writer_is_named_and_the_exit_code_is_75(book):
 
 def test_an_interrupt_in_a_refresh_leaves_the_book_and_gives_130(book):
     """Long windows on many observations, interrupted while they are computed."""
-    count = 60_000
+    count = 400_000
     plan = PLAN.replace("[[estimate]]", '[[series]]\nname = "tide"\nclock = "seconds"\n[[estimate]]')
     with store.writing(book) as work:
         times = [datetime(2020, 1, 1, tzinfo=UTC) + timedelta(minutes=minute) for minute in range(count)]

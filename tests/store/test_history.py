@@ -294,7 +294,7 @@ def _compare_estimates(rows, state):
 
 TestHistory = History.TestCase
 TestHistory.settings = settings(
-    max_examples=15, stateful_step_count=14, deadline=None, derandomize=True, database=None, print_blob=False
+    max_examples=6, stateful_step_count=14, deadline=None, derandomize=True, database=None, print_blob=False
 )
 
 

@@ -27,7 +27,18 @@ from driftbook.store import lock
 
 SEED = 20261203
 PROGRAM = "from driftbook.store.cli import main; print('ready', flush=True); main()"
-PLAN = 'name = "desk"\n[[estimate]]\nseries = ["*"]\nmodels = ["ou", "exp_ou"]\nlookbacks = [50]\n'
+PLAN = """
+name = "desk"
+[[series]]
+name = "diesel"
+sign = "positive"
+[[series]]
+name = "spark"
+[[estimate]]
+series = ["*"]
+models = ["ou", "exp_ou"]
+lookbacks = [50]
+"""
 
 
 def beside(book):
