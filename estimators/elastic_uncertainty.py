@@ -9,12 +9,12 @@ import numpy as np
 
 from driftbook.estimators.elastic import Elastic, Spot
 from driftbook.estimators.elastic_search import Top
+from driftbook.estimators.half_life import finite, half_lives
 from driftbook.estimators.intervals import theta_set, widened_pull
 from driftbook.estimators.repair import Columns
 from driftbook.estimators.slope_law import slope_law
 from driftbook.estimators.windows import Array
 
-LN2 = float(np.log(2.0))
 TWO_SIDED = NormalDist().inv_cdf(0.975)
 NAMES = (
     *("kappa_se", "theta_se", "sigma_se", "sigma_lower", "sigma_upper", "gamma_se", "gamma_lower", "gamma_upper"),
@@ -115,9 +115,9 @@ def _of_pull(sums: Elastic, spot: Spot, V: _Covariance, origin: Array) -> Column
         law, rho, mean_from=0.0, mean_to=mean_to, A=least * n / (V.bb * np.square(per_step)), s2=least * n
     )
     return {
-        "kappa_lower": _finite(pull.lower / duration),
-        "kappa_upper": _finite(pull.upper / duration),
-        "kappa_median_unbiased": _finite(pull.median / duration),
+        "kappa_lower": finite(pull.lower / duration),
+        "kappa_upper": finite(pull.upper / duration),
+        "kappa_median_unbiased": finite(pull.median / duration),
         "no_reversion_p": law.p_no_pull(rho),
         "theta_lower": origin * (1 + surest + theta.lower),
         "theta_upper": origin * (1 + surest + theta.upper),
@@ -126,20 +126,13 @@ def _of_pull(sums: Elastic, spot: Spot, V: _Covariance, origin: Array) -> Column
 
 def _formulas(columns: Columns) -> Columns:
     """The columns that are formulas of others, as their SQL has them."""
-    kappa, gamma, lower, upper = (columns[name] for name in ("kappa", "gamma", "kappa_lower", "kappa_upper"))
+    kappa, gamma = columns["kappa"], columns["gamma"]
     linear = gamma <= 1
     reach_zero = np.where(columns["gamma_upper"] < 0.5, 1.0, np.nan)
     never = (columns["gamma_lower"] > 0.5) & (kappa * columns["theta"] > 0)
-    return {
-        "half_life": np.where(linear & (kappa > 0), _finite(LN2 / columns["kappa_median_unbiased"]), np.nan),
-        "half_life_lower": np.where(linear, _finite(LN2 / upper), np.nan),
-        "half_life_upper": np.where(linear, _finite(LN2 / lower), np.nan),
-        "half_life_mle": np.where(linear & (kappa > 0), LN2 / kappa, np.nan),
-        "half_life_unbounded": np.where(np.isnan(lower), np.nan, lower == 0),
-        "can_reach_zero": np.where(never, 0.0, reach_zero),
-    }
-
-
-def _finite(values: Array) -> Array:
-    """NaN in place of infinity, which is how a missing end is told."""
-    return np.where(np.isinf(values), np.nan, values)
+    found = half_lives(columns)
+    for name in ("half_life", "half_life_mle"):
+        found[name] = np.where(linear & (kappa > 0), found[name], np.nan)
+    for name in ("half_life_lower", "half_life_upper"):
+        found[name] = np.where(linear, found[name], np.nan)
+    return {**found, "can_reach_zero": np.where(never, 0.0, reach_zero)}

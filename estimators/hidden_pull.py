@@ -12,6 +12,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from driftbook.estimators.half_life import finite
 from driftbook.estimators.intervals import theta_set, widened_pull
 from driftbook.estimators.jets import Jet, covariance, less_one, times
 from driftbook.estimators.slope_law import slope_law
@@ -113,8 +114,3 @@ def hidden_pull(
         theta[0] - centre,
         covariance(rest, rest, of_parameters) + np.square(gain[0]) * given,
     )
-
-
-def finite(values: Array) -> Array:
-    """NaN in place of infinity, which is how a missing end is told."""
-    return np.where(np.isinf(values), np.nan, values)

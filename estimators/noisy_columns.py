@@ -6,14 +6,14 @@ from statistics import NormalDist
 
 import numpy as np
 
-from driftbook.estimators.hidden_pull import finite, pull_ends
+from driftbook.estimators.half_life import half_lives
+from driftbook.estimators.hidden_pull import pull_ends
 from driftbook.estimators.intervals import COARSEST
 from driftbook.estimators.noisy_estimate import Estimate
 from driftbook.estimators.pull import Pull
 from driftbook.estimators.repair import Columns
 from driftbook.estimators.windows import Array
 
-LN2 = float(np.log(2.0))
 TWO_SIDED = NormalDist().inv_cdf(0.975)
 _NEED_A_PULL = ("half_life", "half_life_mle", "stationary_sd")
 
@@ -74,15 +74,8 @@ def _half_chi_square(gain: Array) -> Array:
 
 def _formulas(columns: Columns) -> Columns:
     """The columns that are formulas of others, as their SQL has them."""
-    kappa, lower = columns["kappa"], columns["kappa_lower"]
-    found = {
-        "half_life": finite(LN2 / columns["kappa_median_unbiased"]),
-        "half_life_lower": finite(LN2 / columns["kappa_upper"]),
-        "half_life_upper": finite(LN2 / lower),
-        "half_life_mle": LN2 / kappa,
-        "half_life_unbounded": np.where(np.isnan(lower), np.nan, lower == 0),
-        "stationary_sd": columns["sigma"] / np.sqrt(2 * kappa),
-    }
+    kappa = columns["kappa"]
+    found = {**half_lives(columns), "stationary_sd": columns["sigma"] / np.sqrt(2 * kappa)}
     for name in _NEED_A_PULL:
         found[name] = np.where(kappa > 0, found[name], np.nan)
     return found

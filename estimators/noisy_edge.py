@@ -12,11 +12,10 @@ import numpy as np
 
 from driftbook.estimators.edge import HALF_POINT, reach, reach_of
 from driftbook.estimators.filtering import Filtered
-from driftbook.estimators.hidden_pull import finite
+from driftbook.estimators.half_life import LN2, finite
 from driftbook.estimators.jets import logarithm
 from driftbook.estimators.maximise import Maximum
 from driftbook.estimators.noisy import Candidates
-from driftbook.estimators.noisy_columns import LN2
 from driftbook.estimators.noisy_profile import powers
 from driftbook.estimators.pull import Pull
 from driftbook.estimators.repair import Columns

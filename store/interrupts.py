@@ -11,14 +11,31 @@ _swaps = [0]
 _heard = [False]
 
 
-def listen_anew() -> None:
-    """What was heard before is over."""
+def heard() -> bool:
+    """Whether Ctrl-C came while this process was last listening."""
+    return _heard[0]
+
+
+@contextmanager
+def listening() -> Iterator[None]:
+    """Notes Ctrl-C, beside raising it.
+
+    DuckDB turns the interrupt of a running query into an error of another name, and a library may lose the exception,
+    as one does while it loads another.
+    """
     _heard[0] = False
+    if current_thread() is main_thread():
+        signal.signal(signal.SIGINT, _note)
+    try:
+        yield
+    finally:
+        if current_thread() is main_thread():
+            signal.signal(signal.SIGINT, signal.default_int_handler)
 
 
-def note() -> None:
-    """Ctrl-C was heard; a library may lose the exception that this becomes, as one does while it loads another."""
+def _note(*_: object) -> None:
     _heard[0] = True
+    raise KeyboardInterrupt
 
 
 def swaps() -> int:
@@ -32,7 +49,7 @@ def swapping() -> Iterator[None]:
 
     One that was lost before is raised here, where the book is still as it was.
     """
-    if _heard[0]:
+    if heard():
         raise KeyboardInterrupt
     with _held_back():
         yield
@@ -44,11 +61,11 @@ def _held_back() -> Iterator[None]:
     if current_thread() is not main_thread():  # which alone hears it
         yield
         return
-    heard: list[int] = []
-    before = signal.signal(signal.SIGINT, lambda number, _: heard.append(number))
+    waiting: list[int] = []
+    before = signal.signal(signal.SIGINT, lambda number, _: waiting.append(number))
     try:
         yield
     finally:
         signal.signal(signal.SIGINT, before)
-    for number in heard:
+    for number in waiting:
         signal.raise_signal(number)

@@ -6,7 +6,6 @@ import json
 import os
 import signal
 import sys
-from threading import current_thread, main_thread
 from typing import Annotated
 
 import typer
@@ -60,17 +59,16 @@ def main() -> None:
 
 def run(arguments: list[str]) -> int:
     """Runs one command; gives its exit code: 0, 1, 2, 3, 4, 75 or 130."""
-    heard = _Interrupts()
     before = interrupts.swaps()
     try:
-        _check_text(arguments)
-        with heard:
+        with interrupts.listening():
+            _check_text(arguments)
             code = app(arguments, prog_name="driftbook", standalone_mode=False)
     except (BrokenPipeError, SystemExit):  # typer exits on a broken pipe: whoever read, as `head` does, has enough
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 0
     except (Exception, KeyboardInterrupt) as error:
-        interrupted = heard.seen or isinstance(error, KeyboardInterrupt) or type(error).__name__ == "Abort"
+        interrupted = interrupts.heard() or isinstance(error, KeyboardInterrupt) or type(error).__name__ == "Abort"
         code, sentence = _interrupted(before) if interrupted else _ended_by(error, before)
         _complain(sentence, arguments)
         return code
@@ -84,27 +82,6 @@ def _check_text(arguments: list[str]) -> None:
     for argument in arguments:
         if any("\ud800" <= letter <= "\udfff" for letter in argument):
             raise UsageError(f"{argument!r} is no UTF-8 text; rename or write it in UTF-8.")
-
-
-class _Interrupts:
-    """Notes Ctrl-C: DuckDB turns the interrupt of a running query into an error of another name."""
-
-    def __init__(self) -> None:
-        self.seen = False
-
-    def __enter__(self) -> None:
-        interrupts.listen_anew()
-        if current_thread() is main_thread():
-            signal.signal(signal.SIGINT, self._note)
-
-    def __exit__(self, *error: object) -> None:
-        if current_thread() is main_thread():
-            signal.signal(signal.SIGINT, signal.default_int_handler)
-
-    def _note(self, *_: object) -> None:
-        self.seen = True
-        interrupts.note()
-        raise KeyboardInterrupt
 
 
 def _interrupted(before: int) -> tuple[int, str]:
